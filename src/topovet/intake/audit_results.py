@@ -1,0 +1,76 @@
+"""What the intake audit measures of the files."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True)
+class HamiltonianAudit:
+    """Soundness of H(R) as the file gives it, before anything is mended.
+
+    Attributes
+    ----------
+    file, header, reader
+        See `topovet.intake.records.HamiltonianFile`.
+    n_wann, n_r
+        Wannier functions; R vectors as listed.
+    hermiticity_mev
+        Spectral norm of H(R) - H(-R)†, largest over R.
+    duplicate_r
+        R vectors listed more than once, at most ten of them.
+    duplicates_identical
+        Whether all repeated blocks are the same, bit for bit.
+    missing_partner_r
+        R whose -R is not listed, at most ten.
+    n_missing_partner
+        Their number.
+    missing_partner_mev
+        Largest |H(R)| among them.
+    degeneracy_sum
+        Sum of 1/ndegen; equals the number of mesh points for a Wigner-Seitz set.
+    mesh_points
+        N1 N2 N3 of mp_grid; None without it.
+    onsite_scale_ev
+        Spectral norm of H(0) minus its mean energy.
+    rim_mev
+        Largest |H(R)| element on the rim: R with no listed neighbour further out along some axis.
+    rim_ratio
+        rim_mev over the largest |H(R)| element with R != 0.
+    rounding_mev
+        Bound on the spectral-norm error of H(k) that rounding to the columns' decimals allows,
+        as a root-sum-square estimate over R; 0 for exponent form.
+    shells_ang, shells_mev
+        Distance |R| (angstrom) and the largest element there (meV), for the decay plot.
+    shift_source
+        "wsvec file", "rebuilt from centres", "rebuilt from declared sites", "none needed",
+        "not available".
+    shift_note
+        One sentence about it.
+    centre_offsets_ang
+        Distance of each Wannier centre from its declared site modulo the supercell; empty if
+        unknown.
+    """
+
+    file: str
+    header: str
+    reader: str
+    n_wann: int
+    n_r: int
+    hermiticity_mev: float
+    duplicate_r: tuple[tuple[int, int, int], ...]
+    duplicates_identical: bool
+    missing_partner_r: tuple[tuple[int, int, int], ...]
+    n_missing_partner: int
+    missing_partner_mev: float
+    degeneracy_sum: float
+    mesh_points: int | None
+    onsite_scale_ev: float
+    rim_mev: float
+    rim_ratio: float
+    rounding_mev: float
+    shells_ang: tuple[float, ...]
+    shells_mev: tuple[float, ...]
+    shift_source: str
+    shift_note: str
+    centre_offsets_ang: tuple[float, ...]

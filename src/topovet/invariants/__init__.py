@@ -1,0 +1,1 @@
+"""Occupied subspaces and symmetry operators go in; topological indices of each witness come out."""

@@ -1,0 +1,143 @@
+"""H(k) for many k at once: one real matrix product over half of the R vectors.
+
+Because H(-R) = H(R)†, the pair R, -R contributes
+
+    exp(i phi) H(R) + exp(-i phi) H(R)† = cos(phi) S(R) + sin(phi) D(R),   phi = 2 pi k.R
+
+with S = H + H† and D = i (H - H†), both Hermitian. A Hermitian n x n matrix is n^2 real numbers
+(real parts on and below the diagonal, imaginary parts above it), so H(k) for a batch of k is one
+real product (n_k, 2 n_half) x (2 n_half, n^2): a quarter of the multiplications of the plain
+complex sum over all R.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from topovet.arrays import ComplexArray, FloatArray, IntArray
+from topovet.model.hamiltonian import TightBindingModel
+
+CHUNK_BYTES = 64 * 2**20
+"""Largest block of H(k) held at a time by the batched routines."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class BlochSum:
+    """The Fourier sum of a Hermitian set H(R), ready for batches of k.
+
+    Attributes
+    ----------
+    r_half
+        (n_half, d) one of each pair R, -R, and R = 0 first; d is 3, or less after `partial`.
+    table
+        (2 n_half, n_orb^2) packed S(R) rows, then packed D(R) rows.
+    n_orb
+        Matrix size.
+    """
+
+    r_half: FloatArray
+    table: FloatArray
+    n_orb: int
+
+    def at(self, k_frac: FloatArray) -> ComplexArray:
+        """H(k), (n_k, n_orb, n_orb) eV, for k_frac (n_k, d)."""
+        phase = 2 * np.pi * (np.asarray(k_frac, dtype=float) @ self.r_half.T)
+        weights = np.concatenate([np.cos(phase), np.sin(phase)], axis=1)
+        return _unpack(weights @ self.table, self.n_orb)
+
+    def gradient(self, k_frac: FloatArray) -> ComplexArray:
+        """dH/dk_i, (n_k, d, n_orb, n_orb) eV per unit of fractional k, for k_frac (n_k, d)."""
+        k_frac = np.asarray(k_frac, dtype=float)
+        n_k, d = k_frac.shape
+        phase = 2 * np.pi * (k_frac @ self.r_half.T)
+        slope = 2 * np.pi * self.r_half.T[None, :, :]
+        weights = np.concatenate(
+            [-np.sin(phase)[:, None, :] * slope, np.cos(phase)[:, None, :] * slope], axis=2
+        )
+        packed = weights.reshape(n_k * d, -1) @ self.table
+        return _unpack(packed, self.n_orb).reshape(n_k, d, self.n_orb, self.n_orb)
+
+    def partial(self, axes: tuple[int, ...], k_fixed: FloatArray) -> BlochSum:
+        """The sum over the given axes done at k_fixed; what is left depends on the others only.
+
+        Lines and planes of k pay for the fixed components once: a line of a model with 300 R
+        needs about ten R per point.
+
+        Parameters
+        ----------
+        axes
+            Components of k that are fixed.
+        k_fixed
+            (len(axes),) their values, fractional.
+        """
+        kept = [i for i in range(self.r_half.shape[1]) if i not in axes]
+        phase = 2 * np.pi * (self.r_half[:, list(axes)] @ np.asarray(k_fixed, dtype=float))
+        r_kept = self.r_half[:, kept]
+        # A pair whose kept part is reversed is the same pair seen from -R: cos S + sin D keeps S
+        # and turns the sign of D and of the phase.
+        sign = _leading_sign(r_kept)
+        canonical, group = np.unique(r_kept * sign[:, None], axis=0, return_inverse=True)
+        group = group.reshape(-1)
+        n_half, n_new = len(r_kept), len(canonical)
+        cos, sin = np.cos(phase), np.sin(phase) * sign
+        mix = np.zeros((2 * n_new, 2 * n_half))
+        rows = np.arange(n_half)
+        # cos(a + b) S + sin(a + b) D, with a the kept and b the fixed part of the phase
+        mix[group, rows] = cos
+        mix[group, n_half + rows] = sin * sign
+        mix[n_new + group, rows] = -sin
+        mix[n_new + group, n_half + rows] = cos * sign
+        return BlochSum(canonical, mix @ self.table, self.n_orb)
+
+
+def build_bloch_sum(model: TightBindingModel) -> BlochSum:
+    """Packed table of a model; takes half the memory of its h_r."""
+    n_orb, n_r = model.n_orb, model.n_r
+    middle = n_r // 2  # R = 0 when n_r is odd; the upper half holds one of each pair
+    has_origin = n_r % 2 == 1
+    half = np.arange(middle, n_r)
+    table = np.empty((2 * len(half), n_orb * n_orb))
+    for row, r in enumerate(half):
+        h = model.h_r[r]
+        weight = 0.5 if has_origin and r == middle else 1.0
+        table[row] = _pack(weight * (h + h.conj().T))
+        table[len(half) + row] = _pack(1j * weight * (h - h.conj().T))
+    return BlochSum(model.r_cells[half].astype(float), table, n_orb)
+
+
+def _pack(hermitian: ComplexArray) -> FloatArray:
+    n = len(hermitian)
+    lower = np.tri(n, dtype=bool)
+    return np.where(lower, hermitian.real, hermitian.imag).reshape(-1)
+
+
+def _unpack(packed: FloatArray, n: int) -> ComplexArray:
+    square = packed.reshape(-1, n, n)
+    lower = np.tri(n, dtype=bool)
+    transposed = square.transpose(0, 2, 1)
+    h = np.empty(square.shape, dtype=np.complex128)
+    h.real = np.where(lower, square, transposed)
+    h.imag = np.where(lower, -transposed, square)
+    h.imag[:, np.arange(n), np.arange(n)] = 0.0
+    return h
+
+
+def _leading_sign(vectors: FloatArray) -> FloatArray:
+    """+1 or -1 for each row: the sign of its first non-zero entry, +1 for the zero row."""
+    sign = np.ones(len(vectors))
+    for column in vectors.T[::-1]:
+        sign = np.where(column != 0, np.sign(column), sign)
+    return sign
+
+
+def chunks_of_k(n_k: int, n_orb: int) -> list[slice]:
+    """Slices of a list of k whose H(k) stay within `CHUNK_BYTES`."""
+    step = max(1, CHUNK_BYTES // (16 * n_orb * n_orb * 3))
+    return [slice(i, min(i + step, n_k)) for i in range(0, n_k, step)]
+
+
+def as_r_array(r_cells: IntArray) -> FloatArray:
+    """Lattice vectors as floats, the form the phases need."""
+    return np.ascontiguousarray(r_cells, dtype=float)

@@ -1,0 +1,1 @@
+"""Results and verdicts go in; JSON, figures and the HTML dossier come out."""

@@ -1,0 +1,186 @@
+"""The verdict as an object: the fields of `verdict.json`, one to one.
+
+`Verdict.as_dict` gives the JSON document; the schema is `topovet/report/verdict.schema.json`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field, fields, is_dataclass
+from typing import Any
+
+from topovet.verdict.flags import Flag
+
+SCHEMA = "topovet.verdict/1"
+
+
+@dataclass(frozen=True, slots=True)
+class SpaceGroupEntry:
+    number: int
+    symbol: str
+
+
+@dataclass(frozen=True, slots=True)
+class CaseEntry:
+    name: str
+    formula: str
+    dimension: int
+    spinful: bool
+    num_wann: int
+    space_group: SpaceGroupEntry | None
+
+
+@dataclass(frozen=True, slots=True)
+class InputEntry:
+    file: str
+    sha256: str
+    bytes: int
+
+
+@dataclass(frozen=True, slots=True)
+class ElectronsEntry:
+    filling: int
+    source: str
+    fermi_eV: float | None  # noqa: N815
+    how: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class GapEntry:
+    direct_eV: float | None  # noqa: N815
+    direct_proved_min_eV: float | None  # noqa: N815
+    direct_k: tuple[float, float, float] | None
+    indirect_eV: float | None  # noqa: N815
+    status: str
+    method: str = "sampled"
+
+
+@dataclass(frozen=True, slots=True)
+class TimeReversalEntry:
+    present: bool
+    violation_meV: float | None  # noqa: N815
+    spin_order: str
+
+
+@dataclass(frozen=True, slots=True)
+class InversionEntry:
+    present: bool
+    centre: tuple[float, float, float] | None
+    violation_meV: float | None  # noqa: N815
+    basis: str
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class TrimEntry:
+    k: tuple[float, float, float]
+    n_plus: int
+    n_minus: int
+    delta: int
+    purity: float
+    gap_eV: float  # noqa: N815
+
+
+@dataclass(frozen=True, slots=True)
+class ParityEntry:
+    status: str
+    reason: str
+    z2: tuple[int, ...] | None
+    z4: int | None
+    trim: tuple[TrimEntry, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class WilsonEntry:
+    status: str
+    reason: str
+    z2: tuple[int, ...] | None = None
+    planes: tuple[Mapping[str, Any], ...] = ()
+    chern: Mapping[str, Any] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class SurfaceEntry:
+    status: str
+    reason: str
+    z2_strong: int | None = None
+    crossings: tuple[Mapping[str, Any], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class WitnessesEntry:
+    parity: ParityEntry
+    wilson: WilsonEntry
+    surface: SurfaceEntry
+
+
+@dataclass(frozen=True, slots=True)
+class InvariantsEntry:
+    z2: tuple[int, ...] | None = None
+    z4: int | None = None
+    indicators: Mapping[str, int] = field(default_factory=dict)
+    chern: int | tuple[int, int, int] | None = None
+    mirror_chern: Mapping[str, int] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class RobustnessEntry:
+    """radius_meV is half of the direct gap; `proved` says whether that gap is a proved bound."""
+
+    radius_meV: float | None  # noqa: N815
+    errors_meV: Mapping[str, float | None]  # noqa: N815
+    tipping: tuple[Mapping[str, Any], ...] = ()
+    proved: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class ConfidenceEntry:
+    grade: str
+    reasons: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ProvenanceEntry:
+    version: str
+    packages: Mapping[str, str]
+    settings: Mapping[str, Any]
+    task_seconds: Mapping[str, float]
+
+
+@dataclass(frozen=True, slots=True)
+class Verdict:
+    """All that is concluded about one case; see `as_dict` for the JSON form."""
+
+    case: CaseEntry
+    inputs: tuple[InputEntry, ...]
+    electrons: ElectronsEntry
+    gap: GapEntry
+    time_reversal: TimeReversalEntry
+    inversion: InversionEntry
+    witnesses: WitnessesEntry
+    invariants: InvariantsEntry
+    agreement: str
+    class_: str
+    robustness: RobustnessEntry
+    flags: tuple[Flag, ...]
+    confidence: ConfidenceEntry
+    measurable: Mapping[str, Any]
+    provenance: ProvenanceEntry
+    schema: str = SCHEMA
+
+    def as_dict(self) -> dict[str, Any]:
+        """The JSON document (plain dicts, lists, numbers and strings)."""
+        plain = _plain(self)
+        plain["class"] = plain.pop("class_")
+        order = ["schema", *(f.name.rstrip("_") for f in fields(self) if f.name != "schema")]
+        return {key: plain[key] for key in order}
+
+
+def _plain(value: Any) -> Any:
+    if is_dataclass(value) and not isinstance(value, type):
+        return {f.name: _plain(getattr(value, f.name)) for f in fields(value)}
+    if isinstance(value, Mapping):
+        return {str(k): _plain(v) for k, v in value.items()}
+    if isinstance(value, tuple | list):
+        return [_plain(v) for v in value]
+    return value
