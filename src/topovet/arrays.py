@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Any, TypeVar
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,3 +20,22 @@ def frozen(array: NDArray[Scalar]) -> NDArray[Scalar]:
     view: NDArray[Scalar] = array.view()
     view.flags.writeable = False
     return view
+
+
+def largest_spectral_norm(stack: ComplexArray) -> float:
+    """Largest spectral norm in a stack of matrices (n, m, m); 0 for an empty stack.
+
+    Matrices are taken by falling Frobenius norm, which bounds the spectral norm, so that the
+    singular values of only a few of them are needed.
+    """
+    if len(stack) == 0:
+        return 0.0
+    frobenius = np.linalg.norm(stack, axis=(1, 2))
+    order = np.argsort(-frobenius, kind="stable")
+    best = 0.0
+    for start in range(0, len(order), 16):
+        batch = order[start : start + 16]
+        if frobenius[batch[0]] <= best:
+            break
+        best = max(best, float(np.linalg.norm(stack[batch], ord=2, axis=(1, 2)).max()))
+    return best

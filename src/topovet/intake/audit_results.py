@@ -16,32 +16,35 @@ class HamiltonianAudit:
     n_wann, n_r
         Wannier functions; R vectors as listed.
     hermiticity_mev
-        Spectral norm of H(R) - H(-R)†, largest over R.
+        Spectral norm of H(R) - H(-R)† of the raw file, largest over R that have a partner; where
+        the degeneracies of R and -R differ, their ratio is applied to H(-R).
     duplicate_r
-        R vectors listed more than once, at most ten of them.
+        R vectors listed more than once, each named once, at most ten of them.
     duplicates_identical
-        Whether all repeated blocks are the same, bit for bit.
+        Whether all repeated blocks and degeneracies are the same, bit for bit; True without any.
     missing_partner_r
         R whose -R is not listed, at most ten.
     n_missing_partner
         Their number.
     missing_partner_mev
-        Largest |H(R)| among them.
+        Largest |H_mn(R)| among them, meV, as printed.
     degeneracy_sum
         Sum of 1/ndegen; equals the number of mesh points for a Wigner-Seitz set.
     mesh_points
         N1 N2 N3 of mp_grid; None without it.
     onsite_scale_ev
-        Spectral norm of H(0) minus its mean energy.
+        Spectral norm of H(0) minus its mean energy, eV; 0 where R = 0 is missing.
     rim_mev
-        Largest |H(R)| element on the rim: R with no listed neighbour further out along some axis.
+        Largest |H_mn(R)|/ndegen(R) on the rim, meV: R = (R1, R2, R3) with some R_i != 0 and the
+        next vector further out along axis i not listed.
     rim_ratio
-        rim_mev over the largest |H(R)| element with R != 0.
+        rim_mev over the largest |H_mn(R)|/ndegen(R) with R != 0; 0 where nothing hops.
     rounding_mev
-        Bound on the spectral-norm error of H(k) that rounding to the columns' decimals allows,
-        as a root-sum-square estimate over R; 0 for exponent form.
+        Spectral-norm error of H(k) that rounding to the columns' decimals allows, meV: the bound
+        of each pair R, -R, added over pairs as root of the sum of squares; 0 for exponent form.
     shells_ang, shells_mev
-        Distance |R| (angstrom) and the largest element there (meV), for the decay plot.
+        Distance |R| (angstrom, ascending) and the largest |H_mn(R)|/ndegen(R) there (meV), for
+        the decay plot; empty without a cell.
     shift_source
         "wsvec file", "rebuilt from centres", "rebuilt from declared sites", "none needed",
         "not available".

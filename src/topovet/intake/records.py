@@ -100,6 +100,8 @@ class WinFile:
         empty where nothing usable is declared, and then `undeclared_reason` says why.
     kpoints_frac
         (n_k, 3) the coarse mesh of the `kpoints` block, None where the block is missing.
+    exclude_bands
+        First-principles bands left out, counted from 0, rising.
     """
 
     file: str
@@ -166,12 +168,16 @@ class BandFile:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class StructureFile:
-    """A structure read through ASE: cell (3, 3), symbols, positions_frac (n_atoms, 3)."""
+    """A structure read through ASE: cell (3, 3), symbols, positions_frac (n_atoms, 3).
+
+    `notes` are the warnings the reader gave.
+    """
 
     file: str
     cell: FloatArray
     symbols: tuple[str, ...]
     positions_frac: FloatArray
+    notes: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -24,15 +24,19 @@ class OrbitalBasis:
         (n_orb, 2) spin state (up, down along z); (1, 0) for every spinless function.
     labels
         Name of each Wannier function, e.g. "Bi1 pz up".
+    shells
+        (n_orb,) radial function number; functions of different shells do not overlap even where
+        site, harmonic and spin agree.
     """
 
     positions_frac: FloatArray
     harmonics: FloatArray
     spinors: ComplexArray
     labels: tuple[str, ...]
+    shells: IntArray
 
     def __post_init__(self) -> None:
-        for name in ("positions_frac", "harmonics", "spinors"):
+        for name in ("positions_frac", "harmonics", "spinors", "shells"):
             object.__setattr__(self, name, frozen(getattr(self, name)))
 
     @property
@@ -46,4 +50,5 @@ class OrbitalBasis:
             self.harmonics[order],
             self.spinors[order],
             tuple(self.labels[i] for i in np.asarray(order)),
+            self.shells[order],
         )

@@ -41,13 +41,20 @@ class TimeReversalTest:
     Attributes
     ----------
     present
-        The smaller violation is within `tolerance_mev`.
+        The violation is within `tolerance_mev`; judged on the unshifted reading where there is one.
     spin_order
         "interlaced", "block" or "none" (spinless): the order that was found and is used.
     violation_mev
-        Spectral norm of Theta H Theta^-1 - H, largest over R, for `spin_order`.
+        Spectral norm of Theta H(k) Theta^-1 - H(-k), largest over the sampled k, for `spin_order`.
+    violation_r_mev
+        The same in real space, Theta H(R) Theta^-1 - H(R), largest over R.
+    violation_unshifted_mev
+        Like violation_mev for the Hamiltonian read without `use_ws_distance` shifts; None where no
+        shifts were applied. The shifts share hoppings between images whose centres tie within a
+        tolerance, and can break time reversal by some meV between the mesh points of a
+        Hamiltonian that has it.
     other_order_mev
-        The same for the other spin order; None when spinless.
+        Like violation_mev for the other spin order; None when spinless.
     kramers_splitting_mev
         Largest splitting of a Kramers pair at the TRIM; None when spinless.
     spin_mixing_mev
@@ -58,6 +65,8 @@ class TimeReversalTest:
     present: bool
     spin_order: str
     violation_mev: float
+    violation_r_mev: float
+    violation_unshifted_mev: float | None
     other_order_mev: float | None
     kramers_splitting_mev: float | None
     spin_mixing_mev: float | None
@@ -115,3 +124,26 @@ class InversionTest:
     violation_r_mev: float | None
     violation_trim_mev: float | None
     n_k: int
+
+
+@dataclass(frozen=True, slots=True)
+class ShiftTest:
+    """Wigner-Seitz shifts put to the test where some centres look wrong.
+
+    Attributes
+    ----------
+    adopted
+        "given" or "mended": the shifts that are used.
+    suspects
+        Wannier functions whose centre is suspicious (0-based).
+    given_mev, mended_mev
+        Inversion residual with either; None where there is no inversion to test them on.
+    reason
+        One sentence on the choice.
+    """
+
+    adopted: str
+    suspects: tuple[int, ...]
+    given_mev: float | None
+    mended_mev: float | None
+    reason: str

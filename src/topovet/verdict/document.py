@@ -10,6 +10,7 @@ from dataclasses import dataclass, field, fields, is_dataclass
 from typing import Any
 
 from topovet.verdict.flags import Flag
+from topovet.verdict.notebook import notebook_html
 
 SCHEMA = "topovet.verdict/1"
 
@@ -174,6 +175,9 @@ class Verdict:
         plain["class"] = plain.pop("class_")
         order = ["schema", *(f.name.rstrip("_") for f in fields(self) if f.name != "schema")]
         return {key: plain[key] for key in order}
+
+    def _repr_html_(self) -> str:
+        return notebook_html(self)
 
 
 def _plain(value: Any) -> Any:

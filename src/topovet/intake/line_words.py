@@ -1,0 +1,212 @@
+"""Lines of integers and numbers in any layout, cut into checked words.
+
+A line is cut at blanks and each word is held against a strict grammar. The *shape* of the line
+(digits replaced by 9) remembers the outcome, so that the next line of that shape costs almost
+nothing, and tells `topovet.intake.line_tally` what the lines of the file look like.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from dataclasses import replace
+
+from topovet.errors import InputError, quoted
+from topovet.intake.line_tally import LineForm, LineTally
+
+MEND = "mend that line, or write the file again"
+
+_TO_SHAPE = bytes.maketrans(b"0123456789", b"9999999999")
+_WORD = re.compile(rb"[^ \t]+")
+_INTEGER = re.compile(rb"[-+]?9{1,9}")
+# At least one digit before the point: a lost leading digit must not pass for ".5". Fortran drops
+# the letter E where the exponent takes three digits.
+_NUMBER = re.compile(rb"[-+]?9{1,18}(?:\.(9{0,40}))?([EeDd][-+]?9{1,3}|[-+]999)?")
+_NOT_FINITE = re.compile(rb"[-+]?(?:nan|inf|infinity)(?:\(.*\))?", re.IGNORECASE)
+_BARE_EXPONENT = re.compile(rb"(?<=[\d.])(?=[-+]\d\d\d$)")
+_PRINTABLE = re.compile(rb"[\t -~]*")
+_MAX_SHAPES = 4096
+
+
+class LineParser:
+    """Cuts the lines of one file into words and keeps the tally of their forms.
+
+    Attributes
+    ----------
+    tally
+        Complete only after `settle`.
+    """
+
+    def __init__(
+        self,
+        file: str,
+        columns: tuple[str, ...],
+        n_integers: int,
+        *,
+        usual_stops: tuple[int, ...] = (),
+    ) -> None:
+        """Prepare for lines of `n_integers` integers followed by numbers.
+
+        Parameters
+        ----------
+        file
+            Name used in messages.
+        columns
+            What each column is called in messages.
+        n_integers
+            How many of them hold integers; the others hold numbers.
+        usual_stops
+            Where the columns of a line with touching words end if it is as long as that.
+        """
+        self.tally = LineTally(file)
+        self._file = file
+        self._columns = columns
+        self._n_integers = n_integers
+        self._forms: dict[bytes, LineForm] = {}
+        self._layouts = {usual_stops[-1]: usual_stops} if usual_stops else {}
+
+    def words(self, line: bytes, line_no: int) -> list[bytes]:
+        """The words of a line: integers, then numbers for `to_float`.
+
+        Raises
+        ------
+        InputError
+            Anything but the right number of integers and finite numbers.
+        """
+        form = self._forms.get(line.translate(_TO_SHAPE))
+        if form is None:
+            form = self._new_form(line, line_no)
+        form.count += 1
+        words = _cut(line, form.stops) if form.touching else line.split()
+        for i, word in enumerate(words[self._n_integers :]):
+            if word[-1] == 48:
+                form.round_ends[i] = True
+        return words
+
+    def credit(self, line: bytes, line_no: int, count: int) -> None:
+        """Count lines in the same fixed columns and decimals as this one without reading them."""
+        form = self._new_form(line, line_no)
+        self.tally.add([replace(form, count=count, round_ends=[True] * len(form.decimals))])
+
+    def settle(self) -> None:
+        """Bring the tally up to date."""
+        self.tally.add(self._forms.values())
+        self._forms.clear()
+
+    def to_float(self, word: bytes, line_no: int) -> float:
+        """A number that passed `words`, with Fortran's ways of writing exponents."""
+        try:
+            value = float(word)
+        except ValueError:
+            text = word.upper().replace(b"D", b"E")
+            value = float(text if b"E" in text else _BARE_EXPONENT.sub(b"E", text))
+        if math.isfinite(value):
+            return value
+        raise InputError(
+            self._file,
+            line=line_no,
+            found=f"the number {quoted(word)}",
+            expected="a number that double precision can hold",
+            todo=MEND,
+        )
+
+    def _new_form(self, line: bytes, line_no: int) -> LineForm:
+        """Check a line of a shape not met before, and remember the shape."""
+        if len(self._forms) >= _MAX_SHAPES:
+            self.settle()
+        shape = line.translate(_TO_SHAPE)
+        n_columns = len(self._columns)
+        spans = [match.span() for match in _WORD.finditer(line)]
+        touching = len(spans) != n_columns
+        if touching:
+            stops = self._layouts.get(len(line.rstrip()), ())
+            spans = _word_spans(line, stops)
+        words = [shape[start:stop] for start, stop in spans]
+        decimals = self._decimals(words)
+        if decimals is None:
+            raise self._refusal(line, line_no)
+        form = LineForm(
+            stops=tuple(stop for _, stop in spans),
+            rooms=_rooms(line, spans),
+            decimals=decimals,
+            line_no=line_no,
+            line=line[:200],
+            touching=touching,
+            round_ends=[False] * len(decimals),
+        )
+        self._forms[shape] = form
+        if not touching and max(form.rooms) > 1:
+            self._layouts.setdefault(form.stops[-1], form.stops)
+        return form
+
+    def _decimals(self, shapes: list[bytes]) -> tuple[int | None, ...] | None:
+        """Decimals of each number (None in exponent form), or None for anything unlawful."""
+        if len(shapes) != len(self._columns):
+            return None
+        if not all(_INTEGER.fullmatch(shape) for shape in shapes[: self._n_integers]):
+            return None
+        matches = [_NUMBER.fullmatch(shape) for shape in shapes[self._n_integers :]]
+        return (
+            tuple(
+                None if match[2] else len(match[1] or b"") for match in matches if match is not None
+            )
+            if all(matches)
+            else None
+        )
+
+    def _refusal(self, line: bytes, line_no: int) -> InputError:
+        """What is wrong with a line, the most telling reason first."""
+        found, expected, todo = quoted(line), f"{len(self._columns)} columns", MEND
+        words = _WORD.findall(line)
+        wrong = self._first_wrong_word(words)
+        if not _PRINTABLE.fullmatch(line):
+            found = f"bytes that are no text in {found}"
+        elif b"**" in line:
+            found = f"asterisks, a number too wide for its column, in {found}"
+            expected = "numbers"
+            todo = "see what went wrong in the run that wrote it, or give the _tb.dat file instead"
+        elif any(_NOT_FINITE.fullmatch(word) for word in words):
+            found = f"a number that is not finite in {found}"
+            expected = "finite numbers"
+            todo = "see what went wrong in the run that wrote it"
+        elif wrong is not None:
+            name, word = wrong
+            found = f"{quoted(word)} for {name}"
+            expected = "an integer" if name in self._columns[: self._n_integers] else "a number"
+        else:
+            found = f"{len(words)} columns in {found}"
+        if expected.endswith("columns"):
+            expected += f" ({' '.join(self._columns)})"
+        return InputError(self._file, line=line_no, found=found, expected=expected, todo=todo)
+
+    def _first_wrong_word(self, words: list[bytes]) -> tuple[str, bytes] | None:
+        if len(words) != len(self._columns):
+            return None
+        grammars = [_INTEGER] * self._n_integers
+        grammars += [_NUMBER] * (len(words) - self._n_integers)
+        for name, word, grammar in zip(self._columns, words, grammars, strict=True):
+            if not grammar.fullmatch(word.translate(_TO_SHAPE)):
+                return name, word
+        return None
+
+
+def _cut(line: bytes, stops: tuple[int, ...]) -> list[bytes]:
+    return [line[start:stop] for start, stop in _word_spans(line, stops)]
+
+
+def _word_spans(line: bytes, stops: tuple[int, ...]) -> list[tuple[int, int]]:
+    """Spans of the words that end at these stops, blanks in front left out."""
+    spans = []
+    for start, stop in zip((0, *stops[:-1]), stops, strict=False):
+        text = line[start:stop]
+        spans.append((stop - len(text.lstrip()), stop))
+    return spans
+
+
+def _rooms(line: bytes, spans: list[tuple[int, int]]) -> tuple[int, ...]:
+    rooms, last = [], 0
+    for start, stop in spans:
+        signed = line[start : start + 1] in (b"-", b"+")
+        rooms.append(start - last - (not signed))
+        last = stop
+    return tuple(rooms)

@@ -1,0 +1,140 @@
+"""The intake audit alone: what was read, what is wrong, and the symmetry residuals."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from dataclasses import asdict, dataclass
+from pathlib import Path
+from typing import Any
+
+from topovet.pipeline.dossier import start_run
+from topovet.pipeline.inputs import CaseInput
+from topovet.pipeline.runner import Observer
+from topovet.verdict.findings import Findings
+from topovet.verdict.flags import Flag
+from topovet.verdict.flags_intake import intake_flags
+from topovet.verdict.flags_physics import symmetry_flags
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Inspection:
+    """What an audit finds.
+
+    Attributes
+    ----------
+    inputs
+        Files that were read.
+    findings
+        Results of the intake and symmetry steps.
+    flags
+        Those that need no electron count.
+    """
+
+    inputs: tuple[CaseInput, ...]
+    findings: Findings
+    flags: tuple[Flag, ...]
+
+    def as_dict(self) -> dict[str, Any]:
+        """The audit as plain data; energies in meV, lengths in angstrom, as the names say."""
+        findings = self.findings
+        group = findings.space_group
+        return {
+            "name": findings.declared.name,
+            "formula": findings.declared.crystal.formula,
+            "dimension": findings.declared.crystal.dimension,
+            "spinful": findings.spinful,
+            "space_group": None if group is None else [group.number, group.symbol],
+            "inputs": [asdict(entry) for entry in self.inputs],
+            "audit": asdict(findings.audit),
+            "time_reversal": asdict(findings.time_reversal),
+            "inversion": asdict(findings.inversion),
+            "flags": [asdict(flag) for flag in self.flags],
+        }
+
+
+def inspect_case(case: str | Path, *, observe: Observer = lambda event, text: None) -> Inspection:
+    """Audit a case; nothing is written.
+
+    Raises
+    ------
+    TopovetError
+        The case cannot be read.
+    """
+    run = start_run(case, observe=observe)
+    declared = run.result("declarations")
+    findings = Findings(
+        declared=declared,
+        spinful=bool(declared.spinful),
+        audit=run.result("audit"),
+        shift_test=run.result("shift-test"),
+        space_group=run.result("space-group"),
+        time_reversal=run.result("time-reversal"),
+        inversion=run.result("inversion"),
+        electrons=None,
+        gap=None,
+        parity=None,
+        interpolation=None,
+        missing={},
+    )
+    flags = (*intake_flags(findings), *symmetry_flags(findings))
+    return Inspection(run.inputs, findings, flags)
+
+
+def inspection_lines(inspection: Inspection) -> Iterator[str]:
+    """The audit for a terminal."""
+    findings = inspection.findings
+    declared, audit, group = findings.declared, findings.audit, findings.space_group
+    yield f"{declared.name}  {declared.crystal.formula}, {declared.crystal.dimension}D"
+    yield from _rows("files", ((i.file, f"{i.bytes} bytes") for i in inspection.inputs))
+    yield from _rows("Hamiltonian", _hamiltonian_rows(findings))
+    yield from _rows("symmetry", _symmetry_rows(findings))
+    note = declared.undeclared_reason
+    declared_text = f"{len(declared.orbitals)} orbitals" if declared.orbitals else f"none ({note})"
+    yield from _rows(
+        "structure",
+        (
+            ("space group", "unknown" if group is None else f"{group.symbol} ({group.number})"),
+            ("declared", declared_text),
+            ("shifts", f"{audit.shift_source}: {audit.shift_note}"),
+        ),
+    )
+    yield "flags"
+    for flag in inspection.flags:
+        yield f"  {flag.severity}: {flag.code}: {flag.summary}"
+    if not inspection.flags:
+        yield "  none"
+
+
+def _hamiltonian_rows(findings: Findings) -> Iterator[tuple[str, str]]:
+    audit = findings.audit
+    kind = "spinor" if findings.spinful else "spinless"
+    yield "size", f"{audit.n_wann} {kind} Wannier functions, {audit.n_r} R vectors"
+    yield "read by", audit.reader
+    yield "Hermiticity", f"{audit.hermiticity_mev:.3g} meV"
+    points = "unknown mesh" if audit.mesh_points is None else f"{audit.mesh_points} mesh points"
+    yield "degeneracies", f"add up to {audit.degeneracy_sum:.6g} ({points})"
+    yield "rim of R", f"{audit.rim_mev:.3g} meV, {100 * audit.rim_ratio:.2g} % of the largest hop"
+    yield "rounding", f"{audit.rounding_mev:.3g} meV in H(k)"
+
+
+def _symmetry_rows(findings: Findings) -> Iterator[tuple[str, str]]:
+    test, inversion = findings.time_reversal, findings.inversion
+    word = "holds" if test.present else "broken"
+    yield "time reversal", f"{word}, {test.violation_mev:.3g} meV, spin order {test.spin_order}"
+    if test.kramers_splitting_mev is not None:
+        yield "Kramers pairs", f"split by {test.kramers_splitting_mev:.3g} meV at most"
+    if inversion.present:
+        centre = ", ".join(f"{c:g}" for c in inversion.centre or ())
+        yield (
+            "inversion",
+            f"about ({centre}): {inversion.violation_mev:.3g} meV, "
+            f"{inversion.violation_trim_mev:.3g} meV at the TRIM",
+        )
+    else:
+        yield "inversion", inversion.reason
+
+
+def _rows(title: str, rows: Iterable[tuple[str, str]]) -> Iterator[str]:
+    yield title
+    for name, text in rows:
+        yield f"  {name:<16}{text}"

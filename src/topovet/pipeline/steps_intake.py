@@ -1,0 +1,228 @@
+"""Task functions that read the case: Hamiltonian, declarations, shifts, audit."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+from topovet.errors import InputError, NoInversionError
+from topovet.intake.audit import audit_hamiltonian
+from topovet.intake.audit_results import HamiltonianAudit
+from topovet.intake.case_toml import read_settings
+from topovet.intake.centres import read_centres
+from topovet.intake.hr import read_hr
+from topovet.intake.records import CaseSettings, HamiltonianFile
+from topovet.intake.structure import read_structure
+from topovet.intake.tb import read_tb
+from topovet.intake.win import read_win
+from topovet.intake.wsvec import read_wsvec
+from topovet.model.assemble import LatticeHamiltonian, assemble, reorder
+from topovet.model.basis import OrbitalBasis
+from topovet.model.build_basis import build_basis
+from topovet.model.declarations import Declarations, declare
+from topovet.model.shift_choice import ShiftProposal, propose_shifts
+from topovet.pipeline.runner import Context
+from topovet.pipeline.task import NotApplicable
+from topovet.symmetry.inversion import build_inversion, measure_inversion
+from topovet.symmetry.results import ShiftTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.spacegroup import SymmetrySearchError, find_space_group
+from topovet.symmetry.time_reversal import infer_spin, interlacing_order, measure_time_reversal
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class BasedHamiltonian:
+    """Hamiltonian with its orbital basis in the same order; spin interlaced.
+
+    `basis` is None where no projections are declared, and `reason` says why.
+    """
+
+    lattice: LatticeHamiltonian
+    basis: OrbitalBasis | None
+    reason: str
+
+
+def read_hamiltonian(*, context: Context) -> HamiltonianFile:
+    """H(R) from `_hr.dat`, or from `_tb.dat` where there is no other."""
+    files = context.files
+    if files.hr is not None:
+        return read_hr(files.hr)
+    if files.tb is not None:
+        return read_tb(files.tb)
+    raise InputError(
+        files.folder,
+        found="no Hamiltonian",
+        expected="NAME_hr.dat or NAME_tb.dat",
+        todo="give the folder of a Wannier90 run with write_hr = true",
+    )
+
+
+def read_declarations(*, context: Context, hamiltonian: HamiltonianFile) -> Declarations:
+    """The small files, brought together; the spin is inferred where no .win file states it."""
+    files = context.files
+    declared = declare(
+        files,
+        hamiltonian,
+        None if files.win is None else read_win(files.win),
+        None if files.structure is None else read_structure(files.structure),
+        CaseSettings() if files.settings is None else read_settings(files.settings),
+    )
+    if declared.spinful is not None:
+        return declared
+    lattice = assemble(hamiltonian, None, declared.crystal.periodic, spinful=True)
+    spinful = infer_spin(lattice.model, lattice.bloch)
+    if spinful is None:
+        raise InputError(
+            files.folder,
+            found="no .win file, and a Hamiltonian that may be spinless or spinful",
+            expected="spinors = true or false",
+            todo=f"add {files.seedname}.win, if need be with nothing but num_wann and spinors",
+        )
+    return replace(declared, spinful=spinful)
+
+
+def find_shifts(
+    *, context: Context, hamiltonian: HamiltonianFile, declarations: Declarations
+) -> ShiftProposal:
+    """Wigner-Seitz shifts from the file, or rebuilt."""
+    files = context.files
+    centres = hamiltonian.centres_cart
+    if files.centres is not None:
+        centres = read_centres(files.centres, hamiltonian.n_wann).centres_cart
+    wsvec = None
+    if files.wsvec is not None:
+        wsvec = read_wsvec(files.wsvec, hamiltonian, mp_grid=declarations.mp_grid)
+    return propose_shifts(hamiltonian, declarations, wsvec, centres)
+
+
+def search_space_group(*, context: Context, declarations: Declarations) -> SpaceGroup:
+    """spglib's space group for the input cell."""
+    try:
+        return find_space_group(declarations.crystal)
+    except SymmetrySearchError as error:
+        raise NotApplicable(str(error)) from error
+
+
+def judge_shifts(
+    *,
+    context: Context,
+    hamiltonian: HamiltonianFile,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    space_group: SpaceGroup | None,
+) -> ShiftTest:
+    """Where centres look wrong: the shifts that break inversion less, the file's or mended ones."""
+    if shifts.mended is None:
+        return ShiftTest("given", shifts.suspects, None, None, "")
+    readings = {"given": shifts.given, "mended": shifts.mended}
+    residuals: dict[str, float | None] = {}
+    for name, reading in readings.items():
+        lattice = assemble(
+            hamiltonian, reading, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+        )
+        residuals[name] = _inversion_residual(lattice, declarations, space_group)
+    given, mended = residuals["given"], residuals["mended"]
+    if given is None or mended is None:
+        reason = (
+            "Without inversion the shifts cannot be told apart by symmetry; they were rebuilt with "
+            "every centre on its declared site."
+        )
+        return ShiftTest("mended", shifts.suspects, given, mended, reason)
+    if mended < given:
+        reason = (
+            f"With the shifts rebuilt from the sites the inversion residual falls from {given:.3g} "
+            f"to {mended:.3g} meV; that reading is used."
+        )
+        return ShiftTest("mended", shifts.suspects, given, mended, reason)
+    reason = (
+        f"The shifts as given keep inversion to {given:.3g} meV, rebuilt from the sites to "
+        f"{mended:.3g} meV; they are used as given."
+    )
+    return ShiftTest("given", shifts.suspects, given, mended, reason)
+
+
+def _inversion_residual(
+    lattice: LatticeHamiltonian, declared: Declarations, space_group: SpaceGroup | None
+) -> float | None:
+    if space_group is None or not len(space_group.centres_frac) or not declared.orbitals:
+        return None
+    crystal = declared.crystal
+    try:
+        basis = build_basis(declared.orbitals, crystal)
+        operator = build_inversion(basis, crystal, space_group.centres_frac[0])
+    except NoInversionError:
+        return None
+    test = measure_inversion(lattice.model, lattice.bloch, operator, crystal.periodic)
+    return test.violation_mev
+
+
+def audit(
+    *,
+    context: Context,
+    hamiltonian: HamiltonianFile,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    shift_test: ShiftTest,
+) -> HamiltonianAudit:
+    """Soundness of the file, before anything is mended."""
+    mended = shift_test.adopted == "mended"
+    return audit_hamiltonian(
+        hamiltonian,
+        cell=declarations.crystal.cell,
+        mp_grid=declarations.mp_grid,
+        shift_source="rebuilt from centres" if mended else shifts.source,
+        shift_note=shift_test.reason if mended else shifts.note,
+        centre_offsets=shifts.offsets_ang,
+    )
+
+
+def assemble_lattice(
+    *,
+    context: Context,
+    hamiltonian: HamiltonianFile,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    shift_test: ShiftTest,
+) -> LatticeHamiltonian:
+    """H(R) and H(k) in the file's own orbital order."""
+    chosen = shifts.mended if shift_test.adopted == "mended" else shifts.given
+    return assemble(
+        hamiltonian, chosen, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+    )
+
+
+def check_time_reversal(
+    *,
+    context: Context,
+    hamiltonian: HamiltonianFile,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    lattice: LatticeHamiltonian,
+) -> TimeReversalTest:
+    """Time reversal in both spin orders, judged on the reading without shifts."""
+    periodic = declarations.crystal.periodic
+    unshifted = None
+    if shifts.given is not None:
+        unshifted = assemble(hamiltonian, None, periodic, spinful=lattice.model.spinful).bloch
+    return measure_time_reversal(lattice.model, lattice.bloch, periodic, unshifted=unshifted)
+
+
+def attach_basis(
+    *,
+    context: Context,
+    declarations: Declarations,
+    lattice: LatticeHamiltonian,
+    time_reversal: TimeReversalTest,
+) -> BasedHamiltonian:
+    """Declared orbitals beside the Hamiltonian, which is brought to interlaced spin."""
+    if time_reversal.spin_order == "block":
+        lattice = reorder(lattice, interlacing_order(lattice.model.n_orb))
+    if not declarations.orbitals:
+        return BasedHamiltonian(lattice, None, declarations.undeclared_reason)
+    if len(declarations.orbitals) != lattice.model.n_orb:
+        return BasedHamiltonian(
+            lattice,
+            None,
+            f"{len(declarations.orbitals)} projections are declared for {lattice.model.n_orb} "
+            "Wannier functions",
+        )
+    basis = build_basis(declarations.orbitals, declarations.crystal)
+    return BasedHamiltonian(lattice, basis, "")

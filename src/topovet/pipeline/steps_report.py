@@ -1,0 +1,84 @@
+"""Task functions that conclude: the verdict, the figures, the report."""
+
+from __future__ import annotations
+
+from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.results import ParityWitness
+from topovet.model.declarations import Declarations
+from topovet.pipeline.runner import Context
+from topovet.report.material import ReportMaterial
+from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
+from topovet.verdict.document import InputEntry, Verdict
+from topovet.verdict.findings import Findings
+from topovet.verdict.judge import judge
+
+
+def conclude_case(
+    *,
+    context: Context,
+    declarations: Declarations,
+    audit: HamiltonianAudit,
+    shift_test: ShiftTest,
+    space_group: SpaceGroup | None,
+    time_reversal: TimeReversalTest,
+    inversion: InversionTest,
+    electrons: Electrons,
+    gap: GapSample | None,
+    parity: ParityWitness | None,
+    interpolation: InterpolationCheck | None,
+) -> Verdict:
+    """The verdict from the results of all steps."""
+    findings = Findings(
+        declared=declarations,
+        spinful=bool(declarations.spinful),
+        audit=audit,
+        shift_test=shift_test,
+        space_group=space_group,
+        time_reversal=time_reversal,
+        inversion=inversion,
+        electrons=electrons,
+        gap=gap,
+        parity=parity,
+        interpolation=interpolation,
+        missing={state.name: state.reason for state in context.trail if state.reason},
+    )
+    seconds = {s.name: round(s.seconds, 4) for s in context.trail if s.seconds is not None}
+    return judge(
+        findings,
+        inputs=[InputEntry(i.file, i.sha256, i.bytes) for i in context.inputs],
+        settings=context.settings,
+        task_seconds=seconds,
+    )
+
+
+def gather(
+    *,
+    context: Context,
+    verdict: Verdict,
+    declarations: Declarations,
+    audit: HamiltonianAudit,
+    space_group: SpaceGroup | None,
+    time_reversal: TimeReversalTest,
+    inversion: InversionTest,
+    electrons: Electrons,
+    gap: GapSample | None,
+    bands: BandPath | None,
+    parity: ParityWitness | None,
+    interpolation: InterpolationCheck | None,
+) -> ReportMaterial:
+    """All that the report shows; the graph of tasks is added by the dossier."""
+    return ReportMaterial(
+        verdict=verdict,
+        crystal=declarations.crystal,
+        space_group=space_group,
+        time_reversal=time_reversal,
+        inversion=inversion,
+        electrons=electrons,
+        gap=gap,
+        bands=bands,
+        parity=parity,
+        interpolation=interpolation,
+        audit=audit,
+        tasks=(),
+    )

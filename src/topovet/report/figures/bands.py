@@ -1,0 +1,325 @@
+"""The band structure: filled bands heavy on a tint, the gap shaded, parities at the TRIM.
+
+The marks are chosen to mean what they show: point inversion leaves a full disc as it is (even)
+and exchanges the halves of a half disc (odd).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from topovet.arrays import FloatArray
+from topovet.invariants.results import TrimParity
+from topovet.report.figures import palette
+from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
+from topovet.report.notation import ev, one_line
+from topovet.spectrum.results import BandPath, GapSample
+
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+_WIDTH_IN, _HEIGHT_IN = 8.8, 5.4
+_PLOT_WIDTH_PT, _PLOT_HEIGHT_PT = 565.0, 285.0
+_MARK_PT = 6.4
+_COINCIDE_EV = 1e-4
+_TRIM_TOLERANCE = 1e-6
+_PURE = 0.9
+_DEPTH_EV, _HEADROOM_EV = 8.0, 2.5
+
+_MARKS: dict[str, dict[str, Any]] = {
+    "even": {"marker": "o", "fillstyle": "full", "color": palette.FILLED},
+    "odd": {
+        "marker": "o",
+        "fillstyle": "left",
+        "color": palette.ODD,
+        "markerfacecoloralt": palette.WHITE,
+    },
+    "mixed": {
+        "marker": "D",
+        "fillstyle": "none",
+        "color": palette.INK,
+        "markerfacecoloralt": palette.WHITE,
+    },
+}
+
+
+@dataclass(frozen=True, slots=True)
+class EnergyZero:
+    """The energy that the figure counts from: its value in eV, and its name."""
+
+    ev: float
+    name: str
+    symbol: str
+
+
+def energy_zero(
+    bands: BandPath, n_occ: int, gap: GapSample | None, fermi_ev: float | None
+) -> EnergyZero:
+    """Valence-band maximum of an insulator; else the Fermi energy; else the top filled band."""
+    if gap is not None and gap.status == "insulator":
+        return EnergyZero(gap.vbm_ev, "the valence-band maximum (sampled)", "E(VBM)")
+    if fermi_ev is not None:
+        return EnergyZero(fermi_ev, "the Fermi energy that was given", "E(F)")
+    if 0 < n_occ <= bands.energies_ev.shape[1]:
+        top = float(bands.energies_ev[:, n_occ - 1].max())
+        return EnergyZero(top, f"the top of band {n_occ} on this path", f"E(top of band {n_occ})")
+    return EnergyZero(0.0, "the zero of the file", "E(file)")
+
+
+def bands_figure(
+    bands: BandPath,
+    *,
+    n_occ: int,
+    gap: GapSample | None = None,
+    fermi_ev: float | None = None,
+    trim: Sequence[TrimParity] = (),
+    window_ev: tuple[float, float] | None = None,
+    name: str = "bands",
+) -> str:
+    """Bands along the path as SVG text.
+
+    Parameters
+    ----------
+    bands
+        Energies (eV) along the path, distance in 1/angstrom.
+    n_occ
+        Filling: bands 0..n_occ-1 are drawn as filled.
+    gap
+        Sampled gap, for the zero of energy and the shading.
+    fermi_ev
+        Fermi energy in eV; the zero where there is no insulating gap.
+    trim
+        Parities of all levels; drawn where the path meets their k.
+    window_ev
+        Lowest and highest energy shown, eV, relative to the zero.
+    name
+        Prefix of ids; differs between figures of one page.
+    """
+    zero = energy_zero(bands, n_occ, gap, fermi_ev)
+    energies = bands.energies_ev - zero.ev
+    low, high = window_ev or wide_window(energies, n_occ)
+    with drawing(name):
+        figure = new_figure(_WIDTH_IN, _HEIGHT_IN)
+        axes = figure.add_subplot()
+        _frame(axes, bands, zero, (low, high))
+        _shade(axes, bands, energies, n_occ, gap, zero)
+        _draw_bands(axes, bands, energies, n_occ)
+        met = _draw_parities(axes, bands, trim, zero.ev, (low, high))
+        _legend(figure, axes, met, gap)
+        title = f"Band structure from {low:.1f} to {high:.1f} eV about {zero.name}"
+        return to_svg(figure, name, title=title, description=_words(bands, n_occ, zero, met))
+
+
+def wide_window(energies: FloatArray, n_occ: int) -> tuple[float, float]:
+    """Window in eV that holds the filled bands (at most 8 eV deep) and the lowest empty ones."""
+    top = energies[:, min(n_occ, energies.shape[1]) - 1].max() if n_occ > 0 else energies.min()
+    low = max(energies.min(), top - _DEPTH_EV)
+    first_empty = energies[:, n_occ].min() if n_occ < energies.shape[1] else top
+    high = max(min(energies.max(), max(top, first_empty) + _HEADROOM_EV), top + 0.2)
+    margin = 0.03 * (high - low)
+    return float(low - margin), float(high + margin)
+
+
+def near_gap_window(gap: GapSample) -> tuple[float, float]:
+    """Window in eV that shows the gap at a third of the height or less, about the VBM."""
+    edge = gap.cbm_ev - gap.vbm_ev
+    reach = max(0.6, 1.2 * abs(edge))
+    return min(0.0, edge) - reach, max(0.0, edge) + reach
+
+
+def _frame(
+    axes: Axes, bands: BandPath, zero: EnergyZero, window: tuple[float, float]
+) -> None:
+    length = float(bands.distance[-1]) or 1.0
+    positions, labels = _path_labels(bands)
+    axes.set_xlim(-0.012 * length, 1.012 * length)
+    axes.set_ylim(*window)
+    axes.set_xticks(positions, labels)
+    axes.tick_params(axis="x", length=0, pad=6, labelsize=10.5)
+    for x in positions:
+        axes.axvline(x, color=palette.RULE, linewidth=0.8, zorder=0.5)
+    axes.axhline(0.0, color=palette.MUTED, linewidth=0.7, linestyle=(0, (5, 3)), zorder=0.6)
+    axes.set_ylabel(f"E − {zero.symbol}  (eV)")
+    bare(axes, keep=("left",))
+    scale = axes.secondary_xaxis("top")
+    scale.set_xlabel("distance along the path  (1/Å)", fontsize=8.5, color=palette.MUTED)
+    scale.tick_params(labelsize=8, length=3, labelcolor=palette.MUTED)
+    scale.spines["top"].set_color(palette.RULE)
+
+
+def _path_labels(bands: BandPath) -> tuple[list[float], list[str]]:
+    """Distance and name of each special point; both names where the path jumps."""
+    merged: dict[float, list[str]] = {}
+    for index, label in zip(bands.label_index, bands.labels, strict=True):
+        names = merged.setdefault(round(float(bands.distance[index]), 9), [])
+        shown = point_name(label)
+        if shown not in names:
+            names.append(shown)
+    return list(merged), ["|".join(names) for names in merged.values()]
+
+
+def point_name(label: str) -> str:
+    """Typographic name of a special point: G is Γ, figures become subscripts."""
+    if label in ("G", "Gamma", "GAMMA"):
+        return "Γ"
+    return one_line(label).translate(str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉"))
+
+
+def _pieces(distance: FloatArray) -> Iterator[slice]:
+    """Stretches of the path between jumps, where two points share one distance."""
+    cuts = [0, *(np.flatnonzero(np.diff(distance) <= 0) + 1).tolist(), len(distance)]
+    for start, stop in zip(cuts, cuts[1:], strict=False):
+        if stop - start > 1:
+            yield slice(start, stop)
+
+
+def _shade(
+    axes: Axes,
+    bands: BandPath,
+    energies: FloatArray,
+    n_occ: int,
+    gap: GapSample | None,
+    zero: EnergyZero,
+) -> None:
+    if not 0 < n_occ < energies.shape[1]:
+        return
+    floor = axes.get_ylim()[0]
+    insulating = gap is not None and gap.status == "insulator"
+    if gap is not None and insulating:
+        edges = (gap.vbm_ev - zero.ev, gap.cbm_ev - zero.ev)
+        axes.axhspan(*edges, facecolor=palette.GAP_TINT, edgecolor="none", zorder=0.2)
+    for piece in _pieces(bands.distance):
+        x, top, next_up = bands.distance[piece], energies[piece, n_occ - 1], energies[piece, n_occ]
+        below = np.maximum(top, floor)
+        axes.fill_between(x, floor, below, color=palette.FILLED_TINT, linewidth=0, zorder=0.3)
+        if not insulating:
+            axes.fill_between(x, top, next_up, color=palette.GAP_TINT, linewidth=0, zorder=0.25)
+
+
+def _draw_bands(axes: Axes, bands: BandPath, energies: FloatArray, n_occ: int) -> None:
+    low, high = axes.get_ylim()
+    for band in distinct_bands(energies, n_occ):
+        if energies[:, band].min() > high or energies[:, band].max() < low:
+            continue
+        filled = band < n_occ
+        for piece in _pieces(bands.distance):
+            axes.plot(
+                bands.distance[piece],
+                np.clip(energies[piece, band], low - 1.0, high + 1.0),
+                color=palette.FILLED if filled else palette.EMPTY,
+                linewidth=1.7 if filled else 0.8,
+                zorder=2.0 if filled else 1.8,
+            )
+
+
+def distinct_bands(energies: FloatArray, n_occ: int) -> list[int]:
+    """Bands to draw: one of each set that coincides along the whole path (Kramers pairs).
+
+    A filled and an empty band are both kept even where they coincide.
+    """
+    distance = np.abs(np.diff(energies, axis=1)).max(axis=0)
+    return [
+        band
+        for band in range(energies.shape[1])
+        if band in (0, n_occ) or distance[band - 1] > _COINCIDE_EV
+    ]
+
+
+def _draw_parities(
+    axes: Axes,
+    bands: BandPath,
+    trim: Sequence[TrimParity],
+    zero_ev: float,
+    window: tuple[float, float],
+) -> set[str]:
+    """Marks at every TRIM on the path; which kinds were drawn."""
+    ev_per_mark = _MARK_PT * (window[1] - window[0]) / _PLOT_HEIGHT_PT
+    k_per_mark = 1.15 * _MARK_PT * float(bands.distance[-1]) / _PLOT_WIDTH_PT
+    drawn: set[str] = set()
+    for x, parity in _trim_on_path(bands, trim):
+        levels = np.asarray(parity.level_energies_ev) - zero_ev
+        shown = (levels > window[0]) & (levels < window[1])
+        kinds = [parity_kind(p) for p, s in zip(parity.level_parities, shown, strict=True) if s]
+        drawn.update(kinds)
+        places = spread(levels[shown], ev_per_mark)
+        for energy, place, kind in zip(levels[shown], places, kinds, strict=True):
+            axes.plot(
+                [x + place * k_per_mark],
+                [energy],
+                markersize=_MARK_PT,
+                markeredgewidth=1.0,
+                clip_on=False,
+                zorder=4,
+                **_MARKS[kind],
+            )
+    return drawn
+
+
+def parity_kind(parity: float) -> str:
+    """ "even", "odd", or "mixed" where the mean parity of the level is far from both."""
+    if abs(parity) < _PURE:
+        return "mixed"
+    return "even" if parity > 0 else "odd"
+
+
+def spread(energies: FloatArray, least: float) -> FloatArray:
+    """Sideways places of marks, in mark widths: runs closer than `least` sit side by side.
+
+    Parameters
+    ----------
+    energies
+        (n,) ascending.
+    least
+        Distance below which two marks would overlap.
+    """
+    places = np.zeros(len(energies))
+    starts = [0, *(np.flatnonzero(np.diff(energies) >= least) + 1).tolist(), len(energies)]
+    for start, stop in zip(starts, starts[1:], strict=False):
+        places[start:stop] = np.arange(stop - start) - (stop - start - 1) / 2
+    return places
+
+
+def _trim_on_path(
+    bands: BandPath, trim: Sequence[TrimParity]
+) -> Iterator[tuple[float, TrimParity]]:
+    """Distance of every path point that equals a TRIM modulo a reciprocal lattice vector."""
+    for parity in trim:
+        away = bands.k_frac - np.asarray(parity.k)
+        hits = np.abs(away - np.round(away)).max(axis=1) < _TRIM_TOLERANCE
+        for x in sorted({round(float(d), 9) for d in bands.distance[hits]}):
+            yield x, parity
+
+
+def _legend(figure: Figure, axes: Axes, met: set[str], gap: GapSample | None) -> None:
+    from matplotlib.lines import Line2D
+    from matplotlib.patches import Patch
+
+    entries: list[tuple[Any, str]] = [
+        (Line2D([], [], color=palette.FILLED, linewidth=1.9), "filled band"),
+        (Line2D([], [], color=palette.EMPTY, linewidth=0.9), "empty band"),
+    ]
+    insulating = gap is not None and gap.status == "insulator"
+    label = f"gap, {ev(gap.indirect_ev)}" if gap is not None and insulating else "direct gap"
+    entries.append((Patch(facecolor=palette.GAP_TINT, edgecolor=palette.RULE), label))
+    for kind in ("even", "odd", "mixed"):
+        if kind in met:
+            mark = Line2D([], [], linestyle="none", markersize=7, **_MARKS[kind])
+            entries.append((mark, f"{kind} parity"))
+    handles, labels = zip(*entries, strict=True)
+    figure.legend(
+        handles, labels, loc="outside lower center", ncols=len(entries), frameon=False, fontsize=9
+    )
+
+
+def _words(bands: BandPath, n_occ: int, zero: EnergyZero, met: set[str]) -> str:
+    names = ", ".join(_path_labels(bands)[1])
+    marks = f" Parity marks at the TRIM: {', '.join(sorted(met))}." if met else ""
+    return (
+        f"Bands along {names}; energies in eV from {zero.name}, {ev(zero.ev)} in the file. "
+        f"The lowest {n_occ} bands are filled and drawn heavy.{marks}"
+    )

@@ -1,0 +1,93 @@
+"""All that the report shows, gathered in one place: results only, no way to compute more."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.results import ParityWitness
+from topovet.model.crystal import Crystal
+from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
+from topovet.verdict.document import Verdict
+
+TASK_STATES = ("done", "cached", "skipped", "failed", "not-applicable")
+
+
+@dataclass(frozen=True, slots=True)
+class TaskEntry:
+    """One task of the run, as it went.
+
+    Attributes
+    ----------
+    name
+        Its name, unique in the run.
+    needs
+        Names of the tasks whose results it takes.
+    state
+        One of `TASK_STATES`.
+    reason
+        Why it was not run or failed; empty otherwise.
+    seconds
+        Wall time, s; of the original run where the result came from the cache; None if never run.
+    about
+        What it does, in one clause.
+    """
+
+    name: str
+    needs: tuple[str, ...]
+    state: str
+    reason: str
+    seconds: float | None
+    about: str
+
+    def __post_init__(self) -> None:
+        if self.state not in TASK_STATES:
+            raise ValueError(f"unknown task state {self.state!r}")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ReportMaterial:
+    """What one dossier is written from.
+
+    Attributes
+    ----------
+    verdict
+        The content of `verdict.json`.
+    crystal
+        Cell (angstrom) and atoms of the Hamiltonian's own cell.
+    space_group
+        None where no structure could be analysed.
+    time_reversal, inversion
+        Symmetry tests with their residuals in meV.
+    electrons
+        The filling and where it comes from.
+    gap
+        Sampled gaps in eV; None where they were not computed.
+    bands
+        Bands along the special-point path; None where they were not computed.
+    parity
+        Parities at the TRIM with all levels; None where the witness did not run at all.
+    interpolation
+        Differences to the energies that came with the case, meV; None without such files.
+    audit
+        Soundness of the file.
+    tasks
+        The task graph as it was run.
+    log_note
+        One sentence on where the log is or what it says; may be empty.
+    """
+
+    verdict: Verdict
+    crystal: Crystal
+    space_group: SpaceGroup | None
+    time_reversal: TimeReversalTest
+    inversion: InversionTest
+    electrons: Electrons
+    gap: GapSample | None
+    bands: BandPath | None
+    parity: ParityWitness | None
+    interpolation: InterpolationCheck | None
+    audit: HamiltonianAudit
+    tasks: tuple[TaskEntry, ...]
+    log_note: str = ""

@@ -1,0 +1,126 @@
+"""The only gateway to spglib: operations for the input cell, copied and verified."""
+
+from __future__ import annotations
+
+import itertools
+import warnings
+from typing import Any
+
+import numpy as np
+import spglib
+
+from topovet.arrays import FloatArray, IntArray
+from topovet.errors import TopovetError
+from topovet.model.crystal import Crystal
+from topovet.symmetry.results import SpaceGroup
+
+SYMPREC_ANG = 1e-2
+"""Distance tolerance in angstrom. Generous on purpose: structures come with few digits, and every
+operation is afterwards tested on the Hamiltonian, which is the judge."""
+
+
+class SymmetrySearchError(TopovetError):
+    """spglib found no space group, or one that does not map the atoms onto themselves."""
+
+
+def find_space_group(crystal: Crystal, *, symprec: float = SYMPREC_ANG) -> SpaceGroup:
+    """Space group of a crystal, for its own cell.
+
+    Parameters
+    ----------
+    crystal
+        At least one atom.
+    symprec
+        Distance tolerance, angstrom.
+
+    Raises
+    ------
+    SymmetrySearchError
+        The structure has no atoms, two atoms coincide, or an operation fails verification.
+    """
+    if not crystal.symbols:
+        raise SymmetrySearchError(
+            "no space group: the structure has no atoms; give atoms_frac in the .win file or a "
+            "structure file."
+        )
+    kinds = {symbol: i for i, symbol in enumerate(dict.fromkeys(crystal.symbols))}
+    numbers = [kinds[symbol] + 1 for symbol in crystal.symbols]
+    cell = (crystal.cell, crystal.positions_frac, numbers)
+    dataset = _spglib_dataset(cell, symprec)
+    if dataset is None:
+        raise SymmetrySearchError(
+            f"no space group: spglib found none within {symprec} angstrom; check that no two atoms "
+            "coincide and that cell and positions belong together."
+        )
+    rotations = np.array(dataset.rotations, dtype=np.int64)
+    translations = np.array(dataset.translations, dtype=np.float64)
+    _verify(crystal, np.array(numbers), rotations, translations, symprec)
+    return SpaceGroup(
+        number=int(dataset.number),
+        symbol=str(dataset.international),
+        rotations=rotations,
+        translations=translations,
+        symprec_ang=symprec,
+        centres_frac=inversion_centres(rotations, translations),
+        wyckoff=tuple(str(w) for w in dataset.wyckoffs),
+    )
+
+
+def _spglib_dataset(cell: Any, symprec: float) -> Any:
+    """spglib reports failure by None or by an exception, depending on its version."""
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", DeprecationWarning)
+        try:
+            return spglib.get_symmetry_dataset(cell, symprec=symprec)
+        except Exception as error:
+            if type(error).__module__.startswith("spglib"):
+                return None
+            raise
+
+
+def inversion_centres(rotations: IntArray, translations: FloatArray) -> FloatArray:
+    """(n, 3) inversion centres in the home cell, the one nearest to the origin first.
+
+    An operation {-1|w} fixes w/2, and, with lattice translations, all points w/2 + t/2.
+    """
+    is_inversion = np.all(rotations == -np.eye(3, dtype=np.int64), axis=(1, 2))
+    halves = np.array(list(itertools.product((0.0, 0.5), repeat=3)))
+    centres = (translations[is_inversion][:, None, :] / 2 + halves).reshape(-1, 3) % 1.0
+    centres = np.where(np.abs(centres - 1.0) < 1e-6, 0.0, centres)
+    centres = np.unique(np.round(centres, 9), axis=0)
+    # nearest image of the origin decides; ties go to the lexicographically smaller one
+    distance = np.linalg.norm(centres - np.round(centres), axis=1)
+    return np.asarray(centres[np.argsort(np.round(distance, 6), kind="stable")])
+
+
+def nearest_centre_distance(
+    point_frac: FloatArray, centres_frac: FloatArray, cell: FloatArray
+) -> float:
+    """Distance in angstrom from a point to the nearest inversion centre, images included."""
+    difference = point_frac - centres_frac
+    return float(np.linalg.norm((difference - np.round(difference)) @ cell, axis=1).min())
+
+
+def _verify(
+    crystal: Crystal,
+    numbers: IntArray,
+    rotations: IntArray,
+    translations: FloatArray,
+    symprec: float,
+) -> None:
+    """Every operation keeps lengths and maps each atom onto one of its kind."""
+    metric = crystal.cell @ crystal.cell.T
+    scale = np.abs(metric).max()
+    for rotation, translation in zip(rotations, translations, strict=True):
+        # x' = W x on column vectors of fractional coordinates, so lengths need W^T G W = G
+        if np.abs(rotation.T @ metric @ rotation - metric).max() > 2 * symprec * np.sqrt(scale):
+            raise SymmetrySearchError("a symmetry operation from spglib does not keep lengths.")
+        images = crystal.positions_frac @ rotation.T + translation
+        difference = images[:, None, :] - crystal.positions_frac[None, :, :]
+        difference -= np.round(difference)
+        distance = np.linalg.norm(difference @ crystal.cell, axis=2)
+        distance[numbers[:, None] != numbers[None, :]] = np.inf
+        if distance.min(axis=1).max() > 3 * symprec:
+            raise SymmetrySearchError(
+                "a symmetry operation from spglib does not map the atoms onto atoms of their kind."
+            )

@@ -1,0 +1,36 @@
+"""Known errors of the input in meV, set against half of the direct gap.
+
+By Weyl's inequality an error V(k) with |V(k)| < gap/2 everywhere, which keeps the protecting
+symmetry, cannot change an index. A Hamiltonian that breaks a symmetry by |S H S^-1 - H| lies half
+of that away from its own symmetric average, so half of a violation is what enters here.
+"""
+
+from __future__ import annotations
+
+from topovet.verdict.findings import Findings
+
+
+def error_budget(findings: Findings) -> dict[str, float | None]:
+    """Each known error in meV; None where it was not measured."""
+    audit, inversion = findings.audit, findings.inversion
+    interpolation = findings.interpolation
+    return {
+        "rounding": audit.rounding_mev,
+        "hermiticity": 0.5 * audit.hermiticity_mev,
+        "time_reversal": (
+            0.5 * findings.time_reversal.violation_mev if findings.time_reversal.present else None
+        ),
+        "symmetry": None if inversion.violation_mev is None else 0.5 * inversion.violation_mev,
+        "interpolation": None if interpolation is None else interpolation.mesh_occupied_mev,
+    }
+
+
+def total_error(budget: dict[str, float | None]) -> float:
+    """Sum of the known errors, meV: the bound for errors that may all point one way."""
+    return sum(value for value in budget.values() if value is not None)
+
+
+def robustness_radius(findings: Findings) -> float | None:
+    """Half of the attained direct gap, meV; not proved while the gap is only sampled."""
+    gap = findings.direct_gap_mev
+    return None if gap is None else 0.5 * gap

@@ -1,0 +1,46 @@
+"""Everything the verdict is drawn from, in one place."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.results import ParityWitness
+from topovet.model.declarations import Declarations
+from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Findings:
+    """Results of all steps; None where a step has none, with the reason in `missing`.
+
+    An intake audit alone has neither electrons nor anything that needs them.
+
+    Attributes
+    ----------
+    missing
+        Why a step has no result, by task name.
+    """
+
+    declared: Declarations
+    spinful: bool
+    audit: HamiltonianAudit
+    shift_test: ShiftTest | None
+    space_group: SpaceGroup | None
+    time_reversal: TimeReversalTest
+    inversion: InversionTest
+    electrons: Electrons | None
+    gap: GapSample | None
+    parity: ParityWitness | None
+    interpolation: InterpolationCheck | None
+    missing: dict[str, str]
+
+    @property
+    def kramers(self) -> bool:
+        """Time reversal squares to -1: bands come in Kramers pairs at the TRIM."""
+        return self.spinful and self.time_reversal.present
+
+    @property
+    def direct_gap_mev(self) -> float | None:
+        return None if self.gap is None else 1000.0 * self.gap.direct_ev

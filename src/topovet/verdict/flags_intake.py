@@ -1,0 +1,158 @@
+"""Flags from the files themselves: is the Hamiltonian whole, and is it read as it was meant?"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from topovet.verdict import criteria
+from topovet.verdict.findings import Findings
+from topovet.verdict.flags import Flag
+
+
+def intake_flags(findings: Findings) -> Iterator[Flag]:
+    """All flags of this kind that are raised."""
+    yield from _hermiticity(findings)
+    yield from _duplicates(findings)
+    yield from _missing_partners(findings)
+    yield from _range(findings)
+    yield from _centres(findings)
+    yield from _structure(findings)
+
+
+def _hermiticity(findings: Findings) -> Iterator[Flag]:
+    violation = findings.audit.hermiticity_mev
+    if violation <= criteria.HERMITICITY_MEV:
+        return
+    gap = findings.direct_gap_mev
+    fatal = gap is not None and violation >= gap
+    yield Flag(
+        "not-hermitian",
+        "error" if fatal else "warning",
+        f"H(-R) differs from H(R)† by up to {violation:.3g} meV; their mean is used.",
+        {"violation_meV": violation, "direct_gap_meV": gap},
+        "Check that the file was not edited or mixed from two runs; write it again.",
+    )
+
+
+def _duplicates(findings: Findings) -> Iterator[Flag]:
+    audit = findings.audit
+    if not audit.duplicate_r:
+        return
+    cells = _cells(audit.duplicate_r)
+    if audit.duplicates_identical:
+        summary = f"R vectors are listed twice with equal blocks ({cells}); each counts once."
+    else:
+        summary = f"R vectors are listed twice with different blocks ({cells}); they were added."
+    yield Flag(
+        "duplicate-r",
+        "warning" if audit.duplicates_identical else "error",
+        summary,
+        {"r_vectors": cells, "identical": audit.duplicates_identical},
+        "Find out which block is meant, or write the file again.",
+    )
+
+
+def _missing_partners(findings: Findings) -> Iterator[Flag]:
+    audit = findings.audit
+    if not audit.n_missing_partner:
+        return
+    gap = findings.direct_gap_mev
+    large = gap is not None and audit.missing_partner_mev >= 0.5 * gap
+    yield Flag(
+        "missing-partner-r",
+        "error" if large else "warning",
+        f"{audit.n_missing_partner} R vectors are listed without -R "
+        f"({_cells(audit.missing_partner_r)}), largest element there "
+        f"{audit.missing_partner_mev:.3g} meV; the partner was supplied as H(R)†.",
+        {"count": audit.n_missing_partner, "largest_meV": audit.missing_partner_mev},
+        "The file has lost blocks; write it again from the Wannier90 run.",
+    )
+
+
+def _range(findings: Findings) -> Iterator[Flag]:
+    audit, gap = findings.audit, findings.direct_gap_mev
+    lost = (
+        audit.mesh_points is not None
+        and abs(audit.degeneracy_sum - audit.mesh_points) > 1e-6
+        and audit.shift_source != "none needed"
+    )
+    if lost:
+        yield Flag(
+            "range-truncated",
+            "error",
+            f"the degeneracies of the R vectors add up to {audit.degeneracy_sum:.3f}, not to the "
+            f"{audit.mesh_points} points of the mesh: R vectors are missing or the mesh is "
+            "another one, so that not even the energies on the mesh are right.",
+            {"degeneracy_sum": audit.degeneracy_sum, "mesh_points": audit.mesh_points},
+            "Use the _hr.dat and the .win file of the same run, with all R vectors.",
+        )
+    elif audit.rim_ratio > criteria.RIM_RATIO:
+        yield Flag(
+            "range-truncated",
+            "warning",
+            f"elements of {audit.rim_mev:.3g} meV stand on the rim of the R vectors, "
+            f"{100 * audit.rim_ratio:.1f} % of the largest hopping.",
+            {"rim_meV": audit.rim_mev, "rim_ratio": audit.rim_ratio, "direct_gap_meV": gap},
+            "Repeat the Wannier90 run on a denser mesh and compare.",
+        )
+
+
+def _centres(findings: Findings) -> Iterator[Flag]:
+    test = findings.shift_test
+    if test is None or not test.suspects:
+        return
+    names = ", ".join(str(i + 1) for i in test.suspects[:12])
+    offsets = findings.audit.centre_offsets_ang
+    furthest = max((offsets[i] for i in test.suspects), default=0.0)
+    yield Flag(
+        "centres-off",
+        "warning",
+        f"the centres of {len(test.suspects)} Wannier functions ({names}) lie up to "
+        f"{furthest:.2f} angstrom from their declared sites. {test.reason}",
+        {
+            "wannier_functions": [i + 1 for i in test.suspects],
+            "largest_offset_ang": furthest,
+            "inversion_residual_with_centres_meV": test.given_mev,
+            "inversion_residual_with_sites_meV": test.mended_mev,
+            "adopted": test.adopted,
+        },
+        "Run Wannier90 again with guiding_centres = true; bands that it interpolated with these "
+        "centres are wrong between mesh points.",
+    )
+
+
+def _structure(findings: Findings) -> Iterator[Flag]:
+    declared = findings.declared
+    if declared.structure_cell is not None:
+        ours = np.linalg.norm(declared.crystal.cell, axis=1)
+        theirs = np.linalg.norm(declared.structure_cell, axis=1)
+        yield Flag(
+            "cell-mismatch",
+            "warning",
+            f"the cell of {declared.structure_file} is not the Hamiltonian's: lengths "
+            f"{_lengths(theirs)} against {_lengths(ours)} angstrom; the Hamiltonian's is used.",
+            {"structure_ang": theirs.tolist(), "hamiltonian_ang": ours.tolist()},
+            "Give the structure in the cell of the Wannier90 run, or remove the file.",
+        )
+    offset = declared.structure_offset_ang
+    if offset is not None and offset > criteria.SAME_ATOM_ANG:
+        moved = "another composition" if np.isinf(offset) else f"atoms up to {offset:.2f} angstrom"
+        yield Flag(
+            "cell-mismatch",
+            "warning",
+            f"{declared.structure_file} has {moved} away from the atoms of {declared.win_file}; "
+            f"the atoms of {declared.win_file} are used.",
+            {"largest_offset_ang": None if np.isinf(offset) else offset},
+            "Use the structure that the Wannier90 run was made with.",
+        )
+
+
+def _cells(cells: tuple[tuple[int, int, int], ...]) -> str:
+    shown = ", ".join("(" + " ".join(map(str, cell)) + ")" for cell in cells[:3])
+    return shown + (", …" if len(cells) > 3 else "")
+
+
+def _lengths(values: np.ndarray[tuple[int, ...], np.dtype[np.float64]]) -> str:
+    return ", ".join(f"{v:.4f}" for v in values)

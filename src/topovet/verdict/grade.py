@@ -1,0 +1,51 @@
+"""The confidence grade: the same rules for every case.
+
+A   two independent witnesses agree, the gap is proved, the error budget is below half of the
+    robustness radius, and no flag touches the verdict;
+B   as A, but with one witness or with a gap that was only sampled;
+C   a verdict that stands, with a warning that touches it or an error budget above half of the
+    radius;
+D   undetermined.
+
+This version has one witness and a sampled gap, so B is the best it gives.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from topovet.verdict.budget import error_budget, robustness_radius, total_error
+from topovet.verdict.conclude import Conclusion
+from topovet.verdict.document import ConfidenceEntry
+from topovet.verdict.findings import Findings
+from topovet.verdict.flags import Flag
+
+BESIDE_THE_VERDICT = frozenset({"fermi-outside-gap", "centres-off", "spin-order-mismatch"})
+"""Warnings that do not lower the grade: they concern the sample, or were mended and re-tested."""
+
+
+def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> ConfidenceEntry:
+    """Grade and its reasons, in words."""
+    if conclusion.class_ == "undetermined":
+        return ConfidenceEntry("D", conclusion.grounds)
+    radius, total = robustness_radius(findings), total_error(error_budget(findings))
+    reasons = [
+        *conclusion.grounds,
+        "one witness (parity) speaks; Wilson loops and surface are not part of this version",
+        "the gap is sampled, not proved",
+    ]
+    warnings = [
+        flag.code
+        for flag in flags
+        if flag.severity == "warning" and flag.code not in BESIDE_THE_VERDICT
+    ]
+    too_large = radius is None or total >= 0.5 * radius
+    if radius is not None:
+        relation = "above" if too_large else "below"
+        reasons.append(
+            f"known errors of {total:.3g} meV are {relation} half of the robustness radius of "
+            f"{radius:.3g} meV"
+        )
+    if warnings:
+        reasons.append("warnings that touch the verdict: " + ", ".join(dict.fromkeys(warnings)))
+    return ConfidenceEntry("C" if warnings or too_large else "B", tuple(reasons))

@@ -1,0 +1,26 @@
+"""The first-principles cases in `fixtures/`, vetted once for all tests of a process."""
+
+from __future__ import annotations
+
+import functools
+import json
+from pathlib import Path
+from typing import Any
+
+import topovet
+from topovet.verdict.document import Verdict
+
+CASES = Path(__file__).parents[1] / "fixtures" / "cases"
+CENTROSYMMETRIC = tuple(sorted(p.parent.name for p in CASES.glob("*/dft_parity.json")))
+
+
+@functools.cache
+def vetted(case: str) -> Verdict:
+    return topovet.vet(CASES / case)
+
+
+@functools.cache
+def reference(case: str, file: str) -> dict[str, Any]:
+    """A JSON file of the first-principles side, which is no input of the package."""
+    loaded: dict[str, Any] = json.loads((CASES / case / file).read_text())
+    return loaded

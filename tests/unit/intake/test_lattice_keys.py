@@ -1,0 +1,40 @@
+"""Keys of lattice vectors: one to one, linear, ordered."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from topovet.intake.lattice_keys import (
+    LARGEST_COMPONENT,
+    first_rows_of,
+    vector_keys,
+    vectors_of_keys,
+)
+
+
+def test_keys_are_undone_up_to_the_largest_component() -> None:
+    extreme = LARGEST_COMPONENT - 1
+    vectors = np.array([[extreme, -extreme, extreme], [-extreme, extreme, -extreme], [0, -1, 1]])
+    np.testing.assert_array_equal(vectors_of_keys(vector_keys(vectors)), vectors)
+    np.testing.assert_array_equal(vectors_of_keys(vector_keys(2 * vectors)), 2 * vectors)
+
+
+def test_keys_are_linear_and_lexicographic() -> None:
+    rng = np.random.default_rng(1)
+    u, v = rng.integers(-40, 40, size=(2, 200, 3))
+    np.testing.assert_array_equal(vector_keys(u) + vector_keys(v), vector_keys(u + v))
+    by_key = u[np.argsort(vector_keys(u), kind="stable")]
+    assert by_key.tolist() == sorted(u.tolist())
+
+
+def test_components_without_a_unique_key_are_refused() -> None:
+    with pytest.raises(ValueError, match="below 2\\^20"):
+        vector_keys(np.array([[0, 2**20, 0]]))
+
+
+def test_first_rows_finds_the_first_of_duplicates_and_says_where_there_is_none() -> None:
+    r_cells = np.array([[0, 0, 1], [0, 0, 0], [0, 0, 1], [-1, 0, 0]])
+    wanted = np.array([[0, 0, 1], [5, 5, 5], [-1, 0, 0]])
+    assert first_rows_of(r_cells, wanted).tolist() == [0, -1, 3]
+    assert first_rows_of(np.empty((0, 3), dtype=np.int64), wanted).tolist() == [-1, -1, -1]
