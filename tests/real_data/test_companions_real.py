@@ -82,5 +82,4 @@ def test_a_sound_file_passes_its_audit(name: str) -> None:
     # Each element is rounded to 1e-6 eV: the norm of the difference is at most n_wann * 1e-6.
     assert found.hermiticity_mev <= 1e-3 * found.n_wann
     assert found.rounding_mev < 1.0
-    assert found.rim_ratio < 0.2
     assert found.shells_mev[0] > 100 * found.shells_mev[-1]

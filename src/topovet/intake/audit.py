@@ -6,7 +6,7 @@ import numpy as np
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.intake.lattice_keys import first_rows_of
+from topovet.intake.lattice_keys import check_lattice_vectors, first_rows_of
 from topovet.intake.records import HamiltonianFile
 from topovet.units import MEV_PER_EV
 
@@ -46,7 +46,13 @@ def audit_hamiltonian(
     Returns
     -------
     HamiltonianAudit
+
+    Raises
+    ------
+    InputError
+        A lattice vector that no Hamiltonian reaches to.
     """
+    check_lattice_vectors(hamiltonian.r_cells, hamiltonian.file)
     r_cells = np.asarray(hamiltonian.r_cells, dtype=np.int64)
     partner = first_rows_of(r_cells, -r_cells)
     missing = partner < 0

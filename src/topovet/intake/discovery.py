@@ -123,7 +123,7 @@ def _only_seedname(folder: Path, names: list[str]) -> str:
             folder,
             found=f"{_counted(names)}, none of them a Hamiltonian",
             expected="NAME_hr.dat or NAME_tb.dat (or .gz)",
-            todo="copy it here, or run Wannier90 with write_hr = .true.",
+            todo="copy it here, or set write_hr = .true. and run Wannier90 again",
         )
     raise InputError(
         folder,

@@ -77,10 +77,11 @@ def _fill(
     stream: BinaryIO, reader: LineReader, r_cells: IntArray, h_r: ComplexArray, fast: bool
 ) -> tuple[int | None, str]:
     """Fill r_cells and h_r in place; the decimals and the name of the reader that did it."""
-    parser = LineParser(reader.file, HR_COLUMNS, 5, usual_stops=WANNIER90_STOPS)
+    usual_stops = _usual_stops(reader.glimpse())
+    parser = LineParser(reader.file, HR_COLUMNS, 5, usual_stops=usual_stops)
     first_no = reader.line_no + 1
     first = reader.next_raw() or b""
-    layout = infer_layout(first, 5, 2, usual_stops=WANNIER90_STOPS) if fast else None
+    layout = infer_layout(first, 5, 2, usual_stops=usual_stops) if fast else None
     n_done, pending = 0, first
     if layout is not None:
         filler = BlockFiller(layout, r_cells, h_r)
@@ -96,3 +97,12 @@ def _fill(
     fill_tolerant(reader, parser, r_cells, h_r, n_done)
     check_nothing_follows(reader, h_r.size)
     return parser.tally.fixed_decimals(), "tolerant"
+
+
+def _usual_stops(lines: list[bytes]) -> tuple[int, ...]:
+    """Ends of the columns by the first line whose words do not touch, else Wannier90's."""
+    for line in lines:
+        layout = infer_layout(line + b"\n", 5, 2)
+        if layout is not None:
+            return layout.stops
+    return WANNIER90_STOPS

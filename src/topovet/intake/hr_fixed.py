@@ -13,14 +13,8 @@ from typing import BinaryIO
 import numpy as np
 
 from topovet.arrays import ComplexArray, IntArray
-from topovet.intake.fixed_columns import (
-    FixedLines,
-    LineLayout,
-    NotInColumnsError,
-    WordArray,
-    read_integers,
-    read_numbers,
-)
+from topovet.intake.digit_words import NotInColumnsError, WordArray
+from topovet.intake.fixed_columns import FixedLines, LineLayout, read_integers, read_numbers
 from topovet.intake.pair_columns import PairColumns
 
 
@@ -68,7 +62,7 @@ class BlockFiller:
         """Check and convert the lines in the buffer."""
         lines = self._lines
         n_blocks = max(1, lines.n_lines // self._n_wann**2)
-        lines.check_constant(lines.layout.stops[-1], lines.layout.tail)
+        lines.check_tail()
         self._pairs.check(lines, at)
         self._check_r(n_blocks, block, at)
         elements = np.empty(lines.n_lines, dtype=np.complex128)

@@ -5,12 +5,32 @@ from __future__ import annotations
 import numpy as np
 
 from topovet.arrays import IntArray
+from topovet.errors import InputError
 
 LARGEST_COMPONENT = 2**19
 """Largest |component| a file may hold; the sum of two such vectors still has a unique key."""
 
 _BASE = 2**21
 _HALF = _BASE // 2
+
+
+def check_lattice_vectors(r_cells: IntArray, file: str) -> None:
+    """Refuse lattice vectors that no Hamiltonian reaches to: without keys they cannot be handled.
+
+    Raises
+    ------
+    InputError
+        A component of 2^19 or more.
+    """
+    too_large = (np.abs(r_cells) >= LARGEST_COMPONENT).any(axis=1)
+    if too_large.any():
+        vector = " ".join(str(component) for component in r_cells[int(np.argmax(too_large))])
+        raise InputError(
+            file,
+            found=f"R = {vector}",
+            expected=f"lattice vectors with components below {LARGEST_COMPONENT}",
+            todo="copy the file again or let Wannier90 write it again",
+        )
 
 
 def vector_keys(vectors: IntArray) -> IntArray:

@@ -8,8 +8,9 @@ Two rules, both about files that are regular but for a few lines:
 - *decimals*: where the numbers of a column are written with a fixed number of decimals (some end
   in 0, which no format of varying length leaves standing), any other number is odd.
 
-Neither applies where numbers with and without exponent are mixed in a column (Fortran's G format
-and list-directed output), nor to layouts with single blanks, where no columns can be told.
+Numbers with and without exponent may be mixed in a column (Fortran's G format and list-directed
+output); then they are compared with their like only. In layouts with single blanks no columns can
+be told, and only the second rule applies.
 """
 
 from __future__ import annotations
@@ -133,10 +134,10 @@ class LineTally:
 
     def _check_columns(self, layouts: dict[tuple[int, ...], _Group]) -> None:
         usual = max(layouts, key=lambda stops: layouts[stops].count)
-        n_lines = sum(group.count for group in layouts.values())
-        n_odd = n_lines - layouts[usual].count
-        regular = n_lines >= _FEWEST_LINES and n_odd <= max(1, n_lines // _FEW)
-        if len(layouts) > _MOST_LAYOUTS or not regular or max(layouts[usual].rooms) < 2:
+        n_usual = layouts[usual].count
+        n_odd = sum(group.count for group in layouts.values()) - n_usual
+        regular = len(layouts) <= _MOST_LAYOUTS and _is_damage(n_odd, n_usual)
+        if not regular or max(layouts[usual].rooms) < 2:
             return
         odd = [
             (group.line_no, stops)
@@ -155,23 +156,32 @@ class LineTally:
 
     def _check_decimals(self, seen: dict[int | None, _Group]) -> None:
         fixed = [d for d, group in seen.items() if d is not None and d > 1 and group.round_end]
-        if None in seen or not fixed:
+        if not fixed:
             return
         usual = max(fixed, key=lambda d: seen[d].count)
+        if None in seen and (len(seen) > 2 or not _is_damage(seen[None].count, seen[usual].count)):
+            return
         odd = [
             (group.line_no, decimals)
             for decimals, group in seen.items()
             if decimals != usual and min(decimals or 0, usual) < _FULL_PRECISION
         ]
         if odd:
-            line_no, decimals = min(odd)
+            line_no, decimals = min(odd, key=lambda item: item[0])
+            shown = "an exponent" if decimals is None else f"{decimals} decimals"
             raise InputError(
                 self._file,
                 line=line_no,
-                found=f"a number with {decimals} decimals in {quoted(seen[decimals].line)}",
+                found=f"a number with {shown} in {quoted(seen[decimals].line)}",
                 expected=f"{usual} decimals as in the other lines",
                 todo=_TODO,
             )
+
+
+def _is_damage(n_odd: int, n_usual: int) -> bool:
+    """Whether so few lines unlike the others are damage rather than a free layout."""
+    n_lines = n_odd + n_usual
+    return n_lines >= _FEWEST_LINES and n_odd <= max(1, n_lines // _FEW)
 
 
 def _group(groups: dict, key: object, form: LineForm) -> _Group:  # type: ignore[type-arg]

@@ -197,6 +197,11 @@ class LineReader:
             )
         return raw
 
+    def glimpse(self) -> list[bytes]:
+        """Some of the lines to come, as many as happen to be at hand, without taking them."""
+        at_hand = self._pending.getvalue()[self._pending.tell() :] or self._stream.peek()  # type: ignore[attr-defined]
+        return at_hand.split(b"\n")[:-1]
+
 
 def _open_raw(file: str) -> io.BufferedReader:
     """The file as it is on disk; refuses what is not a readable regular file."""

@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from topovet.intake.fixed_columns import FixedLines, LineLayout, NotInColumnsError, WordArray
+from topovet.intake.digit_words import NotInColumnsError, WordArray
+from topovet.intake.fixed_columns import FixedLines, LineLayout
 
 LINES_PER_STEP = 32_000
 

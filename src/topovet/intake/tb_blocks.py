@@ -13,13 +13,9 @@ from typing import BinaryIO
 import numpy as np
 
 from topovet.arrays import FloatArray
+from topovet.intake.digit_words import NotInColumnsError
 from topovet.intake.element_lines import ElementCount, next_words, pair_index, pairs_seen
-from topovet.intake.fixed_columns import (
-    FixedLines,
-    NotInColumnsError,
-    infer_layout,
-    read_numbers,
-)
+from topovet.intake.fixed_columns import FixedLines, infer_layout, read_numbers
 from topovet.intake.line_words import LineParser
 from topovet.intake.opening import LineReader
 from topovet.intake.pair_columns import PairColumns
@@ -140,7 +136,7 @@ class BlockSection:
 
     def _store(self, lines: FixedLines, pairs: PairColumns, at: int) -> None:
         """Check and convert the lines in the buffer, which start after `at` of the block's."""
-        lines.check_constant(lines.layout.stops[-1], lines.layout.tail)
+        lines.check_tail()
         pairs.check(lines, at)
         n_wann = self._count.n_wann
         columns = slice(at // n_wann, (at + lines.n_lines) // n_wann)

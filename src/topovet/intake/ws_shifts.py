@@ -13,7 +13,7 @@ import numpy as np
 from ase.geometry import minkowski_reduce
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
-from topovet.intake.lattice_keys import vector_keys, vectors_of_keys
+from topovet.intake.lattice_keys import check_lattice_vectors, vector_keys, vectors_of_keys
 from topovet.intake.records import HamiltonianFile, WsShifts
 
 CHUNK_ROWS = 32_768
@@ -111,9 +111,12 @@ def apply_shifts(
 
     Raises
     ------
+    InputError
+        A lattice vector that no Hamiltonian reaches to.
     ValueError
         The shifts belong to another Hamiltonian.
     """
+    check_lattice_vectors(hamiltonian.r_cells, hamiltonian.file)
     weights = 1.0 / hamiltonian.degeneracies
     if shifts is None:
         return hamiltonian.r_cells.copy(), hamiltonian.h_r * weights[:, None, None]

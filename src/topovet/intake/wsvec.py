@@ -11,7 +11,12 @@ from numpy.typing import NDArray
 from topovet.arrays import BoolArray, IntArray
 from topovet.errors import InputError
 from topovet.intake.integer_lines import integer_lines
-from topovet.intake.lattice_keys import LARGEST_COMPONENT, first_rows_of, vector_keys
+from topovet.intake.lattice_keys import (
+    LARGEST_COMPONENT,
+    check_lattice_vectors,
+    first_rows_of,
+    vector_keys,
+)
 from topovet.intake.opening import open_bytes
 from topovet.intake.records import HamiltonianFile, WsShifts
 from topovet.intake.wsvec_records import AGAIN, WsRecords, ws_records
@@ -47,6 +52,7 @@ def read_wsvec(
         given twice or missing, shifts of another mesh.
     """
     file = str(path)
+    check_lattice_vectors(hamiltonian.r_cells, hamiltonian.file)
     found = _Found(file, hamiltonian, mp_grid)
     with open_bytes(path) as stream:
         if not stream.readline(1 << 16).endswith(b"\n"):

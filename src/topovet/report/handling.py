@@ -56,7 +56,10 @@ _BY_ELEMENT = {
 _IGNITING = ("Li", "Na", "K", "Rb", "Cs")
 """Alkali metals: the element itself is a starting material of most syntheses."""
 
-_RADIOACTIVE = tuple("Tc Pm Po At Rn Fr Ra Ac Pa Np Pu Am Cm Bk Cf Es Fm Md No Lr".split())
+_RADIOACTIVE = (
+    *("Tc", "Pm", "Po", "At", "Rn", "Fr", "Ra", "Ac", "Pa"),
+    *("Np", "Pu", "Am", "Cm", "Bk", "Cf", "Es", "Fm", "Md", "No", "Lr"),
+)
 """Elements without a stable or nearly stable isotope, besides Th and U."""
 
 DEFERENCE = (

@@ -11,6 +11,7 @@ import numpy as np
 from markupsafe import Markup, escape
 
 from topovet.report import notation, words
+from topovet.report.classes import class_words
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import FONTS
 from topovet.report.handling import handling_cautions
@@ -45,7 +46,7 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         m=material,
         v=material.verdict,
         figures={name: inline_svg(name, svg) for name, svg in figures.items()},
-        words=words.class_words(material.verdict),
+        words=class_words(material.verdict),
         predicate=words.predicate(material.verdict),
         grounds=words.grounds(material),
         untested=words.untested(material),
@@ -83,6 +84,7 @@ def _environment() -> jinja2.Environment:
         "prose": prose_markup,
         "evidence_name": evidence_name,
         "evidence_value": evidence_value,
+        "status_words": words.status_words,
     }
     environment.globals["advice"] = advice_sections
     return environment
@@ -90,7 +92,11 @@ def _environment() -> jinja2.Environment:
 
 def _finalize(value: Any) -> Any:
     """Last step before escaping: strings of a case lose their unprintable characters."""
-    return value if isinstance(value, Markup) or not isinstance(value, str) else notation.printable(value)
+    return (
+        value
+        if isinstance(value, Markup) or not isinstance(value, str)
+        else notation.printable(value)
+    )
 
 
 def formula_markup(formula: str) -> Markup:
@@ -136,13 +142,14 @@ def evidence_name(key: str) -> str:
 
 
 def evidence_value(value: Any) -> str:
-    """A value of evidence: numbers with four significant digits, lists with commas."""
+    """A value of evidence: numbers to four significant digits, lists with commas."""
     if value is None:
         return "not known"
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, float):
-        return notation.significant(value, 4)
+        number = notation.significant(value, 4)
+        return number.rstrip("0").rstrip(".") if "." in number and "e" not in number else number
     if isinstance(value, list | tuple):
         return ", ".join(evidence_value(v) for v in value) or "none"
     return str(value).replace("-", "−") if isinstance(value, int) else str(value)

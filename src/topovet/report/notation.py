@@ -29,7 +29,8 @@ def printable(text: str) -> str:
     reader must not be steered by them.
     """
     return "".join(
-        c if c.isprintable() or c in "\n\t" else f"\\x{ord(c):02x}" for c in text.replace("\r\n", "\n")
+        c if c.isprintable() or c in "\n\t" else f"\\x{ord(c):02x}"
+        for c in text.replace("\r\n", "\n")
     )
 
 

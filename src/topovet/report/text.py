@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterable, Sequence
 
+from topovet.report.classes import class_words
 from topovet.report.notation import ev, k_text, mev, one_line, z2_text
-from topovet.report.words import class_words, radius_note
+from topovet.report.words import radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 
 _HEADINGS = (
@@ -41,7 +42,9 @@ def verdict_lines(verdict: Verdict) -> str:
     ]
     lines = [_title(verdict)]
     lines += [f"  {label:<10} {_plain(value)}" for label, value in rows]
-    lines += [f"  {flag.severity:<10} {flag.code}: {_plain(flag.summary)}" for flag in verdict.flags]
+    lines += [
+        f"  {flag.severity:<10} {flag.code}: {_plain(flag.summary)}" for flag in verdict.flags
+    ]
     return "\n".join(lines)
 
 

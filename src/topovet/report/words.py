@@ -2,113 +2,19 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
+from topovet.report.classes import class_words
 from topovet.report.material import ReportMaterial
 from topovet.report.notation import ev, k_text, mev, one_line, significant, z2_text
 from topovet.verdict.document import Verdict
 
 
-@dataclass(frozen=True, slots=True)
-class ClassWords:
-    """A class in words: heading, noun phrase for a sentence, and what it means."""
-
-    title: str
-    noun: str
-    meaning: str
-
-
-_CLASSES = {
-    "strong-ti": ClassWords(
-        "Strong topological insulator",
-        "a strong topological insulator",
-        "As long as time reversal holds and the bulk gap stays open, every surface carries "
-        "conducting states with an odd number of Dirac cones.",
-    ),
-    "weak-ti": ClassWords(
-        "Weak topological insulator",
-        "a weak topological insulator",
-        "The strong index is zero but a weak one is not: like a stack of two-dimensional "
-        "topological layers, it conducts on side surfaces while the stacking stays regular.",
-    ),
-    "crystalline-ti": ClassWords(
-        "Topological crystalline insulator",
-        "a topological crystalline insulator",
-        "The time-reversal indices are zero; symmetries of the crystal protect conducting states "
-        "on those surfaces that keep them.",
-    ),
-    "higher-order": ClassWords(
-        "Higher-order topological insulator",
-        "a higher-order topological insulator",
-        "Surfaces may be gapped, but conducting channels run along hinges of a crystal whose "
-        "shape keeps the protecting symmetry.",
-    ),
-    "chern": ClassWords(
-        "Chern insulator",
-        "a Chern insulator",
-        "Time reversal is broken and a Chern number is not zero: edges or side surfaces conduct "
-        "in one direction.",
-    ),
-    "axion-candidate": ClassWords(
-        "Axion-insulator candidate",
-        "a candidate for an axion insulator",
-        "Inversion indicators allow a quantised magnetoelectric response; the Chern numbers must "
-        "vanish for it, which the indicators alone do not show.",
-    ),
-    "trivial": ClassWords(
-        "Trivial",
-        "trivial by the indices that were computed",
-        "All indices that were computed are zero. Kinds of topology that this report lists as "
-        "not tested are not excluded.",
-    ),
-    "weyl-semimetal": ClassWords(
-        "Weyl semimetal",
-        "a Weyl semimetal",
-        "Bands touch at isolated points that carry a chirality; no gapped state has these "
-        "indicators.",
-    ),
-    "dirac-semimetal": ClassWords(
-        "Dirac semimetal",
-        "a Dirac semimetal",
-        "Doubly degenerate bands touch at isolated points that a crystal symmetry protects.",
-    ),
-    "nodal-line": ClassWords(
-        "Nodal-line semimetal", "a nodal-line semimetal", "Bands touch along lines in k-space."
-    ),
-    "metal": ClassWords(
-        "Metal",
-        "a metal without a direct gap above the filled bands",
-        "No gap separates the filled bands from the rest, so indices of the filled bands do not "
-        "exist.",
-    ),
-    "undetermined": ClassWords(
-        "Undetermined",
-        "undetermined",
-        "The tests that were made do not carry a conclusion. This says nothing about the "
-        "material itself.",
-    ),
-}
-
-_STRONG_2D = ClassWords(
-    "Two-dimensional topological insulator",
-    "a two-dimensional topological insulator (quantum spin Hall insulator)",
-    "As long as time reversal holds and the bulk gap stays open, every edge carries a pair of "
-    "counter-propagating conducting channels.",
-)
-
-
-def class_words(verdict: Verdict) -> ClassWords:
-    """Heading, noun phrase and meaning of the verdict's class, for its dimension."""
-    if verdict.class_ == "strong-ti" and verdict.case.dimension == 2:
-        return _STRONG_2D
-    return _CLASSES[verdict.class_]
-
-
 def subject(verdict: Verdict) -> str:
-    """Name, formula and space group of the case, in one phrase."""
+    """Name, formula (where it is not the name) and space group of the case, in one phrase."""
     case = verdict.case
-    group = f", {case.space_group.symbol}" if case.space_group is not None else ""
-    return one_line(f"{case.name} ({case.formula}{group})")
+    known = [case.formula] if case.formula != case.name else []
+    if case.space_group is not None:
+        known.append(case.space_group.symbol)
+    return one_line(f"{case.name} ({', '.join(known)})" if known else case.name)
 
 
 def verdict_sentence(verdict: Verdict) -> str:
@@ -160,7 +66,8 @@ def _obstacle(verdict: Verdict) -> str:
             return one_line(flag.summary).rstrip(".")
     parity = verdict.witnesses.parity
     if parity.status != "ok" and parity.reason:
-        return f"the parity witness is {parity.status} ({one_line(parity.reason).rstrip('.')})"
+        state = status_words(parity.status)
+        return f"the parity witness {state} ({one_line(parity.reason).rstrip('.')})"
     if verdict.confidence.reasons:
         return one_line(verdict.confidence.reasons[0]).rstrip(".")
     return "no witness gives an index"
@@ -185,11 +92,12 @@ def _parity_ground(material: ReportMaterial) -> tuple[str, ...]:
     parity = material.verdict.witnesses.parity
     if parity.status != "ok":
         reason = one_line(parity.reason).rstrip(".")
-        return (f"The parity witness is {parity.status}: {reason}.",)
+        return (f"The parity witness {status_words(parity.status)}: {reason}.",)
     purity = min((t.purity for t in parity.trim), default=0.0)
     lines = [
         f"Parities of the filled states were read at {len(parity.trim)} time-reversal-invariant "
-        f"momenta; every state there is even or odd to a purity of {purity:.4f} or better."
+        f"momenta; every state there is even or odd, with a purity of at least {purity:.4f} (1 is "
+        "exact)."
     ]
     if parity.z2 is not None:
         odd = sum(t.delta < 0 for t in parity.trim)
@@ -214,7 +122,9 @@ def _gap_ground(verdict: Verdict) -> str:
     gap = verdict.gap
     if gap.direct_eV is None:
         return ""
-    met = f"The smallest direct gap that was met is {ev(gap.direct_eV)} at k = {k_text(gap.direct_k)}"
+    met = (
+        f"The smallest direct gap that was met is {ev(gap.direct_eV)} at k = {k_text(gap.direct_k)}"
+    )
     if gap.direct_proved_min_eV is not None:
         return f"{met}; it is proved to exceed {ev(gap.direct_proved_min_eV)} everywhere."
     return f"{met}; this is a sample, so the true minimum may be smaller."
@@ -236,9 +146,7 @@ def _interpolation_ground(material: ReportMaterial) -> str:
         return ""
     parts = []
     if check.mesh_occupied_mev is not None:
-        parts.append(
-            f"the first-principles energies on the mesh to {mev(check.mesh_occupied_mev)}"
-        )
+        parts.append(f"the first-principles energies on the mesh to {mev(check.mesh_occupied_mev)}")
     if check.path_occupied_mev is not None:
         parts.append(f"Wannier90's own bands on the path to {mev(check.path_occupied_mev)}")
     return f"Filled bands reproduce {' and '.join(parts)}." if parts else ""
@@ -269,6 +177,16 @@ def untested(material: ReportMaterial) -> tuple[str, ...]:
     return tuple(lines)
 
 
+def status_words(status: str) -> str:
+    """A witness's status as the end of a sentence."""
+    return {
+        "ok": "is sound",
+        "failed": "failed",
+        "not-applicable": "does not apply",
+        "unresolved": "is unresolved",
+    }[status]
+
+
 def _open_witness(name: str, reason: str) -> str:
     return f"{name}: {one_line(reason).rstrip('.') or 'not tested'}."
 
@@ -282,7 +200,9 @@ def radius_note(verdict: Verdict) -> str:
     """What the robustness radius is, against the largest known error of the input."""
     known = {k: v for k, v in verdict.robustness.errors_meV.items() if v is not None}
     kind = "of the proved gap" if verdict.robustness.proved else "of the sampled gap"
-    if not known or verdict.robustness.radius_meV is None:
+    if verdict.robustness.radius_meV is None:
+        return "no gap to take the half of"
+    if not known:
         return f"half {kind}"
     name, worst = max(known.items(), key=lambda item: item[1])
     if worst <= 0:

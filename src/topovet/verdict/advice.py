@@ -82,7 +82,7 @@ def advice_page(code: str) -> str:
     """
     if code not in CODES:
         raise UnknownFlagError(code)
-    page = resources.files("topovet.verdict").joinpath("advice", f"{code}.md")
+    page = resources.files("topovet.verdict").joinpath("advice").joinpath(f"{code}.md")
     return page.read_text(encoding="utf-8")
 
 

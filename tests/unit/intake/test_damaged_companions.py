@@ -71,7 +71,17 @@ def replaced(name: str, old: str, new: str) -> Callable[[Path], None]:
 
 
 def cut(name: str, length: int) -> Callable[[Path], None]:
-    return lambda folder: (folder / name).write_text(SOUND[name][:length]) and None
+    def edit(folder: Path) -> None:
+        (folder / name).write_text(SOUND[name][:length])
+
+    return edit
+
+
+def added(name: str) -> Callable[[Path], None]:
+    def edit(folder: Path) -> None:
+        (folder / name).touch()
+
+    return edit
 
 
 def gzipped_and_cut(name: str) -> Callable[[Path], None]:
@@ -140,8 +150,8 @@ DAMAGES = [
         "dimension, inversion_centre, surface; write filling if that is meant, or delete it.",
     ),
     (
-        lambda folder: (folder / "GX.win.gz").touch() or (folder / "GX.win").touch(),
-        'GX.win: found both "GX.win" and "GX.win.gz", expected one of the two, since they may '
+        added("GX.eig.gz"),
+        'GX.eig: found both "GX.eig" and "GX.eig.gz", expected one of the two, since they may '
         "differ; delete the one that is out of date.",
     ),
 ]

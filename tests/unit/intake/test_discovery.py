@@ -131,7 +131,7 @@ def test_what_is_missing_or_ambiguous_is_said(tmp_path: Path, refusal: Refusal) 
     put(tmp_path, "GX.win")
     assert refusal.of(find_case, tmp_path) == (
         "CASE: found 1 file, none of them a Hamiltonian, expected NAME_hr.dat or NAME_tb.dat (or "
-        ".gz); copy it here, or run Wannier90 with write_hr = .true.."
+        ".gz); copy it here, or set write_hr = .true. and run Wannier90 again."
     )
     assert refusal.of(find_case, tmp_path / "GX.win") == (
         'GX.win: found a file named "GX.win", expected a case folder, or a file whose name ends '

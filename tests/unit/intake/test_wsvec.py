@@ -144,6 +144,25 @@ def test_damage_is_named(
     assert message == f"GX_wsvec.dat, line {line}: found {found}, expected {expected}; {TODO}."
 
 
+@pytest.mark.parametrize("chunk", [60, 2**22])
+@pytest.mark.parametrize("n_shifts", [126, 500])
+def test_a_record_without_a_reasonable_end_is_not_waited_for(
+    tmp_path: Path,
+    hamiltonian: HamiltonianFile,
+    refusal: Refusal,
+    monkeypatch: pytest.MonkeyPatch,
+    n_shifts: int,
+    chunk: int,
+) -> None:
+    monkeypatch.setattr(integer_lines, "CHUNK_BYTES", chunk)
+    lines = [HEADER, "0 0 0 1 1", str(n_shifts), *(f"{3 * i} 0 0" for i in range(n_shifts))]
+    path = tmp_path / "GX_wsvec.dat"
+    path.write_text("\n".join(lines) + "\n")
+    assert refusal.of(read_wsvec, path, hamiltonian) == (
+        f'GX_wsvec.dat, line 3: found "{n_shifts}", expected a count from 1 to 125; {TODO}.'
+    )
+
+
 def test_a_file_cut_anywhere_is_refused_with_a_line(
     tmp_path: Path, hamiltonian: HamiltonianFile, shifts: WsShifts, refusal: Refusal
 ) -> None:

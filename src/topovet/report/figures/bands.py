@@ -1,11 +1,8 @@
-"""The band structure: filled bands heavy on a tint, the gap shaded, parities at the TRIM.
-
-The marks are chosen to mean what they show: point inversion leaves a full disc as it is (even)
-and exchanges the halves of a half disc (odd).
-"""
+"""The band structure: filled bands heavy on a tint, the gap shaded, parities at the TRIM."""
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -16,6 +13,7 @@ from topovet.arrays import FloatArray
 from topovet.invariants.results import TrimParity
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
+from topovet.report.figures.parity_marks import PLOT_WIDTH_PT, draw_parities, legend_marks
 from topovet.report.notation import ev, one_line
 from topovet.spectrum.results import BandPath, GapSample
 
@@ -24,29 +22,9 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 _WIDTH_IN, _HEIGHT_IN = 8.8, 5.4
-_PLOT_WIDTH_PT, _PLOT_HEIGHT_PT = 565.0, 285.0
-_MARK_PT = 6.4
+_LETTER_PT = 8.0
 _COINCIDE_EV = 1e-4
-_TRIM_TOLERANCE = 1e-6
-_PURE = 0.9
 _DEPTH_EV, _HEADROOM_EV = 8.0, 2.5
-
-_MARKS: dict[str, dict[str, Any]] = {
-    "even": {"marker": "o", "fillstyle": "full", "color": palette.FILLED},
-    "odd": {
-        "marker": "o",
-        "fillstyle": "left",
-        "color": palette.ODD,
-        "markerfacecoloralt": palette.WHITE,
-    },
-    "mixed": {
-        "marker": "D",
-        "fillstyle": "none",
-        "color": palette.INK,
-        "markerfacecoloralt": palette.WHITE,
-    },
-}
-
 
 @dataclass(frozen=True, slots=True)
 class EnergyZero:
@@ -108,8 +86,9 @@ def bands_figure(
         axes = figure.add_subplot()
         _frame(axes, bands, zero, (low, high))
         _shade(axes, bands, energies, n_occ, gap, zero)
+        _draw_fermi(axes, fermi_ev, zero)
         _draw_bands(axes, bands, energies, n_occ)
-        met = _draw_parities(axes, bands, trim, zero.ev, (low, high))
+        met = draw_parities(axes, bands, trim, zero.ev, (low, high))
         _legend(figure, axes, met, gap)
         title = f"Band structure from {low:.1f} to {high:.1f} eV about {zero.name}"
         return to_svg(figure, name, title=title, description=_words(bands, n_occ, zero, met))
@@ -132,14 +111,12 @@ def near_gap_window(gap: GapSample) -> tuple[float, float]:
     return min(0.0, edge) - reach, max(0.0, edge) + reach
 
 
-def _frame(
-    axes: Axes, bands: BandPath, zero: EnergyZero, window: tuple[float, float]
-) -> None:
+def _frame(axes: Axes, bands: BandPath, zero: EnergyZero, window: tuple[float, float]) -> None:
     length = float(bands.distance[-1]) or 1.0
     positions, labels = _path_labels(bands)
     axes.set_xlim(-0.012 * length, 1.012 * length)
     axes.set_ylim(*window)
-    axes.set_xticks(positions, labels)
+    axes.set_xticks(positions, _staggered(positions, labels, length * _LETTER_PT / PLOT_WIDTH_PT))
     axes.tick_params(axis="x", length=0, pad=6, labelsize=10.5)
     for x in positions:
         axes.axvline(x, color=palette.RULE, linewidth=0.8, zorder=0.5)
@@ -163,6 +140,16 @@ def _path_labels(bands: BandPath) -> tuple[list[float], list[str]]:
     return list(merged), ["|".join(names) for names in merged.values()]
 
 
+def _staggered(positions: Sequence[float], labels: Sequence[str], least: float) -> list[str]:
+    """Labels with every one that comes too close to its left neighbour set a line lower."""
+    shown: list[str] = []
+    for i, label in enumerate(labels):
+        room = (len(labels[i - 1]) + len(label)) / 2 * least
+        crowded = i > 0 and positions[i] - positions[i - 1] < room
+        shown.append("\n" + label if crowded and not shown[-1].startswith("\n") else label)
+    return shown
+
+
 def point_name(label: str) -> str:
     """Typographic name of a special point: G is Γ, figures become subscripts."""
     if label in ("G", "Gamma", "GAMMA"):
@@ -173,7 +160,7 @@ def point_name(label: str) -> str:
 def _pieces(distance: FloatArray) -> Iterator[slice]:
     """Stretches of the path between jumps, where two points share one distance."""
     cuts = [0, *(np.flatnonzero(np.diff(distance) <= 0) + 1).tolist(), len(distance)]
-    for start, stop in zip(cuts, cuts[1:], strict=False):
+    for start, stop in itertools.pairwise(cuts):
         if stop - start > 1:
             yield slice(start, stop)
 
@@ -198,7 +185,28 @@ def _shade(
         below = np.maximum(top, floor)
         axes.fill_between(x, floor, below, color=palette.FILLED_TINT, linewidth=0, zorder=0.3)
         if not insulating:
-            axes.fill_between(x, top, next_up, color=palette.GAP_TINT, linewidth=0, zorder=0.25)
+            axes.fill_between(
+                x, top, next_up, facecolor=palette.GAP_TINT, alpha=0.45, linewidth=0, zorder=0.25
+            )
+
+
+def _draw_fermi(axes: Axes, fermi_ev: float | None, zero: EnergyZero) -> None:
+    """The Fermi energy that was given, where it is not the zero itself."""
+    low, high = axes.get_ylim()
+    if fermi_ev is None or fermi_ev == zero.ev or not low < fermi_ev - zero.ev < high:
+        return
+    place = fermi_ev - zero.ev
+    axes.axhline(place, color=palette.MUTED, linewidth=0.9, linestyle=(0, (1, 2)), zorder=0.7)
+    axes.annotate(
+        "E(F) given",
+        (1.0, place),
+        xycoords=("axes fraction", "data"),
+        xytext=(4, 0),
+        textcoords="offset points",
+        va="center",
+        fontsize=8,
+        color=palette.MUTED,
+    )
 
 
 def _draw_bands(axes: Axes, bands: BandPath, energies: FloatArray, n_occ: int) -> None:
@@ -230,71 +238,6 @@ def distinct_bands(energies: FloatArray, n_occ: int) -> list[int]:
     ]
 
 
-def _draw_parities(
-    axes: Axes,
-    bands: BandPath,
-    trim: Sequence[TrimParity],
-    zero_ev: float,
-    window: tuple[float, float],
-) -> set[str]:
-    """Marks at every TRIM on the path; which kinds were drawn."""
-    ev_per_mark = _MARK_PT * (window[1] - window[0]) / _PLOT_HEIGHT_PT
-    k_per_mark = 1.15 * _MARK_PT * float(bands.distance[-1]) / _PLOT_WIDTH_PT
-    drawn: set[str] = set()
-    for x, parity in _trim_on_path(bands, trim):
-        levels = np.asarray(parity.level_energies_ev) - zero_ev
-        shown = (levels > window[0]) & (levels < window[1])
-        kinds = [parity_kind(p) for p, s in zip(parity.level_parities, shown, strict=True) if s]
-        drawn.update(kinds)
-        places = spread(levels[shown], ev_per_mark)
-        for energy, place, kind in zip(levels[shown], places, kinds, strict=True):
-            axes.plot(
-                [x + place * k_per_mark],
-                [energy],
-                markersize=_MARK_PT,
-                markeredgewidth=1.0,
-                clip_on=False,
-                zorder=4,
-                **_MARKS[kind],
-            )
-    return drawn
-
-
-def parity_kind(parity: float) -> str:
-    """ "even", "odd", or "mixed" where the mean parity of the level is far from both."""
-    if abs(parity) < _PURE:
-        return "mixed"
-    return "even" if parity > 0 else "odd"
-
-
-def spread(energies: FloatArray, least: float) -> FloatArray:
-    """Sideways places of marks, in mark widths: runs closer than `least` sit side by side.
-
-    Parameters
-    ----------
-    energies
-        (n,) ascending.
-    least
-        Distance below which two marks would overlap.
-    """
-    places = np.zeros(len(energies))
-    starts = [0, *(np.flatnonzero(np.diff(energies) >= least) + 1).tolist(), len(energies)]
-    for start, stop in zip(starts, starts[1:], strict=False):
-        places[start:stop] = np.arange(stop - start) - (stop - start - 1) / 2
-    return places
-
-
-def _trim_on_path(
-    bands: BandPath, trim: Sequence[TrimParity]
-) -> Iterator[tuple[float, TrimParity]]:
-    """Distance of every path point that equals a TRIM modulo a reciprocal lattice vector."""
-    for parity in trim:
-        away = bands.k_frac - np.asarray(parity.k)
-        hits = np.abs(away - np.round(away)).max(axis=1) < _TRIM_TOLERANCE
-        for x in sorted({round(float(d), 9) for d in bands.distance[hits]}):
-            yield x, parity
-
-
 def _legend(figure: Figure, axes: Axes, met: set[str], gap: GapSample | None) -> None:
     from matplotlib.lines import Line2D
     from matplotlib.patches import Patch
@@ -305,11 +248,9 @@ def _legend(figure: Figure, axes: Axes, met: set[str], gap: GapSample | None) ->
     ]
     insulating = gap is not None and gap.status == "insulator"
     label = f"gap, {ev(gap.indirect_ev)}" if gap is not None and insulating else "direct gap"
-    entries.append((Patch(facecolor=palette.GAP_TINT, edgecolor=palette.RULE), label))
-    for kind in ("even", "odd", "mixed"):
-        if kind in met:
-            mark = Line2D([], [], linestyle="none", markersize=7, **_MARKS[kind])
-            entries.append((mark, f"{kind} parity"))
+    tint = Patch(facecolor=palette.GAP_TINT, alpha=1.0 if insulating else 0.45)
+    entries.append((tint, label))
+    entries += legend_marks(met)
     handles, labels = zip(*entries, strict=True)
     figure.legend(
         handles, labels, loc="outside lower center", ncols=len(entries), frameon=False, fontsize=9

@@ -25,7 +25,7 @@ FONTS = "'Helvetica Neue', Helvetica, Arial, 'Liberation Sans', 'DejaVu Sans', s
 
 SVG_NAMESPACE = "http://www.w3.org/2000/svg"
 
-_STYLE: dict[str, Any] = {
+_STYLE: Any = {
     "svg.fonttype": "none",
     "path.simplify": True,
     "path.simplify_threshold": 0.15,
@@ -63,7 +63,7 @@ def drawing(name: str) -> Iterator[None]:
 
 
 def new_figure(
-    width_in: float, height_in: float, *, layout: Literal["constrained", "none"] = "constrained"
+    width_in: float, height_in: float, *, layout: Literal["constrained"] | None = "constrained"
 ) -> Figure:
     """An empty figure without any global state; call inside `drawing`."""
     from matplotlib.figure import Figure

@@ -51,20 +51,20 @@ def _draw(axes: Axes, distance: FloatArray, largest: FloatArray, audit: Hamilton
     axes.yaxis.set_minor_formatter(lambda *_: "")
     axes.grid(axis="y", linewidth=0.6)
     axes.vlines(distance, floor, largest, color=palette.RULE, linewidth=0.7)
-    axes.plot(distance, largest, "o", markersize=3.4, color=palette.FILLED)
+    axes.plot(distance, largest, "o", markersize=3.6, color=palette.FILLED, zorder=3)
     reach = float(distance.max()) or 1.0
     axes.set_xlim(-0.02 * reach, 1.03 * reach)
     if audit.rim_mev > floor:
         axes.axhline(audit.rim_mev, color=palette.ODD, linewidth=0.9, linestyle=(0, (6, 3)))
         axes.annotate(
-            f"largest on the rim, {mev(audit.rim_mev)}",
-            (0.03, audit.rim_mev),
+            f"rim\n{mev(audit.rim_mev)}",
+            (1.0, audit.rim_mev),
             xycoords=("axes fraction", "data"),
-            xytext=(0, 4),
+            xytext=(4, 0),
             textcoords="offset points",
+            va="center",
             fontsize=8.5,
             color=palette.ODD,
-            bbox={"facecolor": palette.WHITE, "edgecolor": "none", "pad": 1.0},
         )
 
 

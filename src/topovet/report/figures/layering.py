@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -83,7 +84,7 @@ def _threaded(
         rows[row].append(waypoint)
         chain.append(waypoint)
     chain.append(target)
-    return list(zip(chain, chain[1:], strict=False))
+    return list(itertools.pairwise(chain))
 
 
 def _untangle(rows: list[list[object]], edges: Sequence[tuple[object, object]]) -> None:

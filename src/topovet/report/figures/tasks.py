@@ -20,7 +20,7 @@ _LONGEST_NAME = 24
 _STATES: dict[str, tuple[str, str, str, str]] = {
     "done": ("✓", palette.GOOD, "none", palette.WHITE),
     "cached": ("⟲", palette.INFO, "none", palette.FILLED_TINT),
-    "skipped": ("–", palette.WARNING, "5 3", palette.WHITE),
+    "skipped": ("–", palette.MUTED, "5 3", palette.WHITE),
     "not-applicable": ("∅", palette.MUTED, "2 3", palette.WHITE),
     "failed": ("✗", palette.ERROR, "none", palette.WHITE),
 }
@@ -59,7 +59,10 @@ def tasks_figure(tasks: Sequence[TaskEntry], *, name: str = "tasks") -> str:
 
 def _centres(layout: Layout) -> tuple[Mapping[object, tuple[float, float]], int]:
     """Centre of every box and waypoint, and the width of the drawing, px."""
-    spans = [[_STEP_X if isinstance(i, str) else _STEP_X * _WAYPOINT_SHARE for i in row] for row in layout.rows]
+    spans = [
+        [_STEP_X if isinstance(i, str) else _STEP_X * _WAYPOINT_SHARE for i in row]
+        for row in layout.rows
+    ]
     widest = max((sum(span) for span in spans), default=_STEP_X)
     centres: dict[object, tuple[float, float]] = {}
     for number, (row, span) in enumerate(zip(layout.rows, spans, strict=True)):
