@@ -25,8 +25,8 @@ from topovet.model.declarations import declare
 models = st.sampled_from(
     [
         kane_mele(),
-        bhz(m=1.7, d=0.2),
-        wilson_dirac(m=-2.3),
+        bhz(m=5.7, d=0.2),
+        wilson_dirac(m=2.3),
         fu_kane_mele(dt=(0.3, -0.2, 0.1, 0.0)),
     ]
 )

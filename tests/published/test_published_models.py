@@ -68,7 +68,6 @@ def test_models_have_the_symmetries_of_their_papers(model: LatticeModel) -> None
         tight_binding, build_bloch_sum(tight_binding), model.crystal.periodic
     )
     assert time_reversal.present
-    assert time_reversal.spin_order == "interlaced"
     assert time_reversal.violation_mev < 1e-9
     assert time_reversal.kramers_splitting_mev is not None
     assert time_reversal.kramers_splitting_mev < 1e-9

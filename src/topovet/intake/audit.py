@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import numpy as np
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
@@ -63,7 +65,7 @@ def audit_hamiltonian(
     shells, shell_ev = _shells(r_cells, weighted, cell)
     offsets = () if centre_offsets is None else tuple(np.asarray(centre_offsets).tolist())
     return HamiltonianAudit(
-        file=hamiltonian.file,
+        file=Path(hamiltonian.file).name,
         header=hamiltonian.header,
         reader=hamiltonian.reader,
         n_wann=hamiltonian.n_wann,
@@ -74,7 +76,8 @@ def audit_hamiltonian(
         missing_partner_r=_listed(r_cells[missing]),
         n_missing_partner=int(missing.sum()),
         missing_partner_mev=MEV_PER_EV * float(largest[missing].max(initial=0.0)),
-        degeneracy_sum=float((1.0 / hamiltonian.degeneracies).sum()),
+        degeneracy_sum=_degeneracy_sum(hamiltonian, repeats, missing),
+        all_degeneracies_one=bool(np.all(hamiltonian.degeneracies == 1)),
         mesh_points=None if mp_grid is None else int(np.prod(mp_grid)),
         onsite_scale_ev=_onsite_scale(hamiltonian),
         rim_mev=MEV_PER_EV * rim_ev,
@@ -86,6 +89,12 @@ def audit_hamiltonian(
         shift_note=shift_note,
         centre_offsets_ang=offsets,
     )
+
+
+def _degeneracy_sum(hamiltonian: HamiltonianFile, repeats: BoolArray, missing: BoolArray) -> float:
+    """Sum of 1/ndegen over distinct R, each -R that is not listed counted with its partner."""
+    weights = 1.0 / hamiltonian.degeneracies
+    return float(weights[~repeats].sum() + weights[missing & ~repeats].sum())
 
 
 def _listed(vectors: IntArray) -> tuple[tuple[int, int, int], ...]:

@@ -29,7 +29,10 @@ class HamiltonianAudit:
     missing_partner_mev
         Largest |H_mn(R)| among them, meV, as printed.
     degeneracy_sum
-        Sum of 1/ndegen; equals the number of mesh points for a Wigner-Seitz set.
+        Sum of 1/ndegen over distinct R, missing partners supplied; equals the number of mesh
+        points for a Wigner-Seitz set.
+    all_degeneracies_one
+        Whether every listed degeneracy is 1, as in lists that no mesh stands behind.
     mesh_points
         N1 N2 N3 of mp_grid; None without it.
     onsite_scale_ev
@@ -67,6 +70,7 @@ class HamiltonianAudit:
     n_missing_partner: int
     missing_partner_mev: float
     degeneracy_sum: float
+    all_degeneracies_one: bool
     mesh_points: int | None
     onsite_scale_ev: float
     rim_mev: float

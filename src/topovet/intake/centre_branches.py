@@ -1,4 +1,4 @@
-"""Centres on a wrong branch: found by their distance from the declared sites, and put back.
+"""Centres on a wrong branch: found by their distance from the declared sites.
 
 A centre is a Berry phase, summed over the mesh and known modulo the branches of its logarithms.
 Branches taken alike at every k move it by a supercell vector, which changes nothing. Branches
@@ -15,6 +15,9 @@ from topovet.arrays import BoolArray, FloatArray
 
 SAME_SITE_ANG = 1e-3
 """Declared positions closer than this are one site."""
+
+ON_A_SITE_ANG = 0.3
+"""A centre this close to a site sits on it; sound centres here are within 0.22 angstrom."""
 
 HALFWAY_MARGIN = 1.05
 """A bond centre lies exactly half-way between two sites; it is not suspicious."""
@@ -104,24 +107,34 @@ def suspicious_centres(
     return np.asarray(np.asarray(offsets_ang) > limit)
 
 
-def mend_centres(
-    centres_cart: FloatArray, sites_frac: FloatArray, cell: FloatArray, suspects: BoolArray
-) -> FloatArray:
-    """The centres with every suspect put on its declared site.
+def centres_on_other_sites(
+    centres_cart: FloatArray,
+    sites_frac: FloatArray,
+    cell: FloatArray,
+    mp_grid: tuple[int, int, int],
+    suspects: BoolArray,
+) -> BoolArray:
+    """Which suspects sit on a site that is declared for other functions.
+
+    A wrong branch leaves a centre anywhere; a wrong order of the projections leaves it on an atom,
+    only not on the declared one.
 
     Parameters
     ----------
-    centres_cart
-        (n_wann, 3) angstrom.
-    sites_frac, cell
+    centres_cart, sites_frac, cell, mp_grid
         As in `centre_offsets`.
     suspects
         (n_wann,) from `suspicious_centres`.
 
     Returns
     -------
-    FloatArray
-        (n_wann, 3) angstrom, a new array.
+    BoolArray
+        (n_wann,).
     """
-    on_site = np.asarray(sites_frac, dtype=float) @ cell
-    return np.where(np.asarray(suspects)[:, None], on_site, centres_cart)
+    supercell = np.asarray(cell, dtype=float) * np.asarray(mp_grid)[:, None]
+    sites = np.unique(np.round(np.asarray(sites_frac, dtype=float), 6), axis=0) @ cell
+    there = np.zeros(len(centres_cart), dtype=bool)
+    for i in np.flatnonzero(suspects):
+        distance = find_mic(centres_cart[i] - sites, supercell)[1]
+        there[i] = bool(np.min(distance) < ON_A_SITE_ANG)
+    return there

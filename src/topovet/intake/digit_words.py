@@ -69,7 +69,7 @@ def signed_value(words: WordArray) -> tuple[WordArray, NDArray[np.bool_]]:
     Raises
     ------
     NotInColumnsError
-        Anything else.
+        Anything else, also digits that begin with a superfluous 0.
     """
     # Of the characters allowed here only digits have bit 0x10; others fail the checks below.
     digit_bytes = ((words >> np.uint64(4)) & _ONES) * np.uint64(255)
@@ -80,6 +80,9 @@ def signed_value(words: WordArray) -> tuple[WordArray, NDArray[np.bool_]]:
     not_blank = (words ^ SPACES) & front_bytes
     negative = not_blank != 0
     require(~negative | (not_blank == (_BLANK_TO_MINUS & last_front_byte)))
+    first_digit = digit_bytes & ~(digit_bytes << np.uint64(8))
+    single = digit_bytes == first_digit
+    require(single | ((words & first_digit) != (NOUGHTS & first_digit)))
     return digits_value((words & digit_bytes) | (NOUGHTS & front_bytes)), negative
 
 

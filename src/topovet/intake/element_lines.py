@@ -65,7 +65,13 @@ def next_words(reader: LineReader, parser: LineParser, count: ElementCount) -> l
         raise count.cut_short(reader, line) from None
     parser.settle()
     if not parser.tally.vouches_for_last_line():
-        raise count.cut_short(reader, line)
+        raise InputError(
+            reader.file,
+            line=reader.line_no,
+            found=f"the last line {quoted(line)} without a line end, perhaps cut",
+            expected="a line end",
+            todo="copy the file again, or end that line if it is whole",
+        )
     return words
 
 

@@ -38,7 +38,7 @@ _MAX_EXACT_POWER = 22
 _LONGEST_LINE = 512
 _EXPONENT_WIDTH = 4
 _HEAP_HINT_BYTES = 1 << 22
-_NUMBER = re.compile(rb"(-?)\d+\.(\d{1,40})(?:([EDed])[-+]\d\d)?")
+_NUMBER = re.compile(rb"-?(?:\d+\.(\d{1,40})|\d\.(\d{1,40})([EDed])[-+]\d\d)")
 _POWERS = 10.0 ** np.arange(_MAX_EXACT_POWER + 1)
 
 
@@ -53,7 +53,8 @@ class NumberColumn:
     decimals
         Digits after the point, at least 1.
     exponent
-        E, D, e or d, followed by a sign and two digits; empty in plain decimal form.
+        E, D, e or d, followed by a sign and two digits, and only one digit before the point;
+        empty in plain decimal form.
     """
 
     start: int
@@ -127,7 +128,9 @@ def infer_layout(
 
 def _number_column(line: bytes, start: int, stop: int) -> NumberColumn | None:
     match = _NUMBER.fullmatch(line[start:stop].strip(b" "))
-    return None if match is None else NumberColumn(start, stop, len(match[2]), match[3] or b"")
+    if match is None:
+        return None
+    return NumberColumn(start, stop, len(match[1] or match[2]), match[3] or b"")
 
 
 class FixedLines:
@@ -215,6 +218,13 @@ class FixedLines:
         """Every line ends as the layout says; else NotInColumnsError."""
         self.check_constant(self.layout.n_bytes - len(self.layout.tail), self.layout.tail)
 
+    def note_round_ends(self, round_ends: list[bool]) -> None:
+        """Note for each number column whether the last decimal is 0 in some line."""
+        for i, column in enumerate(self.layout.numbers):
+            if not round_ends[i]:
+                last = column.stop - 1 - (_EXPONENT_WIDTH if column.exponent else 0)
+                round_ends[i] = bool((self.byte_column(last) == ord("0")).any())
+
     def texts(self, column: NumberColumn, lines: IntArray) -> list[bytes]:
         """The column of the given lines as text that `float` reads."""
         data, width = self._buffer.data, self.layout.n_bytes
@@ -238,6 +248,9 @@ def read_numbers(lines: FixedLines, column: NumberColumn) -> FloatArray:
     end = column.stop - (_EXPONENT_WIDTH if column.exponent else 0)
     point = end - column.decimals - 1
     lines.check_constant(point, b".")
+    if column.exponent and point - column.start > 1:
+        before = lines.byte_column(point - 2)
+        require((before == ord(" ")) | (before == ord("-")))
     whole, negative = _whole_parts(lines, column.start, point)
     mantissa = _digits(lines, point + 1, end)
     inexact = np.full(lines.n_lines, column.decimals > _MAX_EXACT_DECIMALS)

@@ -12,6 +12,7 @@ from topovet.intake.element_lines import COPY_AGAIN
 from topovet.intake.opening import LineReader, largest_content
 
 _MAX_DIGITS = 9
+_LONGEST_HEADER = 200
 _CHECK_KIND = "check that this is the right file and that its top is undamaged"
 
 
@@ -33,9 +34,9 @@ class HamiltonianCounts:
 
 
 def read_header(reader: LineReader) -> str:
-    """The first line, stripped; undecodable bytes become U+FFFD."""
-    line = reader.next_line()
-    return "" if line is None else line.decode("utf-8", errors="replace").strip()
+    """The first line, stripped and shortened; what cannot be printed becomes U+FFFD."""
+    text = (reader.next_line() or b"").decode("utf-8", errors="replace").strip()
+    return "".join(c if c.isprintable() else "\ufffd" for c in text[:_LONGEST_HEADER])
 
 
 def read_counts(reader: LineReader, line_bytes: int) -> HamiltonianCounts:
@@ -62,8 +63,8 @@ def read_counts(reader: LineReader, line_bytes: int) -> HamiltonianCounts:
         raise InputError(
             reader.file,
             line=reader.line_no,
-            found=f"the end of the file after {n_lines} lines of matrix elements",
-            expected=f"{n_r * n_wann**2} of them ({n_r} R vectors of {n_wann} x {n_wann})",
+            found=f"the end of the file after {n_lines} more line{'s' * (n_lines != 1)}",
+            expected=f"{n_r * n_wann**2} matrix elements ({n_r} R vectors of {n_wann} x {n_wann})",
             todo=COPY_AGAIN,
         )
     return HamiltonianCounts(n_wann, n_r, degeneracies)

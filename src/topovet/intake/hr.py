@@ -92,7 +92,7 @@ def _fill(
             check_nothing_follows(reader, h_r.size)
             return layout.fixed_decimals, "fixed-columns"
         if n_done:
-            parser.credit(first.rstrip(b"\r\n"), first_no, n_done)
+            parser.credit(first.rstrip(b"\r\n"), first_no, n_done, filler.round_ends)
     reader = LineReader(stream, reader.file, line_no=first_no + n_done - 1, pending=pending)
     fill_tolerant(reader, parser, r_cells, h_r, n_done)
     check_nothing_follows(reader, h_r.size)

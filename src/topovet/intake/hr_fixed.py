@@ -25,6 +25,8 @@ class BlockFiller:
     ----------
     n_done
         Matrix elements stored so far, in file order.
+    round_ends
+        For each number of a line, whether its last decimal was 0 in some line.
     rest
         After a False from `fill`: the bytes taken from the stream but not stored.
     """
@@ -33,6 +35,7 @@ class BlockFiller:
         """Prepare to fill r_cells (n_r, 3) and h_r (n_r, n_wann, n_wann) in place."""
         self.n_done = 0
         self.rest = b""
+        self.round_ends = [False, False]
         self._r_cells, self._h_r = r_cells, h_r
         self._n_r, self._n_wann = h_r.shape[0], h_r.shape[1]
         self._pairs = PairColumns(layout, self._n_wann)
@@ -68,6 +71,7 @@ class BlockFiller:
         elements = np.empty(lines.n_lines, dtype=np.complex128)
         elements.real = read_numbers(lines, lines.layout.numbers[0])
         elements.imag = read_numbers(lines, lines.layout.numbers[1])
+        lines.note_round_ends(self.round_ends)
         # The file runs over n, then m: [r, n, m] is turned into [r, m, n].
         by_column = elements.reshape(n_blocks, -1, self._n_wann)
         columns = slice(at // self._n_wann, at // self._n_wann + by_column.shape[1])

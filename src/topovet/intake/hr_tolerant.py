@@ -55,6 +55,7 @@ def _fill_block(
     block, at = divmod(count.n_done, count.per_block)
     seen = pairs_seen(count)
     r_words = [b"%d" % r for r in r_cells[block].tolist()] if at else []
+    label = f"R = {_listed(r_words)}"
     elements = h_r[block].reshape(-1)
     while at < count.per_block:
         words = next_words(reader, parser, count)
@@ -63,7 +64,8 @@ def _fill_block(
                 raise _r_changed(reader, words[:3], r_cells[block], at, count)
             r_words = words[:3]
             r_cells[block] = list(map(int, r_words))
-        place = pair_index(words[3:], reader, seen, count.n_wann, f"R = {_listed(r_words)}")
+            label = f"R = {_listed(r_words)}"
+        place = pair_index(words[3:], reader, seen, count.n_wann, label)
         elements[place] = complex(
             parser.to_float(words[5], reader.line_no), parser.to_float(words[6], reader.line_no)
         )
@@ -80,7 +82,7 @@ def _r_changed(
         line=reader.line_no,
         found=f"R = {_listed(words)} after {at} of the {count.per_block} elements of R = {usual}",
         expected=f"all pairs (m, n) of {usual} together",
-        todo="mend or restore the missing or damaged line, or write the file again",
+        todo="restore the missing or damaged line, or check num_wann at the top of the file",
     )
 
 

@@ -9,14 +9,15 @@ Two rules, both about files that are regular but for a few lines:
   in 0, which no format of varying length leaves standing), any other number is odd.
 
 Numbers with and without exponent may be mixed in a column (Fortran's G format and list-directed
-output); then they are compared with their like only. In layouts with single blanks no columns can
-be told, and only the second rule applies.
+output) and are compared with their like only. In layouts with single blanks no columns can be
+told, and only the second rule applies.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass, field
+from dataclasses import dataclass
+from typing import NamedTuple
 
 from topovet.errors import InputError, quoted
 
@@ -24,12 +25,32 @@ _FEW = 10
 """One odd line in this many may be damage; more are a free layout."""
 _FEWEST_LINES = 4
 _FULL_PRECISION = 12
-"""Decimals from which one more or less is no damage worth refusing: 1e-12 eV."""
+"""Decimals from which a number may have been written with all its digits."""
 
 _MOST_LAYOUTS = 4096
 """Beyond so many the file has no regular columns, and no more are remembered."""
 
 _TODO = "mend that line, or write the file again"
+
+
+class NumberStyle(NamedTuple):
+    """How a number is written.
+
+    Attributes
+    ----------
+    decimals
+        Digits after the point, of the mantissa where there is an exponent.
+    exponent
+        Digits of the exponent; 0 without one, -3 where Fortran dropped the letter E.
+    """
+
+    decimals: int
+    exponent: int
+
+    @property
+    def exponent_width(self) -> int:
+        """Characters of the exponent with its sign and letter."""
+        return {0: 0, -3: 4}.get(self.exponent, self.exponent + 2)
 
 
 @dataclass(slots=True)
@@ -42,26 +63,27 @@ class LineForm:
         Where each column ends.
     rooms
         Blanks before each word, less one for the sign where it carries none.
-    decimals
-        Of each number; None in exponent form.
+    styles
+        Of each number.
+    round_ends
+        For each number, whether the last decimal was 0 in a line with these styles; shared by
+        the forms that have them.
     line_no, line
         The first line of this shape.
     touching
         Words touch: the line must be cut at `stops` instead of at blanks.
     count
         Lines of this shape.
-    round_ends
-        For each number, whether one of them ended in the digit 0.
     """
 
     stops: tuple[int, ...]
     rooms: tuple[int, ...]
-    decimals: tuple[int | None, ...]
+    styles: tuple[NumberStyle, ...]
+    round_ends: list[bool]
     line_no: int
     line: bytes
     touching: bool = False
     count: int = 0
-    round_ends: list[bool] = field(default_factory=list)
 
 
 @dataclass(slots=True)
@@ -88,36 +110,42 @@ class LineTally:
     def __init__(self, file: str) -> None:
         self._file = file
         self._layouts: dict[tuple[bool, ...], dict[tuple[int, ...], _Group]] = {}
-        self._decimals: list[dict[int | None, _Group]] = []
+        self._styles: list[dict[NumberStyle, _Group]] = []
 
     def add(self, forms: Iterable[LineForm]) -> None:
-        """Count these forms, and forget them."""
+        """Count these forms."""
         for form in forms:
-            exponents = tuple(d is None for d in form.decimals)
-            layouts = self._layouts.setdefault(exponents, {})
+            kinds = tuple(style.exponent != 0 for style in form.styles)
+            layouts = self._layouts.setdefault(kinds, {})
             if len(layouts) <= _MOST_LAYOUTS:
                 _group(layouts, form.stops, form).add(form)
-            self._decimals = self._decimals or [{} for _ in form.decimals]
-            for seen, decimals, round_end in zip(
-                self._decimals, form.decimals, form.round_ends, strict=True
+            self._styles = self._styles or [{} for _ in form.styles]
+            for seen, style, round_end in zip(
+                self._styles, form.styles, form.round_ends, strict=True
             ):
-                _group(seen, decimals, form).add(form, round_end)
+                _group(seen, style, form).add(form, round_end)
 
     def vouches_for_last_line(self) -> bool:
-        """Whether a last line without line end is whole: it looks like every line before it."""
-        if not self._decimals:
+        """Whether a last line without line end is whole: it looks like every line before it.
+
+        Either all lines have the same right-aligned columns, or their last numbers the same
+        decimals.
+        """
+        if not self._styles:
             return False
-        layouts = [item for by_stops in self._layouts.values() for item in by_stops.values()]
-        alone = len(layouts) == 1 and layouts[0].count > 1 and max(layouts[0].rooms) > 1
-        last_number = self._decimals[-1]
-        fixed = None not in last_number and 0 not in last_number and len(last_number) == 1
-        return alone or (fixed and next(iter(last_number.values())).count > 1)
+        layouts = [group for by_stops in self._layouts.values() for group in by_stops.values()]
+        if len(layouts) == 1 and layouts[0].count > 1 and max(layouts[0].rooms) > 1:
+            return True
+        (style, group), *others = self._styles[-1].items()
+        return not others and style.decimals > 0 and group.count > 1
 
     def fixed_decimals(self) -> int | None:
         """Decimals of all numbers, or None with exponents or a varying number of decimals."""
-        found = {d for seen in self._decimals for d in seen}
-        single = found.pop() if len(found) == 1 else None
-        return single if single is not None and single > 1 else None
+        styles = {style for seen in self._styles for style in seen}
+        if len(styles) != 1:
+            return None
+        style = styles.pop()
+        return style.decimals if style.decimals > 1 and style.exponent == 0 else None
 
     def check(self) -> None:
         """Refuse lines that are odd among their like.
@@ -129,8 +157,13 @@ class LineTally:
         """
         for layouts in self._layouts.values():
             self._check_columns(layouts)
-        for seen in self._decimals:
-            self._check_decimals(seen)
+        for seen in self._styles:
+            plain = {style: seen[style] for style in seen if style.exponent == 0}
+            scientific = {style: seen[style] for style in seen if style.exponent > 0}
+            self._check_decimals(plain)
+            self._check_decimals(scientific)
+            self._check_few_exponents(plain, scientific)
+            self._check_dropped_letters(seen)
 
     def _check_columns(self, layouts: dict[tuple[int, ...], _Group]) -> None:
         usual = max(layouts, key=lambda stops: layouts[stops].count)
@@ -154,28 +187,56 @@ class LineTally:
                 todo=_TODO,
             )
 
-    def _check_decimals(self, seen: dict[int | None, _Group]) -> None:
-        fixed = [d for d, group in seen.items() if d is not None and d > 1 and group.round_end]
+    def _check_decimals(self, seen: dict[NumberStyle, _Group]) -> None:
+        """All numbers with, or all without exponent: one style if decimals are fixed."""
+        fixed = [style for style in seen if style.decimals > 1 and seen[style].round_end]
         if not fixed:
             return
-        usual = max(fixed, key=lambda d: seen[d].count)
-        if None in seen and (len(seen) > 2 or not _is_damage(seen[None].count, seen[usual].count)):
+        usual = max(fixed, key=lambda style: seen[style].count)
+        odd = [style for style in seen if style != usual]
+        # List-directed output keeps the number of significant digits, not of decimals.
+        full = min(style.decimals for style in seen) >= _FULL_PRECISION
+        few = _is_damage(sum(seen[style].count for style in odd), seen[usual].count)
+        if few or not full:
+            self._refuse_first(odd, usual, seen)
+
+    def _check_few_exponents(
+        self, plain: dict[NumberStyle, _Group], scientific: dict[NumberStyle, _Group]
+    ) -> None:
+        """A few exponents among numbers of fixed decimals are damage, not G format."""
+        if len(plain) != 1:
             return
-        odd = [
-            (group.line_no, decimals)
-            for decimals, group in seen.items()
-            if decimals != usual and min(decimals or 0, usual) < _FULL_PRECISION
-        ]
+        (usual, group), *_ = plain.items()
+        n_odd = sum(few.count for few in scientific.values())
+        fixed = group.round_end and 1 < usual.decimals < _FULL_PRECISION
+        if fixed and _is_damage(n_odd, group.count):
+            self._refuse_first(list(scientific), usual, scientific)
+
+    def _check_dropped_letters(self, seen: dict[NumberStyle, _Group]) -> None:
+        """Exponents without the letter E belong to the same mantissas as those with it."""
+        usual = max(seen, key=lambda style: seen[style].count)
+        decimals = {style.decimals for style in seen if style.exponent > 0}
+        dropped = [style for style in seen if style.exponent < 0]
+        odd = [style for style in dropped if style.decimals not in decimals]
+        self._refuse_first(odd, usual, seen)
+
+    def _refuse_first(
+        self, odd: list[NumberStyle], usual: NumberStyle, seen: dict[NumberStyle, _Group]
+    ) -> None:
         if odd:
-            line_no, decimals = min(odd, key=lambda item: item[0])
-            shown = "an exponent" if decimals is None else f"{decimals} decimals"
+            style = min(odd, key=lambda one: seen[one].line_no)
             raise InputError(
                 self._file,
-                line=line_no,
-                found=f"a number with {shown} in {quoted(seen[decimals].line)}",
-                expected=f"{usual} decimals as in the other lines",
+                line=seen[style].line_no,
+                found=f"a number with {_described(style)} in {quoted(seen[style].line)}",
+                expected=f"{_described(usual)} as in the other lines",
                 todo=_TODO,
             )
+
+
+def _described(style: NumberStyle) -> str:
+    text = f"{style.decimals} decimals"
+    return text + (f" and {abs(style.exponent)} digits of exponent" if style.exponent else "")
 
 
 def _is_damage(n_odd: int, n_usual: int) -> bool:

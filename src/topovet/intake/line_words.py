@@ -12,16 +12,19 @@ import re
 from dataclasses import replace
 
 from topovet.errors import InputError, quoted
-from topovet.intake.line_tally import LineForm, LineTally
+from topovet.intake.line_tally import LineForm, LineTally, NumberStyle
 
 MEND = "mend that line, or write the file again"
 
 _TO_SHAPE = bytes.maketrans(b"0123456789", b"9999999999")
 _WORD = re.compile(rb"[^ \t]+")
 _INTEGER = re.compile(rb"[-+]?9{1,9}")
-# At least one digit before the point: a lost leading digit must not pass for ".5". Fortran drops
-# the letter E where the exponent takes three digits.
-_NUMBER = re.compile(rb"[-+]?9{1,18}(?:\.(9{0,40}))?([EeDd][-+]?9{1,3}|[-+]999)?")
+# At least one digit before the point: a lost leading digit must not pass for ".5"; one digit
+# before an exponent, and a sign in it, as every common language writes them: more or less is
+# damage. Fortran drops the letter E where the exponent takes three digits.
+_PLAIN = re.compile(rb"[-+]?(?:9{1,4}|9{1,9}\.(9{0,40}))")
+_SCIENTIFIC = re.compile(rb"[-+]?9(?:\.(9{0,40}))?(?:[EeDd][-+](9{1,3})|[-+]999)")
+_TO_ZEROS = bytes.maketrans(b"123456789\t+", b"999999999 -")
 _NOT_FINITE = re.compile(rb"[-+]?(?:nan|inf|infinity)(?:\(.*\))?", re.IGNORECASE)
 _BARE_EXPONENT = re.compile(rb"(?<=[\d.])(?=[-+]\d\d\d$)")
 _PRINTABLE = re.compile(rb"[\t -~]*")
@@ -63,6 +66,7 @@ class LineParser:
         self._columns = columns
         self._n_integers = n_integers
         self._forms: dict[bytes, LineForm] = {}
+        self._round_ends: dict[tuple[NumberStyle, ...], list[bool]] = {}
         self._layouts = {usual_stops[-1]: usual_stops} if usual_stops else {}
 
     def words(self, line: bytes, line_no: int) -> list[bytes]:
@@ -76,17 +80,18 @@ class LineParser:
         form = self._forms.get(line.translate(_TO_SHAPE))
         if form is None:
             form = self._new_form(line, line_no)
+        if _has_leading_zero(line):
+            raise self._refusal(line, line_no)
         form.count += 1
         words = _cut(line, form.stops) if form.touching else line.split()
-        for i, word in enumerate(words[self._n_integers :]):
-            if word[-1] == 48:
-                form.round_ends[i] = True
+        if not all(form.round_ends):
+            self._note_round_ends(form, words)
         return words
 
-    def credit(self, line: bytes, line_no: int, count: int) -> None:
+    def credit(self, line: bytes, line_no: int, count: int, round_ends: list[bool]) -> None:
         """Count lines in the same fixed columns and decimals as this one without reading them."""
         form = self._new_form(line, line_no)
-        self.tally.add([replace(form, count=count, round_ends=[True] * len(form.decimals))])
+        self.tally.add([replace(form, count=count, round_ends=round_ends)])
 
     def settle(self) -> None:
         """Bring the tally up to date."""
@@ -119,40 +124,38 @@ class LineParser:
         spans = [match.span() for match in _WORD.finditer(line)]
         touching = len(spans) != n_columns
         if touching:
-            stops = self._layouts.get(len(line.rstrip()), ())
+            stops = self._layouts.get(len(line.rstrip(b" \t")), ())
             spans = _word_spans(line, stops)
-        words = [shape[start:stop] for start, stop in spans]
-        decimals = self._decimals(words)
-        if decimals is None:
+        styles = self._styles([shape[start:stop] for start, stop in spans])
+        if styles is None:
             raise self._refusal(line, line_no)
         form = LineForm(
             stops=tuple(stop for _, stop in spans),
             rooms=_rooms(line, spans),
-            decimals=decimals,
+            styles=styles,
+            round_ends=self._round_ends.setdefault(styles, [False] * len(styles)),
             line_no=line_no,
             line=line[:200],
             touching=touching,
-            round_ends=[False] * len(decimals),
         )
         self._forms[shape] = form
         if not touching and max(form.rooms) > 1:
             self._layouts.setdefault(form.stops[-1], form.stops)
         return form
 
-    def _decimals(self, shapes: list[bytes]) -> tuple[int | None, ...] | None:
-        """Decimals of each number (None in exponent form), or None for anything unlawful."""
+    def _styles(self, shapes: list[bytes]) -> tuple[NumberStyle, ...] | None:
+        """Style of each number, or None if any word is not what its column needs."""
         if len(shapes) != len(self._columns):
             return None
         if not all(_INTEGER.fullmatch(shape) for shape in shapes[: self._n_integers]):
             return None
-        matches = [_NUMBER.fullmatch(shape) for shape in shapes[self._n_integers :]]
-        return (
-            tuple(
-                None if match[2] else len(match[1] or b"") for match in matches if match is not None
-            )
-            if all(matches)
-            else None
-        )
+        styles = [_style(shape) for shape in shapes[self._n_integers :]]
+        return None if None in styles else tuple(style for style in styles if style is not None)
+
+    def _note_round_ends(self, form: LineForm, words: list[bytes]) -> None:
+        numbers = words[self._n_integers :]
+        for i, (style, word) in enumerate(zip(form.styles, numbers, strict=True)):
+            form.round_ends[i] |= word[-1 - style.exponent_width] == ord("0")
 
     def _refusal(self, line: bytes, line_no: int) -> InputError:
         """What is wrong with a line, the most telling reason first."""
@@ -164,7 +167,7 @@ class LineParser:
         elif b"**" in line:
             found = f"asterisks, a number too wide for its column, in {found}"
             expected = "numbers"
-            todo = "see what went wrong in the run that wrote it, or give the _tb.dat file instead"
+            todo = "see what went wrong in the run that wrote it"
         elif any(_NOT_FINITE.fullmatch(word) for word in words):
             found = f"a number that is not finite in {found}"
             expected = "finite numbers"
@@ -172,7 +175,8 @@ class LineParser:
         elif wrong is not None:
             name, word = wrong
             found = f"{quoted(word)} for {name}"
-            expected = "an integer" if name in self._columns[: self._n_integers] else "a number"
+            whole = name in self._columns[: self._n_integers]
+            expected = "an integer" if whole else "a number like -0.25"
         else:
             found = f"{len(words)} columns in {found}"
         if expected.endswith("columns"):
@@ -182,12 +186,30 @@ class LineParser:
     def _first_wrong_word(self, words: list[bytes]) -> tuple[str, bytes] | None:
         if len(words) != len(self._columns):
             return None
-        grammars = [_INTEGER] * self._n_integers
-        grammars += [_NUMBER] * (len(words) - self._n_integers)
-        for name, word, grammar in zip(self._columns, words, grammars, strict=True):
-            if not grammar.fullmatch(word.translate(_TO_SHAPE)):
+        for i, (name, word) in enumerate(zip(self._columns, words, strict=True)):
+            shape = word.translate(_TO_SHAPE)
+            lawful = _INTEGER.fullmatch(shape) if i < self._n_integers else _style(shape)
+            if not lawful or _has_leading_zero(word):
                 return name, word
         return None
+
+
+def _has_leading_zero(line: bytes) -> bool:
+    """Whether a word begins with a superfluous 0, which no program writes."""
+    # Every line is searched: this takes a third of the time of a regular expression.
+    text = b" " + line.translate(_TO_ZEROS)
+    return b" 00" in text or b" 09" in text or b" -00" in text or b" -09" in text
+
+
+def _style(shape: bytes) -> NumberStyle | None:
+    """How a number of this shape is written, None if it is no number."""
+    plain = _PLAIN.fullmatch(shape)
+    if plain:
+        return NumberStyle(len(plain[1] or b""), 0)
+    scientific = _SCIENTIFIC.fullmatch(shape)
+    if scientific:
+        return NumberStyle(len(scientific[1] or b""), len(scientific[2] or b"") or -3)
+    return None
 
 
 def _cut(line: bytes, stops: tuple[int, ...]) -> list[bytes]:
@@ -199,7 +221,7 @@ def _word_spans(line: bytes, stops: tuple[int, ...]) -> list[tuple[int, int]]:
     spans = []
     for start, stop in zip((0, *stops[:-1]), stops, strict=False):
         text = line[start:stop]
-        spans.append((stop - len(text.lstrip()), stop))
+        spans.append((stop - len(text.lstrip(b" \t")), stop))
     return spans
 
 

@@ -28,7 +28,8 @@ class HamiltonianFile:
     h_r
         (n_r, n_wann, n_wann) eV, element [r, m, n] = <m 0|H|n R>.
     decimals
-        Digits after the point in the matrix elements; None where numbers are in exponent form.
+        Digits after the point in the matrix elements; None where numbers are in exponent form
+        or have a varying number of digits.
     reader
         "fixed-columns" (fast path) or "tolerant".
     cell

@@ -106,13 +106,14 @@ def _read_centres(cursor: Cursor, r_cells: list[list[int]], n_wann: int) -> Floa
     """Read the positions; (n_wann, 3) centres from R = 0, None where it is not listed."""
     count = ElementCount(len(r_cells), n_wann, kind="position matrix elements")
     centres = None
-    for i, (r_cell, parts) in enumerate(BlockSection(cursor, count, _R_COLUMNS)):
+    section = BlockSection(cursor, count, _R_COLUMNS)
+    for i, (r_cell, parts) in enumerate(section):
         if r_cell != r_cells[i]:
             raise InputError(
                 cursor.reader.file,
-                line=cursor.reader.line_no,
-                found=f"the end of the positions for R = {tuple(r_cell)}",
-                expected=f"R = {tuple(r_cells[i])} here, as in the Hamiltonian's blocks",
+                line=section.r_line_no,
+                found=f"positions for R = {tuple(r_cell)}",
+                expected=f"R = {tuple(r_cells[i])}, in the order of the Hamiltonian's blocks",
                 todo="write the file again",
             )
         if centres is None and not any(r_cell):

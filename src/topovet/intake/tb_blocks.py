@@ -48,12 +48,15 @@ class BlockSection:
 
     Attributes
     ----------
+    r_line_no
+        Line of the R read last.
     fixed_decimals
         At the end: decimals of all numbers; None with exponents or varying decimals.
     """
 
     def __init__(self, cursor: Cursor, count: ElementCount, columns: tuple[str, ...]) -> None:
         """Prepare to read lines of m, n and numbers, called `columns` in messages."""
+        self.r_line_no = 0
         self.fixed_decimals: int | None = None
         self._cursor = cursor
         self._count = count
@@ -61,6 +64,7 @@ class BlockSection:
         self._n_numbers = len(columns) - 2
         self._parts = np.empty((self._n_numbers, count.n_wann, count.n_wann))
         self._first_line, self._first_no = b"", 0
+        self._round_ends = [False] * self._n_numbers
         self._lines: FixedLines | None = None
         self._pairs: PairColumns | None = None
 
@@ -75,6 +79,7 @@ class BlockSection:
         parser = LineParser(self._cursor.reader.file, ("R1", "R2", "R3"), 3)
         for _ in range(self._count.n_r):
             words = next_words(self._cursor.reader, parser, self._count)
+            self.r_line_no = self._cursor.reader.line_no
             if not (self._cursor.fast and self._read_block_fast()):
                 self._read_block_by_words()
             yield [int(word) for word in words], self._parts
@@ -131,7 +136,9 @@ class BlockSection:
             cursor.stream, cursor.reader.file, line_no=cursor.reader.line_no, pending=rest
         )
         if self._count.n_done:
-            self._parser.credit(self._first_line, self._first_no, self._count.n_done)
+            self._parser.credit(
+                self._first_line, self._first_no, self._count.n_done, self._round_ends
+            )
         return False
 
     def _store(self, lines: FixedLines, pairs: PairColumns, at: int) -> None:
@@ -142,6 +149,7 @@ class BlockSection:
         columns = slice(at // n_wann, (at + lines.n_lines) // n_wann)
         for part, number in zip(self._parts, lines.layout.numbers, strict=True):
             part[:, columns] = read_numbers(lines, number).reshape(-1, n_wann).T
+        lines.note_round_ends(self._round_ends)
 
     def _read_block_by_words(self) -> None:
         """Read the rest of the block that count.n_done is in."""

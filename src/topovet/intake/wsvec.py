@@ -49,7 +49,8 @@ def read_wsvec(
     ------
     InputError
         Cut short, not integers, wrong counts, labels that the Hamiltonian does not have, records
-        given twice or missing, shifts of another mesh.
+        given twice or missing, shifts of another mesh. Records of an R that the Hamiltonian has
+        lost, while it lists -R, are passed over: the audit counts such R.
     """
     file = str(path)
     check_lattice_vectors(hamiltonian.r_cells, hamiltonian.file)
@@ -83,6 +84,9 @@ class _Found:
 
     def add(self, records: WsRecords) -> None:
         """Check labels and shifts of whole records and keep them."""
+        records = self._without_lost_blocks(records)
+        if not len(records.labels):
+            return
         element = self._elements(records)
         self._check_new(records, element)
         self._check_shifts(records)
@@ -112,13 +116,27 @@ class _Found:
             r_cells, counts.reshape(len(r_cells), n_wann, n_wann), shifts.astype(np.int64)
         )
 
+    def _without_lost_blocks(self, records: WsRecords) -> WsRecords:
+        r_cells, r = self._hamiltonian.r_cells, records.labels[:, :3]
+        too_large = _too_large(r)
+        self._refuse_where(too_large, records, "a lattice vector of the Hamiltonian")
+        lost = (first_rows_of(r_cells, r) < 0) & (first_rows_of(r_cells, -r) >= 0)
+        if not lost.any():
+            return records
+        kept = ~lost
+        return WsRecords(
+            records.labels[kept],
+            records.counts[kept],
+            records.shifts[np.repeat(kept, records.counts)],
+            records.line_no[kept],
+        )
+
     def _elements(self, records: WsRecords) -> IntArray:
         """Index of each record's element in C order of (R, m, n)."""
         n_wann = self._hamiltonian.n_wann
         r, m, n = records.labels[:, :3], records.labels[:, 3], records.labels[:, 4]
         outside = (m < 1) | (m > n_wann) | (n < 1) | (n > n_wann)
         self._refuse_where(outside, records, f"m and n from 1 to {n_wann}")
-        self._refuse_where(_too_large(r), records, "a lattice vector of the Hamiltonian")
         row = first_rows_of(self._hamiltonian.r_cells, r)
         self._refuse_where(row < 0, records, f"an R that {self._hamiltonian.file} lists")
         return (row * n_wann + m - 1) * n_wann + n - 1

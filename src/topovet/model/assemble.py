@@ -6,7 +6,6 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from topovet.arrays import ComplexArray, IntArray
 from topovet.intake.records import HamiltonianFile, WsShifts
 from topovet.intake.ws_shifts import apply_shifts
 from topovet.model.completion import complete
@@ -46,11 +45,3 @@ def assemble(
     r_cells = np.where(np.array(periodic), r_cells, 0)
     model = build_model(r_cells, h_r, spinful=spinful, consume=True)
     return LatticeHamiltonian(model, build_bloch_sum(model))
-
-
-def reorder(lattice: LatticeHamiltonian, order: IntArray) -> LatticeHamiltonian:
-    """The same Hamiltonian with its orbitals in another order: new[i] = old[order[i]]."""
-    model = lattice.model
-    h_r: ComplexArray = np.ascontiguousarray(model.h_r[:, order[:, None], order[None, :]])
-    reordered = TightBindingModel(model.r_cells, h_r, model.spinful)
-    return LatticeHamiltonian(reordered, build_bloch_sum(reordered))

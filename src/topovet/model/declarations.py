@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 
@@ -105,8 +106,8 @@ def declare(
         settings=settings,
         structure_cell=structure_cell,
         structure_offset_ang=_atom_offset(win, structure) if structure_cell is None else None,
-        structure_file="" if structure is None else structure.file,
-        win_file="" if win is None else win.file,
+        structure_file="" if structure is None else Path(structure.file).name,
+        win_file="" if win is None else Path(win.file).name,
         win_fermi_ev=None if win is None else win.fermi_energy_ev,
         use_ws_distance=True if win is None else win.use_ws_distance,
         ws_distance_tol=1e-5 if win is None else win.ws_distance_tol,

@@ -7,8 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 from ase.geometry import find_mic
 
-from topovet.arrays import FloatArray
-from topovet.intake.centre_branches import centre_offsets, suspicious_centres
+from topovet.arrays import BoolArray, FloatArray
+from topovet.intake.centre_branches import (
+    centre_offsets,
+    centres_on_other_sites,
+    suspicious_centres,
+)
 from topovet.intake.records import HamiltonianFile, WsShifts
 from topovet.intake.ws_shifts import rebuild_shifts
 from topovet.model.declarations import Declarations
@@ -34,6 +38,8 @@ class ShiftProposal:
         With every centre on its declared site; None where no centre is suspicious.
     suspects
         Indices of the Wannier functions whose centre is suspicious.
+    elsewhere
+        Those of them whose centre sits on a site that is declared for other functions.
     offsets_ang
         (n_wann,) distance of centre and declared site modulo the supercell; None if unknown.
     """
@@ -43,6 +49,7 @@ class ShiftProposal:
     note: str
     mended: WsShifts | None
     suspects: tuple[int, ...]
+    elsewhere: tuple[int, ...]
     offsets_ang: FloatArray | None
 
 
@@ -66,7 +73,7 @@ def propose_shifts(
     sites = np.array([o.position_frac for o in declared.orbitals]) if declared.orbitals else None
     if centres_cart is None or sites is None or declared.mp_grid is None:
         given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, sites)
-        return ShiftProposal(given, source, note, None, (), None)
+        return ShiftProposal(given, source, note, None, (), (), None)
     cell = declared.crystal.cell
     offsets = centre_offsets(centres_cart, sites, cell, declared.mp_grid)
     suspects = suspicious_centres(offsets, sites, cell)
@@ -85,9 +92,14 @@ def propose_shifts(
         # all of them, not the suspects alone: equivalent centres must stay equivalent, or ties
         # between images are broken and symmetries with them
         mended = _rebuild(hamiltonian, declared, sites @ cell)
+    elsewhere = centres_on_other_sites(centres_cart, sites, cell, declared.mp_grid, suspects)
     return ShiftProposal(
-        given, source, note, mended, tuple(np.nonzero(suspects)[0].tolist()), offsets
+        given, source, note, mended, _indices(suspects), _indices(elsewhere), offsets
     )
+
+
+def _indices(mask: BoolArray) -> tuple[int, ...]:
+    return tuple(np.flatnonzero(mask).tolist())
 
 
 def _as_given(
@@ -99,11 +111,13 @@ def _as_given(
 ) -> tuple[WsShifts | None, str, str]:
     if wsvec is not None:
         return wsvec, "wsvec file", "shifts read from the _wsvec.dat file."
-    if np.all(hamiltonian.degeneracies == 1):
-        return None, "none needed", "every R has degeneracy 1: no shifts are needed."
+    fits = declared.mp_grid is not None and _fits_mesh(hamiltonian, declared.mp_grid)
+    if np.all(hamiltonian.degeneracies == 1) and not fits:
+        note = "every R has degeneracy 1 and the list is no Wigner-Seitz set: nothing to shift."
+        return None, "none needed", note
     if not declared.use_ws_distance:
         return None, "none needed", "the .win file says use_ws_distance = false."
-    if declared.mp_grid is not None and not _fits_mesh(hamiltonian, declared.mp_grid):
+    if declared.mp_grid is not None and not fits:
         return (
             None,
             "not available",

@@ -6,6 +6,7 @@ from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants import results as invariants
 from topovet.model.crystal import Crystal
+from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline import steps_intake, steps_physics, steps_report
 from topovet.pipeline.codec import Codec
@@ -19,6 +20,8 @@ STORED_TYPES = (
     Crystal,
     Declarations,
     HamiltonianAudit,
+    DecayProfile,
+    symmetry.SpinOrder,
     symmetry.SpaceGroup,
     symmetry.TimeReversalTest,
     symmetry.InversionTest,
@@ -70,10 +73,33 @@ def _intake_tasks() -> tuple[Task, ...]:
             needs=("declarations",),
         ),
         Task(
+            "unshifted",
+            "assemble H(k) on the bare R vectors",
+            steps_intake.read_without_shifts,
+            needs=("hamiltonian", "declarations"),
+            stored=False,
+            essential=True,
+        ),
+        Task(
+            "spin-order",
+            "find the order of the spinors",
+            steps_intake.settle_spin_order,
+            needs=("declarations", "unshifted"),
+            essential=True,
+        ),
+        Task(
+            "interlaced",
+            "bring spinors to one order",
+            steps_intake.interlace,
+            needs=("hamiltonian", "spin-order"),
+            stored=False,
+            essential=True,
+        ),
+        Task(
             "shifts",
             "read or rebuild the Wigner-Seitz shifts",
             steps_intake.find_shifts,
-            needs=("hamiltonian", "declarations"),
+            needs=("hamiltonian", "interlaced", "declarations", "spin-order"),
             reads=("wsvec", "centres"),
             stored=False,
             essential=True,
@@ -82,7 +108,7 @@ def _intake_tasks() -> tuple[Task, ...]:
             "shift-test",
             "test suspicious Wannier centres on the Hamiltonian",
             steps_intake.judge_shifts,
-            needs=("hamiltonian", "declarations", "shifts"),
+            needs=("interlaced", "declarations", "shifts"),
             wants=("space-group",),
             essential=True,
         ),
@@ -97,22 +123,29 @@ def _intake_tasks() -> tuple[Task, ...]:
             "lattice",
             "assemble H(R) and H(k)",
             steps_intake.assemble_lattice,
-            needs=("hamiltonian", "declarations", "shifts", "shift-test"),
+            needs=("interlaced", "declarations", "shifts", "shift-test"),
             stored=False,
             essential=True,
         ),
         Task(
+            "decay",
+            "follow the hoppings out to the rim",
+            steps_intake.profile_decay,
+            needs=("declarations", "lattice"),
+            essential=True,
+        ),
+        Task(
             "time-reversal",
-            "test time reversal in both spin orders",
+            "test time reversal",
             steps_intake.check_time_reversal,
-            needs=("hamiltonian", "declarations", "shifts", "lattice"),
+            needs=("interlaced", "declarations", "shifts", "lattice"),
             essential=True,
         ),
         Task(
             "hamiltonian-with-basis",
             "attach the declared orbitals",
             steps_intake.attach_basis,
-            needs=("declarations", "lattice", "time-reversal"),
+            needs=("declarations", "lattice"),
             stored=False,
             essential=True,
         ),
@@ -181,7 +214,15 @@ def _physics_tasks() -> tuple[Task, ...]:
 
 
 def _report_tasks() -> tuple[Task, ...]:
-    judged = ("declarations", "audit", "time-reversal", "inversion", "electrons")
+    judged = (
+        "declarations",
+        "audit",
+        "decay",
+        "spin-order",
+        "time-reversal",
+        "inversion",
+        "electrons",
+    )
     if_there = ("space-group", "gap", "parity", "interpolation")
     return (
         Task(

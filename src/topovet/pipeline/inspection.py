@@ -66,6 +66,8 @@ def inspect_case(case: str | Path, *, observe: Observer = lambda event, text: No
         declared=declared,
         spinful=bool(declared.spinful),
         audit=run.result("audit"),
+        decay=run.result("decay"),
+        spin_order=run.result("spin-order"),
         shift_test=run.result("shift-test"),
         space_group=run.result("space-group"),
         time_reversal=run.result("time-reversal"),
@@ -113,14 +115,18 @@ def _hamiltonian_rows(findings: Findings) -> Iterator[tuple[str, str]]:
     yield "Hermiticity", f"{audit.hermiticity_mev:.3g} meV"
     points = "unknown mesh" if audit.mesh_points is None else f"{audit.mesh_points} mesh points"
     yield "degeneracies", f"add up to {audit.degeneracy_sum:.6g} ({points})"
-    yield "rim of R", f"{audit.rim_mev:.3g} meV, {100 * audit.rim_ratio:.2g} % of the largest hop"
+    decay = findings.decay
+    yield "largest hopping", f"{decay.largest_hopping_mev:.4g} meV"
+    if decay.rim_mev is not None:
+        yield "on the rim", f"{decay.rim_mev:.3g} meV beyond {decay.rim_ang:.1f} angstrom"
     yield "rounding", f"{audit.rounding_mev:.3g} meV in H(k)"
 
 
 def _symmetry_rows(findings: Findings) -> Iterator[tuple[str, str]]:
     test, inversion = findings.time_reversal, findings.inversion
     word = "holds" if test.present else "broken"
-    yield "time reversal", f"{word}, {test.violation_mev:.3g} meV, spin order {test.spin_order}"
+    yield "time reversal", f"{word}, {test.violation_mev:.3g} meV"
+    yield "spin order", findings.spin_order.found
     if test.kramers_splitting_mev is not None:
         yield "Kramers pairs", f"split by {test.kramers_splitting_mev:.3g} meV at most"
     if inversion.present:

@@ -4,33 +4,37 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
+import numpy as np
+
 from topovet.errors import InputError, NoInversionError
 from topovet.intake.audit import audit_hamiltonian
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.intake.case_toml import read_settings
 from topovet.intake.centres import read_centres
 from topovet.intake.hr import read_hr
-from topovet.intake.records import CaseSettings, HamiltonianFile
+from topovet.intake.records import CaseSettings, HamiltonianFile, WsShifts
 from topovet.intake.structure import read_structure
 from topovet.intake.tb import read_tb
 from topovet.intake.win import read_win
 from topovet.intake.wsvec import read_wsvec
-from topovet.model.assemble import LatticeHamiltonian, assemble, reorder
+from topovet.model.assemble import LatticeHamiltonian, assemble
 from topovet.model.basis import OrbitalBasis
 from topovet.model.build_basis import build_basis
+from topovet.model.decay import DecayProfile, measure_decay
 from topovet.model.declarations import Declarations, declare
+from topovet.model.ordering import interlacing_order, reorder_hamiltonian, reorder_shifts
 from topovet.model.shift_choice import ShiftProposal, propose_shifts
 from topovet.pipeline.runner import Context
 from topovet.pipeline.task import NotApplicable
 from topovet.symmetry.inversion import build_inversion, measure_inversion
-from topovet.symmetry.results import ShiftTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import ShiftTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.symmetry.spacegroup import SymmetrySearchError, find_space_group
-from topovet.symmetry.time_reversal import infer_spin, interlacing_order, measure_time_reversal
+from topovet.symmetry.time_reversal import find_spin_order, infer_spin, measure_time_reversal
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class BasedHamiltonian:
-    """Hamiltonian with its orbital basis in the same order; spin interlaced.
+    """Hamiltonian with its orbital basis in the same order.
 
     `basis` is None where no projections are declared, and `reason` says why.
     """
@@ -68,7 +72,7 @@ def read_declarations(*, context: Context, hamiltonian: HamiltonianFile) -> Decl
     if declared.spinful is not None:
         return declared
     lattice = assemble(hamiltonian, None, declared.crystal.periodic, spinful=True)
-    spinful = infer_spin(lattice.model, lattice.bloch)
+    spinful = infer_spin(lattice.bloch)
     if spinful is None:
         raise InputError(
             files.folder,
@@ -79,18 +83,53 @@ def read_declarations(*, context: Context, hamiltonian: HamiltonianFile) -> Decl
     return replace(declared, spinful=spinful)
 
 
-def find_shifts(
+def read_without_shifts(
     *, context: Context, hamiltonian: HamiltonianFile, declarations: Declarations
+) -> LatticeHamiltonian:
+    """H(k) in the file's own order, bare R vectors: exact on the mesh."""
+    return assemble(
+        hamiltonian, None, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+    )
+
+
+def settle_spin_order(
+    *, context: Context, declarations: Declarations, unshifted: LatticeHamiltonian
+) -> SpinOrder:
+    """Interlaced or block: which of them has time reversal."""
+    if not declarations.spinful:
+        return SpinOrder("none", None, None)
+    return find_spin_order(unshifted.bloch, declarations.crystal.periodic)
+
+
+def interlace(
+    *, context: Context, hamiltonian: HamiltonianFile, spin_order: SpinOrder
+) -> HamiltonianFile:
+    """The file's H(R) with spin interlaced."""
+    if spin_order.found != "block":
+        return hamiltonian
+    return reorder_hamiltonian(hamiltonian, interlacing_order(hamiltonian.n_wann))
+
+
+def find_shifts(
+    *,
+    context: Context,
+    hamiltonian: HamiltonianFile,
+    interlaced: HamiltonianFile,
+    declarations: Declarations,
+    spin_order: SpinOrder,
 ) -> ShiftProposal:
-    """Wigner-Seitz shifts from the file, or rebuilt."""
-    files = context.files
-    centres = hamiltonian.centres_cart
+    """Wigner-Seitz shifts from the file, or rebuilt; for interlaced spin."""
+    files, n_wann = context.files, hamiltonian.n_wann
+    in_block = spin_order.found == "block"
+    order = interlacing_order(n_wann) if in_block else np.arange(n_wann)
+    centres = interlaced.centres_cart
     if files.centres is not None:
-        centres = read_centres(files.centres, hamiltonian.n_wann).centres_cart
+        centres = read_centres(files.centres, n_wann).centres_cart[order]
     wsvec = None
     if files.wsvec is not None:
         wsvec = read_wsvec(files.wsvec, hamiltonian, mp_grid=declarations.mp_grid)
-    return propose_shifts(hamiltonian, declarations, wsvec, centres)
+        wsvec = reorder_shifts(wsvec, order) if in_block else wsvec
+    return propose_shifts(interlaced, declarations, wsvec, centres)
 
 
 def search_space_group(*, context: Context, declarations: Declarations) -> SpaceGroup:
@@ -104,44 +143,49 @@ def search_space_group(*, context: Context, declarations: Declarations) -> Space
 def judge_shifts(
     *,
     context: Context,
-    hamiltonian: HamiltonianFile,
+    interlaced: HamiltonianFile,
     declarations: Declarations,
     shifts: ShiftProposal,
     space_group: SpaceGroup | None,
 ) -> ShiftTest:
     """Where centres look wrong: the shifts that break inversion less, the file's or mended ones."""
-    if shifts.mended is None:
-        return ShiftTest("given", shifts.suspects, None, None, "")
-    readings = {"given": shifts.given, "mended": shifts.mended}
-    residuals: dict[str, float | None] = {}
-    for name, reading in readings.items():
-        lattice = assemble(
-            hamiltonian, reading, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+    adopted, given, mended = "given", None, None
+    reason = ""
+    if shifts.elsewhere:
+        reason = "The shifts are used as given."
+    elif shifts.mended is not None:
+        given, mended = (
+            _inversion_residual(interlaced, reading, declarations, space_group)
+            for reading in (shifts.given, shifts.mended)
         )
-        residuals[name] = _inversion_residual(lattice, declarations, space_group)
-    given, mended = residuals["given"], residuals["mended"]
+        adopted, reason = _better_shifts(given, mended)
+    return ShiftTest(adopted, shifts.suspects, shifts.elsewhere, given, mended, reason)
+
+
+def _better_shifts(given: float | None, mended: float | None) -> tuple[str, str]:
     if given is None or mended is None:
-        reason = (
+        return "mended", (
             "Without inversion the shifts cannot be told apart by symmetry; they were rebuilt with "
             "every centre on its declared site."
         )
-        return ShiftTest("mended", shifts.suspects, given, mended, reason)
     if mended < given:
-        reason = (
+        return "mended", (
             f"With the shifts rebuilt from the sites the inversion residual falls from {given:.3g} "
             f"to {mended:.3g} meV; that reading is used."
         )
-        return ShiftTest("mended", shifts.suspects, given, mended, reason)
-    reason = (
+    return "given", (
         f"The shifts as given keep inversion to {given:.3g} meV, rebuilt from the sites to "
         f"{mended:.3g} meV; they are used as given."
     )
-    return ShiftTest("given", shifts.suspects, given, mended, reason)
 
 
 def _inversion_residual(
-    lattice: LatticeHamiltonian, declared: Declarations, space_group: SpaceGroup | None
+    hamiltonian: HamiltonianFile,
+    shifts: WsShifts | None,
+    declared: Declarations,
+    space_group: SpaceGroup | None,
 ) -> float | None:
+    """Inversion residual in meV with some shifts; None where it cannot be measured."""
     if space_group is None or not len(space_group.centres_frac) or not declared.orbitals:
         return None
     crystal = declared.crystal
@@ -150,6 +194,7 @@ def _inversion_residual(
         operator = build_inversion(basis, crystal, space_group.centres_frac[0])
     except NoInversionError:
         return None
+    lattice = assemble(hamiltonian, shifts, crystal.periodic, spinful=bool(declared.spinful))
     test = measure_inversion(lattice.model, lattice.bloch, operator, crystal.periodic)
     return test.violation_mev
 
@@ -177,52 +222,53 @@ def audit(
 def assemble_lattice(
     *,
     context: Context,
-    hamiltonian: HamiltonianFile,
+    interlaced: HamiltonianFile,
     declarations: Declarations,
     shifts: ShiftProposal,
     shift_test: ShiftTest,
 ) -> LatticeHamiltonian:
-    """H(R) and H(k) in the file's own orbital order."""
+    """H(R) and H(k) as they are used from here on."""
     chosen = shifts.mended if shift_test.adopted == "mended" else shifts.given
     return assemble(
-        hamiltonian, chosen, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+        interlaced, chosen, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+    )
+
+
+def profile_decay(
+    *, context: Context, declarations: Declarations, lattice: LatticeHamiltonian
+) -> DecayProfile:
+    """Fall-off of the hoppings with distance."""
+    sites = np.array([o.position_frac for o in declarations.orbitals])
+    fits = len(sites) == lattice.model.n_orb
+    return measure_decay(
+        lattice.model, declarations.crystal, sites if fits else None, declarations.mp_grid
     )
 
 
 def check_time_reversal(
     *,
     context: Context,
-    hamiltonian: HamiltonianFile,
+    interlaced: HamiltonianFile,
     declarations: Declarations,
     shifts: ShiftProposal,
     lattice: LatticeHamiltonian,
 ) -> TimeReversalTest:
-    """Time reversal in both spin orders, judged on the reading without shifts."""
+    """Time reversal, judged on the reading without shifts."""
     periodic = declarations.crystal.periodic
     unshifted = None
     if shifts.given is not None:
-        unshifted = assemble(hamiltonian, None, periodic, spinful=lattice.model.spinful).bloch
+        unshifted = assemble(interlaced, None, periodic, spinful=lattice.model.spinful).bloch
     return measure_time_reversal(lattice.model, lattice.bloch, periodic, unshifted=unshifted)
 
 
 def attach_basis(
-    *,
-    context: Context,
-    declarations: Declarations,
-    lattice: LatticeHamiltonian,
-    time_reversal: TimeReversalTest,
+    *, context: Context, declarations: Declarations, lattice: LatticeHamiltonian
 ) -> BasedHamiltonian:
-    """Declared orbitals beside the Hamiltonian, which is brought to interlaced spin."""
-    if time_reversal.spin_order == "block":
-        lattice = reorder(lattice, interlacing_order(lattice.model.n_orb))
-    if not declarations.orbitals:
+    """Declared orbitals beside the Hamiltonian."""
+    declared, n_orb = declarations.orbitals, lattice.model.n_orb
+    if not declared:
         return BasedHamiltonian(lattice, None, declarations.undeclared_reason)
-    if len(declarations.orbitals) != lattice.model.n_orb:
-        return BasedHamiltonian(
-            lattice,
-            None,
-            f"{len(declarations.orbitals)} projections are declared for {lattice.model.n_orb} "
-            "Wannier functions",
-        )
-    basis = build_basis(declarations.orbitals, declarations.crystal)
-    return BasedHamiltonian(lattice, basis, "")
+    if len(declared) != n_orb:
+        reason = f"{len(declared)} projections are declared for {n_orb} Wannier functions"
+        return BasedHamiltonian(lattice, None, reason)
+    return BasedHamiltonian(lattice, build_basis(declared, declarations.crystal), "")

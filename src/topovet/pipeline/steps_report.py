@@ -4,11 +4,18 @@ from __future__ import annotations
 
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ParityWitness
+from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.report.material import ReportMaterial
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
-from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import (
+    InversionTest,
+    ShiftTest,
+    SpaceGroup,
+    SpinOrder,
+    TimeReversalTest,
+)
 from topovet.verdict.document import InputEntry, Verdict
 from topovet.verdict.findings import Findings
 from topovet.verdict.judge import judge
@@ -19,6 +26,8 @@ def conclude_case(
     context: Context,
     declarations: Declarations,
     audit: HamiltonianAudit,
+    decay: DecayProfile,
+    spin_order: SpinOrder,
     shift_test: ShiftTest,
     space_group: SpaceGroup | None,
     time_reversal: TimeReversalTest,
@@ -33,6 +42,8 @@ def conclude_case(
         declared=declarations,
         spinful=bool(declarations.spinful),
         audit=audit,
+        decay=decay,
+        spin_order=spin_order,
         shift_test=shift_test,
         space_group=space_group,
         time_reversal=time_reversal,
@@ -58,6 +69,8 @@ def gather(
     verdict: Verdict,
     declarations: Declarations,
     audit: HamiltonianAudit,
+    decay: DecayProfile,
+    spin_order: SpinOrder,
     space_group: SpaceGroup | None,
     time_reversal: TimeReversalTest,
     inversion: InversionTest,
@@ -80,5 +93,7 @@ def gather(
         parity=parity,
         interpolation=interpolation,
         audit=audit,
+        decay=decay,
+        spin_order=spin_order,
         tasks=(),
     )

@@ -75,11 +75,13 @@ def _environment() -> jinja2.Environment:
         "ev_number": notation.ev_number,
         "mev": notation.mev,
         "mev_number": notation.mev_number,
+        "angstrom": notation.angstrom,
         "sig": notation.significant,
         "seconds": notation.seconds,
         "k": notation.k_text,
         "z2": notation.z2_text,
         "signed": notation.signed,
+        "sentence": _capitalised,
         "formula": formula_markup,
         "prose": prose_markup,
         "evidence_name": evidence_name,
@@ -153,6 +155,10 @@ def evidence_value(value: Any) -> str:
     if isinstance(value, list | tuple):
         return ", ".join(evidence_value(v) for v in value) or "none"
     return str(value).replace("-", "−") if isinstance(value, int) else str(value)
+
+
+def _capitalised(text: str) -> str:
+    return text[:1].upper() + text[1:]
 
 
 def _worst_first(flag: Flag) -> int:

@@ -7,8 +7,9 @@ from dataclasses import dataclass
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ParityWitness
 from topovet.model.crystal import Crystal
+from topovet.model.decay import DecayProfile
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
-from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import InversionTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.verdict.document import Verdict
 
 TASK_STATES = ("done", "cached", "skipped", "failed", "not-applicable")
@@ -72,6 +73,10 @@ class ReportMaterial:
         Differences to the energies that came with the case, meV; None without such files.
     audit
         Soundness of the file.
+    decay
+        Largest elements (meV) by distance (angstrom).
+    spin_order
+        The order of the file's functions, with the violation (meV) in either.
     tasks
         The task graph as it was run.
     log_note
@@ -89,5 +94,7 @@ class ReportMaterial:
     parity: ParityWitness | None
     interpolation: InterpolationCheck | None
     audit: HamiltonianAudit
+    decay: DecayProfile
+    spin_order: SpinOrder
     tasks: tuple[TaskEntry, ...]
     log_note: str = ""

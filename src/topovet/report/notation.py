@@ -71,6 +71,11 @@ def mev_number(value: float | None) -> str:
     return _minus(f"{value:.{decimals}f}")
 
 
+def angstrom(value: float) -> str:
+    """A distance in angstrom with its unit: three digits, tiny ones as a bound."""
+    return "< 0.001 Å" if 0 < value < 1e-3 else f"{significant(value)} Å"
+
+
 def significant(value: float, digits: int = 3) -> str:
     """A number with so many significant digits, never in exponent form above 0.0001."""
     if not math.isfinite(value):

@@ -35,17 +35,32 @@ class SpaceGroup:
 
 
 @dataclass(frozen=True, slots=True)
+class SpinOrder:
+    """How a spinful file orders its Wannier functions.
+
+    Attributes
+    ----------
+    found
+        "interlaced" (up, down, up, …), "block" (all up, then all down), or "none" when spinless.
+    interlaced_mev, block_mev
+        Violation of time reversal in either order; None where there is nothing to compare.
+    """
+
+    found: str
+    interlaced_mev: float | None
+    block_mev: float | None
+
+
+@dataclass(frozen=True, slots=True)
 class TimeReversalTest:
-    """Whether H(k) has time reversal, in which spin order.
+    """Whether H(k) has time reversal.
 
     Attributes
     ----------
     present
         The violation is within `tolerance_mev`; judged on the unshifted reading where there is one.
-    spin_order
-        "interlaced", "block" or "none" (spinless): the order that was found and is used.
     violation_mev
-        Spectral norm of Theta H(k) Theta^-1 - H(-k), largest over the sampled k, for `spin_order`.
+        Spectral norm of Theta H(k) Theta^-1 - H(-k), largest over the sampled k.
     violation_r_mev
         The same in real space, Theta H(R) Theta^-1 - H(R), largest over R.
     violation_unshifted_mev
@@ -53,8 +68,6 @@ class TimeReversalTest:
         shifts were applied. The shifts share hoppings between images whose centres tie within a
         tolerance, and can break time reversal by some meV between the mesh points of a
         Hamiltonian that has it.
-    other_order_mev
-        Like violation_mev for the other spin order; None when spinless.
     kramers_splitting_mev
         Largest splitting of a Kramers pair at the TRIM; None when spinless.
     spin_mixing_mev
@@ -63,11 +76,9 @@ class TimeReversalTest:
     """
 
     present: bool
-    spin_order: str
     violation_mev: float
     violation_r_mev: float
     violation_unshifted_mev: float | None
-    other_order_mev: float | None
     kramers_splitting_mev: float | None
     spin_mixing_mev: float | None
     tolerance_mev: float
@@ -136,6 +147,8 @@ class ShiftTest:
         "given" or "mended": the shifts that are used.
     suspects
         Wannier functions whose centre is suspicious (0-based).
+    elsewhere
+        Those of them whose centre sits on a site that is declared for other functions.
     given_mev, mended_mev
         Inversion residual with either; None where there is no inversion to test them on.
     reason
@@ -144,6 +157,7 @@ class ShiftTest:
 
     adopted: str
     suspects: tuple[int, ...]
+    elsewhere: tuple[int, ...]
     given_mev: float | None
     mended_mev: float | None
     reason: str

@@ -29,8 +29,8 @@ FERMI_OUTSIDE_EV = 0.025
 scheme; by more it is flagged."""
 
 RIM_RATIO = 0.05
-"""Largest element on the rim of the R set over the largest hopping: above this the range is cut
-(practice)."""
+"""Largest hopping on the rim over the largest hopping of all: above this the range is cut
+(practice; the 4 x 4 x 4 meshes among the real cases reach 0.043, denser ones 0.002 to 0.016)."""
 
 MESH_ENERGY_MEV = 5.0
 """Occupied energies on the coarse mesh that differ from the first-principles ones by more are

@@ -6,9 +6,16 @@ from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ParityWitness
+from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
-from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import (
+    InversionTest,
+    ShiftTest,
+    SpaceGroup,
+    SpinOrder,
+    TimeReversalTest,
+)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -26,6 +33,8 @@ class Findings:
     declared: Declarations
     spinful: bool
     audit: HamiltonianAudit
+    decay: DecayProfile
+    spin_order: SpinOrder
     shift_test: ShiftTest | None
     space_group: SpaceGroup | None
     time_reversal: TimeReversalTest

@@ -58,11 +58,9 @@ def _missing_partners(findings: Findings) -> Iterator[Flag]:
     audit = findings.audit
     if not audit.n_missing_partner:
         return
-    gap = findings.direct_gap_mev
-    large = gap is not None and audit.missing_partner_mev >= 0.5 * gap
     yield Flag(
         "missing-partner-r",
-        "error" if large else "warning",
+        "warning",
         f"{audit.n_missing_partner} R vectors are listed without -R "
         f"({_cells(audit.missing_partner_r)}), largest element there "
         f"{audit.missing_partner_mev:.3g} meV; the partner was supplied as H(R)†.",
@@ -72,45 +70,69 @@ def _missing_partners(findings: Findings) -> Iterator[Flag]:
 
 
 def _range(findings: Findings) -> Iterator[Flag]:
-    audit, gap = findings.audit, findings.direct_gap_mev
-    lost = (
-        audit.mesh_points is not None
-        and abs(audit.degeneracy_sum - audit.mesh_points) > 1e-6
-        and audit.shift_source != "none needed"
-    )
-    if lost:
+    audit, decay = findings.audit, findings.decay
+    points, total = audit.mesh_points, audit.degeneracy_sum
+    if points is not None and abs(total - points) > 1e-6 and _is_wigner_seitz(findings):
         yield Flag(
             "range-truncated",
             "error",
-            f"the degeneracies of the R vectors add up to {audit.degeneracy_sum:.3f}, not to the "
-            f"{audit.mesh_points} points of the mesh: R vectors are missing or the mesh is "
-            "another one, so that not even the energies on the mesh are right.",
-            {"degeneracy_sum": audit.degeneracy_sum, "mesh_points": audit.mesh_points},
+            f"the degeneracies of the R vectors add up to {total:.3f}, not to the {points} points "
+            "of the mesh: R vectors are missing or the mesh is another one, so that not even the "
+            "energies on the mesh are right.",
+            {"degeneracy_sum": total, "mesh_points": points},
             "Use the _hr.dat and the .win file of the same run, with all R vectors.",
         )
-    elif audit.rim_ratio > criteria.RIM_RATIO:
+    elif points is not None and total < points - 1e-6:
         yield Flag(
             "range-truncated",
             "warning",
-            f"elements of {audit.rim_mev:.3g} meV stand on the rim of the R vectors, "
-            f"{100 * audit.rim_ratio:.1f} % of the largest hopping.",
-            {"rim_meV": audit.rim_mev, "rim_ratio": audit.rim_ratio, "direct_gap_meV": gap},
+            f"{audit.n_r} R vectors, each with degeneracy 1, stand for a mesh of {points} points: "
+            "the list was cut, or written by another convention.",
+            {"n_r": audit.n_r, "mesh_points": points},
+            "Use the _hr.dat that Wannier90 wrote, with all R vectors.",
+        )
+    elif decay.rim_mev is not None and decay.rim_mev > (
+        criteria.RIM_RATIO * decay.largest_hopping_mev
+    ):
+        yield Flag(
+            "range-truncated",
+            "warning",
+            f"hoppings of {decay.rim_mev:.3g} meV remain beyond {decay.rim_ang:.1f} angstrom, at "
+            "the rim of the supercell of the mesh: interpolated bands carry errors of that size.",
+            {"rim_meV": decay.rim_mev, "largest_hopping_meV": decay.largest_hopping_mev},
             "Repeat the Wannier90 run on a denser mesh and compare.",
         )
+
+
+def _is_wigner_seitz(findings: Findings) -> bool:
+    """Degeneracies other than 1 are the mark of a list that Wannier90 made for a mesh."""
+    return not findings.audit.all_degeneracies_one
 
 
 def _centres(findings: Findings) -> Iterator[Flag]:
     test = findings.shift_test
     if test is None or not test.suspects:
         return
-    names = ", ".join(str(i + 1) for i in test.suspects[:12])
     offsets = findings.audit.centre_offsets_ang
     furthest = max((offsets[i] for i in test.suspects), default=0.0)
+    misplaced = 2 * len(test.elsewhere) > len(test.suspects)
+    if misplaced:
+        yield Flag(
+            "orbital-declaration-wrong",
+            "error",
+            f"{len(test.elsewhere)} Wannier functions ({_numbers(test.elsewhere)}) are centred on "
+            "sites declared for other functions: the projections do not stand in the order of the "
+            "Hamiltonian.",
+            {"wannier_functions": [i + 1 for i in test.elsewhere]},
+            "Take the .win file that the Hamiltonian was made with; Wannier90 orders projections "
+            "by line, site, l, mr and spin.",
+        )
+        return
     yield Flag(
         "centres-off",
         "warning",
-        f"the centres of {len(test.suspects)} Wannier functions ({names}) lie up to "
-        f"{furthest:.2f} angstrom from their declared sites. {test.reason}",
+        f"the centres of {len(test.suspects)} Wannier functions ({_numbers(test.suspects)}) lie up "
+        f"to {furthest:.2f} angstrom from their declared sites. {test.reason}",
         {
             "wannier_functions": [i + 1 for i in test.suspects],
             "largest_offset_ang": furthest,
@@ -121,6 +143,11 @@ def _centres(findings: Findings) -> Iterator[Flag]:
         "Run Wannier90 again with guiding_centres = true; bands that it interpolated with these "
         "centres are wrong between mesh points.",
     )
+
+
+def _numbers(functions: tuple[int, ...]) -> str:
+    shown = ", ".join(str(i + 1) for i in functions[:12])
+    return shown + (", …" if len(functions) > 12 else "")
 
 
 def _structure(findings: Findings) -> Iterator[Flag]:

@@ -38,16 +38,16 @@ def witness_flags(findings: Findings) -> Iterator[Flag]:
 
 
 def _spin_order(findings: Findings) -> Iterator[Flag]:
-    test = findings.time_reversal
-    if test.spin_order != "block":
+    order = findings.spin_order
+    if order.found != "block":
         return
     yield Flag(
         "spin-order-mismatch",
         "warning",
         f"spinors are ordered all up, then all down: time reversal holds to "
-        f"{test.violation_mev:.3g} meV in that order and misses by {test.other_order_mev:.3g} meV "
-        "in Wannier90's. The order found is used.",
-        {"block_meV": test.violation_mev, "interlaced_meV": test.other_order_mev},
+        f"{order.block_mev:.3g} meV in that order and misses by {order.interlaced_mev:.3g} meV in "
+        "Wannier90's. The order found is used.",
+        {"block_meV": order.block_mev, "interlaced_meV": order.interlaced_mev},
         "Reorder the file to up, down of each orbital, or keep it and mind this in other tools.",
     )
 
@@ -106,26 +106,28 @@ def _spin_orbit(findings: Findings) -> Iterator[Flag]:
 
 def _inversion(findings: Findings) -> Iterator[Flag]:
     test, gap = findings.inversion, findings.direct_gap_mev
-    if (
-        not test.present
-        or test.violation_mev is None
-        or test.violation_mev <= (criteria.SYMMETRY_MEV)
-    ):
+    violation, at_trim = test.violation_mev, test.violation_trim_mev
+    if violation is None or at_trim is None or violation <= criteria.SYMMETRY_MEV:
         return
+    readable = findings.parity is None or findings.parity.status == "ok"
     yield Flag(
         "symmetry-broken",
-        "warning",
-        f"the Hamiltonian breaks the inversion of its structure by {test.violation_mev:.3g} meV "
-        f"between mesh points and {test.violation_trim_mev:.3g} meV at the TRIM; the indices are "
-        "those of its inversion-symmetric average.",
+        "warning" if readable else "error",
+        f"the Hamiltonian breaks the inversion of its structure by {violation:.3g} meV between "
+        f"mesh points and {at_trim:.3g} meV at the TRIM; "
+        + (
+            "the indices are those of its inversion-symmetric average."
+            if readable
+            else "either it lacks this symmetry or its orbitals are not the declared ones."
+        ),
         {
-            "violation_meV": test.violation_mev,
-            "violation_trim_meV": test.violation_trim_mev,
+            "violation_meV": violation,
+            "violation_trim_meV": at_trim,
             "violation_real_space_meV": test.violation_r_mev,
             "direct_gap_meV": gap,
         },
         "Read the Hamiltonian with its _wsvec.dat file (or centres and mp_grid); if that is done, "
-        "use projections that respect the symmetry and check the window.",
+        "check the declared projections, use some that respect the symmetry, and check the window.",
     )
 
 
@@ -235,11 +237,13 @@ def _interpolation(findings: Findings) -> Iterator[Flag]:
     mended = findings.shift_test is not None and findings.shift_test.adopted == "mended"
     path = check.path_occupied_mev
     if path is not None and path > criteria.PATH_ENERGY_MEV and not mended:
+        # from the sites the bands come out differently, on average closer to first principles
+        by_choice = findings.audit.shift_source == "rebuilt from declared sites"
         yield Flag(
             "interpolation-poor",
-            "warning",
-            f"occupied bands differ from Wannier90's own interpolation by up to {path:.3g} meV: "
-            f"the shifts used here are {findings.audit.shift_source}.",
+            "info" if by_choice else "warning",
+            f"occupied bands differ from Wannier90's own interpolation by up to {path:.3g} meV "
+            f"(Wigner-Seitz shifts here: {findings.audit.shift_source}).",
             {"path_occupied_meV": path, "path_all_meV": check.path_all_mev},
             "Give the _wsvec.dat file of the same run.",
         )
@@ -272,7 +276,7 @@ def _parity(findings: Findings) -> Iterator[Flag]:
 
 def _error_bar(findings: Findings) -> Iterator[Flag]:
     radius = robustness_radius(findings)
-    if radius is None:
+    if radius is None or findings.gap is None or findings.gap.status == "gapless":
         return
     budget = error_budget(findings)
     total = total_error(budget)

@@ -82,7 +82,7 @@ def judge(
         time_reversal=TimeReversalEntry(
             present=findings.time_reversal.present,
             violation_meV=_finite(findings.time_reversal.violation_mev),
-            spin_order=findings.time_reversal.spin_order,
+            spin_order=findings.spin_order.found,
         ),
         inversion=InversionEntry(
             present=findings.inversion.present,

@@ -6,7 +6,7 @@ import numpy as np
 
 from topovet.intake.centre_branches import (
     centre_offsets,
-    mend_centres,
+    centres_on_other_sites,
     site_spacings,
     suspicious_centres,
 )
@@ -49,8 +49,11 @@ def test_beyond_half_way_is_suspicious_and_the_bond_centre_is_not() -> None:
     ]
 
 
-def test_only_suspects_are_put_back() -> None:
-    centres = SITES @ CELL + np.array([[0.1, 0, 0], [0, 9.0, 0], [0, 0, 0.2]])
-    mended = mend_centres(centres, SITES, CELL, np.array([False, True, False]))
-    np.testing.assert_array_equal(mended[[0, 2]], centres[[0, 2]])
-    np.testing.assert_allclose(mended[1], SITES[1] @ CELL)
+def test_centre_on_another_site_is_told_from_one_that_is_nowhere() -> None:
+    mesh = (4, 4, 4)
+    cart = SITES @ CELL
+    nowhere = cart[1] + 0.37 * CELL[0] + 0.21 * CELL[1]
+    centres = np.array([cart[1] + 4 * CELL[2] + 0.05, nowhere, cart[2]])
+    suspects = np.array([True, True, False])
+    found = centres_on_other_sites(centres, SITES, CELL, mesh, suspects)
+    assert found.tolist() == [True, False, False]

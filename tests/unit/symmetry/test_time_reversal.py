@@ -6,13 +6,14 @@ import numpy as np
 import pytest
 
 from lattice_models import LatticeModel, fu_kane_mele, kane_mele
-from topovet.model.assemble import LatticeHamiltonian, reorder
+from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import TightBindingModel, build_model
+from topovet.model.ordering import interlacing_order
 from topovet.symmetry.results import TimeReversalTest
 from topovet.symmetry.time_reversal import (
+    find_spin_order,
     infer_spin,
-    interlacing_order,
     measure_time_reversal,
     spin_operator,
 )
@@ -24,30 +25,33 @@ def _lattice(model: LatticeModel) -> LatticeHamiltonian:
 
 
 def _measure(lattice: LatticeHamiltonian) -> TimeReversalTest:
-    return measure_time_reversal(lattice.model, lattice.bloch, (True, True, True))
+    return measure_time_reversal(lattice.model, lattice.bloch, PERIODIC)
 
 
+PERIODIC = (True, True, True)
 FKM = _lattice(fu_kane_mele())
 
 
 def test_model_with_time_reversal() -> None:
     test = _measure(FKM)
     assert test.present
-    assert test.spin_order == "interlaced"
     assert test.violation_mev < 1e-9
     assert test.kramers_splitting_mev == pytest.approx(0, abs=1e-9)
-    assert test.other_order_mev is not None
-    assert test.other_order_mev > 10
 
 
-def test_block_order_is_found_and_undone() -> None:
-    n = FKM.model.n_orb
-    block = np.argsort(interlacing_order(n))
-    shuffled = reorder(FKM, block)
-    test = _measure(shuffled)
-    assert (test.present, test.spin_order) == (True, "block")
-    back = reorder(shuffled, interlacing_order(n))
-    np.testing.assert_array_equal(back.model.h_r, FKM.model.h_r)
+def test_spin_order_is_found() -> None:
+    interlaced = find_spin_order(FKM.bloch, PERIODIC)
+    assert interlaced.found == "interlaced"
+    assert interlaced.interlaced_mev == pytest.approx(0, abs=1e-9)
+    assert interlaced.block_mev is not None
+    assert interlaced.block_mev > 10
+    block = np.argsort(interlacing_order(FKM.model.n_orb))
+    shuffled = TightBindingModel(
+        FKM.model.r_cells, FKM.model.h_r[:, block[:, None], block], spinful=True
+    )
+    order = find_spin_order(build_bloch_sum(shuffled), PERIODIC)
+    assert order.found == "block"
+    assert order.block_mev == pytest.approx(0, abs=1e-9)
 
 
 @pytest.mark.parametrize("field_ev", [0.0015, 0.05])
@@ -68,9 +72,7 @@ def test_spoilt_shifts_do_not_hide_time_reversal() -> None:
     origin = len(h) // 2
     h[origin] += 0.005 * np.kron(np.eye(FKM.model.n_orb // 2), np.diag([1.0, -1.0]))
     spoilt = TightBindingModel(FKM.model.r_cells, h, True)
-    test = measure_time_reversal(
-        spoilt, build_bloch_sum(spoilt), (True, True, True), unshifted=FKM.bloch
-    )
+    test = measure_time_reversal(spoilt, build_bloch_sum(spoilt), PERIODIC, unshifted=FKM.bloch)
     assert test.present
     assert test.violation_mev == pytest.approx(10)
     assert test.violation_unshifted_mev == pytest.approx(0, abs=1e-9)
@@ -78,7 +80,7 @@ def test_spoilt_shifts_do_not_hide_time_reversal() -> None:
 
 def test_odd_number_of_spinor_components_has_none() -> None:
     model = build_model(np.zeros((1, 3), int), np.eye(3, dtype=complex)[None], spinful=True)
-    test = measure_time_reversal(model, build_bloch_sum(model), (True, True, True))
+    test = measure_time_reversal(model, build_bloch_sum(model), PERIODIC)
     assert not test.present
 
 
@@ -91,14 +93,14 @@ def test_spin_mixing_vanishes_without_spin_orbit_coupling() -> None:
 
 
 def test_spin_is_inferred_only_where_it_is_certain() -> None:
-    assert infer_spin(FKM.model, FKM.bloch) is True
+    assert infer_spin(FKM.bloch) is True
     spinless = kane_mele(lambda_so=0.0)
     up = np.arange(0, spinless.h_r.shape[1], 2)
     real = build_model(spinless.r_cells, spinless.h_r[:, up[:, None], up[None, :]], spinful=False)
     # two orbitals without spin are also two equal spins of one orbital only if H says so
-    assert infer_spin(real, build_bloch_sum(real)) is False
+    assert infer_spin(build_bloch_sum(real)) is False
     doubled = _lattice(spinless)
-    assert infer_spin(doubled.model, doubled.bloch) is None
+    assert infer_spin(doubled.bloch) is None
 
 
 def test_operator_squares_to_minus_one() -> None:

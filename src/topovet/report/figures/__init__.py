@@ -24,8 +24,8 @@ def build_figures(material: ReportMaterial) -> dict[str, str]:
     figures = {"zone": zone_figure(material.crystal, trim)}
     if material.bands is not None:
         figures |= _band_figures(material)
-    if material.audit.shells_ang:
-        figures["decay"] = decay_figure(material.audit)
+    if material.decay.distances_ang:
+        figures["decay"] = decay_figure(material.decay)
     if material.tasks:
         figures["tasks"] = tasks_figure(material.tasks)
     return figures

@@ -13,7 +13,12 @@ from topovet.arrays import FloatArray
 from topovet.invariants.results import TrimParity
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
-from topovet.report.figures.parity_marks import PLOT_WIDTH_PT, draw_parities, legend_marks
+from topovet.report.figures.parity_marks import (
+    PLOT_HEIGHT_PT,
+    PLOT_WIDTH_PT,
+    draw_parities,
+    legend_marks,
+)
 from topovet.report.notation import ev, one_line
 from topovet.spectrum.results import BandPath, GapSample
 
@@ -23,8 +28,10 @@ if TYPE_CHECKING:
 
 _WIDTH_IN, _HEIGHT_IN = 8.8, 5.4
 _LETTER_PT = 8.0
-_COINCIDE_EV = 1e-4
+_COINCIDE_PT = 0.1
+"""Bands that stay this close are drawn once: a fraction of the finest line."""
 _DEPTH_EV, _HEADROOM_EV = 8.0, 2.5
+
 
 @dataclass(frozen=True, slots=True)
 class EnergyZero:
@@ -211,7 +218,8 @@ def _draw_fermi(axes: Axes, fermi_ev: float | None, zero: EnergyZero) -> None:
 
 def _draw_bands(axes: Axes, bands: BandPath, energies: FloatArray, n_occ: int) -> None:
     low, high = axes.get_ylim()
-    for band in distinct_bands(energies, n_occ):
+    coincide_ev = _COINCIDE_PT * (high - low) / PLOT_HEIGHT_PT
+    for band in distinct_bands(energies, n_occ, coincide_ev):
         if energies[:, band].min() > high or energies[:, band].max() < low:
             continue
         filled = band < n_occ
@@ -225,17 +233,18 @@ def _draw_bands(axes: Axes, bands: BandPath, energies: FloatArray, n_occ: int) -
             )
 
 
-def distinct_bands(energies: FloatArray, n_occ: int) -> list[int]:
+def distinct_bands(energies: FloatArray, n_occ: int, coincide_ev: float) -> list[int]:
     """Bands to draw: one of each set that coincides along the whole path (Kramers pairs).
 
-    A filled and an empty band are both kept even where they coincide.
+    A filled and an empty band are both kept even where they coincide, and every band lies within
+    `coincide_ev` of one that is drawn.
     """
-    distance = np.abs(np.diff(energies, axis=1)).max(axis=0)
-    return [
-        band
-        for band in range(energies.shape[1])
-        if band in (0, n_occ) or distance[band - 1] > _COINCIDE_EV
-    ]
+    drawn: list[int] = []
+    for band in range(energies.shape[1]):
+        fresh = band in (0, n_occ)
+        if fresh or np.abs(energies[:, band] - energies[:, drawn[-1]]).max() > coincide_ev:
+            drawn.append(band)
+    return drawn
 
 
 def _legend(figure: Figure, axes: Axes, met: set[str], gap: GapSample | None) -> None:

@@ -11,7 +11,7 @@ from scipy.spatial import Voronoi
 
 from topovet.arrays import FloatArray, IntArray
 
-_SAME = 1e-6
+_SAME = 1e-4
 """Lengths below this share of the shortest reciprocal vector count as zero."""
 
 
@@ -73,25 +73,24 @@ def brillouin_zone(reciprocal: FloatArray) -> Zone:
     lattice = _integers(len(short)) @ short
     home = len(lattice) // 2
     diagram = Voronoi(lattice)
-    vertices, merged = _merged(diagram.vertices, _SAME * np.linalg.norm(short, axis=1).min())
+    # corners of other cells may lie at any distance, so only those of the home cell are touched
+    region = np.array(sorted(diagram.regions[diagram.point_region[home]]))
+    corners, merged = _merged(diagram.vertices[region], _SAME * float(_lengths(short).min()))
     faces, bounding = [], []
     for pair, ridge in zip(diagram.ridge_points, diagram.ridge_vertices, strict=True):
-        corners = np.unique(merged[ridge])
-        if home in pair and len(corners) >= len(short):
-            faces.append(corners)
+        if home not in pair:
+            continue
+        face = np.unique(merged[np.searchsorted(region, ridge)])
+        if len(face) >= len(short):
+            faces.append(face)
             bounding.append(lattice[pair.sum() - home])
-    lengths = np.linalg.norm(bounding, axis=1)
-    normals = np.array(bounding) / lengths[:, None]
-    kept = np.unique(np.concatenate(faces))
-    corners = vertices[kept]
+    normals = np.array(bounding) / _lengths(np.array(bounding))[:, None]
+    offsets = _lengths(np.array(bounding)) / 2
     if len(short) == 2:
         around = np.argsort(np.arctan2(corners[:, 1], corners[:, 0]))
-        return Zone(corners[around], normals, lengths / 2, ())
-    loops = tuple(
-        _around(corners, np.searchsorted(kept, face), normal)
-        for face, normal in zip(faces, normals, strict=True)
-    )
-    return Zone(corners, normals, lengths / 2, loops)
+        return Zone(corners[around], normals, offsets, ())
+    loops = tuple(_around(corners, f, n) for f, n in zip(faces, normals, strict=True))
+    return Zone(corners, normals, offsets, loops)
 
 
 def nearest_images(point: FloatArray, reciprocal: FloatArray) -> FloatArray:
@@ -107,14 +106,19 @@ def _integers(d: int) -> FloatArray:
     return np.array(list(itertools.product(range(-2, 3), repeat=d)), dtype=float)
 
 
+def _lengths(vectors: FloatArray) -> FloatArray:
+    return np.asarray(np.linalg.norm(vectors, axis=1))
+
+
 def _merged(points: FloatArray, tolerance: float) -> tuple[FloatArray, IntArray]:
-    """Points with near-coincident ones replaced by one, and the number of each old point there.
+    """Points with near-coincident ones replaced by the first, and each old point's number there.
 
     Where more than the generic number of cells meet, Qhull returns one corner several times.
     """
-    cells = np.round(points / (100 * tolerance)).astype(np.int64)
-    _, first, number = np.unique(cells, axis=0, return_index=True, return_inverse=True)
-    return points[first], number.reshape(-1)
+    apart = np.linalg.norm(points[:, None] - points[None], axis=2)
+    first = np.argmax(apart < tolerance, axis=1)
+    kept, number = np.unique(first, return_inverse=True)
+    return points[kept], np.asarray(number, dtype=np.int64)
 
 
 def _around(corners: FloatArray, face: IntArray, normal: FloatArray) -> IntArray:

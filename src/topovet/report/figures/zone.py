@@ -26,7 +26,12 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 _LABEL_PT = 8.5
-_BACKING: dict[str, Any] = {"facecolor": palette.WHITE, "alpha": 0.9, "edgecolor": "none", "pad": 0.8}
+_BACKING: dict[str, Any] = {
+    "facecolor": palette.WHITE,
+    "alpha": 0.9,
+    "edgecolor": "none",
+    "pad": 0.8,
+}
 """Behind text, so that no line strikes it through."""
 
 
@@ -111,11 +116,16 @@ def _drawmomenta_of(axes: Axes, scene: Scene, momenta: Sequence[Momentum]) -> No
         ring, face, ink = {
             1: (palette.FILLED, palette.WHITE, palette.FILLED),
             -1: (palette.ODD, palette.ODD, palette.WHITE),
-            None: (palette.MUTED, palette.WHITE, palette.MUTED),
+            None: (palette.MUTED, palette.RULE, palette.MUTED),
         }[momentum.delta]
-        colours: dict[str, Any] = {"markerfacecolor": face, "markeredgecolor": ring, "markeredgewidth": 1.5}
-        axes.plot(*place, "o", markersize=MARK_PT, zorder=5, **colours)
-        sign = {1: "+", -1: "−", None: "?"}[momentum.delta]
+        colours: dict[str, Any] = {
+            "markerfacecolor": face,
+            "markeredgecolor": ring,
+            "markeredgewidth": 1.5,
+        }
+        size = MARK_PT if momentum.delta else 0.55 * MARK_PT
+        axes.plot(*place, "o", markersize=size, zorder=5, **colours)
+        sign = {1: "+", -1: "−", None: ""}[momentum.delta]
         _write(axes, place, sign, fontsize=11, fontweight="bold", color=ink, zorder=6)
         at = label / POINTS_PER_RADIUS
         _write(axes, at, momentum.label, fontsize=_LABEL_PT, zorder=5.5, bbox=_BACKING)

@@ -114,17 +114,21 @@ def best_scene(zone: Zone, reciprocal: FloatArray, momenta: Sequence[Momentum]) 
         return _scene(zone, reciprocal, momenta, np.eye(2))
     views = [_view(a, e) for e in (14, 20, 26, 32) for a in range(0, 360, 12)]
     scenes = [_scene(zone, reciprocal, momenta, turn) for turn in views]
-    return min(scenes, key=_crowding)
+    return min(scenes, key=lambda scene: _badness(scene, zone))
 
 
-def _crowding(scene: Scene) -> float:
-    """Overlap of labels in square points, plus a penalty for marks or axes that nearly coincide."""
+def _badness(scene: Scene, zone: Zone) -> float:
+    """Overlap of labels in square points, less what speaks for the view.
+
+    For it: marks that stand apart, axes that are not seen end-on, faces not seen edge-on (a
+    hexagonal prism would look like a box).
+    """
     apart = np.linalg.norm(scene.marks[:, None] - scene.marks[None], axis=2)
     np.fill_diagonal(apart, np.inf)
     axis = np.linalg.norm(scene.tips - scene.leaves, axis=1).min()
-    return float(
-        round(scene.labels.overlap - 400 * min(apart.min(), 0.4) - 300 * min(axis, 0.2), 3)
-    )
+    face = np.abs(zone.normals @ scene.turn[2]).min()
+    merit = 400 * min(apart.min(), 0.4) + 300 * min(axis, 0.2) + 800 * min(face, 0.12)
+    return float(round(scene.labels.overlap - merit, 3))
 
 
 def _view(azimuth: float, elevation: float) -> FloatArray:

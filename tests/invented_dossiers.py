@@ -14,9 +14,10 @@ import numpy as np
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ParityWitness, TrimParity
 from topovet.model.crystal import Crystal
+from topovet.model.decay import DecayProfile
 from topovet.report.material import ReportMaterial, TaskEntry
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
-from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import InversionTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.verdict.document import (
     CaseEntry,
     ConfidenceEntry,
@@ -43,9 +44,12 @@ HOSTILE = "<script>alert('1')</script>\"\n../../etc & $x^2$ \x1b[31m\u202e{{ 7*7
 
 _MASS = {3: 2.0, 2: 1.0}
 _SPECIAL = {
-    3: [("G", (0, 0, 0)), ("M", (0.5, 0, 0)), ("K", (1 / 3, 1 / 3, 0)), ("G", (0, 0, 0))]
-    + [("A", (0, 0, 0.5)), ("L", (0.5, 0, 0.5)), ("H", (1 / 3, 1 / 3, 0.5)), ("A", (0, 0, 0.5))],
-    2: [("G", (0, 0, 0)), ("M", (0.5, 0, 0)), ("K", (1 / 3, 1 / 3, 0)), ("G", (0, 0, 0))],
+    3: (
+        *(("G", (0, 0, 0)), ("M", (0.5, 0, 0)), ("K", (1 / 3, 1 / 3, 0)), ("G", (0, 0, 0))),
+        *(("A", (0, 0, 0.5)), ("L", (0.5, 0, 0.5)), ("H", (1 / 3, 1 / 3, 0.5))),
+        ("A", (0, 0, 0.5)),
+    ),
+    2: (("G", (0, 0, 0)), ("M", (0.5, 0, 0)), ("K", (1 / 3, 1 / 3, 0)), ("G", (0, 0, 0))),
 }
 _NOT_BUILT = "not tested by this version"
 
@@ -67,7 +71,7 @@ def level_parities(k: np.ndarray, dimension: int) -> np.ndarray:
 
 
 def band_path(dimension: int, reciprocal: np.ndarray) -> BandPath:
-    """Forty points a leg, with a jump from K to A in 3D taken as a leg of no length."""
+    """Forty points a leg, without jumps."""
     stops = _SPECIAL[dimension]
     k, labels, at = [np.array(stops[0][1], dtype=float)], [stops[0][0]], [0]
     for (_, start), (label, stop) in itertools.pairwise(stops):
@@ -126,7 +130,6 @@ def space_group() -> SpaceGroup:
 
 
 def audit() -> HamiltonianAudit:
-    distance = np.linspace(0, 26, 60)
     return HamiltonianAudit(
         file="lantern_hr.dat.gz",
         header="written by an invented run",
@@ -140,16 +143,29 @@ def audit() -> HamiltonianAudit:
         n_missing_partner=0,
         missing_partner_mev=0.0,
         degeneracy_sum=216.0,
+        all_degeneracies_one=False,
         mesh_points=216,
         onsite_scale_ev=4.7,
         rim_mev=0.8,
         rim_ratio=0.0007,
         rounding_mev=0.004,
-        shells_ang=tuple(distance.tolist()),
-        shells_mev=tuple((1500 * np.exp(-distance / 3.4) * (1.5 + np.sin(3 * distance))).tolist()),
+        shells_ang=(0.0, 4.21),
+        shells_mev=(2400.0, 310.0),
         shift_source="wsvec file",
         shift_note="Shifts of lantern_wsvec.dat.gz were applied to every element.",
         centre_offsets_ang=(0.02, 0.04),
+    )
+
+
+def decay() -> DecayProfile:
+    distance = np.linspace(0, 13, 60)
+    return DecayProfile(
+        distances_ang=tuple(distance.tolist()),
+        largest_mev=tuple((2400 * np.exp(-distance / 1.7) * (1.4 + np.sin(5 * distance))).tolist()),
+        rim_ang=11.2,
+        rim_mev=4.2,
+        largest_hopping_mev=1450.0,
+        positions="declared sites",
     )
 
 
@@ -305,11 +321,9 @@ def _material(
         space_group=space_group(),
         time_reversal=TimeReversalTest(
             present=True,
-            spin_order="interlaced",
             violation_mev=0.0009,
             violation_r_mev=0.0007,
             violation_unshifted_mev=0.0004,
-            other_order_mev=912.0,
             kramers_splitting_mev=0.0002,
             spin_mixing_mev=640.0,
             tolerance_mev=1.0,
@@ -333,6 +347,8 @@ def _material(
         parity=parity,
         interpolation=InterpolationCheck(0.8, 42.0, 216, 0.05, 0.6, 184, 4),
         audit=audit(),
+        decay=decay(),
+        spin_order=SpinOrder("interlaced", 0.0009, 912.0),
         tasks=tasks(),
         log_note="The log of the run lies beside this file as log.txt.",
     )
