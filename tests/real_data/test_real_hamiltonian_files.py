@@ -86,13 +86,21 @@ def test_tb_and_hr_are_the_same_hamiltonian() -> None:
     assert (tb.degeneracies == hr.degeneracies).all()
 
 
-def test_tb_centres_are_those_of_wannier90() -> None:
+def test_tb_centres_are_those_of_wannier90_up_to_its_branches() -> None:
+    """All but those of one selenium site, for which tb.dat took another branch of the logarithm.
+
+    Wannier90 follows guiding centres for `_centres.xyz` but not for `_tb.dat`: a property of the
+    file, which a reader must hand on and its user must know.
+    """
     tb = read_tb(BI2SE3 / "Bi2Se3_tb.dat.gz")
     lines = (BI2SE3 / "Bi2Se3_centres.xyz").read_text().split("\n")
     centres = np.array([line.split()[1:] for line in lines if line.startswith("X")], dtype=float)
     assert tb.centres_cart is not None
-    # Eight digits in tb.dat: 1e-7 angstrom at 10 angstrom; xyz has eight decimals.
-    assert np.abs(tb.centres_cart - centres).max() < 2e-6
+    distance = np.linalg.norm(tb.centres_cart - centres, axis=1)
+    # tb.dat has eight digits (1e-6 angstrom at 14 angstrom), the xyz file eight decimals.
+    assert distance[:24].max() < 1.1e-6
+    assert np.ptp(distance[24:]) < 1.1e-6
+    assert distance[24:].min() > 36
 
 
 def test_a_real_file_cut_or_short_of_a_byte_is_refused(tmp_path: Path) -> None:

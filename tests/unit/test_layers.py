@@ -27,7 +27,7 @@ LAYERS = (
 )
 """In the order in which a case travels; each may import those before it."""
 
-GROUND = ("errors", "arrays", "units")
+GROUND = ("errors", "arrays", "units", "notation")
 """Modules that any layer may import."""
 
 HOMES = {

@@ -12,9 +12,6 @@ from topovet.intake.lattice_keys import check_lattice_vectors, first_rows_of
 from topovet.intake.records import HamiltonianFile
 from topovet.units import MEV_PER_EV
 
-SHELL_WIDTH_ANG = 1e-3
-"""R vectors whose lengths differ by less belong to one shell."""
-
 MOST_LISTED = 10
 """Offending R vectors named in the audit; their number is always given."""
 
@@ -22,7 +19,6 @@ MOST_LISTED = 10
 def audit_hamiltonian(
     hamiltonian: HamiltonianFile,
     *,
-    cell: FloatArray | None,
     mp_grid: tuple[int, int, int] | None,
     shift_source: str,
     shift_note: str,
@@ -36,8 +32,6 @@ def audit_hamiltonian(
     ----------
     hamiltonian
         As read.
-    cell
-        (3, 3) angstrom, rows, for the lengths |R|; None where no file gives it.
     mp_grid
         The mesh, None where unknown.
     shift_source, shift_note
@@ -59,10 +53,7 @@ def audit_hamiltonian(
     partner = first_rows_of(r_cells, -r_cells)
     missing = partner < 0
     largest = _largest_elements(hamiltonian.h_r)
-    weighted = largest / hamiltonian.degeneracies
     repeats = first_rows_of(r_cells, r_cells) != np.arange(len(r_cells))
-    rim_ev, rim_ratio = _rim(r_cells, weighted)
-    shells, shell_ev = _shells(r_cells, weighted, cell)
     offsets = () if centre_offsets is None else tuple(np.asarray(centre_offsets).tolist())
     return HamiltonianAudit(
         file=Path(hamiltonian.file).name,
@@ -80,11 +71,7 @@ def audit_hamiltonian(
         all_degeneracies_one=bool(np.all(hamiltonian.degeneracies == 1)),
         mesh_points=None if mp_grid is None else int(np.prod(mp_grid)),
         onsite_scale_ev=_onsite_scale(hamiltonian),
-        rim_mev=MEV_PER_EV * rim_ev,
-        rim_ratio=rim_ratio,
         rounding_mev=MEV_PER_EV * _rounding(hamiltonian),
-        shells_ang=shells,
-        shells_mev=tuple(MEV_PER_EV * value for value in shell_ev),
         shift_source=shift_source,
         shift_note=shift_note,
         centre_offsets_ang=offsets,
@@ -148,18 +135,6 @@ def _onsite_scale(hamiltonian: HamiltonianFile) -> float:
     return float(np.linalg.norm(onsite - mean * np.eye(hamiltonian.n_wann), 2))
 
 
-def _rim(r_cells: IntArray, weighted: FloatArray) -> tuple[float, float]:
-    """Largest element on the rim of the R set, eV, and its ratio to the largest with R != 0."""
-    on_rim = np.zeros(len(r_cells), dtype=bool)
-    for axis in range(3):
-        outward = r_cells.copy()
-        outward[:, axis] += np.sign(r_cells[:, axis])
-        on_rim |= first_rows_of(r_cells, outward) < 0
-    rim = float(weighted[on_rim].max(initial=0.0))
-    hopping = float(weighted[r_cells.any(axis=1)].max(initial=0.0))
-    return rim, rim / hopping if hopping > 0 else 0.0
-
-
 def _rounding(hamiltonian: HamiltonianFile) -> float:
     """Error of H(k) that rounding to the printed decimals allows, eV.
 
@@ -172,19 +147,3 @@ def _rounding(hamiltonian: HamiltonianFile) -> float:
         return 0.0
     block = hamiltonian.n_wann * 10.0**-hamiltonian.decimals
     return float(block * np.sqrt((1.0 / hamiltonian.degeneracies**2.0).sum()))
-
-
-def _shells(
-    r_cells: IntArray, weighted: FloatArray, cell: FloatArray | None
-) -> tuple[tuple[float, ...], tuple[float, ...]]:
-    """Shells of equal |R|, angstrom, and the largest weighted element in each, eV."""
-    if cell is None or len(r_cells) == 0:
-        return (), ()
-    lengths = np.linalg.norm(r_cells @ np.asarray(cell, dtype=float), axis=1)
-    order = np.argsort(lengths, kind="stable")
-    lengths, weighted = lengths[order], weighted[order]
-    starts = np.flatnonzero(np.diff(lengths, prepend=-np.inf) > SHELL_WIDTH_ANG)
-    return (
-        tuple(lengths[starts].tolist()),
-        tuple(np.maximum.reduceat(weighted, starts).tolist()),
-    )

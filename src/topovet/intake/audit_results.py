@@ -37,17 +37,9 @@ class HamiltonianAudit:
         N1 N2 N3 of mp_grid; None without it.
     onsite_scale_ev
         Spectral norm of H(0) minus its mean energy, eV; 0 where R = 0 is missing.
-    rim_mev
-        Largest |H_mn(R)|/ndegen(R) on the rim, meV: R = (R1, R2, R3) with some R_i != 0 and the
-        next vector further out along axis i not listed.
-    rim_ratio
-        rim_mev over the largest |H_mn(R)|/ndegen(R) with R != 0; 0 where nothing hops.
     rounding_mev
         Spectral-norm error of H(k) that rounding to the columns' decimals allows, meV: the bound
         of each pair R, -R, added over pairs as root of the sum of squares; 0 for exponent form.
-    shells_ang, shells_mev
-        Distance |R| (angstrom, ascending) and the largest |H_mn(R)|/ndegen(R) there (meV), for
-        the decay plot; empty without a cell.
     shift_source
         "wsvec file", "rebuilt from centres", "rebuilt from declared sites", "none needed",
         "not available".
@@ -73,11 +65,7 @@ class HamiltonianAudit:
     all_degeneracies_one: bool
     mesh_points: int | None
     onsite_scale_ev: float
-    rim_mev: float
-    rim_ratio: float
     rounding_mev: float
-    shells_ang: tuple[float, ...]
-    shells_mev: tuple[float, ...]
     shift_source: str
     shift_note: str
     centre_offsets_ang: tuple[float, ...]

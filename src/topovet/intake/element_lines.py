@@ -59,6 +59,8 @@ def next_words(reader: LineReader, parser: LineParser, count: ElementCount) -> l
         line = following
     if reader.ended:
         return parser.words(line, reader.line_no)
+    if count.n_done + 1 < count.n_all:
+        raise count.cut_short(reader, line)
     try:
         words = parser.words(line, reader.line_no)
     except InputError:

@@ -154,10 +154,12 @@ class FixedLines:
         # One word of slack in front: the words of the first columns begin before the line does.
         self._buffer = np.zeros(WORD + max_lines * layout.n_bytes, dtype=np.uint8)
 
-    def fill(self, stream: BinaryIO, n_lines: int, *, first: bytes = b"") -> bool:
+    def fill(
+        self, stream: BinaryIO, n_lines: int, *, first: bytes = b"", final: bool = False
+    ) -> bool:
         """Take the next lines from `first`, then from the stream; False where too few follow.
 
-        A last line that lacks nothing but its line end counts as whole.
+        If they are the final ones, a last line that lacks nothing but its line end is whole.
         """
         n_bytes = n_lines * self.layout.n_bytes
         target = self._buffer.data[WORD : WORD + n_bytes]
@@ -170,7 +172,7 @@ class FixedLines:
             n_read += step
         self.n_lines, self._n_read = n_lines, n_read
         line_end = self.layout.tail.lstrip(b" ")
-        if n_bytes - n_read == len(line_end):
+        if final and n_bytes - n_read == len(line_end):
             target[n_read:] = line_end
             return True
         return n_read == n_bytes

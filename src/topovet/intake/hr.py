@@ -33,8 +33,8 @@ _SHORTEST_LINE = len("0 0 0 1 1 0 0\n")
 def read_hr(path: str | Path, *, fast: bool = True) -> HamiltonianFile:
     """Read a plain or gzipped `_hr.dat`.
 
-    Memory: the result (16 bytes per element) and a buffer of a few MB, or of the size of one R
-    block where that is more. Each number is bit for bit what `float(text)` gives.
+    Memory: the result (16 bytes per element) and a buffer of a few MB, however large the file.
+    Each number is bit for bit what `float(text)` gives.
 
     Parameters
     ----------

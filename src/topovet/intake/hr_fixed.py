@@ -49,7 +49,8 @@ class BlockFiller:
             while self.n_done < self._h_r.size:
                 block, at = divmod(self.n_done, self._n_wann**2)
                 n_lines = self._pairs.step_lines(at, self._n_r - block)
-                if not self._lines.fill(stream, n_lines, first=self.rest):
+                final = self.n_done + n_lines == self._h_r.size
+                if not self._lines.fill(stream, n_lines, first=self.rest, final=final):
                     break
                 self.rest = b""
                 self._store(block, at)

@@ -129,7 +129,7 @@ class LineTally:
         """Whether a last line without line end is whole: it looks like every line before it.
 
         Either all lines have the same right-aligned columns, or their last numbers the same
-        decimals.
+        fixed decimals.
         """
         if not self._styles:
             return False
@@ -137,7 +137,7 @@ class LineTally:
         if len(layouts) == 1 and layouts[0].count > 1 and max(layouts[0].rooms) > 1:
             return True
         (style, group), *others = self._styles[-1].items()
-        return not others and style.decimals > 0 and group.count > 1
+        return not others and style.decimals > 1 and group.round_end and group.count > 1
 
     def fixed_decimals(self) -> int | None:
         """Decimals of all numbers, or None with exponents or a varying number of decimals."""

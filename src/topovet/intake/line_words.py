@@ -29,6 +29,7 @@ _NOT_FINITE = re.compile(rb"[-+]?(?:nan|inf|infinity)(?:\(.*\))?", re.IGNORECASE
 _BARE_EXPONENT = re.compile(rb"(?<=[\d.])(?=[-+]\d\d\d$)")
 _PRINTABLE = re.compile(rb"[\t -~]*")
 _MAX_SHAPES = 4096
+_LONGEST_LINE = 1000
 
 
 class LineParser:
@@ -117,6 +118,8 @@ class LineParser:
 
     def _new_form(self, line: bytes, line_no: int) -> LineForm:
         """Check a line of a shape not met before, and remember the shape."""
+        if len(line) > _LONGEST_LINE:
+            raise self._refusal(line, line_no)
         if len(self._forms) >= _MAX_SHAPES:
             self.settle()
         shape = line.translate(_TO_SHAPE)
@@ -162,7 +165,9 @@ class LineParser:
         found, expected, todo = quoted(line), f"{len(self._columns)} columns", MEND
         words = _WORD.findall(line)
         wrong = self._first_wrong_word(words)
-        if not _PRINTABLE.fullmatch(line):
+        if len(line) > _LONGEST_LINE:
+            found = f"a line of {len(line)} characters"
+        elif not _PRINTABLE.fullmatch(line):
             found = f"bytes that are no text in {found}"
         elif b"**" in line:
             found = f"asterisks, a number too wide for its column, in {found}"
@@ -178,7 +183,7 @@ class LineParser:
             whole = name in self._columns[: self._n_integers]
             expected = "an integer" if whole else "a number like -0.25"
         else:
-            found = f"{len(words)} columns in {found}"
+            found = f"{len(words)} column{'s' * (len(words) != 1)} in {found}"
         if expected.endswith("columns"):
             expected += f" ({' '.join(self._columns)})"
         return InputError(self._file, line=line_no, found=found, expected=expected, todo=todo)

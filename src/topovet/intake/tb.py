@@ -48,7 +48,9 @@ def read_tb(path: str | Path, *, fast: bool = True) -> HamiltonianFile:
     Returns
     -------
     HamiltonianFile
-        With cell, and with centres_cart where R = (0, 0, 0) is listed.
+        With cell, and with centres_cart where R = (0, 0, 0) is listed. Beware: Wannier90 follows
+        guiding centres for `_centres.xyz`, but not for this file, so that some of these centres
+        may be on another branch of the logarithm, off by more than a lattice vector.
 
     Raises
     ------

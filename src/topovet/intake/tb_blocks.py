@@ -103,7 +103,8 @@ class BlockSection:
         try:
             while at < count.per_block:
                 n_lines = pairs.step_lines(at, 1)
-                if not lines.fill(self._cursor.stream, n_lines, first=first):
+                final = count.n_done + n_lines == count.n_all
+                if not lines.fill(self._cursor.stream, n_lines, first=first, final=final):
                     break
                 first = b""
                 self._store(lines, pairs, at)

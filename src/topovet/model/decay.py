@@ -58,6 +58,8 @@ def measure_decay(
 ) -> DecayProfile:
     """Fall-off of a Hamiltonian that was read with its shifts.
 
+    In 2D distances are taken in the plane.
+
     Parameters
     ----------
     model

@@ -15,12 +15,19 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from scipy import sparse
 
 from topovet.arrays import ComplexArray, FloatArray, IntArray
 from topovet.model.hamiltonian import TightBindingModel
 
 CHUNK_BYTES = 64 * 2**20
 """Largest block of H(k) held at a time by the batched routines."""
+
+CACHE_BYTES = 3 * 2**20
+"""Size of a block that stays near the processor between its sum and its diagonalisation."""
+
+LEAST_ROWS = 64
+"""Fewer k at a time leave the matrix product of the sum waiting for memory."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -46,6 +53,23 @@ class BlochSum:
         phase = 2 * np.pi * (np.asarray(k_frac, dtype=float) @ self.r_half.T)
         weights = np.concatenate([np.cos(phase), np.sin(phase)], axis=1)
         return _unpack(weights @ self.table, self.n_orb)
+
+    def lower_at(self, k_frac: FloatArray) -> ComplexArray:
+        """H(k) as `at`, but only on and below the diagonal; above it there is rubbish.
+
+        LAPACK's Hermitian solvers read one triangle (numpy's default is the lower one), and to
+        fill the other costs as much as a tenth of the eigenvalues.
+        """
+        phase = 2 * np.pi * (np.asarray(k_frac, dtype=float) @ self.r_half.T)
+        weights = np.empty((len(phase), 2 * phase.shape[1]))
+        np.cos(phase, out=weights[:, : phase.shape[1]])
+        np.sin(phase, out=weights[:, phase.shape[1] :])
+        square = (weights @ self.table).reshape(-1, self.n_orb, self.n_orb)
+        h = np.empty(square.shape, dtype=np.complex128)
+        h.real = square
+        np.negative(square.transpose(0, 2, 1), out=h.imag)
+        h.imag[:, np.arange(self.n_orb), np.arange(self.n_orb)] = 0.0
+        return h
 
     def gradient(self, k_frac: FloatArray) -> ComplexArray:
         """dH/dk_i, (n_k, d, n_orb, n_orb) eV per unit of fractional k, for k_frac (n_k, d)."""
@@ -82,13 +106,19 @@ class BlochSum:
         group = group.reshape(-1)
         n_half, n_new = len(r_kept), len(canonical)
         cos, sin = np.cos(phase), np.sin(phase) * sign
-        mix = np.zeros((2 * n_new, 2 * n_half))
         rows = np.arange(n_half)
-        # cos(a + b) S + sin(a + b) D, with a the kept and b the fixed part of the phase
-        mix[group, rows] = cos
-        mix[group, n_half + rows] = sin * sign
-        mix[n_new + group, rows] = -sin
-        mix[n_new + group, n_half + rows] = cos * sign
+        # cos(a + b) S + sin(a + b) D, with a the kept and b the fixed part of the phase; each old
+        # row feeds two new ones, hence sparse
+        mix = sparse.csr_array(
+            (
+                np.concatenate([cos, sin * sign, -sin, cos * sign]),
+                (
+                    np.concatenate([group, group, n_new + group, n_new + group]),
+                    np.concatenate([rows, n_half + rows, rows, n_half + rows]),
+                ),
+            ),
+            shape=(2 * n_new, 2 * n_half),
+        )
         return BlochSum(canonical, mix @ self.table, self.n_orb)
 
 
@@ -134,7 +164,9 @@ def _leading_sign(vectors: FloatArray) -> FloatArray:
 
 def chunks_of_k(n_k: int, n_orb: int) -> list[slice]:
     """Slices of a list of k whose H(k) stay within `CHUNK_BYTES`."""
-    step = max(1, CHUNK_BYTES // (16 * n_orb * n_orb * 3))
+    bytes_per_k = 16 * n_orb * n_orb * 3
+    step = max(LEAST_ROWS, CACHE_BYTES // bytes_per_k)
+    step = max(1, min(step, CHUNK_BYTES // bytes_per_k))
     return [slice(i, min(i + step, n_k)) for i in range(0, n_k, step)]
 
 

@@ -7,6 +7,7 @@ from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
 
+from topovet.notation import mev
 from topovet.pipeline.dossier import start_run
 from topovet.pipeline.inputs import CaseInput
 from topovet.pipeline.runner import Observer
@@ -112,29 +113,29 @@ def _hamiltonian_rows(findings: Findings) -> Iterator[tuple[str, str]]:
     kind = "spinor" if findings.spinful else "spinless"
     yield "size", f"{audit.n_wann} {kind} Wannier functions, {audit.n_r} R vectors"
     yield "read by", audit.reader
-    yield "Hermiticity", f"{audit.hermiticity_mev:.3g} meV"
+    yield "Hermiticity", f"{mev(audit.hermiticity_mev)}"
     points = "unknown mesh" if audit.mesh_points is None else f"{audit.mesh_points} mesh points"
     yield "degeneracies", f"add up to {audit.degeneracy_sum:.6g} ({points})"
     decay = findings.decay
     yield "largest hopping", f"{decay.largest_hopping_mev:.4g} meV"
     if decay.rim_mev is not None:
-        yield "on the rim", f"{decay.rim_mev:.3g} meV beyond {decay.rim_ang:.1f} angstrom"
-    yield "rounding", f"{audit.rounding_mev:.3g} meV in H(k)"
+        yield "on the rim", f"{mev(decay.rim_mev)} beyond {decay.rim_ang:.1f} angstrom"
+    yield "rounding", f"{mev(audit.rounding_mev)} in H(k)"
 
 
 def _symmetry_rows(findings: Findings) -> Iterator[tuple[str, str]]:
     test, inversion = findings.time_reversal, findings.inversion
     word = "holds" if test.present else "broken"
-    yield "time reversal", f"{word}, {test.violation_mev:.3g} meV"
+    yield "time reversal", f"{word}, {mev(test.violation_mev)}"
     yield "spin order", findings.spin_order.found
     if test.kramers_splitting_mev is not None:
-        yield "Kramers pairs", f"split by {test.kramers_splitting_mev:.3g} meV at most"
+        yield "Kramers pairs", f"split by {mev(test.kramers_splitting_mev)} at most"
     if inversion.present:
         centre = ", ".join(f"{c:g}" for c in inversion.centre or ())
         yield (
             "inversion",
-            f"about ({centre}): {inversion.violation_mev:.3g} meV, "
-            f"{inversion.violation_trim_mev:.3g} meV at the TRIM",
+            f"about ({centre}): {mev(inversion.violation_mev)}, "
+            f"{mev(inversion.violation_trim_mev)} at the TRIM",
         )
     else:
         yield "inversion", inversion.reason

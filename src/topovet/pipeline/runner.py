@@ -168,7 +168,7 @@ class Run:
         if outcome["state"] != "done":
             self._end(task, outcome["state"], outcome["reason"])
         else:
-            self._end(task, "cached", "")
+            self._end(task, "cached", "", outcome["seconds"])
         return True
 
     def _compute(self, task: Task) -> None:
@@ -179,7 +179,7 @@ class Run:
         try:
             value = task.run(context=context, **arguments)
         except NotApplicable as reason:
-            self._save(task, "not-applicable", str(reason), None)
+            self._save(task, "not-applicable", str(reason))
             self._end(task, "not-applicable", str(reason))
             return
         except (InputError, StoreError):
@@ -198,19 +198,21 @@ class Run:
             return
         seconds = time.perf_counter() - started
         self._memory[task.name] = value
-        self._save(task, "done", "", value)
+        self._save(task, "done", "", value, seconds)
         self._end(task, "done", "", seconds)
 
-    def _save(self, task: Task, state: str, reason: str, value: Any) -> None:
+    def _save(
+        self, task: Task, state: str, reason: str, value: Any = None, seconds: float | None = None
+    ) -> None:
         if task.stored and self.store is not None and task.name not in self._provisional:
-            outcome = {"state": state, "reason": reason, "value": value}
+            outcome = {"state": state, "reason": reason, "value": value, "seconds": seconds}
             self.store.save(task.name, self.key(task.name), outcome)
 
     def _end(self, task: Task, state: str, reason: str, seconds: float | None = None) -> None:
         self.states[task.name] = TaskState(task.name, state, reason, seconds)
         if state == "failed":
             self._provisional.add(task.name)
-        took = "" if seconds is None else f" in {seconds:.2f} s"
+        took = f" in {seconds:.2f} s" if state == "done" and seconds is not None else ""
         self.observe("end", f"{task.name}: {state}{took}{f' ({reason})' if reason else ''}")
 
     def _forget(self, to_come: list[Task]) -> None:

@@ -24,6 +24,7 @@ from topovet.model.decay import DecayProfile, measure_decay
 from topovet.model.declarations import Declarations, declare
 from topovet.model.ordering import interlacing_order, reorder_hamiltonian, reorder_shifts
 from topovet.model.shift_choice import ShiftProposal, propose_shifts
+from topovet.notation import mev
 from topovet.pipeline.runner import Context
 from topovet.pipeline.task import NotApplicable
 from topovet.symmetry.inversion import build_inversion, measure_inversion
@@ -170,12 +171,12 @@ def _better_shifts(given: float | None, mended: float | None) -> tuple[str, str]
         )
     if mended < given:
         return "mended", (
-            f"With the shifts rebuilt from the sites the inversion residual falls from {given:.3g} "
-            f"to {mended:.3g} meV; that reading is used."
+            "With the shifts rebuilt from the sites the inversion residual falls from "
+            f"{mev(given)} to {mev(mended)}; that reading is used."
         )
     return "given", (
-        f"The shifts as given keep inversion to {given:.3g} meV, rebuilt from the sites to "
-        f"{mended:.3g} meV; they are used as given."
+        f"The shifts as given keep inversion to {mev(given)}, rebuilt from the sites to "
+        f"{mev(mended)}; they are used as given."
     )
 
 
@@ -211,7 +212,6 @@ def audit(
     mended = shift_test.adopted == "mended"
     return audit_hamiltonian(
         hamiltonian,
-        cell=declarations.crystal.cell,
         mp_grid=declarations.mp_grid,
         shift_source="rebuilt from centres" if mended else shifts.source,
         shift_note=shift_test.reason if mended else shifts.note,

@@ -57,7 +57,7 @@ class Task:
 
 @dataclass(frozen=True, slots=True)
 class TaskState:
-    """How a task ended, and in how many seconds (None where it did not run now)."""
+    """How a task ended, and in how many seconds; of the original run where it was recalled."""
 
     name: str
     state: str

@@ -10,7 +10,8 @@ import jinja2
 import numpy as np
 from markupsafe import Markup, escape
 
-from topovet.report import notation, words
+from topovet import notation
+from topovet.report import words
 from topovet.report.classes import class_words
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import FONTS

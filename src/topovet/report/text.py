@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterable, Sequence
 
+from topovet.notation import ev, k_text, mev, one_line, z2_text
 from topovet.report.classes import class_words
-from topovet.report.notation import ev, k_text, mev, one_line, z2_text
 from topovet.report.words import radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 

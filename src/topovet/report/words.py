@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
+from topovet.notation import ev, k_text, mev, one_line, significant, z2_text
 from topovet.report.classes import class_words
 from topovet.report.material import ReportMaterial
-from topovet.report.notation import ev, k_text, mev, one_line, significant, z2_text
 from topovet.verdict.document import Verdict
 
 

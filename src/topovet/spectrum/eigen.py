@@ -52,7 +52,8 @@ def eigenvalues(bloch: BlochSum, k_frac: FloatArray) -> FloatArray:
     """Energies (n_k, n_orb) in eV, ascending, for k_frac (n_k, d)."""
     k_frac = np.asarray(k_frac, dtype=float)
     parts = map_threads(
-        lambda part: np.linalg.eigvalsh(bloch.at(k_frac[part])), _parts(len(k_frac), bloch.n_orb)
+        lambda part: np.linalg.eigvalsh(bloch.lower_at(k_frac[part])),
+        _parts(len(k_frac), bloch.n_orb),
     )
     return np.concatenate(parts) if parts else np.empty((0, bloch.n_orb))
 
@@ -61,7 +62,7 @@ def eigenstates(bloch: BlochSum, k_frac: FloatArray) -> tuple[FloatArray, Comple
     """Energies (n_k, n_orb) and eigenvectors (n_k, n_orb, n_orb), [k, :, b] being band b."""
     k_frac = np.asarray(k_frac, dtype=float)
     parts = map_threads(
-        lambda part: np.linalg.eigh(bloch.at(k_frac[part])), _parts(len(k_frac), bloch.n_orb)
+        lambda part: np.linalg.eigh(bloch.lower_at(k_frac[part])), _parts(len(k_frac), bloch.n_orb)
     )
     energies = np.concatenate([part[0] for part in parts])
     return energies, np.concatenate([part[1] for part in parts])
@@ -96,7 +97,10 @@ def mesh_eigenvalues(bloch: BlochSum, mesh: tuple[int, int, int], *, even: bool)
     def plane(i: int) -> FloatArray:
         part = bloch.partial((0,), np.array([i / n_1]))
         return np.concatenate(
-            [np.linalg.eigvalsh(part.at(plane_k[s])) for s in chunks_of_k(len(plane_k), part.n_orb)]
+            [
+                np.linalg.eigvalsh(part.lower_at(plane_k[s]))
+                for s in chunks_of_k(len(plane_k), part.n_orb)
+            ]
         )
 
     energies = np.empty((n_1, n_2, n_3, bloch.n_orb))

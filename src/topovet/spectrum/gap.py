@@ -137,5 +137,10 @@ def _descend(objective: Objective, start: FloatArray, mesh: tuple[int, int, int]
         if scale.max() * step.max() < FINEST_STEP:
             break
     leader = int(best.argmin())
-    x, y, z = (float(np.round(c % 1.0, 6)) % 1.0 for c in k_frac[leader])
+    x, y, z = (float(c) for c in _wrapped(k_frac[leader]))
     return float(best[leader]), (x, y, z)
+
+
+def _wrapped(k_frac: FloatArray) -> FloatArray:
+    """The same k with components in (-1/2, 1/2], to six decimals."""
+    return np.asarray(0.5 - np.round((0.5 - k_frac) % 1.0, 6) % 1.0)

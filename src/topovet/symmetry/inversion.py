@@ -1,9 +1,11 @@
 """Inversion on the Wannier functions, built from their declared sites and harmonics.
 
-A function n on site tau goes to the site tau' = 2c - tau - L, with L an integer vector, and is
-multiplied by (-1)^l; spin is left alone:
+A function n at tau_n goes to 2c - tau_n = tau_m + L_n - C_m and is multiplied by (-1)^l; spin is
+left alone. C_m is the cell of m as counted from the first function on its site: functions of one
+site may be listed in different cells.
 
-    P|n R> = sum_m |m, L_n - R> M[m, n],        D(k)[m, n] = M[m, n] exp(2 pi i k.L_n),
+    P|n R> = sum_m |m, L_n - C_m - R> M[m, n],
+    D(k)[m, n] = exp(-2 pi i k.C_m) M[m, n] exp(2 pi i k.L_n),
     D(k) H(k) D(k)† = H(-k)                     in the periodic gauge.
 
 At a TRIM D(K)^2 = 1, and D(K) commutes with H(K).
@@ -63,6 +65,7 @@ def build_inversion(
         )
     first = meets.argmax(axis=1)
     shifts = np.round(difference[np.arange(len(sites)), first]).astype(np.int64)
+    homes = _cell_on_site(sites, crystal)
     parity = (-1.0) ** HARMONIC_L
     overlap = (basis.harmonics * parity) @ basis.harmonics.T
     same_shell = basis.shells[:, None] == basis.shells[None, :]
@@ -74,13 +77,23 @@ def build_inversion(
             f"the declared orbitals are not closed under inversion about {_point(centre_frac)} "
             f"(|M†M - 1| = {defect:.2g})"
         )
-    return InversionOperator(np.asarray(centre_frac, dtype=float), matrix, shifts)
+    return InversionOperator(np.asarray(centre_frac, dtype=float), matrix, shifts, homes)
+
+
+def _cell_on_site(sites: FloatArray, crystal: Crystal) -> IntArray:
+    """(n_orb, 3) cell of each function relative to the first one on the same site."""
+    apart = sites[:, None, :] - sites[None, :, :]  # [m, n] = site m minus site n
+    distance = np.linalg.norm((apart - np.round(apart)) @ crystal.cell, axis=2)
+    first = (distance < SITE_TOLERANCE_ANG).argmax(axis=1)
+    return np.asarray(np.round(apart[np.arange(len(sites)), first]), dtype=np.int64)
 
 
 def inversion_at(operator: InversionOperator, k_frac: FloatArray) -> ComplexArray:
     """D(k), (n_k, n_orb, n_orb), for k_frac (n_k, 3)."""
-    phases = np.exp(2j * np.pi * (np.asarray(k_frac, dtype=float) @ operator.shifts.T))
-    return np.asarray(operator.matrix * phases[:, None, :])
+    k_frac = np.asarray(k_frac, dtype=float)
+    before = np.exp(2j * np.pi * (k_frac @ operator.shifts.T))
+    after = np.exp(-2j * np.pi * (k_frac @ operator.homes.T))
+    return np.asarray(after[:, :, None] * operator.matrix * before[:, None, :])
 
 
 def inversion_residual(
@@ -97,21 +110,30 @@ def inverted_hopping(
 ) -> tuple[IntArray, ComplexArray]:
     """P H P^-1 in real space on its own list of R: (n, 3) and (n, n_orb, n_orb) eV.
 
-    Element (m, n) of H(R) moves to R' = -(R + L_m - L_n) before M mixes the orbitals.
+    Element (m, n) of H(R) moves to R' = -(R + L_m - L_n), M mixes the orbitals, and element (m, n)
+    of what results moves on to R' + C_m - C_n.
     """
-    cells, which = np.unique(operator.shifts, axis=0, return_inverse=True)
+    m = operator.matrix
+    r_moved, moved = _moved(model.r_cells, model.h_r, operator.shifts)
+    return _moved(-r_moved, np.asarray(m @ moved @ m.conj().T), operator.homes)
+
+
+def _moved(
+    r_cells: IntArray, h_r: ComplexArray, cell_of: IntArray
+) -> tuple[IntArray, ComplexArray]:
+    """Element (m, n) of each H(R) moved to R + c_m - c_n, on its own list of R."""
+    cells, which = np.unique(cell_of, axis=0, return_inverse=True)
     which = which.reshape(-1)
     moves = (cells[:, None, :] - cells[None, :, :]).reshape(-1, 3)
-    targets = -(model.r_cells[:, None, :] + moves[None, :, :])
+    targets = r_cells[:, None, :] + moves[None, :, :]
     r_new = np.unique(targets.reshape(-1, 3), axis=0)
-    h_new = np.zeros((len(r_new), *model.h_r.shape[1:]), dtype=np.complex128)
+    h_new = np.zeros((len(r_new), *h_r.shape[1:]), dtype=np.complex128)
     for u in range(len(cells)):
         for v in range(len(cells)):
             at = r_index(r_new, targets[:, u * len(cells) + v])
             rows, columns = np.nonzero(which == u)[0], np.nonzero(which == v)[0]
-            h_new[at[:, None, None], rows[:, None], columns] = model.h_r[:, rows[:, None], columns]
-    m = operator.matrix
-    return r_new, np.asarray(m @ h_new @ m.conj().T)
+            h_new[at[:, None, None], rows[:, None], columns] = h_r[:, rows[:, None], columns]
+    return r_new, h_new
 
 
 def real_space_residual_mev(model: TightBindingModel, operator: InversionOperator) -> float:

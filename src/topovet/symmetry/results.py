@@ -86,7 +86,7 @@ class TimeReversalTest:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class InversionOperator:
-    """Inversion on the Wannier functions, P|n R> = sum_m |m, L_n - R> matrix[m, n].
+    """Inversion on the Wannier functions, P|n R> = sum_m |m, L_n - C_m - R> matrix[m, n].
 
     Attributes
     ----------
@@ -95,12 +95,16 @@ class InversionOperator:
     matrix
         (n_orb, n_orb) unitary, connects each site with its image.
     shifts
-        (n_orb, 3) integer L_n of the image's cell.
+        (n_orb, 3) integer L_n, cell of the first function on the image's site.
+    homes
+        (n_orb, 3) integer C_m, cell of a function relative to the first one on its site; zero
+        unless functions of one site are listed in different cells.
     """
 
     centre_frac: FloatArray
     matrix: ComplexArray
     shifts: IntArray
+    homes: IntArray
 
 
 @dataclass(frozen=True, slots=True)

@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
@@ -30,7 +31,7 @@ def _hermiticity(findings: Findings) -> Iterator[Flag]:
     yield Flag(
         "not-hermitian",
         "error" if fatal else "warning",
-        f"H(-R) differs from H(R)† by up to {violation:.3g} meV; their mean is used.",
+        f"H(-R) differs from H(R)† by up to {mev(violation)}; their mean is used.",
         {"violation_meV": violation, "direct_gap_meV": gap},
         "Check that the file was not edited or mixed from two runs; write it again.",
     )
@@ -63,7 +64,7 @@ def _missing_partners(findings: Findings) -> Iterator[Flag]:
         "warning",
         f"{audit.n_missing_partner} R vectors are listed without -R "
         f"({_cells(audit.missing_partner_r)}), largest element there "
-        f"{audit.missing_partner_mev:.3g} meV; the partner was supplied as H(R)†.",
+        f"{mev(audit.missing_partner_mev)}; the partner was supplied as H(R)†.",
         {"count": audit.n_missing_partner, "largest_meV": audit.missing_partner_mev},
         "The file has lost blocks; write it again from the Wannier90 run.",
     )
@@ -97,7 +98,7 @@ def _range(findings: Findings) -> Iterator[Flag]:
         yield Flag(
             "range-truncated",
             "warning",
-            f"hoppings of {decay.rim_mev:.3g} meV remain beyond {decay.rim_ang:.1f} angstrom, at "
+            f"hoppings of {mev(decay.rim_mev)} remain beyond {decay.rim_ang:.1f} angstrom, at "
             "the rim of the supercell of the mesh: interpolated bands carry errors of that size.",
             {"rim_meV": decay.rim_mev, "largest_hopping_meV": decay.largest_hopping_mev},
             "Repeat the Wannier90 run on a denser mesh and compare.",

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from topovet.invariants.parity import MIN_PURITY
+from topovet.notation import mev
 from topovet.symmetry.spacegroup import nearest_centre_distance
 from topovet.verdict import criteria
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
@@ -45,7 +46,7 @@ def _spin_order(findings: Findings) -> Iterator[Flag]:
         "spin-order-mismatch",
         "warning",
         f"spinors are ordered all up, then all down: time reversal holds to "
-        f"{order.block_mev:.3g} meV in that order and misses by {order.interlaced_mev:.3g} meV in "
+        f"{mev(order.block_mev)} in that order and misses by {mev(order.interlaced_mev)} in "
         "Wannier90's. The order found is used.",
         {"block_meV": order.block_mev, "interlaced_meV": order.interlaced_mev},
         "Reorder the file to up, down of each orbital, or keep it and mind this in other tools.",
@@ -65,7 +66,7 @@ def _time_reversal(findings: Findings) -> Iterator[Flag]:
         yield Flag(
             "time-reversal-broken",
             "warning",
-            f"the Hamiltonian breaks time reversal by {test.violation_mev:.3g} meV in either spin "
+            f"the Hamiltonian breaks time reversal by {mev(test.violation_mev)} in either spin "
             "order; Z2 indices do not exist for it.",
             evidence,
             "If the run was meant to be non-magnetic, converge it without moments; if it is "
@@ -76,7 +77,7 @@ def _time_reversal(findings: Findings) -> Iterator[Flag]:
             "time-reversal-broken",
             "error" if gap is not None and test.violation_mev >= gap else "info",
             f"time reversal holds on the mesh, but the Wigner-Seitz shifts break it by "
-            f"{test.violation_mev:.3g} meV between mesh points.",
+            f"{mev(test.violation_mev)} between mesh points.",
             evidence,
             "Equivalent centres differ by more than ws_distance_tol; a larger ws_distance_tol in "
             "the Wannier90 run removes this.",
@@ -112,9 +113,9 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
     readable = findings.parity is None or findings.parity.status == "ok"
     yield Flag(
         "symmetry-broken",
-        "warning" if readable else "error",
-        f"the Hamiltonian breaks the inversion of its structure by {violation:.3g} meV between "
-        f"mesh points and {at_trim:.3g} meV at the TRIM; "
+        "warning" if readable and not _inversion_beyond_gap(findings) else "error",
+        f"the Hamiltonian breaks the inversion of its structure by {mev(violation)} between "
+        f"mesh points and {mev(at_trim)} at the TRIM; "
         + (
             "the indices are those of its inversion-symmetric average."
             if readable
@@ -129,6 +130,19 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
         "Read the Hamiltonian with its _wsvec.dat file (or centres and mp_grid); if that is done, "
         "check the declared projections, use some that respect the symmetry, and check the window.",
     )
+
+
+def _inversion_beyond_gap(findings: Findings) -> bool:
+    """Whether H may lie beyond a gap closing from its symmetric average.
+
+    The average is half of the violation away, so indices are safe while the violation is below the
+    gap (Weyl). Shifts that are not available break inversion between mesh points only, which is an
+    artefact of reading: there the TRIM, which are mesh points, decide.
+    """
+    test, gap = findings.inversion, findings.direct_gap_mev
+    missing_shifts = findings.audit.shift_source == "not available"
+    violation = test.violation_trim_mev if missing_shifts else test.violation_mev
+    return gap is not None and violation is not None and violation >= gap
 
 
 def _centre(findings: Findings) -> Iterator[Flag]:
@@ -229,7 +243,7 @@ def _interpolation(findings: Findings) -> Iterator[Flag]:
             "interpolation-poor",
             "error" if gap is not None and mesh >= 0.5 * gap else "warning",
             f"occupied energies on the mesh differ from the first-principles ones by up to "
-            f"{mesh:.3g} meV ({check.mesh_points} points).",
+            f"{mev(mesh)} ({check.mesh_points} points).",
             {"mesh_occupied_meV": mesh, "direct_gap_meV": gap},
             "Check that .eig and _hr.dat are of one run, and that the frozen window holds all "
             "occupied bands.",
@@ -242,7 +256,7 @@ def _interpolation(findings: Findings) -> Iterator[Flag]:
         yield Flag(
             "interpolation-poor",
             "info" if by_choice else "warning",
-            f"occupied bands differ from Wannier90's own interpolation by up to {path:.3g} meV "
+            f"occupied bands differ from Wannier90's own interpolation by up to {mev(path)} "
             f"(Wigner-Seitz shifts here: {findings.audit.shift_source}).",
             {"path_occupied_meV": path, "path_all_meV": check.path_all_mev},
             "Give the _wsvec.dat file of the same run.",
@@ -285,8 +299,8 @@ def _error_bar(findings: Findings) -> Iterator[Flag]:
     yield Flag(
         "inside-error-bar",
         "warning",
-        f"the known errors add up to {total:.3g} meV, the robustness radius (half of the sampled "
-        f"direct gap) is {radius:.3g} meV.",
+        f"the known errors add up to {mev(total)}, the robustness radius (half of the sampled "
+        f"direct gap) is {mev(radius)}.",
         {"errors_meV": total, "radius_meV": radius}
         | {f"{name}_meV": value for name, value in budget.items()},
         "Remove the largest error first; until then the indices hold for the symmetric average "

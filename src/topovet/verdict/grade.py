@@ -14,6 +14,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from topovet.notation import mev
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
 from topovet.verdict.conclude import Conclusion
 from topovet.verdict.document import ConfidenceEntry
@@ -43,8 +44,8 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
     if radius is not None:
         relation = "above" if too_large else "below"
         reasons.append(
-            f"known errors of {total:.3g} meV are {relation} half of the robustness radius of "
-            f"{radius:.3g} meV"
+            f"known errors of {mev(total)} are {relation} half of the robustness radius of "
+            f"{mev(radius)}"
         )
     if warnings:
         reasons.append("warnings that touch the verdict: " + ", ".join(dict.fromkeys(warnings)))

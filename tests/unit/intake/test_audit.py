@@ -13,8 +13,6 @@ from topovet.intake.audit import audit_hamiltonian
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.intake.records import HamiltonianFile
 
-CELL = np.diag([2.0, 3.0, 4.0])
-
 
 @pytest.fixture
 def sound() -> HamiltonianFile:
@@ -23,7 +21,7 @@ def sound() -> HamiltonianFile:
 
 def audit(file: HamiltonianFile) -> HamiltonianAudit:
     return audit_hamiltonian(
-        file, cell=CELL, mp_grid=(3, 3, 3), shift_source="none needed", shift_note="By hand."
+        file, mp_grid=(3, 3, 3), shift_source="none needed", shift_note="By hand."
     )
 
 
@@ -102,27 +100,6 @@ def test_at_most_ten_vectors_are_named() -> None:
     assert found.n_missing_partner == 58
 
 
-def test_rim_is_where_the_list_of_r_ends_on_some_axis() -> None:
-    file = hermitian_file(mesh_cells((5, 5, 1)).tolist(), 2)
-    decay = np.exp(-np.abs(file.r_cells).sum(axis=1))
-    file.h_r[:] *= (decay / np.abs(file.h_r).max(axis=(1, 2)))[:, None, None]
-    found = audit(file)
-    assert found.rim_mev == pytest.approx(1e3 * np.exp(-2))
-    assert found.rim_ratio == pytest.approx(np.exp(-1))  # the largest hopping is exp(-1)
-    file.degeneracies[np.abs(file.r_cells).max(axis=1) == 2] = 2
-    assert audit(file).rim_mev == pytest.approx(1e3 * np.exp(-2) / 2)
-
-
-def test_shells_hold_the_largest_element_of_each_length() -> None:
-    file = hermitian_file([[0, 0, 0], [1, 0, 0], [-1, 0, 0], [0, 1, 0], [0, -1, 0]], 2)
-    file.h_r[1:3] = 0.25
-    file.degeneracies[3:] = 2
-    found = audit(file)
-    assert found.shells_ang == (0.0, 2.0, 3.0)
-    largest = [np.abs(file.h_r[0]).max(), 0.25, np.abs(file.h_r[3]).max() / 2]
-    np.testing.assert_allclose(found.shells_mev, 1e3 * np.array(largest))
-
-
 def test_onsite_scale_does_not_depend_on_the_zero_of_energy(sound: HamiltonianFile) -> None:
     row = row_of(sound, (0, 0, 0))
     sound.h_r[row] = np.diag([1.0, 2.0, 6.0])
@@ -147,14 +124,12 @@ def test_rounding_covers_what_rounding_does_to_h_of_k() -> None:
 def test_unknown_companions_leave_their_numbers_empty(sound: HamiltonianFile) -> None:
     found = audit_hamiltonian(
         sound,
-        cell=None,
         mp_grid=None,
         shift_source="not available",
         shift_note="",
         centre_offsets=np.array([0.1, 0.2, 0.0]),
     )
     assert found.mesh_points is None
-    assert found.shells_ang == found.shells_mev == ()
     assert found.centre_offsets_ang == (0.1, 0.2, 0.0)
 
 
@@ -163,4 +138,4 @@ def test_a_file_without_the_origin_or_with_nothing_else(sound: HamiltonianFile) 
     without = audit(keep(sound, [i for i in range(27) if i != row]))
     assert without.onsite_scale_ev == 0.0
     alone = audit(keep(sound, [row]))
-    assert (alone.rim_mev, alone.rim_ratio, alone.n_missing_partner) == (0.0, 0.0, 0)
+    assert alone.n_missing_partner == 0

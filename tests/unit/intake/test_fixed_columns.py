@@ -150,7 +150,9 @@ def test_a_last_line_without_line_end_is_whole() -> None:
     layout = infer_layout(b"    1    0.5\r\n", 1, 1)
     assert layout is not None
     lines = FixedLines(layout, 2)
-    assert lines.fill(io.BytesIO(b"    1    0.5\r\n    1   -0.5"), 2)
+    content = b"    1    0.5\r\n    1   -0.5"
+    assert not lines.fill(io.BytesIO(content), 2)
+    assert lines.fill(io.BytesIO(content), 2, final=True)
     lines.check_tail()
     assert read_numbers(lines, layout.numbers[0]).tolist() == [0.5, -0.5]
-    assert not lines.fill(io.BytesIO(b"    1    0.5\r\n    1   -0."), 2)
+    assert not lines.fill(io.BytesIO(content[:-1]), 2, final=True)

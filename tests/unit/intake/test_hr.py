@@ -188,8 +188,22 @@ def test_last_line_without_line_end(tmp_path: Path) -> None:
         for fast in (True, False):
             assert read(tmp_path, content, fast=fast).h_r.tobytes() == slow_twin(lines).tobytes()
         for fast in (True, False):
-            with pytest.raises(InputError, match="the cut line"):
+            with pytest.raises(InputError, match="perhaps cut"):
                 read(tmp_path, content[:-1], fast=fast)
+
+
+@pytest.mark.parametrize("last", ["0.2", "0.25", "0", "1e-05"])
+def test_free_decimals_do_not_vouch_for_a_last_line(tmp_path: Path, last: str) -> None:
+    content = f"toy\n1\n3\n1 1 1\n0 0 0 1 1 0.5 0.0\n1 0 0 1 1 0.5 0.0\n-1 0 0 1 1 0.5 {last}"
+    with pytest.raises(InputError, match="perhaps cut"):
+        read(tmp_path, content.encode())
+    assert read(tmp_path, content.encode() + b"\n").h_r[2, 0, 0] == complex(0.5, float(last))
+
+
+def test_a_very_long_line_is_refused_and_not_remembered(tmp_path: Path) -> None:
+    content = b"x\n1\n1\n1\n0 0 0 1 1 0.5 " + b" " * 5000 + b"0.0\n"
+    with pytest.raises(InputError, match="line 5: found a line of 5017 characters, expected 7"):
+        read(tmp_path, content)
 
 
 def test_repeated_r_blocks_are_kept(tmp_path: Path) -> None:

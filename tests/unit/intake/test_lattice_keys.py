@@ -47,9 +47,7 @@ def test_a_hamiltonian_with_such_components_is_refused_by_all_that_needs_keys(
     wsvec = tmp_path / "GX_wsvec.dat"
     wsvec.write_text("a comment\n")
     for reader in (
-        lambda: audit_hamiltonian(
-            file, cell=None, mp_grid=None, shift_source="none needed", shift_note=""
-        ),
+        lambda: audit_hamiltonian(file, mp_grid=None, shift_source="none needed", shift_note=""),
         lambda: apply_shifts(file, None),
         lambda: read_wsvec(wsvec, file),
     ):

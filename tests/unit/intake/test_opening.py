@@ -93,11 +93,13 @@ def test_gzip_with_wrong_checksum(tmp_path: Path) -> None:
     assert message.endswith("expected a sound gzip file; copy or compress the file again.")
 
 
-@pytest.mark.skipif(os.geteuid() == 0, reason="root may read everything")
-def test_no_permission(tmp_path: Path) -> None:
+def test_no_permission(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(*_: object) -> None:
+        raise PermissionError(13, "Permission denied")
+
     path = tmp_path / "locked.dat"
     path.write_bytes(b"x")
-    path.chmod(0)
+    monkeypatch.setattr(Path, "open", refuse)  # Root may read everything, whatever its mode.
     assert refusal(path) == (
         "locked.dat: found a file that cannot be read (Permission denied), "
         "expected a readable file; check its permissions and the disk."

@@ -7,7 +7,7 @@ from dataclasses import replace
 import pytest
 
 import invented_dossiers as invented
-from topovet.report import notation
+from topovet import notation
 from topovet.report.classes import class_words
 from topovet.report.handling import DEFERENCE, handling_cautions
 from topovet.report.json_document import load_schema

@@ -193,7 +193,15 @@ FAULTS = {
         _changed(parity={"trim": _trim(purity=0.5), "status": "failed", "reason": "impure"}),
         "error",
     ),
-    "inside-error-bar": (_changed(inversion={"violation_mev": 2 * GAP_MEV}), "warning"),
+    "symmetry-broken, beyond the gap": (_changed(inversion={"violation_mev": GAP_MEV}), "error"),
+    "symmetry-broken, by missing shifts": (
+        _changed(inversion={"violation_mev": GAP_MEV}, audit={"shift_source": "not available"}),
+        "warning",
+    ),
+    "inside-error-bar": (
+        _changed(decay={"rim_mev": GAP_MEV, "largest_hopping_mev": 1e6}),
+        "warning",
+    ),
 }
 
 

@@ -11,6 +11,7 @@ import numpy as np
 
 from topovet.arrays import FloatArray
 from topovet.invariants.results import TrimParity
+from topovet.notation import ev, one_line
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
 from topovet.report.figures.parity_marks import (
@@ -19,7 +20,6 @@ from topovet.report.figures.parity_marks import (
     draw_parities,
     legend_marks,
 )
-from topovet.report.notation import ev, one_line
 from topovet.spectrum.results import BandPath, GapSample
 
 if TYPE_CHECKING:

@@ -13,8 +13,8 @@ from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any, Literal
 from xml.etree import ElementTree
 
+from topovet.notation import printable
 from topovet.report.figures.palette import INK, MUTED, RULE, WHITE
-from topovet.report.notation import printable
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

@@ -8,9 +8,9 @@ import numpy as np
 
 from topovet.arrays import FloatArray
 from topovet.model.decay import DecayProfile
+from topovet.notation import mev, significant
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
-from topovet.report.notation import mev, significant
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

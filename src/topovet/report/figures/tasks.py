@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from xml.etree.ElementTree import Element, SubElement
 
+from topovet.notation import one_line, seconds
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import FONTS, serialised
 from topovet.report.figures.layering import Layout, layered
 from topovet.report.material import TaskEntry
-from topovet.report.notation import one_line, seconds
 
 _BOX_W, _BOX_H = 168, 42
 _STEP_X, _STEP_Y = 188, 78

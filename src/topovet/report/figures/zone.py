@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 from topovet.arrays import FloatArray
 from topovet.invariants.results import TrimParity
 from topovet.model.crystal import Crystal
+from topovet.notation import k_text, significant
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import drawing, new_figure, to_svg
 from topovet.report.figures.wigner_seitz import Zone, brillouin_zone
@@ -20,7 +21,6 @@ from topovet.report.figures.zone_scene import (
     momenta_of,
     periodic_reciprocal,
 )
-from topovet.report.notation import k_text, significant
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

@@ -11,9 +11,9 @@ import numpy as np
 from topovet.arrays import FloatArray
 from topovet.invariants.results import TrimParity
 from topovet.model.crystal import Crystal
+from topovet.notation import k_text
 from topovet.report.figures.labels import Placement, place_labels
 from topovet.report.figures.wigner_seitz import Zone, nearest_images
-from topovet.report.notation import k_text
 
 POINTS_PER_RADIUS = 118.0
 _MARGIN_PT = 5.0
