@@ -5,10 +5,10 @@ from __future__ import annotations
 from pathlib import Path
 
 import numpy as np
-from topovet.intake.hr_write import write_hr
 
 from lattice_models import HARMONICS, LatticeModel
 from topovet.arrays import FloatArray, IntArray
+from topovet.intake.hamiltonian.hr_write import write_hr
 from topovet.model.basis import OrbitalBasis
 
 

@@ -13,7 +13,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from topovet.intake.hr import read_hr
+from topovet.intake.hamiltonian.hr import read_hr
 from topovet.intake.opening import open_bytes
 
 pytestmark = pytest.mark.bench

@@ -15,9 +15,9 @@ from lattice_models import LatticeModel, bhz, fu_kane_mele, kane_mele, wilson_di
 from model_changes import parity_of, with_home_cells, with_order
 from topovet.intake.case_toml import read_settings
 from topovet.intake.discovery import find_case
-from topovet.intake.hr import read_hr
+from topovet.intake.hamiltonian.hr import read_hr
 from topovet.intake.structure import read_structure
-from topovet.intake.win import read_win
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.assemble import assemble
 from topovet.model.build_basis import build_basis
 from topovet.model.declarations import declare

@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 
 from companion_files import hermitian_file, mesh_cells
 from topovet.arrays import ComplexArray, FloatArray, IntArray
-from topovet.intake.ws_shifts import apply_shifts, rebuild_shifts
+from topovet.intake.shifts.ws_shifts import apply_shifts, rebuild_shifts
 
 grids = st.tuples(st.integers(1, 4), st.integers(1, 4), st.integers(1, 3))
 coordinates = st.one_of(st.integers(-24, 24).map(lambda i: i / 12), st.floats(-15, 15))

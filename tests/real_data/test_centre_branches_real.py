@@ -9,17 +9,17 @@ import numpy as np
 import pytest
 
 from topovet.arrays import FloatArray
-from topovet.intake.centre_branches import (
+from topovet.intake.hamiltonian.hr import read_hr
+from topovet.intake.records import HamiltonianFile, WsShifts
+from topovet.intake.shifts.centre_branches import (
     centre_offsets,
     centres_on_other_sites,
     suspicious_centres,
 )
-from topovet.intake.centres import read_centres
-from topovet.intake.hr import read_hr
-from topovet.intake.records import HamiltonianFile, WsShifts
-from topovet.intake.win import read_win
-from topovet.intake.ws_shifts import apply_shifts, rebuild_shifts
-from topovet.intake.wsvec import read_wsvec
+from topovet.intake.shifts.centres import read_centres
+from topovet.intake.shifts.ws_shifts import apply_shifts, rebuild_shifts
+from topovet.intake.shifts.wsvec import read_wsvec
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import build_model
 

@@ -12,10 +12,10 @@ from topovet.intake.audit import audit_hamiltonian
 from topovet.intake.bands import read_eig
 from topovet.intake.case_toml import read_settings
 from topovet.intake.discovery import find_case, sha256_of
-from topovet.intake.hr import read_hr
+from topovet.intake.hamiltonian.hr import read_hr
+from topovet.intake.shifts.ws_shifts import apply_shifts
 from topovet.intake.structure import read_structure
-from topovet.intake.win import read_win
-from topovet.intake.ws_shifts import apply_shifts
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import build_model
 

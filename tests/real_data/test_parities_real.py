@@ -16,9 +16,9 @@ import pytest
 from real_cases import CASES, CENTROSYMMETRIC, reference, vetted
 from topovet.arrays import FloatArray
 from topovet.intake.discovery import find_case
-from topovet.intake.hr import read_hr
-from topovet.intake.win import read_win
-from topovet.intake.wsvec import read_wsvec
+from topovet.intake.hamiltonian.hr import read_hr
+from topovet.intake.shifts.wsvec import read_wsvec
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.assemble import assemble
 from topovet.model.fourier import BlochSum
 from topovet.spectrum.eigen import eigenvalues

@@ -10,10 +10,10 @@ import numpy as np
 import pytest
 
 from topovet.errors import InputError
-from topovet.intake.hr import read_hr
-from topovet.intake.hr_write import write_hr
+from topovet.intake.hamiltonian.hr import read_hr
+from topovet.intake.hamiltonian.hr_write import write_hr
+from topovet.intake.hamiltonian.tb import read_tb
 from topovet.intake.records import HamiltonianFile
-from topovet.intake.tb import read_tb
 
 pytestmark = pytest.mark.real_data
 

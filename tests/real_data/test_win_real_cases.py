@@ -10,7 +10,7 @@ import pytest
 
 from topovet.arrays import ComplexArray, FloatArray
 from topovet.intake.records import WinFile
-from topovet.intake.win import read_win
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.basis import OrbitalBasis
 from topovet.model.build_basis import build_basis
 from topovet.model.crystal import Crystal

@@ -10,13 +10,13 @@ import pytest
 
 from topovet.arrays import FloatArray
 from topovet.intake.bands import read_bands
-from topovet.intake.centres import read_centres
 from topovet.intake.discovery import find_case
-from topovet.intake.hr import read_hr
+from topovet.intake.hamiltonian.hr import read_hr
 from topovet.intake.records import CaseFiles, HamiltonianFile, WinFile, WsShifts
-from topovet.intake.win import read_win
-from topovet.intake.ws_shifts import apply_shifts, rebuild_shifts
-from topovet.intake.wsvec import read_wsvec
+from topovet.intake.shifts.centres import read_centres
+from topovet.intake.shifts.ws_shifts import apply_shifts, rebuild_shifts
+from topovet.intake.shifts.wsvec import read_wsvec
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import build_model
 

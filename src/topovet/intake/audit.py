@@ -37,7 +37,7 @@ def audit_hamiltonian(
     shift_source, shift_note
         See `HamiltonianAudit`.
     centre_offsets
-        (n_wann,) angstrom from `topovet.intake.centre_branches.centre_offsets`, if known.
+        (n_wann,) angstrom from `topovet.intake.shifts.centre_branches.centre_offsets`, if known.
 
     Returns
     -------

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.intake.records import HamiltonianFile, WsShifts
-from topovet.intake.ws_shifts import apply_shifts
+from topovet.intake.shifts.ws_shifts import apply_shifts
 from topovet.model.completion import complete
 from topovet.model.fourier import BlochSum, build_bloch_sum
 from topovet.model.hamiltonian import TightBindingModel, build_model

@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray
-from topovet.intake.angular import ANGULAR_NAMES
 from topovet.intake.records import DeclaredOrbital
+from topovet.intake.wannier_input.angular import ANGULAR_NAMES
 from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal
 from topovet.model.hybrids import harmonic_coefficients

@@ -8,13 +8,13 @@ import numpy as np
 from ase.geometry import find_mic
 
 from topovet.arrays import BoolArray, FloatArray
-from topovet.intake.centre_branches import (
+from topovet.intake.records import HamiltonianFile, WsShifts
+from topovet.intake.shifts.centre_branches import (
     centre_offsets,
     centres_on_other_sites,
     suspicious_centres,
 )
-from topovet.intake.records import HamiltonianFile, WsShifts
-from topovet.intake.ws_shifts import rebuild_shifts
+from topovet.intake.shifts.ws_shifts import rebuild_shifts
 from topovet.model.declarations import Declarations
 
 SAME_CENTRE_ANG = 1e-2

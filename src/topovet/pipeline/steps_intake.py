@@ -10,13 +10,13 @@ from topovet.errors import InputError, NoInversionError
 from topovet.intake.audit import audit_hamiltonian
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.intake.case_toml import read_settings
-from topovet.intake.centres import read_centres
-from topovet.intake.hr import read_hr
+from topovet.intake.hamiltonian.hr import read_hr
+from topovet.intake.hamiltonian.tb import read_tb
 from topovet.intake.records import CaseSettings, HamiltonianFile, WsShifts
+from topovet.intake.shifts.centres import read_centres
+from topovet.intake.shifts.wsvec import read_wsvec
 from topovet.intake.structure import read_structure
-from topovet.intake.tb import read_tb
-from topovet.intake.win import read_win
-from topovet.intake.wsvec import read_wsvec
+from topovet.intake.wannier_input.win import read_win
 from topovet.model.assemble import LatticeHamiltonian, assemble
 from topovet.model.basis import OrbitalBasis
 from topovet.model.build_basis import build_basis

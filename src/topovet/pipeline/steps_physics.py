@@ -9,7 +9,7 @@ import numpy as np
 from topovet.arrays import FloatArray
 from topovet.errors import NoInversionError
 from topovet.intake.bands import read_bands, read_eig
-from topovet.intake.win import read_win
+from topovet.intake.wannier_input.win import read_win
 from topovet.invariants.parity import compute_parity
 from topovet.invariants.results import ParityWitness
 from topovet.model.declarations import Declarations

@@ -12,11 +12,11 @@ import pytest
 from companion_files import Refusal, hermitian_file, mesh_cells, wsvec_text
 from topovet.intake.bands import read_bands, read_eig
 from topovet.intake.case_toml import read_settings
-from topovet.intake.centres import read_centres
 from topovet.intake.discovery import find_case
+from topovet.intake.shifts.centres import read_centres
+from topovet.intake.shifts.ws_shifts import rebuild_shifts
+from topovet.intake.shifts.wsvec import read_wsvec
 from topovet.intake.structure import read_structure
-from topovet.intake.ws_shifts import rebuild_shifts
-from topovet.intake.wsvec import read_wsvec
 
 MESH = (2, 2, 1)
 HAMILTONIAN = hermitian_file(mesh_cells(MESH).tolist(), 2)

@@ -16,8 +16,8 @@ from topovet.intake.lattice_keys import (
     vector_keys,
     vectors_of_keys,
 )
-from topovet.intake.ws_shifts import apply_shifts
-from topovet.intake.wsvec import read_wsvec
+from topovet.intake.shifts.ws_shifts import apply_shifts
+from topovet.intake.shifts.wsvec import read_wsvec
 
 
 def test_keys_are_undone_up_to_the_largest_component() -> None:

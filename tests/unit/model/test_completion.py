@@ -8,7 +8,7 @@ import numpy as np
 
 from topovet.arrays import IntArray
 from topovet.intake.records import HamiltonianFile, WsShifts
-from topovet.intake.ws_shifts import apply_shifts, rebuild_shifts
+from topovet.intake.shifts.ws_shifts import apply_shifts, rebuild_shifts
 from topovet.model.completion import complete
 from topovet.model.hamiltonian import TightBindingModel, build_model
 

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from topovet.arrays import FloatArray
-from topovet.intake.angular import ANGULAR_NAMES, parse_angular
+from topovet.intake.wannier_input.angular import ANGULAR_NAMES, parse_angular
 from topovet.model.hybrids import harmonic_coefficients
 from topovet.model.real_harmonics import compute_harmonics, harmonic_rotation
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from topovet.intake.records import HamiltonianFile, WsShifts
-from topovet.intake.ws_shifts import apply_shifts, rebuild_shifts
+from topovet.intake.shifts.ws_shifts import apply_shifts, rebuild_shifts
 from topovet.model.ordering import interlacing_order, reorder_hamiltonian, reorder_shifts
 
 CELL = np.diag([3.0, 4.0, 5.0])

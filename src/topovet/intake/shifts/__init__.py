@@ -1,0 +1,1 @@
+"""Wannier centres and `_wsvec.dat` go in; Wigner-Seitz shifts and H(R) with them come out."""

@@ -1,0 +1,1 @@
+"""A `.win` file goes in; cell, atoms, mesh and declared Wannier functions come out."""
