@@ -1,9 +1,10 @@
 """Numbers in fixed columns, many lines at once, every byte looked at.
 
 Lines that all share one layout (Wannier90's `5I5,2F12.6`, or another code's widths) are kept as
-one block of bytes, and their characters taken as words (`digit_words.py`). A number is an integer mantissa divided by a power of ten; with both below 2**53 and 1e22 that division is
-correctly rounded, hence bit for bit what `float(text)` gives. Numbers beyond that range are
-converted one by one with `float`.
+one block of bytes, and their characters taken as words (`digit_words.py`). A number is an integer
+mantissa divided by a power of ten; with both below 2**53 and 1e22 that division is correctly
+rounded, hence bit for bit what `float(text)` gives. Numbers beyond that range are converted one by
+one with `float`.
 
 Anything unexpected raises `NotInColumnsError`; it is for the caller to look closer.
 """

@@ -2,7 +2,8 @@
 
 First a line of text, num_wann, nrpts and nrpts degeneracies; then one line `R1 R2 R3 m n Re Im`
 for each element, m fastest, then n, then R. Files in fixed columns take the fast path
-(`hr_fixed.py`); what it cannot take goes on in the tolerant one (`hr_tolerant.py`), from the lines where the fast path stopped.
+(`hr_fixed.py`); what it cannot take goes on in the tolerant one (`hr_tolerant.py`), from the lines
+where the fast path stopped.
 """
 
 from __future__ import annotations
