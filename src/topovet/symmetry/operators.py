@@ -214,7 +214,7 @@ def factor_system(operators: Sequence[WannierOperator]) -> FactorSystem:
     at_k = np.concatenate([operator_at(o, k) for o in operators])
     product, sign, defect = np.empty((n_op, n_op), int), np.empty((n_op, n_op), int), 0.0
     for b, second in enumerate(operators):
-        k_between = k @ second.k_rotation
+        k_between: FloatArray = k @ second.k_rotation.astype(float)
         first_at = np.concatenate([operator_at(o, k_between) for o in operators])
         made = first_at @ at_k[b]
         rotation = rotations @ second.rotation
