@@ -344,7 +344,7 @@ def _material(
         interpolation=InterpolationCheck(0.8, 42.0, 216, 0.05, 0.6, 184, 4),
         audit=audit(),
         decay=decay(),
-        spin_order=SpinOrder("interlaced", 0.0009, 912.0),
+        spin_order=SpinOrder("interlaced", 0.0009, 912.0, 912.0),
         tasks=tasks(),
         log_note="The log of the run lies beside this file as log.txt.",
     )

@@ -97,9 +97,9 @@ def settle_spin_order(
     *, context: Context, declarations: Declarations, unshifted: LatticeHamiltonian
 ) -> SpinOrder:
     """Interlaced or block: which of them has time reversal."""
-    if not declarations.spinful:
-        return SpinOrder("none", None, None)
-    return find_spin_order(unshifted.bloch, declarations.crystal.periodic)
+    return find_spin_order(
+        unshifted.bloch, declarations.crystal.periodic, spinful=bool(declarations.spinful)
+    )
 
 
 def interlace(

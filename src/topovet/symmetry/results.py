@@ -43,12 +43,15 @@ class SpinOrder:
     found
         "interlaced" (up, down, up, …), "block" (all up, then all down), or "none" when spinless.
     interlaced_mev, block_mev
-        Violation of time reversal in either order; None where there is nothing to compare.
+        Violation of time reversal in either order, meV; None for an odd number of functions.
+    spinless_mev
+        Violation of time reversal without spin, H(-k) = H(k)*, meV.
     """
 
     found: str
     interlaced_mev: float | None
     block_mev: float | None
+    spinless_mev: float
 
 
 @dataclass(frozen=True, slots=True)

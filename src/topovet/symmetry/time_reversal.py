@@ -35,10 +35,14 @@ def spin_operator(n_orb: int, spin_order: str) -> FloatArray:
     raise ValueError(f"unknown spin order {spin_order!r}")
 
 
-def find_spin_order(bloch: BlochSum, periodic: tuple[bool, bool, bool]) -> SpinOrder:
-    """Spin order of a spinful Hamiltonian: the one in which time reversal holds.
+def find_spin_order(
+    bloch: BlochSum, periodic: tuple[bool, bool, bool], *, spinful: bool
+) -> SpinOrder:
+    """Spin order of a Hamiltonian: the one in which time reversal holds.
 
-    "interlaced", Wannier90's own, stays unless "block" is better by a factor of ten.
+    "interlaced", Wannier90's own, stays unless "block" is better by a factor of ten. A Hamiltonian
+    that is declared spinless stays so, but both orders are measured: if time reversal fails for it
+    and holds with spin, the declaration is wrong.
 
     Parameters
     ----------
@@ -47,14 +51,18 @@ def find_spin_order(bloch: BlochSum, periodic: tuple[bool, bool, bool]) -> SpinO
         order.
     periodic
         Periodic directions.
+    spinful
+        As declared.
     """
-    if bloch.n_orb % 2:
-        return SpinOrder("interlaced", None, None)
     k_frac = sampled_k(periodic)
     h_k, h_minus = bloch.at(k_frac), bloch.at(-k_frac)
+    spinless = _violation_mev(h_k, h_minus, "none")
+    if bloch.n_orb % 2:
+        return SpinOrder("interlaced" if spinful else "none", None, None, spinless)
     interlaced = _violation_mev(h_k, h_minus, "interlaced")
     block = _violation_mev(h_k, h_minus, "block")
-    return SpinOrder("block" if block < 0.1 * interlaced else "interlaced", interlaced, block)
+    found = "block" if block < 0.1 * interlaced else "interlaced"
+    return SpinOrder(found if spinful else "none", interlaced, block, spinless)
 
 
 def measure_time_reversal(

@@ -39,7 +39,17 @@ def witness_flags(findings: Findings) -> Iterator[Flag]:
 
 
 def _spin_order(findings: Findings) -> Iterator[Flag]:
-    order = findings.spin_order
+    order, limit = findings.spin_order, findings.time_reversal.tolerance_mev
+    best = min((v for v in (order.interlaced_mev, order.block_mev) if v is not None), default=None)
+    if order.found == "none" and best is not None and best <= limit < order.spinless_mev:
+        yield Flag(
+            "spin-order-mismatch",
+            "error",
+            f"the Hamiltonian is declared spinless, but time reversal fails for it so by "
+            f"{mev(order.spinless_mev)} and holds with spin to {mev(best)}.",
+            {"spinless_meV": order.spinless_mev, "spinful_meV": best},
+            "Set spinors = true in the .win file.",
+        )
     if order.found != "block":
         return
     yield Flag(

@@ -40,7 +40,7 @@ def test_model_with_time_reversal() -> None:
 
 
 def test_spin_order_is_found() -> None:
-    interlaced = find_spin_order(FKM.bloch, PERIODIC)
+    interlaced = find_spin_order(FKM.bloch, PERIODIC, spinful=True)
     assert interlaced.found == "interlaced"
     assert interlaced.interlaced_mev == pytest.approx(0, abs=1e-9)
     assert interlaced.block_mev is not None
@@ -49,9 +49,16 @@ def test_spin_order_is_found() -> None:
     shuffled = TightBindingModel(
         FKM.model.r_cells, FKM.model.h_r[:, block[:, None], block], spinful=True
     )
-    order = find_spin_order(build_bloch_sum(shuffled), PERIODIC)
+    order = find_spin_order(build_bloch_sum(shuffled), PERIODIC, spinful=True)
     assert order.found == "block"
     assert order.block_mev == pytest.approx(0, abs=1e-9)
+
+
+def test_spin_that_was_not_declared_shows() -> None:
+    order = find_spin_order(FKM.bloch, PERIODIC, spinful=False)
+    assert order.found == "none"
+    assert order.interlaced_mev == pytest.approx(0, abs=1e-9)
+    assert order.spinless_mev > 10
 
 
 @pytest.mark.parametrize("field_ev", [0.0015, 0.05])

@@ -57,7 +57,7 @@ def _sound() -> Findings:
             centre_offsets_ang=(0.01,) * 12,
         ),
         decay=replace(material.decay, rim_mev=2.0, largest_hopping_mev=900.0),
-        spin_order=SpinOrder("interlaced", 0.0009, 900.0),
+        spin_order=SpinOrder("interlaced", 0.0009, 900.0, 900.0),
         shift_test=ShiftTest("given", (), (), None, None, ""),
         space_group=material.space_group,
         time_reversal=material.time_reversal,
@@ -138,7 +138,14 @@ FAULTS = {
         _changed(declared={"structure_offset_ang": np.inf}),
         "warning",
     ),
-    "spin-order-mismatch": (_changed(spin_order=SpinOrder("block", 900.0, 0.001)), "warning"),
+    "spin-order-mismatch": (
+        _changed(spin_order=SpinOrder("block", 900.0, 0.001, 900.0)),
+        "warning",
+    ),
+    "spin-order-mismatch, declared spinless": (
+        _changed(spinful=False, spin_order=SpinOrder("none", 0.002, 900.0, 900.0)),
+        "error",
+    ),
     "time-reversal-broken": (
         _changed(time_reversal={"present": False, "violation_mev": 30.0}),
         "warning",
