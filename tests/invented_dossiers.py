@@ -341,6 +341,8 @@ def _material(
         ),
         bands=band_path(dimension, where.reciprocal),
         parity=parity,
+        wilson=None,
+        chern=None,
         interpolation=InterpolationCheck(0.8, 42.0, 216, 0.05, 0.6, 184, 4),
         audit=audit(),
         decay=decay(),

@@ -14,7 +14,7 @@ from topovet.pipeline.runner import Observer
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 from topovet.verdict.flags_intake import intake_flags
-from topovet.verdict.flags_physics import symmetry_flags
+from topovet.verdict.flags_symmetry import symmetry_flags
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -76,6 +76,8 @@ def inspect_case(case: str | Path, *, observe: Observer = lambda event, text: No
         electrons=None,
         gap=None,
         parity=None,
+        wilson=None,
+        chern=None,
         interpolation=None,
         missing={},
     )

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants.results import ParityWitness
+from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
@@ -35,7 +35,9 @@ def conclude_case(
     electrons: Electrons,
     gap: GapSample | None,
     parity: ParityWitness | None,
-    interpolation: InterpolationCheck | None,
+    wilson: WilsonWitness | None = None,
+    chern: ChernWitness | None = None,
+    interpolation: InterpolationCheck | None = None,
 ) -> Verdict:
     """The verdict from the results of all steps."""
     findings = Findings(
@@ -51,6 +53,8 @@ def conclude_case(
         electrons=electrons,
         gap=gap,
         parity=parity,
+        wilson=wilson,
+        chern=chern,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -78,7 +82,9 @@ def gather(
     gap: GapSample | None,
     bands: BandPath | None,
     parity: ParityWitness | None,
-    interpolation: InterpolationCheck | None,
+    wilson: WilsonWitness | None = None,
+    chern: ChernWitness | None = None,
+    interpolation: InterpolationCheck | None = None,
 ) -> ReportMaterial:
     """All that the report shows; the graph of tasks is added by the dossier."""
     return ReportMaterial(
@@ -91,6 +97,8 @@ def gather(
         gap=gap,
         bands=bands,
         parity=parity,
+        wilson=wilson,
+        chern=chern,
         interpolation=interpolation,
         audit=audit,
         decay=decay,

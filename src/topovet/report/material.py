@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants.results import ParityWitness
+from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
@@ -69,6 +69,8 @@ class ReportMaterial:
         Bands along the special-point path; None where they were not computed.
     parity
         Parities at the TRIM with all levels; None where the witness did not run at all.
+    wilson, chern
+        Wilson loops and Chern numbers with their planes; None where they did not run.
     interpolation
         Differences to the energies that came with the case, meV; None without such files.
     audit
@@ -92,6 +94,8 @@ class ReportMaterial:
     gap: GapSample | None
     bands: BandPath | None
     parity: ParityWitness | None
+    wilson: WilsonWitness | None
+    chern: ChernWitness | None
     interpolation: InterpolationCheck | None
     audit: HamiltonianAudit
     decay: DecayProfile

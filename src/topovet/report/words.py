@@ -112,7 +112,10 @@ def _second_grounds(verdict: Verdict) -> tuple[str, ...]:
     wilson, surface = verdict.witnesses.wilson, verdict.witnesses.surface
     lines = []
     if wilson.status == "ok":
-        lines.append(f"Wilson loops give Z₂ = {z2_text(wilson.z2)}.")
+        lines.append(
+            f"Wilson loops give Z₂ = {z2_text(wilson.z2)} on {len(wilson.planes)} "
+            f"plane{'' if len(wilson.planes) == 1 else 's'}, without any use of inversion."
+        )
     if surface.status == "ok":
         lines.append(f"Surface states give a strong index of {surface.z2_strong}.")
     return tuple(lines)

@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from topovet.invariants.results import ParityWitness
+from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
+from topovet.verdict.agreement import Agreement, Statement, weigh
 from topovet.verdict.document import InvariantsEntry
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
@@ -43,70 +44,117 @@ def conclude(findings: Findings, flags: Sequence[Flag]) -> Conclusion:
     flags
         All flags that were raised.
     """
-    parity = findings.parity
-    speaks = parity is not None and parity.status == "ok"
-    errors = [flag.code for flag in flags if flag.severity == "error"]
+    agreement = weigh_witnesses(findings)
+    errors = list(dict.fromkeys(flag.code for flag in flags if flag.severity == "error"))
     if errors:
-        return _undetermined(speaks, "flags of severity error: " + ", ".join(errors))
-    if parity is None or not speaks:
-        return _undetermined(False, _silence(findings))
+        return _undetermined(agreement.word, "flags of severity error: " + ", ".join(errors))
     if findings.gap is None:
-        return _undetermined(True, f"the gap is not known ({findings.missing.get('gap', '')})")
+        why = f"the gap is not known ({findings.missing.get('gap', '')})"
+        return _undetermined(agreement.word, why)
     if not findings.kramers:
-        return _without_kramers(findings, parity)
-    class_, grounds = _class_from_indices(findings, parity)
-    indicators = {} if parity.z4 is None else {"z4": parity.z4}
-    invariants = InvariantsEntry(z2=parity.z2, z4=parity.z4, indicators=indicators)
-    return Conclusion(invariants, "one-witness", class_, grounds)
+        return _without_kramers(findings)
+    if agreement.z2 is None:
+        return _undetermined(agreement.word, _silence(findings))
+    parity = findings.parity if _speaks(findings.parity) else None
+    z4 = None if parity is None else parity.z4
+    class_, grounds = _class_from_indices(findings, agreement.z2, parity)
+    indicators = {} if z4 is None else {"z4": z4}
+    invariants = InvariantsEntry(z2=agreement.z2, z4=z4, indicators=indicators)
+    return Conclusion(invariants, agreement.word, class_, grounds)
 
 
-def _undetermined(one_speaks: bool, why: str) -> Conclusion:
-    agreement = "one-witness" if one_speaks else "undetermined"
+def weigh_witnesses(findings: Findings) -> Agreement:
+    """The Z2 indices of all witnesses that speak, side by side."""
+    named = (("parity", findings.parity), ("Wilson loops", findings.wilson))
+    return weigh(
+        [
+            Statement(name, witness.z2)
+            for name, witness in named
+            if witness is not None and witness.status == "ok" and witness.z2 is not None
+        ]
+    )
+
+
+def _speaks(witness: ParityWitness | WilsonWitness | ChernWitness | None) -> bool:
+    return witness is not None and witness.status == "ok"
+
+
+def _undetermined(agreement: str, why: str) -> Conclusion:
     return Conclusion(InvariantsEntry(), agreement, "undetermined", (why,))
 
 
 def _silence(findings: Findings) -> str:
-    """Why the only witness of this version does not speak."""
+    """Why no witness speaks."""
+    parity = findings.missing.get("parity") or findings.inversion.reason
     if findings.parity is not None:
-        return f"parity: {findings.parity.reason}"
-    return f"parity: {findings.missing.get('parity') or findings.inversion.reason}"
+        parity = findings.parity.reason
+    wilson = findings.missing.get("wilson", "not tested")
+    if findings.wilson is not None:
+        wilson = findings.wilson.reason
+    return f"parity: {parity}; Wilson loops: {wilson}"
 
 
-def _class_from_indices(findings: Findings, parity: ParityWitness) -> tuple[str, tuple[str, ...]]:
-    assert parity.z2 is not None
-    strong, weak = parity.z2[0], parity.z2[1:]
+def _class_from_indices(
+    findings: Findings, z2: tuple[int, ...], parity: ParityWitness | None
+) -> tuple[str, tuple[str, ...]]:
+    strong, weak = z2[0], z2[1:]
     if strong:
         return "strong-ti", ("the strong Z2 index is 1",)
     if any(weak):
-        return "weak-ti", (
-            "the strong Z2 index is 0, weak ones are not",
-            "kappa depends on the inversion centre here and is quoted for the one stated",
-        )
-    if parity.z4 == 2:
+        centre = "kappa depends on the inversion centre here and is quoted for the one stated"
+        grounds = ("the strong Z2 index is 0, weak ones are not",)
+        return "weak-ti", grounds if parity is None else (*grounds, centre)
+    if parity is not None and parity.z4 == 2:
         return "higher-order", (
             "all Z2 indices are 0 and kappa = 2: hinge states protected by inversion, or surface "
             "states protected by a mirror or rotation; parities alone do not tell which",
         )
-    dimension = findings.declared.crystal.dimension
-    unseen = "mirror and rotation invariants were not tested" if dimension == 3 else ""
-    return "trivial", ("all indices that parities can see are 0", *((unseen,) if unseen else ()))
+    seen = "all Z2 indices are 0" if parity is None else "all indices that parities can see are 0"
+    if findings.declared.crystal.dimension == 3:
+        return "trivial", (seen, "mirror and rotation invariants were not tested")
+    return "trivial", (seen,)
 
 
-def _without_kramers(findings: Findings, parity: ParityWitness) -> Conclusion:
-    """No Z2: the inversion indicator alone is stated, never a class it only hints at."""
-    indicators = {} if parity.eta4 is None else {"eta4": parity.eta4}
+def _without_kramers(findings: Findings) -> Conclusion:
+    """No Z2: Chern numbers, and the inversion indicator without the phases it only hints at."""
+    parity = findings.parity if _speaks(findings.parity) else None
+    chern = findings.chern if _speaks(findings.chern) else None
+    eta4 = None if parity is None else parity.eta4
     why = (
         "the Hamiltonian is spinless"
         if not findings.spinful
         else "the Hamiltonian breaks time reversal"
     )
     grounds = [f"{why}, so Z2 indices do not exist"]
-    if parity.eta4 is not None and parity.eta4 % 2:
-        grounds.append(
-            f"eta = {parity.eta4} mod 4 is odd: the occupied bands cannot be gapped everywhere"
-        )
-    elif parity.eta4 == 2 and findings.spinful:
-        grounds.append("eta = 2 mod 4: axion candidate if all Chern numbers vanish (not tested)")
-    return Conclusion(
-        InvariantsEntry(indicators=indicators), "one-witness", "undetermined", tuple(grounds)
+    class_, values = "undetermined", None if chern is None else chern.chern
+    if values is not None and any(values):
+        class_ = "chern"
+        grounds.append("a Chern number is not 0")
+    elif values is not None:
+        grounds.append("all Chern numbers are 0")
+    if eta4 is not None and eta4 % 2:
+        grounds.append(f"eta = {eta4} mod 4 is odd: the occupied bands cannot be gapped everywhere")
+        class_, values = "undetermined", None
+    elif eta4 == 2 and findings.spinful:
+        if class_ == "undetermined" and values is not None:
+            class_ = "axion-candidate"
+        grounds.append("eta = 2 mod 4: an axion candidate where all Chern numbers vanish")
+    elif class_ == "undetermined" and values is not None and findings.spinful:
+        class_ = "trivial"
+    if findings.chern is not None and chern is None:
+        grounds.append(f"Chern numbers: {findings.chern.reason}")
+    invariants = InvariantsEntry(
+        indicators={} if eta4 is None else {"eta4": eta4}, chern=_chern_entry(values)
     )
+    voices = (parity is not None) + (chern is not None)
+    word = ("undetermined", "one-witness", "agree")[voices]
+    return Conclusion(invariants, word, class_, tuple(grounds))
+
+
+def _chern_entry(values: tuple[int, ...] | None) -> int | tuple[int, int, int] | None:
+    if values is None:
+        return None
+    if len(values) == 1:
+        return values[0]
+    c_1, c_2, c_3 = values
+    return c_1, c_2, c_3

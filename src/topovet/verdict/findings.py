@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants.results import ParityWitness
+from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
@@ -42,6 +42,8 @@ class Findings:
     electrons: Electrons | None
     gap: GapSample | None
     parity: ParityWitness | None
+    wilson: WilsonWitness | None
+    chern: ChernWitness | None
     interpolation: InterpolationCheck | None
     missing: dict[str, str]
 

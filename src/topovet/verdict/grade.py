@@ -7,7 +7,7 @@ C   a verdict that stands, with a warning that touches it or an error budget abo
     radius;
 D   undetermined.
 
-This version has one witness and a sampled gap, so B is the best it gives.
+This version samples the gap, so B is the best it gives.
 """
 
 from __future__ import annotations
@@ -32,7 +32,7 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
     radius, total = robustness_radius(findings), total_error(error_budget(findings))
     reasons = [
         *conclusion.grounds,
-        "one witness (parity) speaks; Wilson loops and surface are not part of this version",
+        _voices(conclusion),
         "the gap is sampled, not proved",
     ]
     warnings = [
@@ -50,3 +50,9 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
     if warnings:
         reasons.append("warnings that touch the verdict: " + ", ".join(dict.fromkeys(warnings)))
     return ConfidenceEntry("C" if warnings or too_large else "B", tuple(reasons))
+
+
+def _voices(conclusion: Conclusion) -> str:
+    if conclusion.agreement == "agree":
+        return "two independent witnesses, parities and Wilson loops, agree"
+    return "one witness speaks"

@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 import topovet
+from topovet.invariants.results import ChernWitness
 from topovet.verdict.budget import error_budget, robustness_radius
 from topovet.verdict.conclude import conclude
 from topovet.verdict.document import (
@@ -29,7 +30,9 @@ from topovet.verdict.document import (
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import SEVERITIES, Flag
 from topovet.verdict.flags_intake import intake_flags
-from topovet.verdict.flags_physics import spectrum_flags, symmetry_flags, witness_flags
+from topovet.verdict.flags_spectrum import spectrum_flags
+from topovet.verdict.flags_symmetry import symmetry_flags
+from topovet.verdict.flags_witnesses import witness_flags
 from topovet.verdict.grade import grade
 
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
@@ -93,7 +96,7 @@ def judge(
         ),
         witnesses=WitnessesEntry(
             parity=_parity(findings),
-            wilson=WilsonEntry("not-applicable", NOT_IN_THIS_VERSION),
+            wilson=_wilson(findings),
             surface=SurfaceEntry("not-applicable", NOT_IN_THIS_VERSION),
         ),
         invariants=conclusion.invariants,
@@ -157,6 +160,36 @@ def _parity(findings: Findings) -> ParityEntry:
         TrimEntry(t.k, t.n_plus, t.n_minus, t.delta, t.purity, t.gap_ev) for t in parity.trim
     )
     return ParityEntry(parity.status, parity.reason, parity.z2, parity.z4, trim)
+
+
+def _wilson(findings: Findings) -> WilsonEntry:
+    wilson, chern = findings.wilson, findings.chern
+    counted = {} if chern is None or chern.chern is None else _chern_by_direction(chern)
+    if wilson is None:
+        reason = findings.missing.get("wilson", "not tested")
+        if chern is None:
+            return WilsonEntry("not-applicable", reason)
+        return WilsonEntry(chern.status, chern.reason, chern=counted)
+    planes = tuple(
+        {
+            "plane": plane.plane,
+            "status": plane.status,
+            "z2": plane.z2,
+            "lines": plane.lines,
+            "smallest_gap": plane.smallest_gap,
+            "smallest_direct_gap_eV": plane.smallest_direct_gap_ev,
+        }
+        for plane in wilson.planes
+    )
+    return WilsonEntry(wilson.status, wilson.reason, wilson.z2, planes, counted)
+
+
+def _chern_by_direction(chern: ChernWitness) -> dict[str, int]:
+    """Chern number by the planes it belongs to."""
+    assert chern.chern is not None
+    if len(chern.chern) == 1:
+        return {chern.planes[0].plane: chern.chern[0]}
+    return {f"k{i}=const": value for i, value in enumerate(chern.chern, start=1)}
 
 
 def _finite(value: float) -> float | None:

@@ -10,7 +10,12 @@ import pytest
 
 import invented_dossiers as invented
 from topovet.intake.records import CaseSettings
-from topovet.invariants.results import ParityWitness, TrimParity
+from topovet.invariants.results import (
+    ChernWitness,
+    ParityWitness,
+    TrimParity,
+    WilsonWitness,
+)
 from topovet.model.declarations import Declarations
 from topovet.spectrum.results import InterpolationCheck
 from topovet.symmetry.inversion import no_inversion
@@ -65,9 +70,20 @@ def _sound() -> Findings:
         electrons=material.electrons,
         gap=material.gap,
         parity=material.parity,
+        wilson=None,
+        chern=None,
         interpolation=None,
         missing={},
     )
+
+
+def _wilson(z2: tuple[int, ...] | None, status: str = "ok", reason: str = "") -> WilsonWitness:
+    return WilsonWitness(status, reason, z2, (), (), (), 1200)
+
+
+def _chern(values: tuple[int, ...] | None, status: str = "ok") -> ChernWitness:
+    reason = "" if status == "ok" else "parallel planes differ"
+    return ChernWitness(status, reason, values, (), (), 900)
 
 
 SOUND = _sound()
@@ -205,6 +221,15 @@ FAULTS = {
         _changed(inversion={"violation_mev": GAP_MEV}, audit={"shift_source": "not available"}),
         "warning",
     ),
+    "witnesses-disagree": (_changed(wilson=_wilson((0, 0, 0, 0))), "error"),
+    "wilson-unresolved": (
+        _changed(wilson=_wilson(None, "unresolved", "the budget ended")),
+        "warning",
+    ),
+    "wilson-unresolved, planes at odds": (
+        _changed(wilson=_wilson(None, "failed", "nu0 differs")),
+        "error",
+    ),
     "inside-error-bar": (
         _changed(decay={"rim_mev": GAP_MEV, "largest_hopping_mev": 1e6}),
         "warning",
@@ -291,6 +316,62 @@ def test_without_time_reversal_only_the_indicator_is_stated(eta: int, word: str)
     assert conclusion.invariants.z2 is None
     assert conclusion.invariants.indicators == {"eta4": eta}
     assert any(word in ground for ground in conclusion.grounds)
+
+
+def test_two_witnesses_that_agree() -> None:
+    assert SOUND.parity is not None
+    verdict = judge(
+        _changed(wilson=_wilson(SOUND.parity.z2)), inputs=(), settings={}, task_seconds={}
+    )
+    assert verdict.agreement == "agree"
+    assert verdict.flags == ()
+    assert verdict.confidence.grade == "B"
+    assert any("two independent witnesses" in reason for reason in verdict.confidence.reasons)
+
+
+def test_what_a_working_witness_contradicts_is_not_asserted() -> None:
+    verdict = judge(_changed(wilson=_wilson((0, 0, 0, 0))), inputs=(), settings={}, task_seconds={})
+    assert verdict.agreement == "disagree"
+    assert verdict.class_ == "undetermined"
+    assert verdict.invariants.z2 is None
+    assert verdict.witnesses.parity.z2 != verdict.witnesses.wilson.z2
+
+
+def test_wilson_speaks_where_parity_cannot() -> None:
+    findings = _changed(
+        parity=None,
+        inversion=no_inversion("space group 156 (P3m1) has no inversion"),
+        wilson=_wilson((1, 0, 0, 1)),
+    )
+    verdict = judge(findings, inputs=(), settings={}, task_seconds={})
+    assert verdict.class_ == "strong-ti"
+    assert verdict.agreement == "one-witness"
+    assert verdict.invariants.z2 == (1, 0, 0, 1)
+    assert verdict.invariants.z4 is None
+
+
+@pytest.mark.parametrize(
+    ("values", "eta", "class_"),
+    [
+        ((0, 0, 1), 0, "chern"),
+        ((0, 0, 0), 0, "trivial"),
+        ((0, 0, 0), 2, "axion-candidate"),
+        ((0, 0, 2), 2, "chern"),
+        ((0, 0, 0), 1, "undetermined"),
+        (None, 0, "undetermined"),
+    ],
+)
+def test_without_time_reversal_chern_numbers_speak(
+    values: tuple[int, ...] | None, eta: int, class_: str
+) -> None:
+    findings = _changed(
+        time_reversal={"present": False, "violation_mev": 30.0},
+        parity={"z2": None, "z4": None, "kappa": None, "eta4": eta},
+        chern=_chern(values, "ok" if values else "failed"),
+    )
+    conclusion = conclude(findings, raise_flags(findings))
+    assert conclusion.class_ == class_
+    assert conclusion.invariants.z2 is None
 
 
 def test_without_inversion_the_verdict_is_undetermined_and_says_why() -> None:

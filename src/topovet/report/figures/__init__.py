@@ -4,11 +4,19 @@ from __future__ import annotations
 
 from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
+from topovet.report.figures.flow import flow_figure
 from topovet.report.figures.tasks import tasks_figure
 from topovet.report.figures.zone import zone_figure
 from topovet.report.material import ReportMaterial
 
-__all__ = ["bands_figure", "build_figures", "decay_figure", "tasks_figure", "zone_figure"]
+__all__ = [
+    "bands_figure",
+    "build_figures",
+    "decay_figure",
+    "flow_figure",
+    "tasks_figure",
+    "zone_figure",
+]
 
 _WORTH_A_CLOSER_LOOK_EV = 1.2
 """A gap that is wider than this shows well in the wide figure."""
@@ -17,8 +25,8 @@ _WORTH_A_CLOSER_LOOK_EV = 1.2
 def build_figures(material: ReportMaterial) -> dict[str, str]:
     """Every figure that the material allows, by name: the SVG text of each.
 
-    The names are "zone", "bands", "bands-near-gap", "decay" and "tasks"; `render_report` places
-    them, and each also stands alone as a file.
+    The names are "zone", "bands", "bands-near-gap", "flow", "decay" and "tasks"; `render_report`
+    places them, and each also stands alone as a file.
     """
     trim = material.parity.trim if material.parity is not None else ()
     figures = {"zone": zone_figure(material.crystal, trim)}
@@ -26,6 +34,8 @@ def build_figures(material: ReportMaterial) -> dict[str, str]:
         figures |= _band_figures(material)
     if material.decay.distances_ang:
         figures["decay"] = decay_figure(material.decay)
+    if material.wilson is not None and material.wilson.planes:
+        figures["flow"] = flow_figure(material.wilson.planes)
     if material.tasks:
         figures["tasks"] = tasks_figure(material.tasks)
     return figures
