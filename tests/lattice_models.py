@@ -147,7 +147,7 @@ def honeycomb_cell(a: float) -> FloatArray:
     return np.array([[a, 0, 0], [-a / 2, a * np.sqrt(3) / 2, 0], [0, 0, VACUUM_ANGSTROM]])
 
 
-def _two_steps(
+def two_steps(
     cell: FloatArray, positions: FloatArray, i: int
 ) -> list[tuple[Cell, FloatArray, FloatArray]]:
     """Next-nearest neighbours of site i of a two-site lattice on its own sublattice.
@@ -194,7 +194,7 @@ def kane_mele(
         rashba = 1j * lambda_r * (SIGMA[0] * d[1] - SIGMA[1] * d[0])
         terms.add(r_cell, site[0], site[1], t * np.eye(2) + rashba)
     for i in (0, 1):
-        for r_cell, d1, d2 in _two_steps(cell, positions, i):
+        for r_cell, d1, d2 in two_steps(cell, positions, i):
             nu = np.sign(np.cross(d1, d2)[2])
             # both R and -R are in the list, and add() supplies the partner: half of each
             terms.add(r_cell, site[i], site[i], 0.5j * lambda_so * nu * SIGMA[2])
@@ -343,7 +343,7 @@ def fu_kane_mele(
     for p, r_cell in enumerate([(0, 0, 0), (-1, 0, 0), (0, -1, 0), (0, 0, -1)]):
         terms.add(r_cell, site[0], site[1], (t + dt[p]) * np.eye(2))
     for i in (0, 1):
-        for r_cell, d1, d2 in _two_steps(cell, positions, i):
+        for r_cell, d1, d2 in two_steps(cell, positions, i):
             spin = np.tensordot(np.cross(d1, d2), SIGMA, axes=1)
             terms.add(r_cell, site[i], site[i], 0.5j * 8 * lambda_so / length**2 * spin)
     r_cells, h_r = terms.arrays()

@@ -22,11 +22,11 @@ def frozen(array: NDArray[Scalar]) -> NDArray[Scalar]:
     return view
 
 
-def largest_spectral_norm(stack: ComplexArray) -> float:
+def largest_spectral_norm(stack: ComplexArray, *, hermitian: bool = False) -> float:
     """Largest spectral norm in a stack of matrices (n, m, m); 0 for an empty stack.
 
     Matrices are taken by falling Frobenius norm, which bounds the spectral norm, so that the
-    singular values of only a few of them are needed.
+    singular values of only a few of them are needed; of Hermitian ones, the eigenvalues.
     """
     if len(stack) == 0:
         return 0.0
@@ -37,5 +37,8 @@ def largest_spectral_norm(stack: ComplexArray) -> float:
         batch = order[start : start + 16]
         if frobenius[batch[0]] <= best:
             break
-        best = max(best, float(np.linalg.norm(stack[batch], ord=2, axis=(1, 2)).max()))
+        if hermitian:
+            best = max(best, float(np.abs(np.linalg.eigvalsh(stack[batch])).max()))
+        else:
+            best = max(best, float(np.linalg.norm(stack[batch], ord=2, axis=(1, 2)).max()))
     return best

@@ -10,6 +10,7 @@ import click
 from topovet.cli.options import MillerIndices, case_argument
 from topovet.cli.progress import progress
 from topovet.pipeline.dossier import default_folder, vet_case
+from topovet.pipeline.symmetrised import vet_symmetrised
 from topovet.report.json_document import verdict_json
 from topovet.report.text import verdict_lines
 
@@ -37,6 +38,12 @@ from topovet.report.text import verdict_lines
     metavar="h,k,l",
     help="Surface of interest; recorded, not used by this version.",
 )
+@click.option(
+    "--symmetrise",
+    "also_symmetrised",
+    is_flag=True,
+    help="Vet the symmetrised Hamiltonian too, in DIR/symmetrised.",
+)
 @click.option("--strict", is_flag=True, help="Exit with 3 when a flag of severity error is raised.")
 @click.option("--json", "as_json", is_flag=True, help="Print the verdict as JSON on stdout.")
 def command(
@@ -46,6 +53,7 @@ def command(
     out: Path | None,
     effort: str,
     surface: tuple[int, int, int] | None,
+    also_symmetrised: bool,
     strict: bool,
     as_json: bool,
 ) -> None:
@@ -63,10 +71,17 @@ def command(
     }
     with progress(Path(case).name) as observe:
         dossier = vet_case(case, out=folder, settings=settings, observe=observe)
+        beside = None
+        if also_symmetrised:
+            where = folder / "symmetrised"
+            beside = vet_symmetrised(case, out=where, settings=settings, observe=observe)
     if as_json:
         click.echo(verdict_json(dossier.verdict), nl=False)
     else:
         click.echo(verdict_lines(dossier.verdict))
         click.echo(f"report: {folder / 'report.html'}")
+        if beside is not None:
+            click.echo(f"\n{beside.sentence}\n{verdict_lines(beside.dossier.verdict)}")
+            click.echo(f"report: {folder / 'symmetrised' / 'report.html'}")
     if strict and any(flag.severity == "error" for flag in dossier.verdict.flags):
         sys.exit(3)

@@ -188,9 +188,9 @@ class ChernPlane:
     winding
         From the winding of the sum of hybrid Wannier centres; None if it was not reached.
     plaquettes
-        From the Berry flux through triangles between neighbouring lines; likewise.
+        From the Berry flux through plaquettes between neighbouring lines; likewise.
     largest_flux
-        Largest |flux| through a triangle, radians; below pi the count is an integer.
+        Largest |flux| through a plaquette, radians; below pi the count is an integer.
     lines, points_per_line, smallest_singular_value, smallest_direct_gap_ev, narrowest_k, n_solves
         As in `WilsonPlane`, the lines covering the whole plane.
     flow_across, flow_hwcc
@@ -255,7 +255,7 @@ class MirrorChern:
     plane
         Its name.
     status
-        "ok", "unresolved", "not-applicable" (the operator is no mirror of spinors here) or "failed".
+        "ok", "unresolved", "failed", or "not-applicable" (no mirror of spinors, D^2 is not -1).
     reason
         Why it is not "ok"; empty otherwise.
     mirror_chern

@@ -42,6 +42,8 @@ class ShiftProposal:
         Those of them whose centre sits on a site that is declared for other functions.
     offsets_ang
         (n_wann,) distance of centre and declared site modulo the supercell; None if unknown.
+    centres_cart
+        (n_wann, 3) angstrom, as printed; None if unknown.
     """
 
     given: WsShifts | None
@@ -51,6 +53,7 @@ class ShiftProposal:
     suspects: tuple[int, ...]
     elsewhere: tuple[int, ...]
     offsets_ang: FloatArray | None
+    centres_cart: FloatArray | None
 
 
 def propose_shifts(
@@ -73,7 +76,7 @@ def propose_shifts(
     sites = np.array([o.position_frac for o in declared.orbitals]) if declared.orbitals else None
     if centres_cart is None or sites is None or declared.mp_grid is None:
         given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, sites)
-        return ShiftProposal(given, source, note, None, (), (), None)
+        return ShiftProposal(given, source, note, None, (), (), None, centres_cart)
     cell = declared.crystal.cell
     offsets = centre_offsets(centres_cart, sites, cell, declared.mp_grid)
     suspects = suspicious_centres(offsets, sites, cell)
@@ -94,7 +97,7 @@ def propose_shifts(
         mended = _rebuild(hamiltonian, declared, sites @ cell)
     elsewhere = centres_on_other_sites(centres_cart, sites, cell, declared.mp_grid, suspects)
     return ShiftProposal(
-        given, source, note, mended, _indices(suspects), _indices(elsewhere), offsets
+        given, source, note, mended, _indices(suspects), _indices(elsewhere), offsets, centres_cart
     )
 
 

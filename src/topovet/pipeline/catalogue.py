@@ -4,15 +4,28 @@ from __future__ import annotations
 
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants import irrep_results as irreps
 from topovet.invariants import results as invariants
+from topovet.invariants import rotation_indicators as rotations
+from topovet.invariants.rotation_eigenvalues import EigenvalueCount
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
-from topovet.pipeline import steps_intake, steps_physics, steps_report
+from topovet.pipeline import (
+    steps_intake,
+    steps_physics,
+    steps_report,
+    steps_symmetry,
+    steps_witnesses,
+)
 from topovet.pipeline.codec import Codec
 from topovet.pipeline.task import Task
 from topovet.spectrum import results as spectrum
+from topovet.symmetry import group_results
 from topovet.symmetry import results as symmetry
+from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.inference import InferredInversion
+from topovet.symmetry.irrep_names import IrrepName
 
 STORED_TYPES = (
     records.CaseSettings,
@@ -22,16 +35,33 @@ STORED_TYPES = (
     HamiltonianAudit,
     DecayProfile,
     symmetry.SpinOrder,
+    symmetry.InversionOperator,
+    InferredInversion,
+    AzClass,
     symmetry.SpaceGroup,
     symmetry.TimeReversalTest,
     symmetry.InversionTest,
     symmetry.ShiftTest,
+    group_results.OperationTest,
+    group_results.FoundGroup,
+    group_results.GroupTest,
     spectrum.Electrons,
     spectrum.GapSample,
     spectrum.BandPath,
     spectrum.InterpolationCheck,
     invariants.TrimParity,
     invariants.ParityWitness,
+    invariants.WilsonPlane,
+    invariants.WilsonWitness,
+    invariants.ChernPlane,
+    invariants.ChernWitness,
+    IrrepName,
+    irreps.IrrepContent,
+    irreps.LevelIrreps,
+    irreps.PointIrreps,
+    EigenvalueCount,
+    rotations.S4Axis,
+    rotations.S4Indicator,
 )
 """Dataclasses that results on disk are made of."""
 
@@ -96,6 +126,14 @@ def _intake_tasks() -> tuple[Task, ...]:
             essential=True,
         ),
         Task(
+            "bare",
+            "the bare R vectors with spinors in one order",
+            steps_intake.read_interlaced_without_shifts,
+            needs=("interlaced", "declarations", "spin-order", "unshifted"),
+            stored=False,
+            essential=True,
+        ),
+        Task(
             "shifts",
             "read or rebuild the Wigner-Seitz shifts",
             steps_intake.find_shifts,
@@ -138,7 +176,7 @@ def _intake_tasks() -> tuple[Task, ...]:
             "time-reversal",
             "test time reversal",
             steps_intake.check_time_reversal,
-            needs=("interlaced", "declarations", "shifts", "lattice"),
+            needs=("declarations", "shifts", "lattice", "bare"),
             essential=True,
         ),
         Task(
@@ -155,11 +193,23 @@ def _intake_tasks() -> tuple[Task, ...]:
 def _physics_tasks() -> tuple[Task, ...]:
     return (
         Task(
+            "inferred-inversion",
+            "infer inversion from the Hamiltonian itself",
+            steps_symmetry.infer_from_hamiltonian,
+            needs=("lattice", "declarations", "shifts", "space-group"),
+        ),
+        Task(
+            "symmetry-class",
+            "find the Altland-Zirnbauer class",
+            steps_symmetry.find_symmetry_class,
+            needs=("lattice", "declarations", "time-reversal"),
+        ),
+        Task(
             "inversion",
             "test inversion on the Hamiltonian",
             steps_physics.check_inversion,
             needs=("hamiltonian-with-basis", "declarations"),
-            wants=("space-group",),
+            wants=("space-group", "inferred-inversion"),
             essential=True,
         ),
         Task(
@@ -186,12 +236,70 @@ def _physics_tasks() -> tuple[Task, ...]:
             needs=("hamiltonian-with-basis", "mesh", "electrons"),
         ),
         Task(
+            "inferred-parity",
+            "count parities about the inferred inversion",
+            steps_physics.read_inferred_parities,
+            needs=(
+                "lattice",
+                "declarations",
+                "time-reversal",
+                "electrons",
+                "inferred-inversion",
+            ),
+        ),
+        Task(
             "parity",
             "count parities at the TRIM",
             steps_physics.read_parities,
             needs=(
                 "hamiltonian-with-basis",
                 "declarations",
+                "time-reversal",
+                "inversion",
+                "electrons",
+            ),
+            wants=("inferred-parity",),
+        ),
+        Task(
+            "wilson",
+            "follow Wilson loops over the invariant planes",
+            steps_witnesses.follow_wilson_loops,
+            needs=("hamiltonian-with-basis", "declarations", "time-reversal", "electrons"),
+            wants=("gap",),
+        ),
+        Task(
+            "chern",
+            "count Chern numbers where time reversal is broken",
+            steps_witnesses.count_chern_numbers,
+            needs=("hamiltonian-with-basis", "declarations", "time-reversal", "electrons"),
+            wants=("gap",),
+        ),
+        Task(
+            "group",
+            "test every operation of the space group",
+            steps_symmetry.check_operations,
+            needs=("hamiltonian-with-basis", "bare", "declarations", "space-group", "electrons"),
+        ),
+        Task(
+            "s4",
+            "count S4 eigenvalues",
+            steps_symmetry.count_s4_eigenvalues,
+            needs=(
+                "hamiltonian-with-basis",
+                "declarations",
+                "space-group",
+                "time-reversal",
+                "electrons",
+            ),
+        ),
+        Task(
+            "irreps",
+            "label the bands at the special points",
+            steps_symmetry.label_irreps,
+            needs=(
+                "hamiltonian-with-basis",
+                "declarations",
+                "space-group",
                 "time-reversal",
                 "inversion",
                 "electrons",
@@ -223,14 +331,25 @@ def _report_tasks() -> tuple[Task, ...]:
         "inversion",
         "electrons",
     )
-    if_there = ("space-group", "gap", "parity", "interpolation")
+    if_there = (
+        "space-group",
+        "inferred-inversion",
+        "symmetry-class",
+        "gap",
+        "parity",
+        "wilson",
+        "chern",
+        "s4",
+        "group",
+        "interpolation",
+    )
     return (
         Task(
             "verdict",
             "draw the conclusion and raise the flags",
             steps_report.conclude_case,
             needs=(*judged, "shift-test"),
-            wants=if_there,
+            wants=(*if_there, "inferred-parity"),
             stored=False,
             essential=True,
         ),
@@ -239,7 +358,7 @@ def _report_tasks() -> tuple[Task, ...]:
             "gather what the report shows",
             steps_report.gather,
             needs=(*judged, "verdict"),
-            wants=(*if_there, "bands"),
+            wants=(*if_there, "irreps", "bands"),
             stored=False,
             essential=True,
         ),

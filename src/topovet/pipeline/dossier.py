@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import threading
+import traceback
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from datetime import datetime, timezone
@@ -16,7 +17,7 @@ from topovet.pipeline.graph import build_graph, task_order
 from topovet.pipeline.inputs import hash_inputs
 from topovet.pipeline.runner import Observer, Run
 from topovet.pipeline.store import Store, write_atomically
-from topovet.report.figures import build_figures
+from topovet.report.figures import figure_makers
 from topovet.report.html import render_report
 from topovet.report.json_document import verdict_json
 from topovet.report.material import ReportMaterial, TaskEntry
@@ -111,7 +112,7 @@ def vet_case(
         run.execute()
         material: ReportMaterial = run.result("report-material")
         material = replace(material, tasks=task_entries(run))
-        figures = build_figures(material)
+        figures = _draw(material, log)
         html = render_report(material, figures)
         if out is not None:
             for name, svg in figures.items():
@@ -126,6 +127,17 @@ def vet_case(
         if out is not None:
             log.append_to(out / "log.txt")
     return Dossier(out, material.verdict, html)
+
+
+def _draw(material: ReportMaterial, log: Observer) -> dict[str, str]:
+    """All figures; one that cannot be drawn is left out and logged, never at the verdict's cost."""
+    figures = {}
+    for name, make in figure_makers(material).items():
+        try:
+            figures[name] = make()
+        except Exception:
+            log("log", f"figure {name} could not be drawn:\n{traceback.format_exc()}")
+    return figures
 
 
 def default_folder(case: str | Path) -> Path:

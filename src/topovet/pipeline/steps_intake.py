@@ -111,6 +111,20 @@ def interlace(
     return reorder_hamiltonian(hamiltonian, interlacing_order(hamiltonian.n_wann))
 
 
+def read_interlaced_without_shifts(
+    *,
+    context: Context,
+    interlaced: HamiltonianFile,
+    declarations: Declarations,
+    spin_order: SpinOrder,
+    unshifted: LatticeHamiltonian,
+) -> LatticeHamiltonian:
+    """The reading on bare R vectors with spin interlaced: what the shifts cannot have spoilt."""
+    if spin_order.found != "block":
+        return unshifted
+    return assemble(interlaced, None, declarations.crystal.periodic, spinful=True)
+
+
 def find_shifts(
     *,
     context: Context,
@@ -248,16 +262,14 @@ def profile_decay(
 def check_time_reversal(
     *,
     context: Context,
-    interlaced: HamiltonianFile,
     declarations: Declarations,
     shifts: ShiftProposal,
     lattice: LatticeHamiltonian,
+    bare: LatticeHamiltonian,
 ) -> TimeReversalTest:
     """Time reversal, judged on the reading without shifts."""
+    unshifted = None if shifts.given is None else bare.bloch
     periodic = declarations.crystal.periodic
-    unshifted = None
-    if shifts.given is not None:
-        unshifted = assemble(interlaced, None, periodic, spinful=lattice.model.spinful).bloch
     return measure_time_reversal(lattice.model, lattice.bloch, periodic, unshifted=unshifted)
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -10,8 +10,10 @@ from topovet.arrays import FloatArray
 from topovet.errors import NoInversionError
 from topovet.intake.bands import read_bands, read_eig
 from topovet.intake.wannier_input.win import read_win
+from topovet.invariants.inferred_parity import compute_inferred_parity
 from topovet.invariants.parity import compute_parity
 from topovet.invariants.results import ParityWitness
+from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
@@ -22,6 +24,7 @@ from topovet.spectrum.gap import choose_mesh, sample_gap
 from topovet.spectrum.interpolation import compare_with_files
 from topovet.spectrum.path import compute_bands
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.inversion import build_inversion, measure_inversion, no_inversion
 from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
 
@@ -35,8 +38,9 @@ def check_inversion(
     hamiltonian_with_basis: BasedHamiltonian,
     declarations: Declarations,
     space_group: SpaceGroup | None,
+    inferred_inversion: InferredInversion | None,
 ) -> InversionTest:
-    """Residual of inversion on the Hamiltonian, in the declared basis."""
+    """Residual of inversion on the Hamiltonian: as declared, or as inferred where nothing is."""
     declared_centre = declarations.settings.inversion_centre
     if space_group is None:
         return no_inversion("no space group is known")
@@ -46,13 +50,30 @@ def check_inversion(
         )
     basis, lattice = hamiltonian_with_basis.basis, hamiltonian_with_basis.lattice
     if basis is None:
-        return no_inversion(f"inversion cannot be built: {hamiltonian_with_basis.reason}")
+        return _inferred_test(hamiltonian_with_basis, declarations, inferred_inversion)
     centre = space_group.centres_frac[0] if declared_centre is None else np.array(declared_centre)
     try:
         operator = build_inversion(basis, declarations.crystal, centre)
     except NoInversionError as error:
         return no_inversion(str(error))
     return measure_inversion(lattice.model, lattice.bloch, operator, declarations.crystal.periodic)
+
+
+def _inferred_test(
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    inferred: InferredInversion | None,
+) -> InversionTest:
+    reason = f"inversion cannot be built: {hamiltonian_with_basis.reason}"
+    if inferred is None:
+        return no_inversion(f"{reason}, and it cannot be inferred from the Hamiltonian")
+    if inferred.operator is None or inferred.reliability == "refused":
+        return no_inversion(f"{reason}; inferred from the Hamiltonian: {inferred.reason}")
+    lattice = hamiltonian_with_basis.lattice
+    test = measure_inversion(
+        lattice.model, lattice.bloch, inferred.operator, declarations.crystal.periodic
+    )
+    return replace(test, basis="inferred")
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -124,11 +145,16 @@ def read_parities(
     time_reversal: TimeReversalTest,
     inversion: InversionTest,
     electrons: Electrons,
+    inferred_parity: ParityWitness | None,
 ) -> ParityWitness:
-    """Parities at the TRIM and the indices that follow."""
+    """Parities at the TRIM and the indices that follow, inferred where none are declared."""
     basis = hamiltonian_with_basis.basis
-    if not inversion.present or basis is None:
+    if not inversion.present:
         raise NotApplicable(inversion.reason)
+    if basis is None:
+        if inferred_parity is None:
+            raise NotApplicable(hamiltonian_with_basis.reason)
+        return inferred_parity
     operator = build_inversion(basis, declarations.crystal, np.array(inversion.centre))
     return compute_parity(
         hamiltonian_with_basis.lattice.bloch,
@@ -136,6 +162,27 @@ def read_parities(
         electrons.filling,
         declarations.crystal.periodic,
         kramers=time_reversal.present and hamiltonian_with_basis.lattice.model.spinful,
+    )
+
+
+def read_inferred_parities(
+    *,
+    context: Context,
+    lattice: LatticeHamiltonian,
+    declarations: Declarations,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+    inferred_inversion: InferredInversion,
+) -> ParityWitness:
+    """Parities about the inferred inversion: what they would say were nothing declared."""
+    if inferred_inversion.operator is None or inferred_inversion.reliability == "refused":
+        raise NotApplicable(inferred_inversion.reason)
+    return compute_inferred_parity(
+        lattice.bloch,
+        inferred_inversion,
+        electrons.filling,
+        declarations.crystal.periodic,
+        kramers=time_reversal.present and lattice.model.spinful,
     )
 
 

@@ -3,12 +3,17 @@
 from __future__ import annotations
 
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
+from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.report.material import ReportMaterial
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.group_results import GroupTest
+from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.results import (
     InversionTest,
     ShiftTest,
@@ -30,14 +35,19 @@ def conclude_case(
     spin_order: SpinOrder,
     shift_test: ShiftTest,
     space_group: SpaceGroup | None,
+    inferred_inversion: InferredInversion | None,
+    symmetry_class: AzClass | None,
     time_reversal: TimeReversalTest,
     inversion: InversionTest,
     electrons: Electrons,
     gap: GapSample | None,
     parity: ParityWitness | None,
-    wilson: WilsonWitness | None = None,
-    chern: ChernWitness | None = None,
-    interpolation: InterpolationCheck | None = None,
+    inferred_parity: ParityWitness | None,
+    group: GroupTest | None,
+    wilson: WilsonWitness | None,
+    chern: ChernWitness | None,
+    s4: S4Indicator | None,
+    interpolation: InterpolationCheck | None,
 ) -> Verdict:
     """The verdict from the results of all steps."""
     findings = Findings(
@@ -48,13 +58,18 @@ def conclude_case(
         spin_order=spin_order,
         shift_test=shift_test,
         space_group=space_group,
+        inferred=inferred_inversion,
+        symmetry_class=symmetry_class,
         time_reversal=time_reversal,
         inversion=inversion,
         electrons=electrons,
         gap=gap,
         parity=parity,
+        inferred_parity=inferred_parity,
+        group=group,
         wilson=wilson,
         chern=chern,
+        s4=s4,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -76,29 +91,39 @@ def gather(
     decay: DecayProfile,
     spin_order: SpinOrder,
     space_group: SpaceGroup | None,
+    inferred_inversion: InferredInversion | None,
+    symmetry_class: AzClass | None,
     time_reversal: TimeReversalTest,
     inversion: InversionTest,
     electrons: Electrons,
     gap: GapSample | None,
     bands: BandPath | None,
+    irreps: tuple[PointIrreps, ...] | None,
     parity: ParityWitness | None,
-    wilson: WilsonWitness | None = None,
-    chern: ChernWitness | None = None,
-    interpolation: InterpolationCheck | None = None,
+    group: GroupTest | None,
+    wilson: WilsonWitness | None,
+    chern: ChernWitness | None,
+    s4: S4Indicator | None,
+    interpolation: InterpolationCheck | None,
 ) -> ReportMaterial:
     """All that the report shows; the graph of tasks is added by the dossier."""
     return ReportMaterial(
         verdict=verdict,
         crystal=declarations.crystal,
         space_group=space_group,
+        inferred=inferred_inversion,
+        symmetry_class=symmetry_class,
         time_reversal=time_reversal,
         inversion=inversion,
         electrons=electrons,
         gap=gap,
         bands=bands,
+        irreps=irreps or (),
         parity=parity,
+        group=group,
         wilson=wilson,
         chern=chern,
+        s4=s4,
         interpolation=interpolation,
         audit=audit,
         decay=decay,

@@ -5,10 +5,15 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
+from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.group_results import GroupTest
+from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.results import InversionTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.verdict.document import Verdict
 
@@ -59,6 +64,10 @@ class ReportMaterial:
         Cell (angstrom) and atoms of the Hamiltonian's own cell.
     space_group
         None where no structure could be analysed.
+    inferred
+        Inversion inferred from the Hamiltonian; None where the structure has none.
+    symmetry_class
+        Altland-Zirnbauer class.
     time_reversal, inversion
         Symmetry tests with their residuals in meV.
     electrons
@@ -69,8 +78,14 @@ class ReportMaterial:
         Bands along the special-point path; None where they were not computed.
     parity
         Parities at the TRIM with all levels; None where the witness did not run at all.
+    group
+        Every operation of the structure tested on the Hamiltonian; None without declared orbitals.
     wilson, chern
         Wilson loops and Chern numbers with their planes; None where they did not run.
+    s4
+        S4 indicator; None where the group has no S4 or time reversal is broken.
+    irreps
+        Irreps of the bands at the special points; empty where they were not found.
     interpolation
         Differences to the energies that came with the case, meV; None without such files.
     audit
@@ -88,14 +103,19 @@ class ReportMaterial:
     verdict: Verdict
     crystal: Crystal
     space_group: SpaceGroup | None
+    inferred: InferredInversion | None
+    symmetry_class: AzClass | None
     time_reversal: TimeReversalTest
     inversion: InversionTest
     electrons: Electrons
     gap: GapSample | None
     bands: BandPath | None
+    group: GroupTest | None
     parity: ParityWitness | None
     wilson: WilsonWitness | None
     chern: ChernWitness | None
+    s4: S4Indicator | None
+    irreps: tuple[PointIrreps, ...]
     interpolation: InterpolationCheck | None
     audit: HamiltonianAudit
     decay: DecayProfile

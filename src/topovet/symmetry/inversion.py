@@ -114,14 +114,22 @@ def inverted_hopping(
     of what results moves on to R' + C_m - C_n.
     """
     m = operator.matrix
-    r_moved, moved = _moved(model.r_cells, model.h_r, operator.shifts)
-    return _moved(-r_moved, np.asarray(m @ moved @ m.conj().T), operator.homes)
+    r_moved, moved = moved_hopping(model.r_cells, model.h_r, operator.shifts)
+    return moved_hopping(-r_moved, np.asarray(m @ moved @ m.conj().T), operator.homes)
 
 
-def _moved(
+def moved_hopping(
     r_cells: IntArray, h_r: ComplexArray, cell_of: IntArray
 ) -> tuple[IntArray, ComplexArray]:
-    """Element (m, n) of each H(R) moved to R + c_m - c_n, on its own list of R."""
+    """Element (m, n) of each H(R) moved to R + c_m - c_n, on its own list of R.
+
+    Parameters
+    ----------
+    r_cells, h_r
+        (n_r, 3) integers and (n_r, n_orb, n_orb) eV.
+    cell_of
+        (n_orb, 3) integer vector c of each function.
+    """
     cells, which = np.unique(cell_of, axis=0, return_inverse=True)
     which = which.reshape(-1)
     moves = (cells[:, None, :] - cells[None, :, :]).reshape(-1, 3)

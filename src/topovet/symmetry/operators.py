@@ -23,11 +23,12 @@ from dataclasses import dataclass, replace
 import numpy as np
 from scipy.spatial.transform import Rotation
 
-from topovet.arrays import ComplexArray, FloatArray, IntArray, frozen
+from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray, frozen
 from topovet.errors import UndefinedError
 from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal
 from topovet.model.real_harmonics import harmonic_rotation
+from topovet.symmetry.operations import multiplication_table
 
 SITE_TOLERANCE_ANG = 0.05
 """How far the image of a site may be from a site; structure files come with few digits."""
@@ -81,7 +82,12 @@ class WannierOperator:
 
 
 def build_operator(
-    basis: OrbitalBasis, crystal: Crystal, rotation: IntArray, translation: FloatArray
+    basis: OrbitalBasis,
+    crystal: Crystal,
+    rotation: IntArray,
+    translation: FloatArray,
+    *,
+    site_tolerance_ang: float = SITE_TOLERANCE_ANG,
 ) -> WannierOperator:
     """A unitary space-group operation in the declared basis.
 
@@ -93,42 +99,77 @@ def build_operator(
         Gives the cell in which distances and rotations are measured.
     rotation, translation
         W and w in that cell.
+    site_tolerance_ang
+        How far the image of a site may be from a site.
 
     Raises
     ------
     NotClosedError
-        A site has no image, or the orbitals on it are not closed (e.g. a lone sp hybrid).
+        A site has no image, or the orbitals on it are not closed (e.g. a lone sp hybrid); or the
+        operation turns the periodic plane of a layer out of itself.
     """
     rotation = np.asarray(rotation, dtype=np.int64)
     translation = np.asarray(translation, dtype=float)
+    periodic = np.array(crystal.periodic)
+    if rotation[np.ix_(~periodic, periodic)].any():
+        raise NotClosedError("the operation does not keep the periodic directions")
     sites = basis.positions_frac
+    first = first_on_site(sites, crystal)
+    heads, site_of = np.unique(first, return_inverse=True)
     images = sites @ rotation.T + translation
-    difference = images[:, None, :] - sites[None, :, :]  # [n, m] = image of n minus site m
+    difference = images[heads][:, None, :] - sites[heads][None, :, :]
     distance = np.linalg.norm((difference - np.round(difference)) @ crystal.cell, axis=2)
-    meets = distance < SITE_TOLERANCE_ANG
-    if not meets.any(axis=1).all():
+    if len(heads) and distance.min(axis=1).max() > site_tolerance_ang:
         worst = int(distance.min(axis=1).argmax())
         raise NotClosedError(
-            f"the operation moves the site of {basis.labels[worst]} "
+            f"the operation moves the site of {basis.labels[heads[worst]]} "
             f"{distance[worst].min():.3f} angstrom away from every site"
         )
-    first = meets.argmax(axis=1)
-    shifts = np.round(difference[np.arange(len(sites)), first]).astype(np.int64)
+    target = distance.argmin(axis=1)[site_of]  # site on which the image of each function lies
+    shifts = np.round(images - sites[heads[target]]).astype(np.int64)
     cartesian = cartesian_rotation(rotation, crystal.cell)
     overlap = basis.harmonics @ harmonic_rotation(cartesian) @ basis.harmonics.T
-    spin = basis.spinors.conj() @ spin_rotation(cartesian) @ basis.spinors.T
-    same_shell = basis.shells[:, None] == basis.shells[None, :]
-    matrix = np.where(meets.T & same_shell, overlap * spin, 0.0)
-    defect = float(np.abs(matrix.conj().T @ matrix - np.eye(len(sites))).max())
-    if defect > CLOSURE_TOLERANCE:
+    may_mix = (site_of[:, None] == target) & (basis.shells[:, None] == basis.shells)
+    matrix = np.where(may_mix, overlap * _spin_overlap(basis, cartesian), 0.0 + 0.0j)
+    lost = np.abs(matrix.conj().T @ matrix - np.eye(len(sites))).max(axis=0, initial=0.0)
+    if lost.max(initial=0.0) > CLOSURE_TOLERANCE:
         raise NotClosedError(
-            f"the declared orbitals are not closed under the operation (|M†M - 1| = {defect:.2g})"
+            f"{_names(basis, lost > CLOSURE_TOLERANCE)} not mapped onto declared orbitals by the "
+            f"operation (|M†M - 1| = {lost.max():.2g})"
         )
-    return WannierOperator(rotation, translation, matrix, shifts, cells_on_site(sites, crystal))
+    homes = cells_on_site(sites, crystal)
+    # along a direction that is not periodic there is one cell
+    shifts, homes = np.where(periodic, shifts, 0), np.where(periodic, homes, 0)
+    return WannierOperator(rotation, translation, matrix, shifts, homes)
+
+
+def _spin_overlap(basis: OrbitalBasis, cartesian: FloatArray) -> ComplexArray | float:
+    """(n_orb, n_orb) spin part of M; functions without spin are left alone."""
+    if not has_spin(basis):
+        return 1.0
+    return np.asarray(basis.spinors.conj() @ spin_rotation(cartesian) @ basis.spinors.T)
+
+
+def has_spin(basis: OrbitalBasis) -> bool:
+    """Whether the basis has both spin components; one without spin says (1, 0) throughout."""
+    return bool(np.any(basis.spinors[:, 1]))
+
+
+def _names(basis: OrbitalBasis, which: BoolArray, at_most: int = 4) -> str:
+    """Names of some functions as the subject of a sentence, with its verb."""
+    labels = [basis.labels[i] for i in np.flatnonzero(which)]
+    more = f" and {len(labels) - at_most} more" if len(labels) > at_most else ""
+    return f"{', '.join(labels[:at_most])}{more} {'are' if len(labels) > 1 else 'is'}"
 
 
 def with_time_reversal(operator: WannierOperator, basis: OrbitalBasis) -> WannierOperator:
-    """The product g Theta of a unitary operation with time reversal."""
+    """The product g Theta of a unitary operation with time reversal.
+
+    Raises
+    ------
+    NotClosedError
+        The basis lacks the spin partners of some functions.
+    """
     return replace(operator, matrix=operator.matrix @ time_reversal_matrix(basis), antiunitary=True)
 
 
@@ -137,13 +178,22 @@ def time_reversal_matrix(basis: OrbitalBasis) -> ComplexArray:
 
     Real harmonics are left alone. The spin of a spinful basis is turned over by i sigma_y; a basis
     without spin (every spinor (1, 0)) is real, T = 1.
+
+    Raises
+    ------
+    NotClosedError
+        The basis lacks the spin partners of some functions.
     """
-    if not np.any(basis.spinors[:, 1]):
+    if not has_spin(basis):
         return np.eye(basis.n_orb, dtype=np.complex128)
     spin = basis.spinors.conj() @ I_SIGMA_Y @ basis.spinors.conj().T
     same_place = np.all(basis.positions_frac[:, None] == basis.positions_frac[None], axis=2)
     same_shell = basis.shells[:, None] == basis.shells[None, :]
-    return np.where(same_place & same_shell, (basis.harmonics @ basis.harmonics.T) * spin, 0.0)
+    t = np.where(same_place & same_shell, (basis.harmonics @ basis.harmonics.T) * spin, 0.0)
+    lost = np.abs(t.conj().T @ t - np.eye(len(t))).max(axis=0)
+    if lost.max() > CLOSURE_TOLERANCE:
+        raise NotClosedError(f"{_names(basis, lost > CLOSURE_TOLERANCE)} without spin partner")
+    return np.asarray(t)
 
 
 def operator_at(operator: WannierOperator, k_frac: FloatArray) -> ComplexArray:
@@ -168,12 +218,17 @@ def spin_rotation(cartesian: FloatArray) -> ComplexArray:
     return np.array([[w - 1j * z, -1j * x - y], [-1j * x + y, w + 1j * z]])
 
 
+def first_on_site(sites_frac: FloatArray, crystal: Crystal) -> IntArray:
+    """(n_orb,) index of the first function on the site of each function."""
+    apart = sites_frac[:, None, :] - sites_frac[None, :, :]
+    distance = np.linalg.norm((apart - np.round(apart)) @ crystal.cell, axis=2)
+    return np.asarray((distance < SITE_TOLERANCE_ANG).argmax(axis=1), dtype=np.int64)
+
+
 def cells_on_site(sites_frac: FloatArray, crystal: Crystal) -> IntArray:
     """(n_orb, 3) cell of each function relative to the first one on the same site."""
-    apart = sites_frac[:, None, :] - sites_frac[None, :, :]  # [m, n] = site m minus site n
-    distance = np.linalg.norm((apart - np.round(apart)) @ crystal.cell, axis=2)
-    first = (distance < SITE_TOLERANCE_ANG).argmax(axis=1)
-    return np.asarray(np.round(apart[np.arange(len(apart)), first]), dtype=np.int64)
+    apart = sites_frac - sites_frac[first_on_site(sites_frac, crystal)]
+    return np.asarray(np.round(apart), dtype=np.int64)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -185,8 +240,8 @@ class FactorSystem:
     product
         (n_op, n_op) index of the operation g_a g_b.
     sign
-        (n_op, n_op) +1 or -1 with D(g_a) D(g_b) = sign D(g_a g_b) up to lattice translations; all
-        +1 without spin.
+        (n_op, n_op) +1 or -1 with g_a g_b = sign g_c on the Wannier functions, up to lattice
+        translations; all +1 without spin.
     defect
         Largest deviation of such a product from its operator.
     """
@@ -197,10 +252,11 @@ class FactorSystem:
 
 
 def factor_system(operators: Sequence[WannierOperator]) -> FactorSystem:
-    """Multiplication table of unitary operators, and how well the matrices obey it.
+    """Multiplication table of operators, and how well the matrices obey it.
 
     D_a(b k) D_b(k) = s exp(-2 pi i k''.t) D_c(k), with t the lattice translation by which g_a g_b
-    differs from g_c. Checked at one generic k.
+    differs from g_c and k'' = a b k. An antiunitary g_a conjugates what stands to its right.
+    Checked at one generic k.
 
     Raises
     ------
@@ -208,34 +264,23 @@ def factor_system(operators: Sequence[WannierOperator]) -> FactorSystem:
         A product is not among the operations.
     """
     k = np.array([[np.sqrt(2) - 1, np.sqrt(3) - 1, np.sqrt(5) - 2]])
-    n_op = len(operators)
     rotations = np.array([o.rotation for o in operators])
     translations = np.array([o.translation for o in operators])
+    antiunitary = np.array([o.antiunitary for o in operators])
+    product, cells = multiplication_table(rotations, translations, antiunitary)
+    if (product < 0).any():
+        raise NotClosedError("the operations are not closed under multiplication")
     at_k = np.concatenate([operator_at(o, k) for o in operators])
-    product, sign, defect = np.empty((n_op, n_op), int), np.empty((n_op, n_op), int), 0.0
+    sign, defect = np.empty(product.shape, dtype=np.int64), 0.0
     for b, second in enumerate(operators):
         k_between: FloatArray = k @ second.k_rotation.astype(float)
         first_at = np.concatenate([operator_at(o, k_between) for o in operators])
-        made = first_at @ at_k[b]
-        rotation = rotations @ second.rotation
-        translation = rotations @ second.translation + translations
-        for a in range(n_op):
-            c, cell = _find(rotation[a], translation[a], rotations, translations)
-            k_end = k_between @ operators[a].k_rotation
-            expected = np.exp(-2j * np.pi * float((k_end @ cell)[0])) * at_k[c]
-            ratio = np.vdot(expected, made[a]).real
-            product[a, b], sign[a, b] = c, int(np.sign(ratio))
-            defect = max(defect, float(np.abs(made[a] - sign[a, b] * expected).max()))
+        made = first_at @ np.where(antiunitary[:, None, None], at_k[b].conj(), at_k[b])
+        k_end = np.concatenate([k_between @ o.k_rotation for o in operators])
+        phase = np.exp(-2j * np.pi * (k_end * cells[:, b]).sum(axis=1))
+        expected = phase[:, None, None] * at_k[product[:, b]]
+        ratio = np.einsum("amn,amn->a", expected.conj(), made).real
+        sign[:, b] = np.where(ratio < 0, -1, 1)
+        difference = made - sign[:, b, None, None] * expected
+        defect = max(defect, float(np.abs(difference).max(initial=0.0)))
     return FactorSystem(product, sign, defect)
-
-
-def _find(
-    rotation: IntArray, translation: FloatArray, rotations: IntArray, translations: FloatArray
-) -> tuple[int, FloatArray]:
-    """Index of {rotation|translation} modulo the lattice, and the lattice translation left over."""
-    candidates = np.flatnonzero(np.all(rotations == rotation, axis=(1, 2)))
-    for c in candidates:
-        rest = translation - translations[c]
-        if np.abs(rest - np.round(rest)).max() < 1e-3:
-            return int(c), np.round(rest)
-    raise NotClosedError("the operations are not closed under multiplication")

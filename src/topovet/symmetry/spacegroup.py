@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import itertools
 import warnings
+from collections.abc import Callable
 from typing import Any
 
 import numpy as np
 import spglib
 
-from topovet.arrays import FloatArray, IntArray
+from topovet.arrays import BoolArray, FloatArray, IntArray
 from topovet.errors import TopovetError
 from topovet.model.crystal import Crystal
 from topovet.symmetry.results import SpaceGroup
@@ -67,11 +68,15 @@ def find_space_group(crystal: Crystal, *, symprec: float = SYMPREC_ANG) -> Space
 
 
 def _spglib_dataset(cell: Any, symprec: float) -> Any:
+    return _answer(lambda: spglib.get_symmetry_dataset(cell, symprec=symprec))
+
+
+def _answer(ask: Callable[[], Any]) -> Any:
     """spglib reports failure by None or by an exception, depending on its version."""
     with warnings.catch_warnings():
         warnings.simplefilter("ignore", DeprecationWarning)
         try:
-            return spglib.get_symmetry_dataset(cell, symprec=symprec)
+            return ask()
         except Exception as error:
             if type(error).__module__.startswith("spglib"):
                 return None
@@ -124,3 +129,83 @@ def _verify(
             raise SymmetrySearchError(
                 "a symmetry operation from spglib does not map the atoms onto atoms of their kind."
             )
+
+
+def find_candidate_operations(
+    crystal: Crystal, symprec: float, *, one_kind: bool
+) -> tuple[IntArray, FloatArray]:
+    """Operations that a crystal would have if its atoms were moved by about `symprec`.
+
+    They are a list to be tested on a Hamiltonian, and are not verified on the structure.
+
+    Parameters
+    ----------
+    crystal
+        At least one atom.
+    symprec
+        Distance tolerance, angstrom.
+    one_kind
+        Whether all atoms count as one element.
+
+    Returns
+    -------
+    tuple
+        (n, 3, 3) and (n, 3), a group modulo lattice translations; empty where spglib finds none.
+    """
+    kinds = {symbol: i for i, symbol in enumerate(dict.fromkeys(crystal.symbols))}
+    numbers = [1 if one_kind else kinds[symbol] + 1 for symbol in crystal.symbols]
+    dataset = None
+    if numbers:
+        dataset = _spglib_dataset((crystal.cell, crystal.positions_frac, numbers), symprec)
+    if dataset is None:
+        return np.zeros((0, 3, 3), dtype=np.int64), np.zeros((0, 3))
+    return np.array(dataset.rotations, dtype=np.int64), np.array(dataset.translations)
+
+
+def name_group(
+    rotations: IntArray, translations: FloatArray, cell: FloatArray, *, symprec: float = SYMPREC_ANG
+) -> tuple[int, str]:
+    """International number and short symbol of a group of operations; 0 and "unknown" without one.
+
+    Parameters
+    ----------
+    rotations, translations
+        (n, 3, 3) and (n, 3), closed modulo lattice translations of the cell.
+    cell
+        (3, 3) angstrom, lattice vectors as rows.
+    symprec
+        How far translations may be off, angstrom.
+    """
+    found = _answer(
+        lambda: spglib.get_spacegroup_type_from_symmetry(
+            rotations, translations, lattice=cell, symprec=symprec
+        )
+    )
+    if found is None:
+        return 0, "unknown"
+    return int(found.number), str(found.international_short)
+
+
+def name_magnetic_group(
+    rotations: IntArray,
+    translations: FloatArray,
+    antiunitary: BoolArray,
+    cell: FloatArray,
+    *,
+    symprec: float = SYMPREC_ANG,
+) -> str:
+    """BNS number of a magnetic space group, e.g. "166.98"; "" where spglib finds none.
+
+    Parameters
+    ----------
+    rotations, translations, antiunitary
+        (n, 3, 3), (n, 3) and (n,), closed modulo lattice translations of the cell.
+    cell, symprec
+        As for `name_group`.
+    """
+    found = _answer(
+        lambda: spglib.get_magnetic_spacegroup_type_from_symmetry(
+            rotations, translations, antiunitary, lattice=cell, symprec=symprec
+        )
+    )
+    return "" if found is None else str(found.bns_number)

@@ -59,20 +59,36 @@ def conclude(findings: Findings, flags: Sequence[Flag]) -> Conclusion:
     z4 = None if parity is None else parity.z4
     class_, grounds = _class_from_indices(findings, agreement.z2, parity)
     indicators = {} if z4 is None else {"z4": z4}
+    indicators |= _s4_indicators(findings)
     invariants = InvariantsEntry(z2=agreement.z2, z4=z4, indicators=indicators)
     return Conclusion(invariants, agreement.word, class_, grounds)
 
 
 def weigh_witnesses(findings: Findings) -> Agreement:
     """The Z2 indices of all witnesses that speak, side by side."""
+    return weigh(witness_statements(findings))
+
+
+def witness_statements(findings: Findings) -> list[Statement]:
+    """What each witness that speaks says of Z2; S4 knows the strong index alone."""
     named = (("parity", findings.parity), ("Wilson loops", findings.wilson))
-    return weigh(
-        [
-            Statement(name, witness.z2)
-            for name, witness in named
-            if witness is not None and witness.status == "ok" and witness.z2 is not None
-        ]
-    )
+    statements = [
+        Statement(name, witness.z2)
+        for name, witness in named
+        if witness is not None and witness.status == "ok" and witness.z2 is not None
+    ]
+    s4 = findings.s4
+    if s4 is not None and s4.status == "ok" and s4.z2 is not None:
+        statements.append(Statement("S4 eigenvalues", (s4.z2, None, None, None)))
+    return statements
+
+
+def _s4_indicators(findings: Findings) -> dict[str, int]:
+    s4 = findings.s4
+    if s4 is None or s4.status != "ok" or s4.kappa is None:
+        return {}
+    found = {"s4": s4.kappa % 2}
+    return found if s4.z8 is None else {**found, "z8": s4.z8}
 
 
 def _speaks(witness: ParityWitness | WilsonWitness | ChernWitness | None) -> bool:

@@ -14,6 +14,10 @@ SYMMETRY_MEV = 1.0
 """Violations of a symmetry above this are flagged (practice: sound projected Wannier functions keep
 inversion and time reversal to well below 0.1 meV)."""
 
+INFERENCE_GAIN = 10.0
+"""Inferred inversion must hold this many times better than the declared one before the declaration
+is called wrong: noise and broken symmetry spoil both alike."""
+
 PURITY_WARNING = 0.95
 """Parities less pure than this are flagged, though still read."""
 

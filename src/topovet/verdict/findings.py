@@ -6,9 +6,13 @@ from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
+from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
+from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.group_results import GroupTest
+from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.results import (
     InversionTest,
     ShiftTest,
@@ -37,13 +41,18 @@ class Findings:
     spin_order: SpinOrder
     shift_test: ShiftTest | None
     space_group: SpaceGroup | None
+    inferred: InferredInversion | None
+    symmetry_class: AzClass | None
     time_reversal: TimeReversalTest
     inversion: InversionTest
     electrons: Electrons | None
     gap: GapSample | None
+    group: GroupTest | None
     parity: ParityWitness | None
+    inferred_parity: ParityWitness | None
     wilson: WilsonWitness | None
     chern: ChernWitness | None
+    s4: S4Indicator | None
     interpolation: InterpolationCheck | None
     missing: dict[str, str]
 

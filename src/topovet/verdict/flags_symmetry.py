@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from topovet.notation import mev
+from topovet.notation import mev, z2_text
 from topovet.symmetry.spacegroup import nearest_centre_distance
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
@@ -19,6 +19,8 @@ def symmetry_flags(findings: Findings) -> Iterator[Flag]:
     yield from _time_reversal(findings)
     yield from _spin_orbit(findings)
     yield from _inversion(findings)
+    yield from _declaration(findings)
+    yield from _group(findings)
     yield from _centre(findings)
 
 
@@ -123,6 +125,70 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
         },
         "Read the Hamiltonian with its _wsvec.dat file (or centres and mp_grid); if that is done, "
         "check the declared projections, use some that respect the symmetry, and check the window.",
+    )
+
+
+def _declaration(findings: Findings) -> Iterator[Flag]:
+    """Inversion as declared against inversion as the Hamiltonian itself has it."""
+    declared, inferred = findings.inversion, findings.inferred
+    if declared.basis != "declared" or declared.violation_r_mev is None:
+        return
+    if inferred is None or inferred.reliability != "good" or inferred.max_residual_mev is None:
+        return
+    limit = max(criteria.SYMMETRY_MEV, criteria.INFERENCE_GAIN * inferred.max_residual_mev)
+    if declared.violation_r_mev <= limit:
+        return
+    mended = findings.inferred_parity
+    z2 = None if mended is None or mended.status != "ok" else mended.z2
+    beside = "" if z2 is None else f" On that reading parities give Z2 = {z2_text(z2)}."
+    yield Flag(
+        "orbital-declaration-wrong",
+        "error",
+        f"inversion built from the declared orbitals misses by {mev(declared.violation_r_mev)}, "
+        f"inferred from the Hamiltonian itself it holds to {mev(inferred.max_residual_mev)}: kind, "
+        f"order or spin of the declared projections is wrong.{beside}",
+        {
+            "declared_residual_meV": declared.violation_r_mev,
+            "inferred_residual_meV": inferred.max_residual_mev,
+            "eigenvalue_ratio": inferred.eigenvalue_ratio,
+            "z2_if_inferred": None if z2 is None else list(z2),
+        },
+        "Take the projections of the run that made the Hamiltonian, or remove the projections "
+        "block: inversion is then inferred.",
+    )
+
+
+def _group(findings: Findings) -> Iterator[Flag]:
+    """Operations that the structure has and the Hamiltonian lacks; inversion has its own flag."""
+    group = findings.group
+    if group is None:
+        return
+    inversion = -np.eye(3, dtype=np.int64)
+    lost = [
+        test
+        for test in group.operations
+        if test.status in ("bands-only", "broken") and not np.array_equal(test.rotation, inversion)
+    ]
+    if not lost:
+        return
+    in_bands_only = all(test.status == "bands-only" for test in lost)
+    worst = max(lost, key=lambda test: test.judged_mev or 0.0)
+    yield Flag(
+        "symmetry-broken",
+        "info" if in_bands_only else "warning",
+        group.sentence,
+        {
+            "operations_lost": [test.name for test in lost][:12],
+            "worst_operation": worst.name,
+            "worst_violation_meV": worst.judged_mev,
+            "worst_band_shift_meV": worst.judged_shift_mev,
+            "own_group": f"{group.own.symbol} ({group.own.number})",
+        },
+        "Symmetry-adapted Wannier functions or projections without localisation keep the group; "
+        "--symmetrise shows what the verdict is with it restored."
+        if in_bands_only
+        else "Check that structure and Hamiltonian are of one run: strain, magnetism or another "
+        "structure lower the group.",
     )
 
 

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from topovet.invariants.parity import MIN_PURITY
-from topovet.notation import mev, z2_text
+from topovet.notation import mev
 from topovet.verdict import criteria
+from topovet.verdict.agreement import weigh
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
-from topovet.verdict.conclude import weigh_witnesses
+from topovet.verdict.conclude import witness_statements
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 
@@ -64,25 +65,29 @@ def _wilson(findings: Findings) -> Iterator[Flag]:
 
 
 def _disagreement(findings: Findings) -> Iterator[Flag]:
-    agreement = weigh_witnesses(findings)
+    statements = witness_statements(findings)
+    agreement = weigh(statements)
     if agreement.word == "disagree":
-        assert findings.parity is not None
-        assert findings.wilson is not None
-        parity, wilson = findings.parity.z2 or (), findings.wilson.z2 or ()
+        said = ", ".join(f"{s.witness} {_indices(s.z2)}" for s in statements)
         yield Flag(
             "witnesses-disagree",
             "error",
-            f"parities give Z2 = {z2_text(parity)}, Wilson loops {z2_text(wilson)}.",
-            {
-                "parity": list(parity),
-                "wilson": list(wilson),
+            f"the witnesses give different Z2 indices: {said}.",
+            {s.witness: _indices(s.z2) for s in statements}
+            | {
                 "disputed": list(agreement.disputed),
                 "inversion_violation_meV": findings.inversion.violation_mev,
             },
-            "The other flags name what breaks the ground of one of them; trust neither until it "
-            "is mended.",
+            "The other flags name what breaks the ground of one of them; trust none until it is "
+            "mended.",
         )
     yield from _chern_against_parity(findings)
+
+
+def _indices(z2: tuple[int | None, ...]) -> str:
+    """1;(000), with "?" for an index the witness does not know."""
+    strong, *weak = ["?" if value is None else str(value) for value in z2]
+    return f"{strong};({''.join(weak)})" if weak else strong
 
 
 def _chern_against_parity(findings: Findings) -> Iterator[Flag]:

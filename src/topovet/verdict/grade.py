@@ -54,5 +54,5 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
 
 def _voices(conclusion: Conclusion) -> str:
     if conclusion.agreement == "agree":
-        return "two independent witnesses, parities and Wilson loops, agree"
+        return "independent witnesses agree"
     return "one witness speaks"

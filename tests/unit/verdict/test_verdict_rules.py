@@ -65,13 +65,18 @@ def _sound() -> Findings:
         spin_order=SpinOrder("interlaced", 0.0009, 900.0, 900.0),
         shift_test=ShiftTest("given", (), (), None, None, ""),
         space_group=material.space_group,
+        inferred=None,
+        symmetry_class=None,
         time_reversal=material.time_reversal,
         inversion=material.inversion,
         electrons=material.electrons,
         gap=material.gap,
+        group=None,
         parity=material.parity,
+        inferred_parity=None,
         wilson=None,
         chern=None,
+        s4=None,
         interpolation=None,
         missing={},
     )
@@ -326,7 +331,7 @@ def test_two_witnesses_that_agree() -> None:
     assert verdict.agreement == "agree"
     assert verdict.flags == ()
     assert verdict.confidence.grade == "B"
-    assert any("two independent witnesses" in reason for reason in verdict.confidence.reasons)
+    assert any("independent witnesses agree" in reason for reason in verdict.confidence.reasons)
 
 
 def test_what_a_working_witness_contradicts_is_not_asserted() -> None:

@@ -2,9 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import partial
+
 from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
 from topovet.report.figures.flow import flow_figure
+from topovet.report.figures.operations import operations_figure
 from topovet.report.figures.tasks import tasks_figure
 from topovet.report.figures.zone import zone_figure
 from topovet.report.material import ReportMaterial
@@ -13,7 +17,9 @@ __all__ = [
     "bands_figure",
     "build_figures",
     "decay_figure",
+    "figure_makers",
     "flow_figure",
+    "operations_figure",
     "tasks_figure",
     "zone_figure",
 ]
@@ -22,40 +28,53 @@ _WORTH_A_CLOSER_LOOK_EV = 1.2
 """A gap that is wider than this shows well in the wide figure."""
 
 
-def build_figures(material: ReportMaterial) -> dict[str, str]:
-    """Every figure that the material allows, by name: the SVG text of each.
+def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
+    """A maker of SVG text for every figure that the material allows, by name.
 
-    The names are "zone", "bands", "bands-near-gap", "flow", "decay" and "tasks"; `render_report`
-    places them, and each also stands alone as a file.
+    The names are "zone", "bands", "bands-near-gap", "operations", "flow", "decay" and "tasks";
+    `render_report` places them, and each also stands alone as a file.
     """
-    trim = material.parity.trim if material.parity is not None else ()
-    figures = {"zone": zone_figure(material.crystal, trim)}
-    if material.bands is not None:
-        figures |= _band_figures(material)
-    if material.decay.distances_ang:
-        figures["decay"] = decay_figure(material.decay)
-    if material.wilson is not None and material.wilson.planes:
-        figures["flow"] = flow_figure(material.wilson.planes)
-    if material.tasks:
-        figures["tasks"] = tasks_figure(material.tasks)
-    return figures
+    m = material
+    trim = m.parity.trim if m.parity is not None else ()
+    makers: dict[str, Callable[[], str]] = {"zone": lambda: zone_figure(m.crystal, trim)}
+    if m.bands is not None:
+        makers |= _band_makers(m)
+    if m.decay.distances_ang:
+        makers["decay"] = lambda: decay_figure(m.decay)
+    group, wilson = m.group, m.wilson
+    if group is not None and not all(t.missing for t in group.operations):
+        makers["operations"] = lambda: operations_figure(group)
+    if wilson is not None and wilson.planes:
+        makers["flow"] = lambda: flow_figure(wilson.planes)
+    if m.tasks:
+        makers["tasks"] = lambda: tasks_figure(m.tasks)
+    return makers
 
 
-def _band_figures(material: ReportMaterial) -> dict[str, str]:
+def build_figures(material: ReportMaterial) -> dict[str, str]:
+    """Every figure that the material allows, by name: the SVG text of each."""
+    return {name: make() for name, make in figure_makers(material).items()}
+
+
+def _band_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     assert material.bands is not None
     trim = material.parity.trim if material.parity is not None else ()
-    gap, filling = material.gap, material.electrons.filling
-    fermi = material.electrons.fermi_ev
-    wide = bands_figure(material.bands, n_occ=filling, gap=gap, fermi_ev=fermi, trim=trim)
-    if gap is None or abs(gap.cbm_ev - gap.vbm_ev) > _WORTH_A_CLOSER_LOOK_EV:
-        return {"bands": wide}
-    near = bands_figure(
-        material.bands,
-        n_occ=filling,
-        gap=gap,
-        fermi_ev=fermi,
-        trim=trim,
-        window_ev=near_gap_window(gap),
-        name="bands-near-gap",
-    )
-    return {"bands": wide, "bands-near-gap": near}
+    gap = material.gap
+
+    def make(window_ev: tuple[float, float] | None, name: str) -> Callable[[], str]:
+        assert material.bands is not None
+        return partial(
+            bands_figure,
+            material.bands,
+            n_occ=material.electrons.filling,
+            gap=gap,
+            fermi_ev=material.electrons.fermi_ev,
+            trim=trim,
+            window_ev=window_ev,
+            name=name,
+        )
+
+    makers = {"bands": make(None, "bands")}
+    if gap is not None and abs(gap.cbm_ev - gap.vbm_ev) <= _WORTH_A_CLOSER_LOOK_EV:
+        makers["bands-near-gap"] = make(near_gap_window(gap), "bands-near-gap")
+    return makers

@@ -1,0 +1,158 @@
+"""Task functions on the symmetry of the Hamiltonian beyond inversion."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from topovet.errors import NoInversionError
+from topovet.invariants.band_irreps import compute_band_irreps
+from topovet.invariants.irrep_results import PointIrreps
+from topovet.invariants.rotation_indicators import S4Indicator, compute_s4_indicator
+from topovet.model.assemble import LatticeHamiltonian
+from topovet.model.declarations import Declarations
+from topovet.model.shift_choice import ShiftProposal
+from topovet.pipeline.runner import Context
+from topovet.pipeline.steps_intake import BasedHamiltonian
+from topovet.pipeline.task import NotApplicable
+from topovet.spectrum.eigen import one_blas_thread
+from topovet.spectrum.results import Electrons
+from topovet.symmetry.az_class import AzClass, find_az_class
+from topovet.symmetry.group import measure_group
+from topovet.symmetry.group_results import GroupTest
+from topovet.symmetry.inference import InferredInversion, infer_inversion
+from topovet.symmetry.operator_set import build_operators
+from topovet.symmetry.operators import WannierOperator, with_time_reversal
+from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.sites import assign_sites, declared_sites
+
+
+def infer_from_hamiltonian(
+    *,
+    context: Context,
+    lattice: LatticeHamiltonian,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    space_group: SpaceGroup,
+) -> InferredInversion:
+    """Inversion from H(R) and the centres alone, beside what is declared or in its place."""
+    crystal, model = declarations.crystal, lattice.model
+    if not len(space_group.centres_frac):
+        raise NotApplicable(
+            f"space group {space_group.number} ({space_group.symbol}) has no inversion"
+        )
+    if declarations.orbitals and len(declarations.orbitals) == model.n_orb:
+        sites = declared_sites(np.array([o.position_frac for o in declarations.orbitals]), crystal)
+    elif shifts.centres_cart is not None:
+        centres = shifts.centres_cart @ np.linalg.inv(crystal.cell)
+        sites = assign_sites(centres, crystal, model=model)
+    else:
+        raise NotApplicable("neither declared sites nor Wannier centres say where functions sit")
+    declared_centre = declarations.settings.inversion_centre
+    centre = space_group.centres_frac[0] if declared_centre is None else np.array(declared_centre)
+    try:
+        return infer_inversion(model, crystal, sites, centre, spinful=model.spinful)
+    except NoInversionError as error:
+        raise NotApplicable(str(error)) from error
+
+
+def find_symmetry_class(
+    *,
+    context: Context,
+    lattice: LatticeHamiltonian,
+    declarations: Declarations,
+    time_reversal: TimeReversalTest,
+) -> AzClass:
+    """Altland-Zirnbauer class, and which invariants can exist."""
+    return find_az_class(lattice.model, lattice.bloch, time_reversal, declarations.crystal.periodic)
+
+
+def check_operations(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    bare: LatticeHamiltonian,
+    declarations: Declarations,
+    space_group: SpaceGroup,
+    electrons: Electrons,
+) -> GroupTest:
+    """Which operations of the structure the Hamiltonian has, and which more."""
+    lattice, basis = hamiltonian_with_basis.lattice, hamiltonian_with_basis.basis
+    if basis is None:
+        raise NotApplicable(f"no operators can be built: {hamiltonian_with_basis.reason}")
+    with one_blas_thread():
+        return measure_group(
+            lattice.model,
+            lattice.bloch,
+            bare.bloch,
+            basis,
+            declarations.crystal,
+            space_group,
+            declarations.mp_grid,
+            filling=electrons.filling,
+        )
+
+
+def label_irreps(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    space_group: SpaceGroup,
+    time_reversal: TimeReversalTest,
+    inversion: InversionTest,
+    electrons: Electrons,
+) -> tuple[PointIrreps, ...]:
+    """Irreps of the bands at the special points, by characters."""
+    operators = _operators(hamiltonian_with_basis, declarations, space_group)
+    if time_reversal.present:
+        assert hamiltonian_with_basis.basis is not None
+        basis = hamiltonian_with_basis.basis
+        operators += [with_time_reversal(operator, basis) for operator in operators]
+    lattice = hamiltonian_with_basis.lattice
+    return compute_band_irreps(
+        lattice.bloch,
+        operators,
+        declarations.crystal,
+        spinful=lattice.model.spinful,
+        filling=electrons.filling,
+        centre_frac=None if inversion.centre is None else np.array(inversion.centre),
+    )
+
+
+def count_s4_eigenvalues(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    space_group: SpaceGroup,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+) -> S4Indicator:
+    """The S4 indicator, which needs no inversion."""
+    operators = _operators(hamiltonian_with_basis, declarations, space_group)
+    lattice = hamiltonian_with_basis.lattice
+    indicator = compute_s4_indicator(
+        lattice.bloch,
+        operators,
+        declarations.crystal,
+        electrons.filling,
+        kramers=time_reversal.present and lattice.model.spinful,
+    )
+    if indicator.status == "not-applicable":
+        raise NotApplicable(indicator.reason)
+    return indicator
+
+
+def _operators(
+    based: BasedHamiltonian, declared: Declarations, space_group: SpaceGroup
+) -> list[WannierOperator]:
+    """All operations of the structure on the Wannier functions."""
+    if based.basis is None:
+        raise NotApplicable(f"no operators can be built: {based.reason}")
+    built = build_operators(
+        based.basis, declared.crystal, space_group.rotations, space_group.translations
+    )
+    if len(built.operators) < len(space_group.rotations):
+        missing = next(reason for reason in built.reasons if reason)
+        raise NotApplicable(f"the declared orbitals are not closed under the group: {missing}")
+    return list(built.operators)

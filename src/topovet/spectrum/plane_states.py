@@ -1,0 +1,203 @@
+"""Occupied states on a plane of k, with an account of what they cost and how narrow the gap was."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+
+from topovet.arrays import ComplexArray, FloatArray
+from topovet.errors import ConvergenceError
+from topovet.model.fourier import BlochSum, chunks_of_k
+from topovet.model.plane import KPlane, bloch_on_plane
+
+Subspace = Callable[[FloatArray, ComplexArray], ComplexArray]
+"""From k_frac (n, 3) and occupied states (n, n_orb, n_occ) to the states to be followed."""
+
+SPOTS = 2
+"""Places of a narrow gap that are looked into on a plane."""
+
+SPOTS_APART = 0.15
+"""Least distance of two of them, in plane coordinates."""
+
+FIRST_STEP = 1 / 24
+ROUNDS = 4
+
+STENCIL = np.array([(x, y) for x in (0, -1, 1) for y in (0, -1, 1)], dtype=float)
+QUADRATIC = np.linalg.pinv(
+    np.stack(
+        [
+            np.ones(9),
+            STENCIL[:, 0],
+            STENCIL[:, 1],
+            STENCIL[:, 0] ** 2 / 2,
+            STENCIL[:, 1] ** 2 / 2,
+            STENCIL[:, 0] * STENCIL[:, 1],
+        ],
+        axis=1,
+    )
+)
+"""From values on the stencil to those of value, gradient and second derivatives (xx, yy, xy)."""
+
+
+class PlaneStates:
+    """Solves H on a plane; counts the solves, and stops when the budget is spent.
+
+    Parameters
+    ----------
+    bloch
+        Three-dimensional Fourier sum.
+    plane
+        Where.
+    filling
+        Occupied bands, 0 < filling < n_orb.
+    max_solves
+        Largest number of eigenvalue problems.
+    subspace
+        Part of the occupied space to hand out, such as one eigenspace of a mirror; all of it by
+        default.
+    positions_frac
+        (n_orb, 3) orbital positions: states are handed out in the atomic gauge,
+        exp(-2 pi i (k - origin).tau) u(k), in place of the periodic one.
+
+    Attributes
+    ----------
+    n_solves
+        Eigenvalue problems solved so far, with or without eigenvectors.
+    smallest_gap_ev, narrowest_xy
+        Smallest E[N] - E[N-1] met so far and where.
+    """
+
+    def __init__(
+        self,
+        bloch: BlochSum,
+        plane: KPlane,
+        filling: int,
+        *,
+        max_solves: int,
+        subspace: Subspace | None = None,
+        positions_frac: FloatArray | None = None,
+    ) -> None:
+        self.plane = plane
+        self.max_solves = max_solves
+        self.n_solves = 0
+        self._filling = filling
+        self._bloch = bloch_on_plane(bloch, plane)
+        self._subspace = subspace
+        self._tau = None
+        if positions_frac is not None:
+            self._tau = np.array([plane.across, plane.along]) @ positions_frac.T
+        self._visited: list[tuple[FloatArray, FloatArray]] = []
+
+    def states_at(self, xy: FloatArray) -> ComplexArray:
+        """States (n, n_orb, n_followed) at plane coordinates (n, 2).
+
+        Raises
+        ------
+        ConvergenceError
+            The budget does not allow for this many more solves.
+        """
+        self._spend(len(xy))
+        parts, gaps = [], []
+        for part in chunks_of_k(len(xy), self._bloch.n_orb):
+            energies, vectors = np.linalg.eigh(self._bloch.lower_at(xy[part]))
+            gaps.append(energies[:, self._filling] - energies[:, self._filling - 1])
+            states = np.ascontiguousarray(vectors[:, :, : self._filling])
+            if self._subspace is not None:
+                states = self._subspace(self.plane.k_at(xy[part]), states)
+            if self._tau is not None:
+                states *= np.exp(-2j * np.pi * (xy[part] @ self._tau))[:, :, None]
+            parts.append(states)
+        self._visited.append((xy, np.concatenate(gaps)))
+        return np.concatenate(parts)
+
+    def gaps_at(self, xy: FloatArray) -> FloatArray:
+        """Direct gaps (n,) eV at plane coordinates (n, 2); eigenvalues alone are solved for.
+
+        Raises
+        ------
+        ConvergenceError
+            As `states_at`.
+        """
+        self._spend(len(xy))
+        gaps = []
+        for part in chunks_of_k(len(xy), self._bloch.n_orb):
+            energies = np.linalg.eigvalsh(self._bloch.lower_at(xy[part]))
+            gaps.append(energies[:, self._filling] - energies[:, self._filling - 1])
+        self._visited.append((xy, np.concatenate(gaps)))
+        return self._visited[-1][1]
+
+    @property
+    def visited(self) -> tuple[FloatArray, FloatArray]:
+        """Plane coordinates (n, 2) of all solves so far and the direct gaps (n,) eV there."""
+        xy, gaps = zip(*self._visited, strict=True)
+        return np.concatenate(xy), np.concatenate(gaps)
+
+    def narrowest(self) -> tuple[float, tuple[float, float]]:
+        """Smallest direct gap met so far, eV, and where."""
+        xy, gaps = self.visited
+        x, y = (float(c) for c in xy[gaps.argmin()] % 1.0)
+        return float(gaps.min()), (x, y)
+
+    @property
+    def bytes_per_k(self) -> int:
+        """Memory that following the states of one k takes, working arrays included."""
+        return 16 * self._filling * (3 * self._bloch.n_orb + 8 * self._filling)
+
+    def closing(self, turns: FloatArray) -> ComplexArray | None:
+        """exp(-2 pi i G.tau) for G = turns[..., 0] across + turns[..., 1] along, (..., n_orb).
+
+        The factors that take states at (x, y) to those at (x, y) + turns; None in the periodic
+        gauge, where there is nothing to do.
+        """
+        return None if self._tau is None else np.asarray(np.exp(-2j * np.pi * (turns @ self._tau)))
+
+    def _spend(self, n: int) -> None:
+        if self.n_solves + n > self.max_solves:
+            raise ConvergenceError(f"the budget of {self.max_solves} eigenvalue problems is spent")
+        self.n_solves += n
+
+
+def narrow_spots(states: PlaneStates) -> FloatArray:
+    """Where the direct gap is narrowest, (n, 2) plane coordinates, from the points solved so far.
+
+    The lowest points, apart from each other, are followed downhill. Near a small gap its square is
+    quadratic in k (Dirac cones of any mass), so a quadratic is fitted to the squares on a stencil
+    that shrinks around its minimum. These are places to look at more closely, not a proof that
+    nothing lower exists.
+    """
+    xy, gaps = states.visited
+    spots = _lowest_apart(xy, gaps)
+    step = FIRST_STEP
+    for _ in range(ROUNDS):
+        squares = states.gaps_at((spots[:, None] + step * STENCIL).reshape(-1, 2)).reshape(-1, 9)
+        spots = spots + step * _quadratic_minimum(squares**2)
+        step /= 4
+    return np.asarray(spots % 1.0)
+
+
+def _lowest_apart(xy: FloatArray, gaps: FloatArray) -> FloatArray:
+    spots: list[FloatArray] = []
+    for i in np.argsort(gaps, kind="stable"):
+        # -k is the same spot: equal gaps there under time reversal, and no harm without it
+        images = [s for spot in spots for s in (spot, -spot)]
+        if all(_distance(xy[i], image) > SPOTS_APART for image in images):
+            spots.append(xy[i])
+        if len(spots) == SPOTS:
+            break
+    return np.array(spots)
+
+
+def _distance(a: FloatArray, b: FloatArray) -> float:
+    return float(np.linalg.norm((a - b + 0.5) % 1.0 - 0.5))
+
+
+def _quadratic_minimum(values: FloatArray) -> FloatArray:
+    """Minimum (n, 2) of the fitted quadratics within the stencil, in its units."""
+    _, g_x, g_y, h_xx, h_yy, h_xy = QUADRATIC @ values.T
+    lowest = STENCIL[values.argmin(axis=1)]
+    determinant = h_xx * h_yy - h_xy**2
+    with np.errstate(divide="ignore", invalid="ignore"):
+        newton = np.stack([h_xy * g_y - h_yy * g_x, h_xy * g_x - h_xx * g_y]) / determinant
+    usable = (determinant > 0) & (h_xx > 0) & (np.abs(newton).max(axis=0) <= 1.0)
+    return np.asarray(np.where(usable[:, None], newton.T, lowest))

@@ -1,0 +1,107 @@
+"""One trial: a clean case spoiled, vetted, and the verdict held against the truth."""
+
+from __future__ import annotations
+
+import tempfile
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from clean_cases import CleanCase
+from fault import AS_STATED, CLEAN, Fault
+from topovet.errors import TopovetError
+from topovet.pipeline.dossier import start_run
+from topovet.pipeline.runner import Run
+from topovet.verdict.document import Verdict
+from topovet.verdict.flags import Flag
+from truth import Lattice, true_z2
+
+SETTINGS = {"effort": "quick"}
+
+Z2_CLASSES = frozenset({"strong-ti", "weak-ti", "crystalline-ti", "higher-order", "trivial"})
+"""Classes that say something about a gapped phase with time reversal."""
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """What became of a spoiled case.
+
+    Attributes
+    ----------
+    refused
+        The sentence with which the case was refused; "" where there is a verdict.
+    z2, class_
+        As asserted.
+    flags
+        As raised, in the order of the verdict.
+    fault_found
+        Why the verdict is silently wrong; "" where it is not.
+    """
+
+    refused: str
+    z2: tuple[int, ...] | None
+    class_: str
+    flags: tuple[Flag, ...]
+    fault_found: str
+
+
+def start(folder: Path) -> Run:
+    """A run whose verdict is that of `vet_case`; figures and page are left out."""
+    return start_run(folder, settings=SETTINGS)
+
+
+def examine(case: CleanCase, fault: Fault | None = None, size: float = 0.0) -> Outcome:
+    """Lay the case, spoil it, vet it, judge the verdict; no fault examines the clean case."""
+    with tempfile.TemporaryDirectory() as scratch:
+        folder = Path(scratch) / "case"
+        case.lay(folder)
+        if fault is not None:
+            fault.apply(folder, size)
+        try:
+            run = start(folder)
+            verdict: Verdict = run.result("verdict")
+        except TopovetError as error:
+            return Outcome(str(error), None, "undetermined", (), "")
+        wrong = _silently_wrong(case, fault, verdict, run)
+        return Outcome("", verdict.invariants.z2, verdict.class_, verdict.flags, wrong)
+
+
+def _silently_wrong(case: CleanCase, fault: Fault | None, verdict: Verdict, run: Run) -> str:
+    """What the verdict asserts and should not have; "" if nothing."""
+    z2, class_ = verdict.invariants.z2, verdict.class_
+    alarmed = any(flag.severity == "error" for flag in verdict.flags)
+    if alarmed and (z2 is not None or class_ != "undetermined"):
+        return f"asserts {z2} ({class_}) beside a flag of severity error"
+    if z2 is None and class_ not in Z2_CLASSES:
+        return ""
+    if fault is None or _is_as_clean(case, fault, verdict):
+        right, right_class = case.z2, case.class_
+    else:
+        truth = true_z2(_lattice(run), verdict.electrons.filling)
+        if truth is None:
+            return f"asserts {z2} ({class_}) where no Z2 index exists"
+        right, right_class = truth, _class_of(truth)
+    if z2 != right:
+        return f"asserts {z2}, right is {right}"
+    # kappa = 2 is beyond the oracle, which knows Z2 alone
+    if class_ != right_class and not (class_ == "higher-order" and right_class == "trivial"):
+        return f"asserts {class_}, right is {right_class}"
+    return ""
+
+
+def _is_as_clean(case: CleanCase, fault: Fault, verdict: Verdict) -> bool:
+    truth = fault.truth_for(case)
+    as_clean = truth == AS_STATED and verdict.electrons.filling == case.filling
+    return truth == CLEAN or as_clean
+
+
+def _lattice(run: Run) -> Lattice:
+    """H(R) as read: only faults that leave its reading alone are judged by it."""
+    model: Any = run.result("lattice").model
+    return Lattice(model.r_cells, model.h_r, run.result("declarations").crystal.periodic)
+
+
+def _class_of(z2: tuple[int, ...]) -> str:
+    if z2[0]:
+        return "strong-ti"
+    return "weak-ti" if any(z2) else "trivial"
