@@ -1,8 +1,8 @@
 """Random Hamiltonians that have an inversion by construction, and noise that has none.
 
 The operator is drawn first, with arbitrary unitary blocks between the sites, and the Hamiltonian
-averaged over it with `inverted_hopping`, whose formula `tests/unit/symmetry/test_inversion.py` tests
-on its own. Nothing of the inference is used.
+averaged over it with `inverted_hopping`, whose formula `tests/unit/symmetry/test_inversion.py`
+tests on its own. Nothing of the inference is used.
 """
 
 from __future__ import annotations
@@ -107,9 +107,7 @@ def _sites(
     return np.array(positions), sizes, partner, np.round(cells).astype(np.int64)
 
 
-def _free_place(
-    rng: np.random.Generator, taken: FloatArray, cell_ang: FloatArray
-) -> FloatArray:
+def _free_place(rng: np.random.Generator, taken: FloatArray, cell_ang: FloatArray) -> FloatArray:
     """A point off every centre and at least SPACING_ANG from what is taken, and from its image."""
     while True:
         offset = (0.15 + 0.2 * rng.random(3)) * rng.choice([-1, 1], 3)

@@ -60,7 +60,7 @@ def test_scattered_centres_serve_as_well_as_declared_positions(
     assert inferred.max_residual_mev == pytest.approx(0, abs=1e-6)
 
 
-@FEW
+@settings(max_examples=12, deadline=None)
 @given(st.integers(0, 10**6), shapes)
 def test_noise_moves_the_operator_by_no_more_than_itself(
     seed: int, functions: list[tuple[int, bool]]

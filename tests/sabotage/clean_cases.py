@@ -58,6 +58,11 @@ class CleanCase:
     lay: Callable[[Path], None]
 
     @property
+    def thorough(self) -> bool:
+        """Gets every fault; the others get those in which the Hamiltonian itself matters."""
+        return self.name in THOROUGH
+
+    @property
     def large(self) -> bool:
         """Takes a second or more to vet."""
         return self.real and len(self.z2) == 4
@@ -148,5 +153,7 @@ REALS = tuple(
         ("Bi111_bilayer", (1,), "strong-ti", 6),
     )
 )
+
+THOROUGH = ("dirac_strong", "kane_mele", "Bi2Se3", "Bi111_bilayer")
 
 CLEAN_CASES = {case.name: case for case in (*MODELS, *REALS)}

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import tempfile
 from dataclasses import dataclass
 from pathlib import Path
@@ -9,12 +10,13 @@ from typing import Any
 
 from clean_cases import CleanCase
 from fault import AS_STATED, CLEAN, Fault
+from truth import Lattice, true_z2
+
 from topovet.errors import TopovetError
 from topovet.pipeline.dossier import start_run
 from topovet.pipeline.runner import Run
 from topovet.verdict.document import Verdict
 from topovet.verdict.flags import Flag
-from truth import Lattice, true_z2
 
 SETTINGS = {"effort": "quick"}
 
@@ -34,7 +36,7 @@ class Outcome:
         As asserted.
     flags
         As raised, in the order of the verdict.
-    fault_found
+    wrong
         Why the verdict is silently wrong; "" where it is not.
     """
 
@@ -42,7 +44,21 @@ class Outcome:
     z2: tuple[int, ...] | None
     class_: str
     flags: tuple[Flag, ...]
-    fault_found: str
+    wrong: str
+
+
+@functools.cache
+def background(case: CleanCase) -> frozenset[tuple[str, str]]:
+    """Codes and severities of the flags that the clean case has already."""
+    return frozenset((flag.code, flag.severity) for flag in examine(case).flags)
+
+
+def top_flag(case: CleanCase, outcome: Outcome) -> str | None:
+    """Code of the first flag of severity warning or error that the clean case does not have."""
+    for flag in outcome.flags:
+        if flag.severity != "info" and (flag.code, flag.severity) not in background(case):
+            return flag.code
+    return None
 
 
 def start(folder: Path) -> Run:

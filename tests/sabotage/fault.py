@@ -24,6 +24,16 @@ AS_STATED = "as-stated"
 filling that was taken, the clean one where it is the same."""
 
 
+HAMILTONIAN_DECIDES = (
+    "spin-order-mismatch",
+    "orbital-declaration-wrong",
+    "filling-off",
+    "inside-error-bar",
+    "noise",
+)
+"""Faults of description that only the Hamiltonian can tell."""
+
+
 def everywhere(case: CleanCase) -> bool:
     return True
 
@@ -74,8 +84,13 @@ class Fault:
     suits: Callable[[CleanCase], bool] = everywhere
 
     def sizes_for(self, case: CleanCase) -> tuple[float, ...]:
-        """All sizes; of the large cases every second one, the largest among them."""
+        """Sizes to try on a case: all, or of large cases every second one and the largest."""
+        if not self.suits(case) or not (case.thorough or self._meets_hamiltonian()):
+            return ()
         return self.sizes[::-1][::2][::-1] if case.large else self.sizes
+
+    def _meets_hamiltonian(self) -> bool:
+        return self.truth != CLEAN or self.code in HAMILTONIAN_DECIDES
 
     def truth_for(self, case: CleanCase) -> str:
         if not case.real and self.truth_in_models is not None:

@@ -12,11 +12,10 @@ FAULTS: tuple[Fault, ...] = (*FILE_FAULTS, *DECLARATION_FAULTS, *PHYSICS_FAULTS)
 
 
 def trials() -> list[tuple[CleanCase, Fault, float]]:
-    """Every (case, fault, size) of the suite."""
+    """Every (case, fault, size) of the suite, case by case."""
     return [
         (case, fault, size)
         for case in CLEAN_CASES.values()
         for fault in FAULTS
-        if fault.suits(case)
         for size in fault.sizes_for(case)
     ]

@@ -6,11 +6,11 @@ from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
-
 from case_folder import CaseFolder
 from clean_cases import CleanCase
 from fault import AS_STATED, Fault, flags, in_models, in_real
 from faults_of_files import reorder
+
 from topovet.arrays import FloatArray, IntArray
 from topovet.intake.records import HamiltonianFile
 

@@ -6,10 +6,10 @@ from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
-
 from case_folder import CaseFolder, keep_rows, onsite_row
 from clean_cases import CLEAN_CASES, CleanCase
 from fault import CHANGED, Fault, flags, in_real
+
 from topovet.arrays import FloatArray, IntArray
 from topovet.intake.records import HamiltonianFile
 from topovet.model.ordering import reorder_shifts
@@ -275,6 +275,10 @@ def _complex_noise(shape: tuple[int, ...]) -> FloatArray:
     return np.asarray(rng.normal(size=shape) + 1j * rng.normal(size=shape))
 
 
+MISREAD_SHIFTS = flags("interpolation-poor", "symmetry-broken", "centres-off")
+"""Shifts that are not those of the run spoil H(k) between mesh points: bands differ from
+Wannier90's own, and symmetries with them; both flags say to give the `_wsvec.dat` file of the run."""
+
 FILE_FAULTS = (
     Fault(
         "spin-order-mismatch",
@@ -332,7 +336,7 @@ FILE_FAULTS = (
         (0.95, 0.7, 0.4, 0.2),
         "of the longest R kept",
         zero_shells,
-        flags("range-truncated", "interpolation-poor"),
+        flags("range-truncated"),
         suits=in_real,
     ),
     Fault(
@@ -356,36 +360,45 @@ FILE_FAULTS = (
         flags("missing-partner-r"),
     ),
     Fault(
-        "range-truncated",
+        "interpolation-poor",
         "shifts-dropped",
         (1, 2, 3),
         "files",
         drop_shifts,
-        flags("range-truncated", "symmetry-broken", "interpolation-poor"),
+        MISREAD_SHIFTS,
         suits=in_real,
     ),
     Fault(
-        "centres-off",
+        "interpolation-poor",
         "shifts-of-another-compound",
         (1,),
         "",
         foreign_shifts,
-        flags("interpolation-poor", "centres-off"),
+        MISREAD_SHIFTS,
         suits=has_twin,
     ),
     Fault(
-        "centres-off",
+        "interpolation-poor",
         "shifts-permuted",
         (1,),
         "",
         permute_shifts,
-        flags("interpolation-poor", "centres-off"),
+        MISREAD_SHIFTS,
+        suits=in_real,
+    ),
+    Fault(
+        "interpolation-poor",
+        "centre-scattered",
+        (0.001, 0.1, 0.7),
+        "angstrom",
+        move_centre,
+        MISREAD_SHIFTS,
         suits=in_real,
     ),
     Fault(
         "centres-off",
         "centre-moved",
-        (0.001, 0.1, 0.7, 2.5),
+        (2.5,),
         "angstrom",
         move_centre,
         flags("centres-off"),
@@ -455,12 +468,13 @@ FILE_FAULTS = (
         suits=in_real,
     ),
     Fault(
-        "not-hermitian",
+        "noise",
         "noise-of-elements",
         (1e-5, 0.1, 3, 100),
         "meV on each number",
         noise_of_elements,
-        flags("not-hermitian"),
+        # it breaks all three, and each flag says so
+        flags("not-hermitian", "time-reversal-broken", "symmetry-broken"),
     ),
     Fault(
         "fermi-outside-gap",

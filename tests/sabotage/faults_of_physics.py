@@ -9,10 +9,10 @@ from math import comb
 from pathlib import Path
 
 import numpy as np
-
 from case_folder import CaseFolder, onsite_row
 from clean_cases import CleanCase
 from fault import CHANGED, Fault, flags
+
 from topovet.arrays import ComplexArray, FloatArray, IntArray
 from topovet.intake.records import DeclaredOrbital, HamiltonianFile, WinFile
 
@@ -36,7 +36,7 @@ def another_run(folder: Path) -> CaseFolder:
 
 
 def add_blocks(folder: Path, blocks: Blocks) -> None:
-    """H(R) += V(R), as a run of its own; an R that the file does not list is added to it."""
+    """H(R) += V(R), as a run of its own; an R that a model does not list is added to it."""
     case = another_run(folder)
     h = case.hamiltonian()
     row_of = {tuple(r): i for i, r in enumerate(h.r_cells.tolist())}
@@ -93,12 +93,12 @@ def time_reversed(blocks: Blocks) -> dict[Cell, ComplexArray]:
 
 
 def inverted(blocks: Blocks, orbitals: tuple[DeclaredOrbital, ...]) -> dict[Cell, ComplexArray]:
-    """P V P^-1: element (m, n) of V(R) goes to (m', n') of -R + L_n - L_m, times (-1)^(l_m + l_n)."""
+    """P V P^-1: element (m, n) of V(R) goes to (m', n') of -R + L_n - L_m, (-1)^(l_m + l_n)."""
     image, cell_of, sign = inversion_map(orbitals)
     result: dict[Cell, ComplexArray] = {}
     n = len(image)
     for r_cell, block in blocks.items():
-        for a, b in itertools.product(range(n), repeat=2):
+        for a, b in zip(*np.nonzero(block), strict=True):
             r_new = tuple((-np.array(r_cell) + cell_of[b] - cell_of[a]).tolist())
             target = result.setdefault(r_new, np.zeros((n, n), dtype=complex))
             target[image[a], image[b]] += sign[a] * sign[b] * block[a, b]
@@ -391,6 +391,9 @@ def drop_spin(folder: Path, size: float) -> None:
 
 BROKEN = flags("symmetry-broken", "parity-impure")
 
+GAP_OR_GROUP = flags("gap-closes", "symmetry-broken")
+"""One bond of three, or pz alone, also breaks rotations of the structure, and the flag says so."""
+
 PHYSICS_FAULTS = (
     Fault(
         "symmetry-broken",
@@ -440,16 +443,16 @@ PHYSICS_FAULTS = (
         suits=takes_flux,
     ),
     Fault(
-        "time-reversal-broken",
+        "noise",
         "hermitian-noise",
         (0.1, 5, 100, 300),
         "meV",
         noise_hermitian,
-        flags("time-reversal-broken"),
+        flags("time-reversal-broken", "symmetry-broken"),
         CHANGED,
     ),
     Fault(
-        "parity-impure",
+        "noise",
         "noise-with-kramers-pairs",
         (0.1, 5, 100, 300, 2000),
         "meV",
@@ -463,7 +466,7 @@ PHYSICS_FAULTS = (
         (0.5, 0.99, 1, 1.01, 1.5),
         "of the way to the transition",
         tune_mass,
-        flags("gap-closes"),
+        GAP_OR_GROUP,
         CHANGED,
         suits=has_mass,
     ),
@@ -473,7 +476,7 @@ PHYSICS_FAULTS = (
         (0.05, 0.5, -1, 2, -4),
         "eV",
         shift_orbital,
-        flags("gap-closes"),
+        GAP_OR_GROUP,
         CHANGED,
         suits=has_several_kinds,
     ),
@@ -489,11 +492,20 @@ PHYSICS_FAULTS = (
     ),
     Fault(
         "no-spin-orbit",
-        "spin-orbit-weakened",
-        (0.05, 0.5, 0.9, 1),
+        "spin-orbit-removed",
+        (1,),
         "fraction removed",
         weaken_spin_orbit,
         flags("no-spin-orbit"),
+        CHANGED,
+    ),
+    Fault(
+        "gap-closes",
+        "spin-orbit-weakened",
+        (0.05, 0.5, 0.9),
+        "fraction removed",
+        weaken_spin_orbit,
+        flags("gap-closes"),
         CHANGED,
     ),
     Fault(

@@ -187,9 +187,7 @@ def _plane_z2(
     raise NotSettledError(f"plane k{plane[0] + 1} = {plane[1]}: last {before}")
 
 
-def _flow(
-    lattice: Lattice, filling: int, plane: tuple[int, float], points: int
-) -> int | None:
+def _flow(lattice: Lattice, filling: int, plane: tuple[int, float], points: int) -> int | None:
     """Charge centres that the largest gap jumps over on the way from 0 to 1/2, modulo 2.
 
     An interval is halved until the gap of either end is clear of the centres of the other; None

@@ -75,6 +75,8 @@ def audit_hamiltonian(
         shift_source=shift_source,
         shift_note=shift_note,
         centre_offsets_ang=offsets,
+        n_zero_r=int((largest == 0).sum()),
+        weakest_block_mev=MEV_PER_EV * _smallest_not_zero(largest),
     )
 
 
@@ -91,6 +93,10 @@ def _listed(vectors: IntArray) -> tuple[tuple[int, int, int], ...]:
 def _largest_elements(h_r: ComplexArray) -> FloatArray:
     """(n_r,) largest |H_mn(R)| of each R, eV; one block at a time."""
     return np.array([np.abs(block).max(initial=0.0) for block in h_r], dtype=float)
+
+
+def _smallest_not_zero(values: FloatArray) -> float:
+    return float(values[values > 0].min()) if values.any() else 0.0
 
 
 def _hermiticity(hamiltonian: HamiltonianFile, partner: IntArray, repeats: BoolArray) -> float:

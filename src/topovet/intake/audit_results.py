@@ -48,6 +48,10 @@ class HamiltonianAudit:
     centre_offsets_ang
         Distance of each Wannier centre from its declared site modulo the supercell; empty if
         unknown.
+    n_zero_r
+        R vectors whose blocks are zero to the last digit.
+    weakest_block_mev
+        Smallest of the largest |H_mn(R)| of all other R, meV, as printed.
     """
 
     file: str
@@ -69,3 +73,5 @@ class HamiltonianAudit:
     shift_source: str
     shift_note: str
     centre_offsets_ang: tuple[float, ...]
+    n_zero_r: int = 0
+    weakest_block_mev: float = 0.0

@@ -8,11 +8,12 @@ Commun. 3, 982 (2012), doi:10.1038/ncomms1969).
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable
 
 import numpy as np
 
-from topovet.arrays import ComplexArray, FloatArray, largest_spectral_norm
+from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray, largest_spectral_norm
 from topovet.errors import NotInvariantError
 from topovet.invariants.chern import compute_chern_plane
 from topovet.invariants.results import ChernPlane, MirrorChern
@@ -30,8 +31,45 @@ MIN_PURITY = 0.8
 SQUARE_TOLERANCE = 1e-6
 """Largest element of D^2 + 1 with which D is a mirror of spinors."""
 
+REACH = 3
+"""Reciprocal vectors with components up to this are searched for those that span a plane."""
+
 N_SAMPLE = 12
 """Generic points of the plane on which the mirror is tested."""
+
+
+def mirror_planes(rotation: IntArray) -> tuple[KPlane, ...]:
+    """Planes of k that a mirror leaves where they are, up to reciprocal lattice vectors.
+
+    Parameters
+    ----------
+    rotation
+        W (3, 3) integer of a reflection, x' = W x in the Hamiltonian's cell; k turns as k W.
+
+    Returns
+    -------
+    tuple of KPlane
+        One plane or two, through the origin first; named by the Miller indices of the mirror.
+
+    Raises
+    ------
+    ValueError
+        W is no reflection.
+    """
+    w = np.asarray(rotation)
+    if not np.array_equal(w @ w, np.eye(3)) or np.trace(w) != 1:
+        raise ValueError("not a reflection")
+    integers = np.array(sorted(itertools.product(range(-REACH, REACH + 1), repeat=3), key=_length))
+    (normal,) = _primitive(integers, integers @ w == -integers, 1)
+    along, across = _primitive(integers, integers @ w == integers, 2)
+    name = f"({' '.join(map(str, normal))})"
+    planes = [KPlane(f"{name} at 0", (0.0, 0.0, 0.0), across, along)]
+    # normal/2 lies on the same plane if some G = (normal + in-plane vector)/2 leads from it to 0
+    in_plane = 2 * integers - normal
+    if not (in_plane @ w == in_plane).all(axis=1).any():
+        x, y, z = (c / 2 for c in normal)
+        planes.append(KPlane(f"{name} at 1/2", (x, y, z), across, along))
+    return tuple(planes)
 
 
 def compute_mirror_chern(
@@ -80,6 +118,23 @@ def compute_mirror_chern(
     except NotInvariantError as error:
         return evidence.result("failed", str(error), split=split)
     return evidence.result(*_status(found), found=found, split=split)
+
+
+def _length(vector: tuple[int, ...]) -> tuple[int, tuple[int, ...]]:
+    """Short vectors first, and of two opposite ones that which leads with a positive entry."""
+    return sum(c * c for c in vector), tuple(-c for c in vector)
+
+
+def _primitive(integers: IntArray, keeps: BoolArray, n: int) -> list[tuple[int, int, int]]:
+    """The n shortest independent vectors (rows where keeps is set) that span their lattice."""
+    rows = integers[keeps.all(axis=1)]
+    rows = rows[rows.any(axis=1)]
+    first = rows[0]
+    chosen = [first]
+    if n == 2:
+        cross = np.gcd.reduce(np.cross(first, rows), axis=1)
+        chosen.append(rows[np.flatnonzero(cross == 1)[0]])
+    return [(int(v[0]), int(v[1]), int(v[2])) for v in chosen]
 
 
 class _Split:

@@ -115,6 +115,9 @@ class WilsonPlane:
         (lines,) middle of the largest gap between centres.
     references, crossings
         (n,) reference values and how often the centres cross each of them.
+    reversal_loss
+        Largest |1 - M†M| between time-reversed states and those solved for at -k: 0 where time
+        reversal holds, NaN where it was not tried.
     """
 
     plane: str
@@ -136,6 +139,7 @@ class WilsonPlane:
     gap_centres: FloatArray
     references: FloatArray
     crossings: IntArray
+    reversal_loss: float = float("nan")
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -59,6 +59,10 @@ class LineCriteria:
     point_step: float = 0.15
     finest: float = 2.0**-22
 
+    def __post_init__(self) -> None:
+        if self.points < 4 or self.points % 2:
+            raise ValueError("a line begins with an even number of points, at least 4")
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class SolvedLine:
@@ -112,8 +116,7 @@ def solve_lines(
     criteria
         When a line is done.
     extra
-        (n_lines,) one more coordinate along each line that has to be among its points; NaN for
-        none.
+        (n_lines,) one more coordinate along each line that has to be among its points.
     reversal
         Where given, lines at 0 and 1/2 are solved for y <= 1/2 only, the rest is time-reversed.
     closing
@@ -251,14 +254,10 @@ class _Batch:
 
     def first_points(self, n_points: int, extra: FloatArray | None) -> LinePoints:
         lines = np.arange(len(self.across))
-        line, along = (
-            np.repeat(lines, n_points),
-            np.tile(np.arange(n_points) / n_points, len(lines)),
-        )
+        line = np.repeat(lines, n_points)
+        along = np.tile(np.arange(n_points) / n_points, len(lines))
         if extra is not None:
-            wanted = ~np.isnan(extra)
-            line = np.concatenate([line, lines[wanted]])
-            along = np.concatenate([along, extra[wanted]])
+            line, along = np.concatenate([line, lines]), np.concatenate([along, extra])
         return _sorted(*self._states(lines, line, along))
 
     def points_at(self, along: FloatArray) -> LinePoints:

@@ -24,6 +24,7 @@ from topovet.invariants.flow import (
 )
 from topovet.invariants.results import WilsonPlane
 from topovet.invariants.wilson_line import Reversal
+from topovet.invariants.wilson_loop import measure_links
 from topovet.invariants.wilson_sheet import Sheet, SheetCriteria
 from topovet.model.fourier import BlochSum
 from topovet.model.plane import KPlane
@@ -39,6 +40,14 @@ REFERENCE_CLEARANCE = 0.005
 
 PAIRING_FRACTION = 0.02
 """Largest splitting of Kramers pairs at the ends, as a fraction of the largest gap there."""
+
+REVERSAL_POINTS = np.array([[0.0, 0.29], [0.5, 0.18]])
+"""Where time reversal is tried, besides the place of the narrowest gap: half of the lines at 0 and
+1/2 rest on it."""
+
+REVERSAL_LOSS = 0.01
+"""Largest |1 - M†M| between time-reversed states and those at -k, about (violation / gap)^2. A
+smaller violation cannot be told here; the test of H itself is far more sensitive."""
 
 
 def compute_wilson_plane(
@@ -79,19 +88,20 @@ def compute_wilson_plane(
             max_solves=(criteria or SheetCriteria()).max_solves,
             positions_frac=positions_frac,
         )
-        sheet = Sheet(
-            states,
-            criteria or SheetCriteria(),
-            reversal=_time_reversal(states, bloch.n_orb),
-            follow_gap=True,
-        )
-        reason = sheet.refine()
+        reversal = _time_reversal(states, bloch.n_orb)
+        sheet = Sheet(states, criteria or SheetCriteria(), reversal=reversal, follow_gap=True)
+        reason, loss = sheet.refine(), np.nan
+        if not reason:
+            loss = _reversal_loss(states, bloch.n_orb)
+    if loss > REVERSAL_LOSS:
+        reason = f"time reversal does not hold (occupied states at k and -k differ by {loss:.2f})"
     if reason:
-        return _result(sheet, reason, None, np.empty(0), np.empty(0, dtype=np.int64))
+        nothing = np.empty(0)
+        return _result(sheet, reason, None, nothing, nothing.astype(np.int64), loss)
     hwcc = sheet.hwcc
     references = _references(hwcc)
     counts = crossings(hwcc[:-1], sheet.steps, references)
-    return _result(sheet, *_judge(hwcc, references, counts), references, counts)
+    return _result(sheet, *_judge(hwcc, references, counts), references, counts, loss)
 
 
 def _time_reversal(states: PlaneStates, n_orb: int) -> Reversal:
@@ -106,6 +116,14 @@ def _time_reversal(states: PlaneStates, n_orb: int) -> Reversal:
         return np.asarray(reversed_kets)
 
     return reversal
+
+
+def _reversal_loss(states: PlaneStates, n_orb: int) -> float:
+    """How far time-reversed occupied states are from those solved for at -k."""
+    xy = np.concatenate([REVERSAL_POINTS, np.array([states.narrowest()[1]])])
+    kets, images = np.split(states.states_at(np.concatenate([xy, -xy])), 2)
+    u = spin_operator(n_orb, "interlaced")
+    return float(measure_links(u @ kets.conj(), images).losses.max())
 
 
 def _references(hwcc: FloatArray) -> FloatArray:
@@ -133,7 +151,12 @@ def _judge(hwcc: FloatArray, references: FloatArray, counts: IntArray) -> tuple[
 
 
 def _result(
-    sheet: Sheet, reason: str, z2: int | None, references: FloatArray, counts: IntArray
+    sheet: Sheet,
+    reason: str,
+    z2: int | None,
+    references: FloatArray,
+    counts: IntArray,
+    reversal_loss: float,
 ) -> WilsonPlane:
     hwcc, lines = sheet.hwcc, sheet.lines
     middle, width = largest_gaps(hwcc) if lines else (np.empty(0), np.empty(0))
@@ -160,4 +183,5 @@ def _result(
         gap_centres=middle,
         references=references,
         crossings=counts,
+        reversal_loss=reversal_loss,
     )

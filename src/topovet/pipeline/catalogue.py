@@ -115,6 +115,7 @@ def _intake_tasks() -> tuple[Task, ...]:
             "find the order of the spinors",
             steps_intake.settle_spin_order,
             needs=("declarations", "unshifted"),
+            version=2,
             essential=True,
         ),
         Task(
@@ -155,6 +156,7 @@ def _intake_tasks() -> tuple[Task, ...]:
             "measure the soundness of the files",
             steps_intake.audit,
             needs=("hamiltonian", "declarations", "shifts", "shift-test"),
+            version=2,
             essential=True,
         ),
         Task(

@@ -76,7 +76,6 @@ def _environment() -> jinja2.Environment:
         "ev_number": notation.ev_number,
         "mev": notation.mev,
         "mev_number": notation.mev_number,
-        "mev_number": notation.mev_number,
         "angstrom": notation.angstrom,
         "sig": notation.significant,
         "seconds": notation.seconds,

@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 import numpy as np
 
-from topovet.arrays import ComplexArray, FloatArray
+from topovet.arrays import BoolArray, ComplexArray, FloatArray
 from topovet.errors import ConvergenceError
 from topovet.model.fourier import BlochSum, chunks_of_k
 from topovet.model.plane import KPlane, bloch_on_plane
@@ -21,7 +21,12 @@ SPOTS_APART = 0.15
 """Least distance of two of them, in plane coordinates."""
 
 FIRST_STEP = 1 / 24
-ROUNDS = 4
+NEWTON_SHRINKS, PLAIN_SHRINKS = 1 / 4, 1 / 2
+FINEST_STEP = 1e-8
+MAX_ROUNDS = 24
+
+SETTLED = 0.95
+"""A spot is done when the fitted minimum leaves more than this of the gap found there."""
 
 STENCIL = np.array([(x, y) for x in (0, -1, 1) for y in (0, -1, 1)], dtype=float)
 QUADRATIC = np.linalg.pinv(
@@ -134,7 +139,9 @@ class PlaneStates:
         return np.concatenate(xy), np.concatenate(gaps)
 
     def narrowest(self) -> tuple[float, tuple[float, float]]:
-        """Smallest direct gap met so far, eV, and where."""
+        """Smallest direct gap met so far, eV, and where; infinite before the first solve."""
+        if not self._visited:
+            return np.inf, (0.0, 0.0)
         xy, gaps = self.visited
         x, y = (float(c) for c in xy[gaps.argmin()] % 1.0)
         return float(gaps.min()), (x, y)
@@ -166,13 +173,26 @@ def narrow_spots(states: PlaneStates) -> FloatArray:
     that shrinks around its minimum. These are places to look at more closely, not a proof that
     nothing lower exists.
     """
-    xy, gaps = states.visited
-    spots = _lowest_apart(xy, gaps)
-    step = FIRST_STEP
-    for _ in range(ROUNDS):
-        squares = states.gaps_at((spots[:, None] + step * STENCIL).reshape(-1, 2)).reshape(-1, 9)
-        spots = spots + step * _quadratic_minimum(squares**2)
-        step /= 4
+    spots = _lowest_apart(*states.visited)
+    centre, step = spots.copy(), np.full(len(spots), FIRST_STEP)
+    best, active = np.full(len(spots), np.inf), np.arange(len(spots))
+    for _ in range(MAX_ROUNDS):
+        around = centre[active, None] + step[active, None, None] * STENCIL
+        gaps = states.gaps_at(around.reshape(-1, 2)).reshape(-1, 9)
+        move, fitted, foretold = _quadratic_minimum(gaps**2)
+        lowest, winner = gaps.min(axis=1), gaps.argmin(axis=1)
+        centred = fitted | (winner == 0)
+        better = lowest < best[active]
+        best[active] = np.where(better, lowest, best[active])
+        settled = fitted & (foretold > (SETTLED * best[active]) ** 2)
+        found = around[np.arange(len(active)), winner]
+        spots[active] = np.where(better[:, None], found, spots[active])
+        centre[active] += step[active, None] * move
+        # a lowest point on the rim means that the minimum lies further out: go there, same step
+        step[active] *= np.where(fitted, NEWTON_SHRINKS, np.where(centred, PLAIN_SHRINKS, 1.0))
+        active = active[~settled & (step[active] > FINEST_STEP)]
+        if len(active) == 0:
+            break
     return np.asarray(spots % 1.0)
 
 
@@ -192,12 +212,18 @@ def _distance(a: FloatArray, b: FloatArray) -> float:
     return float(np.linalg.norm((a - b + 0.5) % 1.0 - 0.5))
 
 
-def _quadratic_minimum(values: FloatArray) -> FloatArray:
-    """Minimum (n, 2) of the fitted quadratics within the stencil, in its units."""
-    _, g_x, g_y, h_xx, h_yy, h_xy = QUADRATIC @ values.T
-    lowest = STENCIL[values.argmin(axis=1)]
+def _quadratic_minimum(values: FloatArray) -> tuple[FloatArray, BoolArray, FloatArray]:
+    """Way to the minimum in units of the stencil, whether it was fitted, and the fitted value.
+
+    That is the minimum of the fitted quadratic where it lies within the stencil, else the lowest
+    point.
+    """
+    middle, g_x, g_y, h_xx, h_yy, h_xy = QUADRATIC @ values.T
     determinant = h_xx * h_yy - h_xy**2
-    with np.errstate(divide="ignore", invalid="ignore"):
-        newton = np.stack([h_xy * g_y - h_yy * g_x, h_xy * g_x - h_xx * g_y]) / determinant
-    usable = (determinant > 0) & (h_xx > 0) & (np.abs(newton).max(axis=0) <= 1.0)
-    return np.asarray(np.where(usable[:, None], newton.T, lowest))
+    convex = (determinant > 0) & (h_xx > 0)
+    scale = 1 / np.where(convex, determinant, 1.0)
+    newton = scale * np.stack([h_xy * g_y - h_yy * g_x, h_xy * g_x - h_xx * g_y])
+    fitted = convex & (np.abs(newton).max(axis=0) <= 1.0)
+    lowest = STENCIL[values.argmin(axis=1)]
+    value = middle + (g_x * newton[0] + g_y * newton[1]) / 2
+    return np.asarray(np.where(fitted[:, None], newton.T, lowest)), fitted, value

@@ -9,19 +9,20 @@ equivalence the inversions differ by the signs of P on them.
 from __future__ import annotations
 
 import numpy as np
+from scipy.linalg import schur
 
 from topovet.arrays import ComplexArray
 
-TRIES = 32
-"""Random combinations of several solutions, of which the one nearest to an involution is taken."""
+TRIES = 16
+"""Random combinations of several solutions, of which the one with the clearest phases is taken."""
 
-LEAST_RANK = 0.1
+LEAST_RANK = 0.02
 """Least ratio of smallest to largest singular value of blocks that map every function."""
 
-DRAWS = 8
+DRAWS = 32
 """Random elements of the algebra; the one that tells most sets apart is used."""
 
-CLUSTER_GAP = 0.05
+CLUSTER_GAP = 0.02
 """Eigenvalues of a random element of the algebra that are nearer than this share of their range
 belong to one set."""
 
@@ -29,8 +30,9 @@ belong to one set."""
 def involution(vectors: ComplexArray) -> tuple[ComplexArray, float]:
     """A unitary P with P^2 = 1 from the solutions of the block problem.
 
-    Polar decomposition, phase from P^2 = 1, then the matrix sign of its Hermitian part: each step
-    keeps the blocks.
+    Polar decomposition of a solution U, then P = U (U^2)^(-1/2): where several sets of functions
+    are decoupled, U^2 has a phase on each of them, and the root takes each to 1. The cut of the
+    root is put into the widest gap between the phases. Each step keeps the blocks.
 
     Parameters
     ----------
@@ -40,22 +42,42 @@ def involution(vectors: ComplexArray) -> tuple[ComplexArray, float]:
     Returns
     -------
     tuple
-        P, and the least |eigenvalue| of its Hermitian part before it was made an involution.
+        P, and its overlap with the space of the solutions: 1 if P is one of them.
     """
     rng = np.random.default_rng(0)
-    best, purity = polar(vectors[0]), -1.0
+    best, widest = polar(vectors[0]), -1.0
     for _ in range(1 if len(vectors) == 1 else TRIES):
         mixed = vectors[0]
         if len(vectors) > 1:  # a single solution may live on one decoupled set alone
             weights = rng.normal(size=(len(vectors), 2)) @ np.array([1, 1j])
             mixed = np.tensordot(weights, vectors, axes=1)
-        unitary = _phased(polar(mixed))
-        least = float(np.abs(np.linalg.eigvalsh(_hermitian(unitary))).min())
         if np.linalg.norm(mixed, ord=-2) < LEAST_RANK * np.linalg.norm(mixed, ord=2):
-            least = 0.0  # the blocks leave some functions without an image
-        if least > purity:
-            best, purity = unitary, least
-    return matrix_sign(_hermitian(best)), purity
+            continue  # the blocks leave some functions without an image
+        found, gap = _root_of_one(polar(mixed))
+        if gap > widest:
+            best, widest = found, gap
+    if widest < 0:
+        return matrix_sign(_hermitian(best)), 0.0
+    return best, _overlap(best, vectors)
+
+
+def _root_of_one(unitary: ComplexArray) -> tuple[ComplexArray, float]:
+    """U (U^2)^(-1/2), Hermitian and unitary, and the widest gap between the phases of U^2."""
+    triangle, states = schur(unitary @ unitary, output="complex")
+    phases = np.sort(np.angle(np.diag(triangle)))
+    gaps = np.diff(np.append(phases, phases[0] + 2 * np.pi))
+    cut = phases[gaps.argmax()] + gaps.max() / 2
+    # angles counted from the cut, so that their halves do not jump within a set
+    angles = np.mod(np.angle(np.diag(triangle)) - cut, 2 * np.pi) + cut
+    root = (states * np.exp(-0.5j * angles)) @ states.conj().T
+    return matrix_sign(_hermitian(unitary @ root)), float(gaps.max())
+
+
+def _overlap(inversion: ComplexArray, vectors: ComplexArray) -> float:
+    """Norm of the part of P in the space of the solutions, relative to that of P."""
+    basis = np.linalg.qr(vectors.reshape(len(vectors), -1).T)[0]
+    part = basis.conj().T @ inversion.reshape(-1)
+    return float(np.linalg.norm(part) / np.linalg.norm(inversion))
 
 
 def sign_alternatives(inversion: ComplexArray, vectors: ComplexArray) -> list[ComplexArray]:
@@ -108,11 +130,6 @@ def matrix_sign(hermitian: ComplexArray) -> ComplexArray:
     """Sign of a Hermitian matrix: its eigenvalues become +1 and -1."""
     values, states = np.linalg.eigh(hermitian)
     return np.asarray((states * np.where(values < 0, -1.0, 1.0)) @ states.conj().T)
-
-
-def _phased(unitary: ComplexArray) -> ComplexArray:
-    """The unitary times the phase that makes the trace of its square real and positive."""
-    return np.asarray(unitary * np.exp(-0.5j * np.angle(np.trace(unitary @ unitary))))
 
 
 def _hermitian(matrix: ComplexArray) -> ComplexArray:

@@ -8,15 +8,16 @@ symmetric than the Hamiltonian), for which operations are tried that the structu
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import replace
 
 import numpy as np
 
-from topovet.arrays import BoolArray, FloatArray, IntArray
+from topovet.arrays import BoolArray, IntArray
 from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.model.hamiltonian import TightBindingModel
+from topovet.symmetry.beyond_structure import find_beyond_structure
 from topovet.symmetry.group_results import FoundGroup, GroupTest, OperationTest
 from topovet.symmetry.operation_test import (
     BANDS_MEV,
@@ -24,29 +25,22 @@ from topovet.symmetry.operation_test import (
     Probe,
     measure_operation,
     prepare_probe,
-    quick_violation_mev,
     untested,
 )
 from topovet.symmetry.operations import (
+    OperationGroup,
     largest_closed_subset,
     multiplication_table,
-    name_operation,
-    same_operation,
 )
 from topovet.symmetry.operator_set import OperatorSet, build_operators
 from topovet.symmetry.operators import (
-    SITE_TOLERANCE_ANG,
     NotClosedError,
     WannierOperator,
     factor_system,
     with_time_reversal,
 )
 from topovet.symmetry.results import SpaceGroup
-from topovet.symmetry.spacegroup import find_candidate_operations, name_group, name_magnetic_group
-
-LOOSE_ANG = (0.1, 0.3)
-"""How far atoms may be from where an operation of the Hamiltonian wants them: a coordinate with a
-wrong digit, or a structure taken from before a relaxation."""
+from topovet.symmetry.spacegroup import name_group, name_magnetic_group
 
 
 def measure_group(
@@ -81,7 +75,7 @@ def measure_group(
         Occupied bands; None where unknown, and nothing is then said about bands.
     """
     probe = prepare_probe(model, bloch, unshifted_bloch, crystal.periodic, mp_grid, filling)
-    structure = _Operations(crystal.cell, space_group.rotations, space_group.translations)
+    structure = OperationGroup(crystal.cell, space_group.rotations, space_group.translations)
     tests, operators = _test_structure(probe, structure, basis, crystal)
     holds = np.array([test.holds for test in tests])
     own = _found_group(structure, tests, holds)
@@ -89,7 +83,7 @@ def measure_group(
     if filling is not None:
         passes = np.array([bool(test.in_bands) for test in tests])
         in_bands = _found_group(structure, tests, passes)
-    beyond = _beyond_structure(probe, structure, holds, basis, crystal)
+    beyond = find_beyond_structure(probe, structure, holds, basis, crystal)
     grey = holds[structure.n]  # time reversal is then left to itself: it commutes with the rest
     members = [i for i in own.members if not (grey and tests[i].antiunitary)]
     return GroupTest(
@@ -111,50 +105,8 @@ def measure_group(
     )
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Operations:
-    """A group of unitary operations, and their products with time reversal behind them.
-
-    The latter are ordered as in `GroupTest.tests`: Theta itself, then the others.
-    """
-
-    cell: FloatArray
-    rotations: IntArray
-    translations: FloatArray
-
-    @property
-    def n(self) -> int:
-        return len(self.rotations)
-
-    def name(self, i: int, *, antiunitary: bool = False) -> str:
-        w, t = self.rotations[i], self.translations[i]
-        return name_operation(w, t, self.cell, antiunitary=antiunitary)
-
-    def has_near(self, operator: WannierOperator, reach_ang: float) -> BoolArray:
-        """(n,) which of them equal another operation but for a small shift of the origin."""
-        apart = self.translations - operator.translation
-        near = np.linalg.norm((apart - np.round(apart)) @ self.cell, axis=1) < reach_ang
-        return np.asarray(near & np.all(self.rotations == operator.rotation, axis=(1, 2)))
-
-    @property
-    def reversed_order(self) -> list[int]:
-        """Unitary part of each product with time reversal, the identity first."""
-        neutral = np.flatnonzero(
-            same_operation(
-                np.eye(3, dtype=np.int64), np.zeros(3), self.rotations, self.translations
-            )
-        )
-        return [*neutral.tolist(), *(i for i in range(self.n) if i not in neutral)]
-
-    def with_reversed(self) -> tuple[IntArray, FloatArray, BoolArray]:
-        """Rotations, translations and antiunitarity of all of them."""
-        order = [*range(self.n), *self.reversed_order]
-        antiunitary = np.arange(2 * self.n) >= self.n
-        return self.rotations[order], self.translations[order], antiunitary
-
-
 def _test_structure(
-    probe: Probe, structure: _Operations, basis: OrbitalBasis, crystal: Crystal
+    probe: Probe, structure: OperationGroup, basis: OrbitalBasis, crystal: Crystal
 ) -> tuple[list[OperationTest], dict[int, WannierOperator]]:
     """Tests in the order of `GroupTest.tests`, and the operators of those that have one."""
     built = build_operators(basis, crystal, structure.rotations, structure.translations)
@@ -176,12 +128,42 @@ def _test_structure(
         if operator is not None:
             at[len(tests)] = operator
         tests.append(test)
-    return tests, at
+    return _without_empty_evidence(tests, kramers, crystal.periodic), at
+
+
+def _without_empty_evidence(
+    tests: list[OperationTest], kramers: bool, periodic: tuple[bool, bool, bool]
+) -> list[OperationTest]:
+    """Tests with `in_bands` withdrawn where equal energies follow from operations that hold.
+
+    E(gk) = E(k) says something of g only if no operation that holds takes k to gk. The inversion
+    beside time reversal has evidence of its own in the pairs that both demand.
+    """
+    actions = [_k_action(test, periodic) for test in tests]
+    held = [action for test, action in zip(tests, actions, strict=True) if test.holds]
+    if any(test.holds and test.antiunitary and np.trace(test.rotation) == 3 for test in tests):
+        held += [-action for action in held]  # products with time reversal are not listed
+    known = {action.tobytes() for action in held}
+    return [
+        replace(test, in_bands=None)
+        if test.in_bands
+        and not test.holds
+        and action.tobytes() in known
+        and not (kramers and np.trace(test.rotation) == -3)
+        else test
+        for test, action in zip(tests, actions, strict=True)
+    ]
+
+
+def _k_action(test: OperationTest, periodic: tuple[bool, bool, bool]) -> IntArray:
+    """W, or -W with time reversal, along periodic directions: equal where all k' = k W^-1 are."""
+    sign, kept = -1 if test.antiunitary else 1, np.flatnonzero(periodic)
+    return np.asarray(sign * test.rotation[np.ix_(kept, kept)], dtype=np.int64)
 
 
 def _test_reversed(
     probe: Probe,
-    structure: _Operations,
+    structure: OperationGroup,
     i: int,
     at: dict[int, WannierOperator],
     built: OperatorSet,
@@ -198,7 +180,7 @@ def _test_reversed(
 
 
 def _missing(
-    structure: _Operations, i: int, reason: str, *, antiunitary: bool = False
+    structure: OperationGroup, i: int, reason: str, *, antiunitary: bool = False
 ) -> OperationTest:
     return untested(
         structure.name(i, antiunitary=antiunitary),
@@ -210,7 +192,7 @@ def _missing(
 
 
 def _found_group(
-    structure: _Operations, tests: list[OperationTest], passes: BoolArray
+    structure: OperationGroup, tests: list[OperationTest], passes: BoolArray
 ) -> FoundGroup:
     """The largest group among what passes, with its names.
 
@@ -238,68 +220,3 @@ def _found_group(
     return FoundGroup(
         tuple(listed.tolist()), number, symbol, magnetic, tuple(tests[i].name for i in dropped)
     )
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Beyond:
-    tests: tuple[OperationTest, ...]
-    number: int
-    symbol: str
-    n_candidates: int
-
-
-def _beyond_structure(
-    probe: Probe, structure: _Operations, holds: BoolArray, basis: OrbitalBasis, crystal: Crystal
-) -> _Beyond:
-    """Operations of a slightly moved structure, or one of one kind of atoms, that H has.
-
-    Of the groups so found the largest is told.
-    """
-    best, size, n_candidates = _Beyond((), 0, "", 0), int(holds[: structure.n].sum()), 0
-    for symprec in LOOSE_ANG:
-        for one_kind in (False, True):
-            rotations, translations = find_candidate_operations(crystal, symprec, one_kind=one_kind)
-            if len(rotations) <= structure.n:
-                continue
-            candidates = _Operations(crystal.cell, rotations, translations)
-            new, passes = _test_candidates(
-                probe, candidates, structure, holds, basis, crystal, symprec
-            )
-            n_candidates = max(n_candidates, len(rotations) - structure.n)
-            table, _ = multiplication_table(rotations, translations, np.zeros(len(rotations), bool))
-            members = largest_closed_subset(table, passes, np.zeros(len(rotations)))
-            if len(members) > size:
-                size = len(members)
-                name = name_group(
-                    rotations[members], translations[members], crystal.cell, symprec=symprec
-                )
-                found = tuple(new[i] for i in members.tolist() if i in new)
-                best = _Beyond(found, *name, 0)
-    return _Beyond(best.tests, best.number, best.symbol, n_candidates)
-
-
-def _test_candidates(
-    probe: Probe,
-    candidates: _Operations,
-    structure: _Operations,
-    holds: BoolArray,
-    basis: OrbitalBasis,
-    crystal: Crystal,
-    symprec: float,
-) -> tuple[dict[int, OperationTest], BoolArray]:
-    """Tests of candidates that hold and are not the structure's; which candidates hold at all."""
-    reach = symprec + SITE_TOLERANCE_ANG
-    built = build_operators(
-        basis, crystal, candidates.rotations, candidates.translations, site_tolerance_ang=reach
-    )
-    new, passes = {}, np.zeros(candidates.n, dtype=bool)
-    for i, operator in zip(built.indices.tolist(), built.operators, strict=True):
-        known = structure.has_near(operator, 2 * reach)
-        if known.any():
-            passes[i] = holds[: structure.n][known].any()
-        elif quick_violation_mev(probe, operator) <= HOLDS_MEV:
-            test = measure_operation(probe, operator, candidates.name(i))
-            passes[i] = test.holds
-            if test.holds:
-                new[i] = test
-    return new, passes

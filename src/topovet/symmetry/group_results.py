@@ -37,7 +37,9 @@ class OperationTest:
     holds
         The operator: `judged_mev` is within the tolerance.
     in_bands
-        The energies: `judged_shift_mev` is; None where it is unknown.
+        The energies: `judged_shift_mev` is. None without a filling, and where the energies know
+        nothing of the operation because one that holds takes each k to the same k' (C2 Θ and an
+        inversion together do what C2 does).
     """
 
     name: str
@@ -113,8 +115,7 @@ class GroupTest:
     own
         The operations that hold.
     in_bands
-        Those that the energies of the occupied bands have; None without a filling. The energies
-        cannot tell an operation from its product with inversion where time reversal holds.
+        Those that the energies of the occupied bands have; None without a filling.
     additional
         Operations the Hamiltonian has and the structure lacks, tested where those that hold are.
     larger_number, larger_symbol

@@ -50,10 +50,16 @@ MAX_MISFIT = 0.25
 iodine taken for each other has 0.30."""
 
 LEAST_PURITY = 0.8
-"""Least |eigenvalue| of the operator's Hermitian part before it is made an involution."""
+"""Least overlap of the operator, after P^2 = 1 was imposed, with the solutions it is made of."""
 
 FREE_SPIN_GAIN = 100.0
 """The blocks may act on spin where that lowers the squared misfit by this factor."""
+
+FREE_SPIN_UNKNOWNS = 1500
+"""Largest number of elements of such blocks for which that is tried: some seconds."""
+
+SAME_RESIDUAL_MEV = 10.0
+"""An operator with a residual below this is an alternative to one that fits better."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -85,7 +91,7 @@ class InferredInversion:
     max_residual_mev
         Spectral norm of (P H P^-1 - H)(R), largest over R.
     purity
-        Least |eigenvalue| of the operator's Hermitian part before P^2 = 1 was imposed.
+        Overlap of the operator, after unitarity and P^2 = 1 were imposed, with the solutions.
     acts_on_spin
         Whether the blocks had to be left free to act on spin.
     bond_cut, n_bonds
@@ -220,7 +226,7 @@ def _solve(
         return solve_blocks(model, sites, images, spin=1), False
     _check_spin_pairs(sites)
     keeping = solve_blocks(model, sites, images, spin=2)
-    if keeping.misfit <= GOOD_MISFIT:
+    if keeping.misfit <= GOOD_MISFIT or (sites.counts**2).sum() > FREE_SPIN_UNKNOWNS:
         return keeping, False
     # localised functions may mix the spins, each pair in its own way
     free = solve_blocks(model, sites, images, spin=1)
@@ -277,7 +283,7 @@ def _judge(solution: BlockSolution, purity: float) -> tuple[str, str]:
             f"{100 * MAX_MISFIT:.0f} %)"
         )
     if purity < LEAST_PURITY:
-        return "refused", f"the best operator is no involution (|parity| down to {purity:.2f})"
+        return "refused", f"the best operator is no involution (overlap {purity:.2f} with one)"
     if ratio < GOOD_RATIO:
         return "doubtful", f"the best blocks stand out little (eigenvalue ratio {ratio:.2g})"
     if misfit > GOOD_MISFIT:
@@ -297,7 +303,7 @@ def _alternatives(
     found = []
     for matrix in sign_alternatives(operator.matrix, solution.vectors):
         other = _with_matrix(operator, _signed(matrix))
-        limit = max(SAME_MISFIT * rms_mev, 10.0)
+        limit = max(SAME_MISFIT * rms_mev, SAME_RESIDUAL_MEV)
         if residuals_mev(model, other)[0] <= limit:
             found.append(other)
     return tuple(found)

@@ -221,9 +221,7 @@ def _solve(problem: _Problem, cut: float) -> BlockSolution:
     n_solutions, ratio = _count_solutions(values, len(normal))
     misfit = np.sqrt(values[0] * len(problem.order) / weight) if weight > 0 else 0.0
     blocks = [_unpack(problem, vectors[:, i]) for i in range(min(n_solutions, MAX_SOLUTIONS))]
-    return BlockSolution(
-        np.array(blocks), values, n_solutions, ratio, float(misfit), cut, n_bonds
-    )
+    return BlockSolution(np.array(blocks), values, n_solutions, ratio, float(misfit), cut, n_bonds)
 
 
 def _count_solutions(values: FloatArray, n_unknowns: int) -> tuple[int, float]:

@@ -6,6 +6,7 @@ stands for all its products with lattice translations.
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from fractions import Fraction
 from math import gcd
 
@@ -175,3 +176,52 @@ def _fraction_text(number: float) -> str:
     if abs(float(nearest) - number % 1.0) < 1e-3:
         return str(nearest % 1)
     return f"{number % 1.0:.4f}"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OperationGroup:
+    """A group of unitary operations, and their products with time reversal behind them.
+
+    The latter are ordered as in `GroupTest.tests`: Theta itself, then the others.
+
+    Attributes
+    ----------
+    cell
+        (3, 3) angstrom, lattice vectors as rows.
+    rotations, translations
+        (n, 3, 3) and (n, 3), closed modulo lattice translations.
+    """
+
+    cell: FloatArray
+    rotations: IntArray
+    translations: FloatArray
+
+    @property
+    def n(self) -> int:
+        return len(self.rotations)
+
+    def name(self, i: int, *, antiunitary: bool = False) -> str:
+        w, t = self.rotations[i], self.translations[i]
+        return name_operation(w, t, self.cell, antiunitary=antiunitary)
+
+    def has_near(self, rotation: IntArray, translation: FloatArray, reach_ang: float) -> BoolArray:
+        """(n,) which of them equal another operation but for a small shift of the origin."""
+        apart = self.translations - translation
+        near = np.linalg.norm((apart - np.round(apart)) @ self.cell, axis=1) < reach_ang
+        return np.asarray(near & np.all(self.rotations == rotation, axis=(1, 2)))
+
+    @property
+    def reversed_order(self) -> list[int]:
+        """Unitary part of each product with time reversal, the identity first."""
+        neutral = np.flatnonzero(
+            same_operation(
+                np.eye(3, dtype=np.int64), np.zeros(3), self.rotations, self.translations
+            )
+        )
+        return [*neutral.tolist(), *(i for i in range(self.n) if i not in neutral)]
+
+    def with_reversed(self) -> tuple[IntArray, FloatArray, BoolArray]:
+        """Rotations, translations and antiunitarity of all of them."""
+        order = [*range(self.n), *self.reversed_order]
+        antiunitary = np.arange(2 * self.n) >= self.n
+        return self.rotations[order], self.translations[order], antiunitary

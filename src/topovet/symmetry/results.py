@@ -46,12 +46,19 @@ class SpinOrder:
         Violation of time reversal in either order, meV; None for an odd number of functions.
     spinless_mev
         Violation of time reversal without spin, H(-k) = H(k)*, meV.
+    swapped_pairs
+        Orbitals (0-based, two functions each) whose up and down change places in the reading that
+        suits time reversal best; empty where none does, or where an order as such already holds.
+    swapped_mev
+        Violation of time reversal with these turned round, meV; None where it was not needed.
     """
 
     found: str
     interlaced_mev: float | None
     block_mev: float | None
     spinless_mev: float
+    swapped_pairs: tuple[int, ...] = ()
+    swapped_mev: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

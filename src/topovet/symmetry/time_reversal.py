@@ -8,6 +8,7 @@ other ("interlaced"); some interfaces write all up, then all down ("block").
 from __future__ import annotations
 
 import numpy as np
+from scipy.sparse.csgraph import connected_components
 
 from topovet.arrays import ComplexArray, FloatArray, largest_spectral_norm
 from topovet.model.fourier import BlochSum
@@ -42,7 +43,8 @@ def find_spin_order(
 
     "interlaced", Wannier90's own, stays unless "block" is better by a factor of ten. A Hamiltonian
     that is declared spinless stays so, but both orders are measured: if time reversal fails for it
-    and holds with spin, the declaration is wrong.
+    and holds with spin, the declaration is wrong. Where neither order has time reversal, up and
+    down may be interchanged in some orbitals only; which, the Hamiltonian says itself.
 
     Parameters
     ----------
@@ -62,7 +64,36 @@ def find_spin_order(
     interlaced = _violation_mev(h_k, h_minus, "interlaced")
     block = _violation_mev(h_k, h_minus, "block")
     found = "block" if block < 0.1 * interlaced else "interlaced"
-    return SpinOrder(found if spinful else "none", interlaced, block, spinless)
+    if not spinful or min(interlaced, block) <= TOLERANCE_MEV:
+        return SpinOrder(found if spinful else "none", interlaced, block, spinless)
+    signs = _pair_signs(h_k, h_minus)
+    swapped = _violation_mev(h_k, h_minus, "interlaced", signs)
+    pairs = tuple(int(i) for i in np.flatnonzero(signs < 0))
+    return SpinOrder(found, interlaced, block, spinless, pairs, swapped)
+
+
+def _pair_signs(h_k: ComplexArray, h_minus: ComplexArray) -> FloatArray:
+    """(n_orb / 2,) signs s with which Theta H(k) Theta^-1 and H(-k) agree best, mostly +1.
+
+    Up and down of an orbital interchanged, like a sign of one of them, turn its block i sigma_y of
+    Theta into -i sigma_y. The block of orbitals i, j of Theta H(k) Theta^-1 is then s_i s_j times
+    that of H(-k), and s is the leading eigenvector of their overlaps, coupled set by coupled set.
+    """
+    n = h_k.shape[1] // 2
+    u = spin_operator(2 * n, "interlaced")
+    product = (u @ h_k.conj() @ u.T) * h_minus.conj()
+    overlap = product.real.sum(axis=0).reshape(n, 2, n, 2).sum(axis=(1, 3))
+    overlap = 0.5 * (overlap + overlap.T)
+    np.fill_diagonal(overlap, 0.0)
+    coupled = np.abs(overlap) > 1e-6 * np.abs(overlap).max(initial=0.0)
+    signs = np.ones(n)
+    n_sets, member = connected_components(coupled)
+    for i in range(n_sets):
+        rows = np.flatnonzero(member == i)
+        leading = np.linalg.eigh(overlap[np.ix_(rows, rows)])[1][:, -1]
+        chosen = np.where(leading < 0, -1.0, 1.0)
+        signs[rows] = chosen if chosen.sum() >= 0 else -chosen
+    return signs
 
 
 def measure_time_reversal(
@@ -128,8 +159,12 @@ def infer_spin(bloch: BlochSum) -> bool | None:
     return spinful if spinless != spinful else None
 
 
-def _violation_mev(h: ComplexArray, h_reversed: ComplexArray, spin_order: str) -> float:
+def _violation_mev(
+    h: ComplexArray, h_reversed: ComplexArray, spin_order: str, signs: FloatArray | None = None
+) -> float:
     u = spin_operator(h.shape[1], spin_order)
+    if signs is not None:
+        u = np.repeat(signs, 2)[:, None] * u
     return MEV_PER_EV * largest_spectral_norm(u @ h.conj() @ u.T - h_reversed)
 
 

@@ -156,7 +156,8 @@ def _without_kramers(findings: Findings) -> Conclusion:
             class_ = "axion-candidate"
         grounds.append("eta = 2 mod 4: an axion candidate where all Chern numbers vanish")
     elif class_ == "undetermined" and values is not None and findings.spinful:
-        class_ = "trivial"
+        # a topological insulator whose time reversal a field or noise breaks has these values too
+        grounds.append("what broken time reversal leaves of a Z2 phase was not tested")
     if findings.chern is not None and chern is None:
         grounds.append(f"Chern numbers: {findings.chern.reason}")
     invariants = InvariantsEntry(

@@ -8,18 +8,58 @@ import numpy as np
 
 from topovet.notation import mev
 from topovet.verdict import criteria
+from topovet.verdict.budget import robustness_radius
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 
 
 def intake_flags(findings: Findings) -> Iterator[Flag]:
-    """All flags of this kind that are raised."""
+    """All flags of this kind that are raised, causes before what may follow from them."""
+    yield from _digits(findings)
     yield from _hermiticity(findings)
     yield from _duplicates(findings)
     yield from _missing_partners(findings)
+    yield from _structure(findings)
     yield from _range(findings)
     yield from _centres(findings)
-    yield from _structure(findings)
+
+
+def _digits(findings: Findings) -> Iterator[Flag]:
+    """The digits of the file alone: too few for the gap, or for what was measured with them."""
+    rounding, gap = findings.audit.rounding_mev, findings.gap
+    radius = robustness_radius(findings)
+    fatal = radius is not None and rounding >= radius
+    if gap is not None and gap.status in ("gapless", "unresolved"):
+        fatal = False  # the gap has a flag of its own, and no digits would help
+    explained = _explained_by_digits(findings)
+    if not fatal and not explained:
+        return
+    yield Flag(
+        "inside-error-bar",
+        "error" if fatal else "warning",
+        f"the printed digits of H(R) leave an error of up to {mev(rounding)}"
+        + (f", the robustness radius is {mev(radius)}" if fatal and radius is not None else "")
+        + (f"; this may be all that stands behind {' and '.join(explained)}" if explained else "")
+        + ".",
+        {"rounding_meV": rounding, "radius_meV": radius},
+        "Write the Hamiltonian with all its digits (Wannier90 prints six decimals).",
+    )
+
+
+def _explained_by_digits(findings: Findings) -> list[str]:
+    """Violations that are flagged though rounding allows them: |S E S^-1 - E| <= 2 |E|."""
+    rounding, check = findings.audit.rounding_mev, findings.interpolation
+    mesh = None if check is None else check.mesh_occupied_mev
+    measured = (
+        (findings.time_reversal.violation_mev, criteria.SYMMETRY_MEV, 2, "broken time reversal"),
+        (findings.inversion.violation_mev, criteria.SYMMETRY_MEV, 2, "broken inversion"),
+        (mesh, criteria.MESH_ENERGY_MEV, 1, "wrong energies on the mesh"),
+    )
+    return [
+        what
+        for value, limit, factor, what in measured
+        if value is not None and limit < value <= factor * rounding
+    ]
 
 
 def _hermiticity(findings: Findings) -> Iterator[Flag]:
@@ -71,19 +111,14 @@ def _missing_partners(findings: Findings) -> Iterator[Flag]:
 
 
 def _range(findings: Findings) -> Iterator[Flag]:
-    audit, decay = findings.audit, findings.decay
+    audit = findings.audit
     points, total = audit.mesh_points, audit.degeneracy_sum
-    if points is not None and abs(total - points) > 1e-6 and _is_wigner_seitz(findings):
-        yield Flag(
-            "range-truncated",
-            "error",
-            f"the degeneracies of the R vectors add up to {total:.3f}, not to the {points} points "
-            "of the mesh: R vectors are missing or the mesh is another one, so that not even the "
-            "energies on the mesh are right.",
-            {"degeneracy_sum": total, "mesh_points": points},
-            "Use the _hr.dat and the .win file of the same run, with all R vectors.",
-        )
-    elif points is not None and total < points - 1e-6:
+    missed = _missed_on_mesh_mev(findings)
+    if points is None:
+        return
+    if abs(total - points) > 1e-6 and (_is_wigner_seitz(findings) or missed is not None):
+        yield _wrong_number_of_r(findings, missed)
+    elif total < points - 1e-6:
         yield Flag(
             "range-truncated",
             "warning",
@@ -92,17 +127,50 @@ def _range(findings: Findings) -> Iterator[Flag]:
             {"n_r": audit.n_r, "mesh_points": points},
             "Use the _hr.dat that Wannier90 wrote, with all R vectors.",
         )
-    elif decay.rim_mev is not None and decay.rim_mev > (
-        criteria.RIM_RATIO * decay.largest_hopping_mev
-    ):
+    elif audit.n_zero_r and audit.weakest_block_mev > criteria.ZERO_BLOCK_MEV:
         yield Flag(
             "range-truncated",
-            "warning",
-            f"hoppings of {mev(decay.rim_mev)} remain beyond {decay.rim_ang:.1f} angstrom, at "
-            "the rim of the supercell of the mesh: interpolated bands carry errors of that size.",
-            {"rim_meV": decay.rim_mev, "largest_hopping_meV": decay.largest_hopping_mev},
-            "Repeat the Wannier90 run on a denser mesh and compare.",
+            "warning" if missed is None else "error",
+            f"the blocks of {audit.n_zero_r} R vectors are zero to the last digit, while the "
+            f"weakest other one holds {mev(audit.weakest_block_mev)}: they were cut off, not "
+            "decayed"
+            + ("." if missed is None else f", and energies on the mesh miss by {mev(missed)}."),
+            {
+                "n_zero_r": audit.n_zero_r,
+                "weakest_block_meV": audit.weakest_block_mev,
+                "mesh_occupied_meV": missed,
+            },
+            "Use the _hr.dat that Wannier90 wrote, without any cut-off.",
         )
+
+
+def _wrong_number_of_r(findings: Findings, missed_mev: float | None) -> Flag:
+    audit = findings.audit
+    evidence = (
+        "not even the energies on the mesh are right"
+        if missed_mev is None
+        else f"the energies on the mesh are wrong by up to {mev(missed_mev)}"
+    )
+    return Flag(
+        "range-truncated",
+        "error",
+        f"the degeneracies of the R vectors add up to {audit.degeneracy_sum:.3f}, not to the "
+        f"{audit.mesh_points} points of the mesh: R vectors or their degeneracies are missing, or "
+        f"the mesh is another one, so that {evidence}.",
+        {
+            "degeneracy_sum": audit.degeneracy_sum,
+            "mesh_points": audit.mesh_points,
+            "mesh_occupied_meV": missed_mev,
+        },
+        "Use the _hr.dat and the .win file of the same run, with all R vectors.",
+    )
+
+
+def _missed_on_mesh_mev(findings: Findings) -> float | None:
+    """By how much the energies of the .eig file are missed; None where they are met or absent."""
+    check = findings.interpolation
+    missed = None if check is None else check.mesh_occupied_mev
+    return missed if missed is not None and missed > criteria.MESH_ENERGY_MEV else None
 
 
 def _is_wigner_seitz(findings: Findings) -> bool:

@@ -11,11 +11,12 @@ from topovet.verdict.flags import Flag
 
 
 def spectrum_flags(findings: Findings) -> Iterator[Flag]:
-    """Filling, Fermi energy, gap, interpolation."""
+    """Filling, Fermi energy, gap, interpolation; what is measured before what is estimated."""
     yield from _filling(findings)
     yield from _fermi(findings)
     yield from _gap(findings)
     yield from _interpolation(findings)
+    yield from _rim(findings)
 
 
 def _filling(findings: Findings) -> Iterator[Flag]:
@@ -114,3 +115,17 @@ def _interpolation(findings: Findings) -> Iterator[Flag]:
             {"path_occupied_meV": path, "path_all_meV": check.path_all_mev},
             "Give the _wsvec.dat file of the same run.",
         )
+
+
+def _rim(findings: Findings) -> Iterator[Flag]:
+    decay = findings.decay
+    if decay.rim_mev is None or decay.rim_mev <= criteria.RIM_RATIO * decay.largest_hopping_mev:
+        return
+    yield Flag(
+        "range-truncated",
+        "warning",
+        f"hoppings of {mev(decay.rim_mev)} remain beyond {decay.rim_ang:.1f} angstrom, at the rim "
+        "of the supercell of the mesh: interpolated bands carry errors of that size.",
+        {"rim_meV": decay.rim_mev, "largest_hopping_meV": decay.largest_hopping_mev},
+        "Repeat the Wannier90 run on a denser mesh and compare.",
+    )

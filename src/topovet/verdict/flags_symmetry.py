@@ -14,14 +14,14 @@ from topovet.verdict.flags import Flag
 
 
 def symmetry_flags(findings: Findings) -> Iterator[Flag]:
-    """Spin order, time reversal, spin-orbit coupling, inversion."""
+    """Spin, time reversal, centre and orbitals as declared, then what may follow from them."""
     yield from _spin_order(findings)
     yield from _time_reversal(findings)
     yield from _spin_orbit(findings)
-    yield from _inversion(findings)
-    yield from _declaration(findings)
-    yield from _group(findings)
     yield from _centre(findings)
+    yield from _declaration(findings)
+    yield from _inversion(findings)
+    yield from _group(findings)
 
 
 def _spin_order(findings: Findings) -> Iterator[Flag]:
@@ -36,6 +36,8 @@ def _spin_order(findings: Findings) -> Iterator[Flag]:
             {"spinless_meV": order.spinless_mev, "spinful_meV": best},
             "Set spinors = true in the .win file.",
         )
+    if order.swapped_pairs and order.swapped_mev is not None and order.swapped_mev <= limit:
+        yield _swapped_pairs(order.swapped_pairs, order.swapped_mev, order.interlaced_mev)
     if order.found != "block":
         return
     yield Flag(
@@ -46,6 +48,19 @@ def _spin_order(findings: Findings) -> Iterator[Flag]:
         "Wannier90's. The order found is used.",
         {"block_meV": order.block_mev, "interlaced_meV": order.interlaced_mev},
         "Reorder the file to up, down of each orbital, or keep it and mind this in other tools.",
+    )
+
+
+def _swapped_pairs(pairs: tuple[int, ...], swapped: float, as_is: float | None) -> Flag:
+    shown = ", ".join(f"{2 * i + 1} and {2 * i + 2}" for i in pairs[:6])
+    return Flag(
+        "spin-order-mismatch",
+        "error",
+        f"{len(pairs)} orbitals have spin up and down interchanged, or phases that are not real "
+        f"(functions {shown}{', …' if len(pairs) > 6 else ''}): with them turned round time "
+        f"reversal holds to {mev(swapped)}.",
+        {"orbitals": list(pairs), "swapped_meV": swapped, "interlaced_meV": as_is},
+        "Bring all orbitals to the order up, down, as the projections declare them.",
     )
 
 
@@ -61,7 +76,7 @@ def _time_reversal(findings: Findings) -> Iterator[Flag]:
     if not test.present:
         yield Flag(
             "time-reversal-broken",
-            "warning",
+            _worse_without_gap(findings),
             f"the Hamiltonian breaks time reversal by {mev(test.violation_mev)} in either spin "
             "order; Z2 indices do not exist for it.",
             evidence,
@@ -85,7 +100,7 @@ def _spin_orbit(findings: Findings) -> Iterator[Flag]:
     if not findings.spinful:
         yield Flag(
             "no-spin-orbit",
-            "warning",
+            _worse_without_gap(findings),
             "the Hamiltonian is spinless: it has no spin-orbit coupling and no Z2 indices.",
             {"spinors": False},
             "Repeat the first-principles run with spin-orbit coupling (spinors = true).",
@@ -93,12 +108,18 @@ def _spin_orbit(findings: Findings) -> Iterator[Flag]:
     elif mixing is not None and mixing < criteria.SPIN_MIXING_MEV:
         yield Flag(
             "no-spin-orbit",
-            "warning",
+            _worse_without_gap(findings),
             f"up and down are uncoupled and equal to {mixing:.2g} meV: the run had no spin-orbit "
             "coupling, and the indices are those of a Hamiltonian without it.",
             {"spin_mixing_meV": mixing},
             "Repeat the first-principles run with spin-orbit coupling (spinors = true).",
         )
+
+
+def _worse_without_gap(findings: Findings) -> str:
+    """A warning; where the gap closes as well, this may be why, and it comes before that."""
+    closed = findings.gap is not None and findings.gap.status in ("gapless", "unresolved")
+    return "error" if closed else "warning"
 
 
 def _inversion(findings: Findings) -> Iterator[Flag]:

@@ -115,8 +115,9 @@ def _error_bar(findings: Findings) -> Iterator[Flag]:
         return
     budget = error_budget(findings)
     total = total_error(budget)
-    if total < radius:
-        return
+    rounding = budget["rounding"]
+    if total < radius or (rounding is not None and rounding >= radius):
+        return  # digits too few for the gap have a flag of their own
     yield Flag(
         "inside-error-bar",
         "warning",

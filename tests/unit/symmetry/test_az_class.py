@@ -119,7 +119,7 @@ def test_classes_of_the_literature(
 
 
 def test_sublattices_of_graphene_and_their_violation() -> None:
-    """Hopping t2 between next neighbours adds 2 t2 cos k to both sublattices, S H S + H twice it."""
+    """Hopping t2 to next neighbours adds 2 t2 cos k on both sublattices; S H S + H is twice it."""
     found = class_of(graphene(), PLANE)
     assert found.colours == (1, -1)
     assert (found.time_reversal, found.particle_hole, found.sublattice) == (1, 1, 1)

@@ -65,7 +65,7 @@ def test_structure_file_with_another_origin_is_found_out(model: object) -> None:
 def test_structure_that_agrees_has_no_shift() -> None:
     model = fu_kane_mele()
     sites = declared_sites(model.basis.positions_frac, model.crystal)
-    other_centre = np.array([model.centre]) + [0.5, 0, 0.5]
+    other_centre = np.array([model.centre]) + np.array([0.5, 0, 0.5])
     (trial,) = search_centres(
         model.tight_binding(), model.crystal, sites, other_centre, spinful=True
     )
@@ -81,7 +81,7 @@ def test_common_shift_of_scattered_centres() -> None:
     rng = np.random.default_rng(0)
     crystal = Crystal(6 * np.eye(3), (), ())
     declared = rng.random((12, 3))
-    moved = declared + [0.2, 0.0, -0.1] + rng.integers(-2, 3, (12, 3))
+    moved = declared + np.array([0.2, 0.0, -0.1]) + rng.integers(-2, 3, (12, 3))
     scattered = moved + rng.uniform(-0.02, 0.02, (12, 3))
     found = common_shift(scattered, declared, crystal)
     assert found is not None
@@ -97,9 +97,7 @@ def test_atoms_are_not_asked() -> None:
     model = atomic_insulator()
     sites = declared_sites(model.basis.positions_frac, model.crystal)
     other = replace(model.crystal, positions_frac=np.array([[0, 0, 0], [0.5, 0.5, 0.3]]))
-    (trial,) = search_centres(
-        model.tight_binding(), other, sites, np.zeros((0, 3)), spinful=True
-    )
+    (trial,) = search_centres(model.tight_binding(), other, sites, np.zeros((0, 3)), spinful=True)
     assert trial.inferred.reliability == "good"
     assert trial.shift_frac is None
     assert not trial.in_structure

@@ -184,7 +184,8 @@ def test_centre_that_is_none_is_answered_with_one_that_is() -> None:
 
 
 def test_declared_positions_from_another_origin() -> None:
-    moved = replace(MODEL.basis, positions_frac=MODEL.basis.positions_frac + [0.1, 0, 0.05])
+    positions = MODEL.basis.positions_frac + np.array([0.1, 0, 0.05])
+    moved = replace(MODEL.basis, positions_frac=positions)
     found = check(moved)
     assert found.shift_frac is not None
     np.testing.assert_allclose(found.shift_frac, [-0.1, 0, -0.05], atol=1e-9)

@@ -27,7 +27,7 @@ def test_phase_and_scale_of_a_solution_do_not_matter() -> None:
 
 def test_matrix_that_is_no_involution_has_low_purity() -> None:
     cube_roots = np.diag(np.exp(2j * np.pi * np.arange(3) / 3))
-    assert involution(cube_roots[None])[1] < 0.6
+    assert involution(cube_roots[None])[1] < 0.8
 
 
 def test_solution_that_leaves_functions_out_has_no_purity() -> None:
@@ -36,7 +36,11 @@ def test_solution_that_leaves_functions_out_has_no_purity() -> None:
 
 def test_several_solutions_are_combined_and_told_apart() -> None:
     """Three decoupled sets: whatever mixtures are handed over, P and its two flips come back."""
-    rng = np.random.default_rng(5)
+    for seed in range(5):
+        _check_three_sets(np.random.default_rng(seed))
+
+
+def _check_three_sets(rng: np.random.Generator) -> None:
     parts = [_involution(rng, n) for n in (4, 2, 2)]
     blocks = np.zeros((3, 8, 8), dtype=complex)
     start = 0
@@ -45,7 +49,7 @@ def test_several_solutions_are_combined_and_told_apart() -> None:
         start += len(part)
     mixed = np.tensordot(random_unitary(rng, 3), blocks, axes=1)
     found, purity = involution(mixed)
-    assert purity > 0.3
+    assert purity > 1 - 1e-9
     np.testing.assert_allclose(found @ found, np.eye(8), atol=1e-10)
     flips = sign_alternatives(found, mixed)
     assert len(flips) == 2

@@ -150,10 +150,23 @@ def test_lost_inversion_shows_in_the_pairs_of_bands() -> None:
     turn = named(group, "6+ [0 0 1]")
     assert turn.status == "holds"
     assert group.own.symbol == "P6mm"
-    # the mirror in the layer passes by E(-k) = E(k) alone, and still the right group is named
-    assert named(group, "m [0 0 1]").status == "bands-only"
+    # E(m k) = E(k) for the mirror in the layer follows from C2 and time reversal: no evidence
+    mirror = named(group, "m [0 0 1]")
+    assert mirror.band_shift_mesh_mev < 1e-9
+    assert (mirror.in_bands, mirror.status) == (None, "broken")
     assert group.in_bands is not None
     assert group.in_bands.symbol == "P6mm"
+
+
+def test_bands_of_a_layer_know_nothing_of_its_own_mirror() -> None:
+    """A field in the plane breaks the mirror z -> -z, which leaves every k of the layer alone."""
+    layer = kane_mele()
+    built = changed(layer, (0, 0, 0), 0.1 * np.kron(np.eye(2), np.array([[0, 1], [1, 0]])))
+    group = group_of(layer, built=built, mesh=(6, 6, 1), filling=2)
+    mirror = named(group, "m [0 0 1]")
+    assert mirror.judged_mev > 100
+    assert mirror.band_shift_mesh_mev == pytest.approx(0, abs=1e-9)
+    assert (mirror.in_bands, mirror.status) == (None, "broken")
 
 
 def test_ferromagnet_has_a_magnetic_group() -> None:
@@ -166,6 +179,13 @@ def test_ferromagnet_has_a_magnetic_group() -> None:
     assert len(group.own.members) == 16
     assert named(group, "2 [1 0 0] Θ").holds
     assert not named(group, "2 [0 0 1] Θ").holds
+    # C2x Θ and inversion make E(C2x k) = E(k), though C2x is broken: nobody blames the functions
+    turn = named(group, "2 [1 0 0]")
+    assert turn.band_shift_mesh_mev < 1e-9
+    assert (turn.in_bands, turn.status) == (None, "broken")
+    assert "Wannier functions" not in group.sentence
+    assert group.in_bands is not None
+    assert group.in_bands.magnetic == "123.345"
     assert "Time reversal is broken by 200 meV" in group.sentence
     assert group.closure_defect < 1e-13
 
