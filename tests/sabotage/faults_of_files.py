@@ -277,7 +277,7 @@ def _complex_noise(shape: tuple[int, ...]) -> FloatArray:
 
 MISREAD_SHIFTS = flags("interpolation-poor", "symmetry-broken", "centres-off")
 """Shifts that are not those of the run spoil H(k) between mesh points: bands differ from
-Wannier90's own, and symmetries with them; both flags say to give the `_wsvec.dat` file of the run."""
+Wannier90's own, and symmetries with them; both flags say to give the run's `_wsvec.dat` file."""
 
 FILE_FAULTS = (
     Fault(
