@@ -2,8 +2,8 @@
 
 Whatever was done to a case, the verdict keeps the right answer (or, where the Hamiltonian itself
 was changed, gives the one of the changed Hamiltonian), or it is undetermined, or a flag of severity
-error is raised, or the case is refused with a message. And the first flag names the right cause, but
-for the debts listed in `confusions`.
+error is raised, or the case is refused with a message. And the first flag names the right cause,
+but for the debts listed in `confusions`.
 """
 
 from __future__ import annotations
