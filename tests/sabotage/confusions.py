@@ -37,7 +37,19 @@ NEEDS_CENTRES = "needs Wannier centres for distances where no sites are declared
 NEEDS_ORIGIN = "needs the common shift of all centres against their sites told apart from a branch"
 NEEDS_FILLINGS = "needs gaps and indices at N±1, N±2"
 
-CONFUSIONS: tuple[Confusion, ...] = ()
+BROKEN = frozenset({"symmetry-broken"})
+MISJUDGED_RANGE = frozenset({"range-truncated", "inside-error-bar"})
+
+CONFUSIONS = (
+    Confusion("home-cells-moved", BROKEN, NEEDS_READINGS),
+    Confusion("projection-lines-swapped", BROKEN, NEEDS_READINGS),
+    Confusion("functions-exchanged", BROKEN, NEEDS_READINGS),
+    Confusion("parity-of-orbitals-wrong", BROKEN, NEEDS_READINGS),
+    Confusion("projection-line-lost", MISJUDGED_RANGE, NEEDS_COUNT),
+    Confusion("projections-absent", MISJUDGED_RANGE, NEEDS_CENTRES),
+    Confusion("structure-on-another-origin", frozenset({"centres-off"}), NEEDS_ORIGIN),
+    Confusion("filling-misstated-alone", frozenset({"gap-closes"}), NEEDS_FILLINGS),
+)
 
 
 def known_confusion(fault: Fault, named: str) -> str | None:
