@@ -154,7 +154,7 @@ def test_where_a_coarse_mesh_is_silently_wrong() -> None:
         )
 
     witness = wilson_of(model)
-    assert witness.n_solves < 60 * 50 / 4
+    assert witness.n_solves < 60 * 50 / 2
     assert witness.z2 == (plain(120, 80),)
     assert witness.z2 != (plain(60, 50),)
 

@@ -121,7 +121,7 @@ def test_evidence(case: str) -> None:
     """Time reversal holds in the loops themselves, at a cost far below the budget."""
     witness = wilson_of(case)
     assert len(set(witness.nu0_determinations)) == 1
-    assert witness.n_solves < 4000
+    assert witness.n_solves < 12_000
     for plane in witness.planes:
         assert plane.kramers_splitting < 1e-3
         assert plane.reversal_loss < 1e-5

@@ -294,7 +294,8 @@ class _Batch:
 
 
 def _sorted(line: IntArray, along: FloatArray, states: ComplexArray) -> LinePoints:
-    order = np.lexsort((along, line))
-    if np.array_equal(order, np.arange(len(order))):
+    """Points in order along their lines, each once: a repeated one would confuse the strips."""
+    keys, order = np.unique(line + along, return_index=True)
+    if len(keys) == len(line) and np.array_equal(order, np.arange(len(order))):
         return LinePoints(np.bincount(line), along, states)
-    return LinePoints(np.bincount(line), along[order], states[order])
+    return LinePoints(np.bincount(line[order]), along[order], states[order])

@@ -18,6 +18,7 @@ from topovet.invariants.wilson_sheet import SheetCriteria
 from topovet.model.fourier import BlochSum
 from topovet.model.plane import KPlane, invariant_planes
 from topovet.spectrum.eigen import map_threads
+from topovet.spectrum.gap import GAPLESS_EV
 
 
 def compute_wilson(
@@ -29,6 +30,7 @@ def compute_wilson(
     spinful: bool,
     criteria: SheetCriteria | None = None,
     equivalent: Sequence[Sequence[str]] = (),
+    both_ways: bool = True,
     positions_frac: FloatArray | None = None,
 ) -> WilsonWitness:
     """(nu0; nu1 nu2 nu3) in 3D, (nu,) in 2D, from Wilson loops.
@@ -48,13 +50,17 @@ def compute_wilson(
     equivalent
         Groups of plane names ("k1=0", "k2=0", …) that a symmetry maps to each other: only the
         first of each group is solved.
+    both_ways
+        Whether every plane is covered a second time with the loops along its other direction,
+        which shares hardly a k with the first: a plane on which the two differ is unresolved. A
+        plane that is unresolved the first way is given the second in any case.
     positions_frac
         See `topovet.invariants.wilson_plane.compute_wilson_plane`.
 
     Returns
     -------
     WilsonWitness
-        A plane that is unresolved is tried once more with the loops along its other direction.
+        status "ok" with the indices, or why there are none.
     """
     reason = _why_not(filling, bloch.n_orb, time_reversal=time_reversal, spinful=spinful)
     if reason:
@@ -67,19 +73,39 @@ def compute_wilson(
         raise ValueError(f"no such planes: {', '.join(sorted(unknown))}")
     to_solve = [plane for plane in planes if source.get(plane.name, plane.name) == plane.name]
 
+    def sweep(plane: KPlane) -> WilsonPlane:
+        return compute_wilson_plane(bloch, plane, filling, criteria, positions_frac=positions_frac)
+
     def solve(plane: KPlane) -> WilsonPlane:
-        first = compute_wilson_plane(bloch, plane, filling, criteria, positions_frac=positions_frac)
-        if first.status == "ok":
+        first = sweep(plane)
+        if first.status == "ok" and not both_ways:
             return first
-        second = compute_wilson_plane(
-            bloch, plane.turned(), filling, criteria, positions_frac=positions_frac
-        )
-        chosen = second if second.status == "ok" else first
-        return replace(chosen, n_solves=first.n_solves + second.n_solves)
+        return _combine(first, sweep(plane.turned()))
 
     solved = {plane.plane: plane for plane in map_threads(solve, to_solve)}
     taken = {plane.name: solved[source.get(plane.name, plane.name)] for plane in planes}
     return _conclude(taken, solved, tuple((n, s) for n, s in source.items() if n != s))
+
+
+def _combine(first: WilsonPlane, second: WilsonPlane) -> WilsonPlane:
+    """One plane covered in both directions: the first way unless only the second was resolved."""
+    chosen = second if first.z2 is None and second.z2 is not None else first
+    chosen = replace(
+        chosen,
+        n_solves=first.n_solves + second.n_solves,
+        smallest_direct_gap_ev=min(first.smallest_direct_gap_ev, second.smallest_direct_gap_ev),
+        narrowest_k=min(first, second, key=lambda p: p.smallest_direct_gap_ev).narrowest_k,
+    )
+    if chosen.smallest_direct_gap_ev < GAPLESS_EV:
+        reason = first.reason or second.reason
+        return replace(chosen, status="unresolved", reason=reason, z2=None)
+    if first.z2 is None or second.z2 is None or first.z2 == second.z2:
+        return chosen
+    reason = (
+        f"loops along the two directions disagree ({first.z2} and {second.z2}): the mesh is too "
+        "coarse for a feature of the bands"
+    )
+    return replace(chosen, status="unresolved", reason=reason, z2=None)
 
 
 def _why_not(filling: int, n_orb: int, *, time_reversal: bool, spinful: bool) -> str:

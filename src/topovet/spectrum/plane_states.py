@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -14,34 +15,38 @@ from topovet.model.plane import KPlane, bloch_on_plane
 Subspace = Callable[[FloatArray, ComplexArray], ComplexArray]
 """From k_frac (n, 3) and occupied states (n, n_orb, n_occ) to the states to be followed."""
 
-SPOTS = 2
+SPOTS = 4
 """Places of a narrow gap that are looked into on a plane."""
 
-SPOTS_APART = 0.15
+SPOTS_APART = 0.1
 """Least distance of two of them, in plane coordinates."""
 
 FIRST_STEP = 1 / 24
 NEWTON_SHRINKS, PLAIN_SHRINKS = 1 / 4, 1 / 2
 FINEST_STEP = 1e-8
 MAX_ROUNDS = 24
+TINY = 1e-300
 
 SETTLED = 0.95
 """A spot is done when the fitted minimum leaves more than this of the gap found there."""
 
+FIT_ERROR = 0.3
+"""Largest error of a fit of squared gaps that is trusted, over the square of the gap found there: a
+stencil much wider than a cone foretells nothing of its tip."""
+
 STENCIL = np.array([(x, y) for x in (0, -1, 1) for y in (0, -1, 1)], dtype=float)
-QUADRATIC = np.linalg.pinv(
-    np.stack(
-        [
-            np.ones(9),
-            STENCIL[:, 0],
-            STENCIL[:, 1],
-            STENCIL[:, 0] ** 2 / 2,
-            STENCIL[:, 1] ** 2 / 2,
-            STENCIL[:, 0] * STENCIL[:, 1],
-        ],
-        axis=1,
-    )
+TERMS = np.stack(
+    [
+        np.ones(9),
+        STENCIL[:, 0],
+        STENCIL[:, 1],
+        STENCIL[:, 0] ** 2 / 2,
+        STENCIL[:, 1] ** 2 / 2,
+        STENCIL[:, 0] * STENCIL[:, 1],
+    ],
+    axis=1,
 )
+QUADRATIC = np.linalg.pinv(TERMS)
 """From values on the stencil to those of value, gradient and second derivatives (xx, yy, xy)."""
 
 
@@ -165,8 +170,28 @@ class PlaneStates:
         self.n_solves += n
 
 
-def narrow_spots(states: PlaneStates) -> FloatArray:
-    """Where the direct gap is narrowest, (n, 2) plane coordinates, from the points solved so far.
+@dataclass(frozen=True, slots=True, eq=False)
+class NarrowSpots:
+    """Places where the direct gap is small.
+
+    Attributes
+    ----------
+    xy
+        (n, 2) plane coordinates in [0, 1).
+    gaps_ev
+        (n,) direct gaps there.
+    widths
+        (n,) distance, in plane coordinates, over which the gap grows to sqrt(2) of itself along
+        its steepest direction: the Berry curvature of a Dirac cone is spread that far.
+    """
+
+    xy: FloatArray
+    gaps_ev: FloatArray
+    widths: FloatArray
+
+
+def narrow_spots(states: PlaneStates) -> NarrowSpots:
+    """Where the direct gap is narrowest, from the points solved so far.
 
     The lowest points, apart from each other, are followed downhill. Near a small gap its square is
     quadratic in k (Dirac cones of any mass), so a quadratic is fitted to the squares on a stencil
@@ -175,25 +200,28 @@ def narrow_spots(states: PlaneStates) -> FloatArray:
     """
     spots = _lowest_apart(*states.visited)
     centre, step = spots.copy(), np.full(len(spots), FIRST_STEP)
-    best, active = np.full(len(spots), np.inf), np.arange(len(spots))
+    best, steepest = np.full((2, len(spots)), np.inf)
+    active = np.arange(len(spots))
     for _ in range(MAX_ROUNDS):
         around = centre[active, None] + step[active, None, None] * STENCIL
         gaps = states.gaps_at(around.reshape(-1, 2)).reshape(-1, 9)
-        move, fitted, foretold = _quadratic_minimum(gaps**2)
+        fit = _fit_quadratic(gaps**2)
         lowest, winner = gaps.min(axis=1), gaps.argmin(axis=1)
-        centred = fitted | (winner == 0)
         better = lowest < best[active]
         best[active] = np.where(better, lowest, best[active])
-        settled = fitted & (foretold > (SETTLED * best[active]) ** 2)
         found = around[np.arange(len(active)), winner]
         spots[active] = np.where(better[:, None], found, spots[active])
-        centre[active] += step[active, None] * move
+        steepest[active] = fit.steepest / step[active] ** 2
+        centre[active] += step[active, None] * fit.move
+        trusted = fit.inside & (fit.error < FIT_ERROR * best[active] ** 2)
+        settled = trusted & (fit.value > (SETTLED * best[active]) ** 2)
         # a lowest point on the rim means that the minimum lies further out: go there, same step
-        step[active] *= np.where(fitted, NEWTON_SHRINKS, np.where(centred, PLAIN_SHRINKS, 1.0))
+        shrink = np.where(winner == 0, PLAIN_SHRINKS, 1.0)
+        step[active] *= np.where(fit.inside, NEWTON_SHRINKS, shrink)
         active = active[~settled & (step[active] > FINEST_STEP)]
         if len(active) == 0:
             break
-    return np.asarray(spots % 1.0)
+    return NarrowSpots(spots % 1.0, best, best * np.sqrt(2 / np.maximum(steepest, TINY)))
 
 
 def _lowest_apart(xy: FloatArray, gaps: FloatArray) -> FloatArray:
@@ -212,18 +240,45 @@ def _distance(a: FloatArray, b: FloatArray) -> float:
     return float(np.linalg.norm((a - b + 0.5) % 1.0 - 0.5))
 
 
-def _quadratic_minimum(values: FloatArray) -> tuple[FloatArray, BoolArray, FloatArray]:
-    """Way to the minimum in units of the stencil, whether it was fitted, and the fitted value.
+@dataclass(frozen=True, slots=True, eq=False)
+class _Fit:
+    """A quadratic on the stencil, in units of its step.
 
-    That is the minimum of the fitted quadratic where it lies within the stencil, else the lowest
-    point.
+    Attributes
+    ----------
+    move
+        (n, 2) way to its minimum where that lies inside the stencil, else to the lowest point.
+    inside
+        (n,) which of the two.
+    value
+        (n,) at the minimum, by the fit.
+    error
+        (n,) largest distance of the fit from the values.
+    steepest
+        (n,) largest second derivative along any direction.
     """
-    middle, g_x, g_y, h_xx, h_yy, h_xy = QUADRATIC @ values.T
-    determinant = h_xx * h_yy - h_xy**2
+
+    move: FloatArray
+    inside: BoolArray
+    value: FloatArray
+    error: FloatArray
+    steepest: FloatArray
+
+
+def _fit_quadratic(values: FloatArray) -> _Fit:
+    """Fit to values (n, 9) on the stencil."""
+    coefficients = values @ QUADRATIC.T
+    middle, g_x, g_y, h_xx, h_yy, h_xy = coefficients.T
+    determinant, mean = h_xx * h_yy - h_xy**2, (h_xx + h_yy) / 2
     convex = (determinant > 0) & (h_xx > 0)
     scale = 1 / np.where(convex, determinant, 1.0)
     newton = scale * np.stack([h_xy * g_y - h_yy * g_x, h_xy * g_x - h_xx * g_y])
-    fitted = convex & (np.abs(newton).max(axis=0) <= 1.0)
+    inside = convex & (np.abs(newton).max(axis=0) <= 1.0)
     lowest = STENCIL[values.argmin(axis=1)]
-    value = middle + (g_x * newton[0] + g_y * newton[1]) / 2
-    return np.asarray(np.where(fitted[:, None], newton.T, lowest)), fitted, value
+    return _Fit(
+        move=np.asarray(np.where(inside[:, None], newton.T, lowest)),
+        inside=inside,
+        value=middle + (g_x * newton[0] + g_y * newton[1]) / 2,
+        error=np.abs(values - coefficients @ TERMS.T).max(axis=1),
+        steepest=mean + np.sqrt(((h_xx - h_yy) / 2) ** 2 + h_xy**2),
+    )

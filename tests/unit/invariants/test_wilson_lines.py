@@ -104,6 +104,15 @@ def test_lines_begin_with_an_even_number_of_points(points: int) -> None:
         LineCriteria(points=points)
 
 
+@pytest.mark.parametrize("y", [0.0, 1.0, 1 - 1e-14, 0.25])
+def test_a_point_is_never_there_twice(y: float) -> None:
+    states = states_of(kane_mele())
+    (line,) = solve_lines(states.states_at, np.array([0.2]), CRITERIA, extra=np.array([y]))
+    assert (np.diff(line.along) > 0).all()
+    more = extend_line(states.states_at, line, np.array([y]), CRITERIA)
+    assert more.n_points == line.n_points
+
+
 def test_an_extra_point_is_on_the_line() -> None:
     (line,) = solve_lines(
         states_of(kane_mele()).states_at, np.array([0.2]), CRITERIA, extra=np.array([0.123])

@@ -70,11 +70,28 @@ def test_narrow_spots_are_the_corners(lambda_v: float) -> None:
     states.states_at(mesh_points((7, 7)))
     spots = narrow_spots(states)
     corners = np.array([[1 / 3, 1 / 3], [2 / 3, 2 / 3]])
-    nearest = np.abs(spots[0] - corners).max(axis=1).min()
+    first = int(spots.gaps_ev.argmin())
+    nearest = np.abs(spots.xy[first] - corners).max(axis=1).min()
     expected = abs(6 * np.sqrt(3) * 0.06 - 2 * lambda_v)
     assert nearest < max(1e-4, 0.05 * expected)
-    assert states.narrowest()[0] == pytest.approx(expected, rel=0.05)
-    assert states.n_solves < 64 + 200
+    assert states.narrowest()[0] == spots.gaps_ev[first] == pytest.approx(expected, rel=0.05)
+    assert states.n_solves < 49 + 500
+
+
+@pytest.mark.parametrize("gap_ev", [0.3, 0.03, 0.003])
+def test_widths_are_those_of_the_cone(gap_ev: float) -> None:
+    """Qi-Wu-Zhang near m = 2: at M the gap is sqrt(gap^2 + (4 pi q)^2), q in plane coordinates."""
+    states = PlaneStates(
+        build_bloch_sum(qi_wu_zhang(m=2 + gap_ev / 2).tight_binding()),
+        coordinate_plane(2, 0.0),
+        1,
+        max_solves=1000,
+    )
+    states.states_at(mesh_points((7, 7)))
+    spots = narrow_spots(states)
+    first = int(spots.gaps_ev.argmin())
+    np.testing.assert_allclose(spots.xy[first], 0.5, atol=0.02 * gap_ev)
+    assert spots.widths[first] == pytest.approx(gap_ev / (4 * np.pi), rel=0.1)
 
 
 def test_a_closing_is_followed_down() -> None:
