@@ -26,7 +26,7 @@ from topovet.model.ordering import interlacing_order, reorder_hamiltonian, reord
 from topovet.model.shift_choice import ShiftProposal, propose_shifts
 from topovet.notation import mev
 from topovet.pipeline.runner import Context
-from topovet.pipeline.task import NotApplicable
+from topovet.pipeline.task import NotApplicable, Task
 from topovet.symmetry.inversion import build_inversion, measure_inversion
 from topovet.symmetry.results import ShiftTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.symmetry.spacegroup import SymmetrySearchError, find_space_group
@@ -284,3 +284,116 @@ def attach_basis(
         reason = f"{len(declared)} projections are declared for {n_orb} Wannier functions"
         return BasedHamiltonian(lattice, None, reason)
     return BasedHamiltonian(lattice, build_basis(declared, declarations.crystal), "")
+
+
+TASKS = (
+    Task(
+        "hamiltonian",
+        "read H(R)",
+        read_hamiltonian,
+        reads=("hr", "tb"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "declarations",
+        "bring cell, atoms, projections and settings together",
+        read_declarations,
+        needs=("hamiltonian",),
+        reads=("win", "structure", "settings"),
+        essential=True,
+    ),
+    Task(
+        "space-group",
+        "find the space group of the structure",
+        search_space_group,
+        needs=("declarations",),
+    ),
+    Task(
+        "unshifted",
+        "assemble H(k) on the bare R vectors",
+        read_without_shifts,
+        needs=("hamiltonian", "declarations"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "spin-order",
+        "find the order of the spinors",
+        settle_spin_order,
+        needs=("declarations", "unshifted"),
+        version=2,
+        essential=True,
+    ),
+    Task(
+        "interlaced",
+        "bring spinors to one order",
+        interlace,
+        needs=("hamiltonian", "spin-order"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "bare",
+        "the bare R vectors with spinors in one order",
+        read_interlaced_without_shifts,
+        needs=("interlaced", "declarations", "spin-order", "unshifted"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "shifts",
+        "read or rebuild the Wigner-Seitz shifts",
+        find_shifts,
+        needs=("hamiltonian", "interlaced", "declarations", "spin-order"),
+        reads=("wsvec", "centres"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "shift-test",
+        "test suspicious Wannier centres on the Hamiltonian",
+        judge_shifts,
+        needs=("interlaced", "declarations", "shifts"),
+        wants=("space-group",),
+        essential=True,
+    ),
+    Task(
+        "audit",
+        "measure the soundness of the files",
+        audit,
+        needs=("hamiltonian", "declarations", "shifts", "shift-test"),
+        version=2,
+        essential=True,
+    ),
+    Task(
+        "lattice",
+        "assemble H(R) and H(k)",
+        assemble_lattice,
+        needs=("interlaced", "declarations", "shifts", "shift-test"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "decay",
+        "follow the hoppings out to the rim",
+        profile_decay,
+        needs=("declarations", "lattice"),
+        essential=True,
+    ),
+    Task(
+        "time-reversal",
+        "test time reversal",
+        check_time_reversal,
+        needs=("declarations", "shifts", "lattice", "bare"),
+        essential=True,
+    ),
+    Task(
+        "hamiltonian-with-basis",
+        "attach the declared orbitals",
+        attach_basis,
+        needs=("declarations", "lattice"),
+        stored=False,
+        essential=True,
+    ),
+)

@@ -17,7 +17,7 @@ from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
-from topovet.pipeline.task import NotApplicable
+from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import mesh_eigenvalues, mesh_solves
 from topovet.spectrum.electrons import Statement, choose_statement, count_electrons
 from topovet.spectrum.gap import choose_mesh, sample_gap
@@ -224,3 +224,76 @@ def compare_energies(
         path_k=path_k,
         path_energies=path_energies,
     )
+
+
+TASKS = (
+    Task(
+        "inversion",
+        "test inversion on the Hamiltonian",
+        check_inversion,
+        needs=("hamiltonian-with-basis", "declarations"),
+        wants=("space-group", "inferred-inversion"),
+        essential=True,
+    ),
+    Task(
+        "mesh",
+        "solve for the energies on a mesh",
+        solve_mesh,
+        needs=("hamiltonian-with-basis", "declarations", "time-reversal"),
+        settings=("effort",),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "electrons",
+        "settle the filling",
+        count,
+        needs=("declarations", "time-reversal", "mesh"),
+        settings=("filling", "fermi_ev"),
+        essential=True,
+    ),
+    Task(
+        "gap",
+        "look for the smallest gaps",
+        look_for_gap,
+        needs=("hamiltonian-with-basis", "mesh", "electrons"),
+    ),
+    Task(
+        "inferred-parity",
+        "count parities about the inferred inversion",
+        read_inferred_parities,
+        needs=(
+            "lattice",
+            "declarations",
+            "time-reversal",
+            "electrons",
+            "inferred-inversion",
+        ),
+    ),
+    Task(
+        "parity",
+        "count parities at the TRIM",
+        read_parities,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "time-reversal",
+            "inversion",
+            "electrons",
+        ),
+        wants=("inferred-parity",),
+    ),
+    Task(
+        "bands",
+        "follow the bands along the special points",
+        follow_bands,
+        needs=("hamiltonian-with-basis", "declarations"),
+    ),
+    Task(
+        "interpolation",
+        "compare with the energies that came along",
+        compare_energies,
+        needs=("hamiltonian-with-basis", "electrons"),
+        reads=("win", "eig", "band", "band_kpt"),
+    ),
+)

@@ -9,6 +9,7 @@ from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
+from topovet.pipeline.task import Task
 from topovet.report.material import ReportMaterial
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
@@ -130,3 +131,50 @@ def gather(
         spin_order=spin_order,
         tasks=(),
     )
+
+
+JUDGED = (
+    "declarations",
+    "audit",
+    "decay",
+    "spin-order",
+    "time-reversal",
+    "inversion",
+    "electrons",
+)
+"""Results without which there is no verdict."""
+
+IF_THERE = (
+    "space-group",
+    "inferred-inversion",
+    "symmetry-class",
+    "gap",
+    "parity",
+    "wilson",
+    "chern",
+    "s4",
+    "group",
+    "interpolation",
+)
+"""Results that a verdict and its report use where there are any."""
+
+TASKS = (
+    Task(
+        "verdict",
+        "draw the conclusion and raise the flags",
+        conclude_case,
+        needs=(*JUDGED, "shift-test"),
+        wants=(*IF_THERE, "inferred-parity"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
+        "report-material",
+        "gather what the report shows",
+        gather,
+        needs=(*JUDGED, "verdict"),
+        wants=(*IF_THERE, "irreps", "bands"),
+        stored=False,
+        essential=True,
+    ),
+)

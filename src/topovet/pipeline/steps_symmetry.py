@@ -13,7 +13,7 @@ from topovet.model.declarations import Declarations
 from topovet.model.shift_choice import ShiftProposal
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
-from topovet.pipeline.task import NotApplicable
+from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import one_blas_thread
 from topovet.spectrum.results import Electrons
 from topovet.symmetry.az_class import AzClass, find_az_class
@@ -156,3 +156,50 @@ def _operators(
         missing = next(reason for reason in built.reasons if reason)
         raise NotApplicable(f"the declared orbitals are not closed under the group: {missing}")
     return list(built.operators)
+
+
+TASKS = (
+    Task(
+        "inferred-inversion",
+        "infer inversion from the Hamiltonian itself",
+        infer_from_hamiltonian,
+        needs=("lattice", "declarations", "shifts", "space-group"),
+    ),
+    Task(
+        "symmetry-class",
+        "find the Altland-Zirnbauer class",
+        find_symmetry_class,
+        needs=("lattice", "declarations", "time-reversal"),
+    ),
+    Task(
+        "group",
+        "test every operation of the space group",
+        check_operations,
+        needs=("hamiltonian-with-basis", "bare", "declarations", "space-group", "electrons"),
+    ),
+    Task(
+        "s4",
+        "count S4 eigenvalues",
+        count_s4_eigenvalues,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "space-group",
+            "time-reversal",
+            "electrons",
+        ),
+    ),
+    Task(
+        "irreps",
+        "label the bands at the special points",
+        label_irreps,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "space-group",
+            "time-reversal",
+            "inversion",
+            "electrons",
+        ),
+    ),
+)

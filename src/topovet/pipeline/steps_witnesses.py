@@ -10,7 +10,7 @@ from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
-from topovet.pipeline.task import NotApplicable
+from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.results import Electrons, GapSample
 from topovet.symmetry.results import TimeReversalTest
 
@@ -61,3 +61,21 @@ def _check_gap(gap: GapSample | None) -> None:
     if gap is not None and gap.status == "gapless":
         k = ", ".join(f"{c:.4f}" for c in np.asarray(gap.direct_k))
         raise NotApplicable(f"the occupied bands touch the others at k = ({k})")
+
+
+TASKS = (
+    Task(
+        "wilson",
+        "follow Wilson loops over the invariant planes",
+        follow_wilson_loops,
+        needs=("hamiltonian-with-basis", "declarations", "time-reversal", "electrons"),
+        wants=("gap",),
+    ),
+    Task(
+        "chern",
+        "count Chern numbers where time reversal is broken",
+        count_chern_numbers,
+        needs=("hamiltonian-with-basis", "declarations", "time-reversal", "electrons"),
+        wants=("gap",),
+    ),
+)
