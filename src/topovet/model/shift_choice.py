@@ -16,6 +16,7 @@ from topovet.intake.shifts.centre_branches import (
 )
 from topovet.intake.shifts.ws_shifts import rebuild_shifts
 from topovet.model.declarations import Declarations
+from topovet.model.origin import common_shift
 
 SAME_CENTRE_ANG = 1e-2
 """A centre that its nearest supercell image to the site matches this closely is already there."""
@@ -44,6 +45,9 @@ class ShiftProposal:
         (n_wann,) distance of centre and declared site modulo the supercell; None if unknown.
     centres_cart
         (n_wann, 3) angstrom, as printed; None if unknown.
+    origin_shift_frac
+        Common shift of all centres against the declared sites; None where there is none. Shifts
+        rest on differences of centres and do not notice it.
     """
 
     given: WsShifts | None
@@ -54,6 +58,7 @@ class ShiftProposal:
     elsewhere: tuple[int, ...]
     offsets_ang: FloatArray | None
     centres_cart: FloatArray | None
+    origin_shift_frac: FloatArray | None = None
 
 
 def propose_shifts(
@@ -78,6 +83,9 @@ def propose_shifts(
         given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, sites)
         return ShiftProposal(given, source, note, None, (), (), None, centres_cart)
     cell = declared.crystal.cell
+    shift = common_shift(centres_cart @ np.linalg.inv(cell), sites, declared.crystal)
+    if shift is not None:
+        sites = sites + shift
     offsets = centre_offsets(centres_cart, sites, cell, declared.mp_grid)
     suspects = suspicious_centres(offsets, sites, cell)
     homed = _nearest_to_site(centres_cart, sites, declared)
@@ -97,7 +105,15 @@ def propose_shifts(
         mended = _rebuild(hamiltonian, declared, sites @ cell)
     elsewhere = centres_on_other_sites(centres_cart, sites, cell, declared.mp_grid, suspects)
     return ShiftProposal(
-        given, source, note, mended, _indices(suspects), _indices(elsewhere), offsets, centres_cart
+        given,
+        source,
+        note,
+        mended,
+        _indices(suspects),
+        _indices(elsewhere),
+        offsets,
+        centres_cart,
+        shift,
     )
 
 

@@ -24,6 +24,14 @@ from topovet.spectrum import results as spectrum
 from topovet.symmetry import group_results
 from topovet.symmetry import results as symmetry
 from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.centre_search import CentreTrial
+from topovet.symmetry.declaration_results import (
+    Correction,
+    DeclarationCheck,
+    FunctionAgreement,
+    OperatorFit,
+)
+from topovet.symmetry.declaration_trials import Reading
 from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.irrep_names import IrrepName
 
@@ -37,6 +45,12 @@ STORED_TYPES = (
     symmetry.SpinOrder,
     symmetry.InversionOperator,
     InferredInversion,
+    DeclarationCheck,
+    OperatorFit,
+    FunctionAgreement,
+    Correction,
+    Reading,
+    CentreTrial,
     AzClass,
     symmetry.SpaceGroup,
     symmetry.TimeReversalTest,

@@ -75,16 +75,6 @@ def inspect_case(case: str | Path, *, observe: Observer = lambda event, text: No
         symmetry_class=run.result("symmetry-class"),
         time_reversal=run.result("time-reversal"),
         inversion=run.result("inversion"),
-        electrons=None,
-        gap=None,
-        group=None,
-        parity=None,
-        inferred_parity=None,
-        wilson=None,
-        chern=None,
-        s4=None,
-        interpolation=None,
-        missing={},
     )
     flags = (*intake_flags(findings), *symmetry_flags(findings))
     return Inspection(run.inputs, findings, flags)

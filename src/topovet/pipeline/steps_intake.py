@@ -174,7 +174,16 @@ def judge_shifts(
             for reading in (shifts.given, shifts.mended)
         )
         adopted, reason = _better_shifts(given, mended)
-    return ShiftTest(adopted, shifts.suspects, shifts.elsewhere, given, mended, reason)
+    origin = shifts.origin_shift_frac
+    return ShiftTest(
+        adopted,
+        shifts.suspects,
+        shifts.elsewhere,
+        given,
+        mended,
+        reason,
+        None if origin is None else (float(origin[0]), float(origin[1]), float(origin[2])),
+    )
 
 
 def _better_shifts(given: float | None, mended: float | None) -> tuple[str, str]:
@@ -356,6 +365,7 @@ TASKS = (
         judge_shifts,
         needs=("interlaced", "declarations", "shifts"),
         wants=("space-group",),
+        version=2,
         essential=True,
     ),
     Task(

@@ -13,6 +13,7 @@ from topovet.pipeline.task import Task
 from topovet.report.material import ReportMaterial
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.declaration_results import DeclarationCheck
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.results import (
@@ -27,7 +28,7 @@ from topovet.verdict.findings import Findings
 from topovet.verdict.judge import judge
 
 
-def conclude_case(
+def collect_findings(
     *,
     context: Context,
     declarations: Declarations,
@@ -36,6 +37,7 @@ def conclude_case(
     spin_order: SpinOrder,
     shift_test: ShiftTest,
     space_group: SpaceGroup | None,
+    declaration_check: DeclarationCheck | None,
     inferred_inversion: InferredInversion | None,
     symmetry_class: AzClass | None,
     time_reversal: TimeReversalTest,
@@ -49,9 +51,9 @@ def conclude_case(
     chern: ChernWitness | None,
     s4: S4Indicator | None,
     interpolation: InterpolationCheck | None,
-) -> Verdict:
-    """The verdict from the results of all steps."""
-    findings = Findings(
+) -> Findings:
+    """What all steps found, and why a step found nothing."""
+    return Findings(
         declared=declarations,
         spinful=bool(declarations.spinful),
         audit=audit,
@@ -59,6 +61,7 @@ def conclude_case(
         spin_order=spin_order,
         shift_test=shift_test,
         space_group=space_group,
+        declaration=declaration_check,
         inferred=inferred_inversion,
         symmetry_class=symmetry_class,
         time_reversal=time_reversal,
@@ -74,6 +77,10 @@ def conclude_case(
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
+
+
+def conclude_case(*, context: Context, findings: Findings) -> Verdict:
+    """The verdict from the results of all steps."""
     seconds = {s.name: round(s.seconds, 4) for s in context.trail if s.seconds is not None}
     return judge(
         findings,
@@ -87,51 +94,41 @@ def gather(
     *,
     context: Context,
     verdict: Verdict,
-    declarations: Declarations,
-    audit: HamiltonianAudit,
-    decay: DecayProfile,
-    spin_order: SpinOrder,
-    space_group: SpaceGroup | None,
-    inferred_inversion: InferredInversion | None,
-    symmetry_class: AzClass | None,
-    time_reversal: TimeReversalTest,
-    inversion: InversionTest,
-    electrons: Electrons,
-    gap: GapSample | None,
+    findings: Findings,
     bands: BandPath | None,
     irreps: tuple[PointIrreps, ...] | None,
-    parity: ParityWitness | None,
-    group: GroupTest | None,
-    wilson: WilsonWitness | None,
-    chern: ChernWitness | None,
-    s4: S4Indicator | None,
-    interpolation: InterpolationCheck | None,
 ) -> ReportMaterial:
     """All that the report shows; the graph of tasks is added by the dossier."""
+    assert findings.electrons is not None
     return ReportMaterial(
         verdict=verdict,
-        crystal=declarations.crystal,
-        space_group=space_group,
-        inferred=inferred_inversion,
-        symmetry_class=symmetry_class,
-        time_reversal=time_reversal,
-        inversion=inversion,
-        electrons=electrons,
-        gap=gap,
+        crystal=findings.declared.crystal,
         bands=bands,
         irreps=irreps or (),
-        parity=parity,
-        group=group,
-        wilson=wilson,
-        chern=chern,
-        s4=s4,
-        interpolation=interpolation,
-        audit=audit,
-        decay=decay,
-        spin_order=spin_order,
         tasks=(),
+        **{name: getattr(findings, name) for name in SHOWN},
     )
 
+
+SHOWN = (
+    "space_group",
+    "inferred",
+    "symmetry_class",
+    "time_reversal",
+    "inversion",
+    "electrons",
+    "gap",
+    "parity",
+    "group",
+    "wilson",
+    "chern",
+    "s4",
+    "interpolation",
+    "audit",
+    "decay",
+    "spin_order",
+)
+"""Findings that the report shows as they are."""
 
 JUDGED = (
     "declarations",
@@ -160,11 +157,19 @@ IF_THERE = (
 
 TASKS = (
     Task(
+        "findings",
+        "lay all results side by side",
+        collect_findings,
+        needs=(*JUDGED, "shift-test"),
+        wants=(*IF_THERE, "declaration-check", "inferred-parity"),
+        stored=False,
+        essential=True,
+    ),
+    Task(
         "verdict",
         "draw the conclusion and raise the flags",
         conclude_case,
-        needs=(*JUDGED, "shift-test"),
-        wants=(*IF_THERE, "inferred-parity"),
+        needs=("findings",),
         stored=False,
         essential=True,
     ),
@@ -172,8 +177,8 @@ TASKS = (
         "report-material",
         "gather what the report shows",
         gather,
-        needs=(*JUDGED, "verdict"),
-        wants=(*IF_THERE, "irreps", "bands"),
+        needs=("verdict", "findings"),
+        wants=("irreps", "bands"),
         stored=False,
         essential=True,
     ),

@@ -11,18 +11,21 @@ from topovet.invariants.rotation_indicators import S4Indicator, compute_s4_indic
 from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.declarations import Declarations
 from topovet.model.shift_choice import ShiftProposal
+from topovet.notation import mev
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import one_blas_thread
 from topovet.spectrum.results import Electrons
 from topovet.symmetry.az_class import AzClass, find_az_class
+from topovet.symmetry.declaration_check import SOUND_MEV, compare_declaration
+from topovet.symmetry.declaration_results import DeclarationCheck
 from topovet.symmetry.group import measure_group
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.inference import InferredInversion, infer_inversion
 from topovet.symmetry.operator_set import build_operators
 from topovet.symmetry.operators import WannierOperator, with_time_reversal
-from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
+from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
 from topovet.symmetry.sites import assign_sites, declared_sites
 
 
@@ -53,6 +56,42 @@ def infer_from_hamiltonian(
         return infer_inversion(model, crystal, sites, centre, spinful=model.spinful)
     except NoInversionError as error:
         raise NotApplicable(str(error)) from error
+
+
+def check_declaration(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    shifts: ShiftProposal,
+    shift_test: ShiftTest,
+    space_group: SpaceGroup,
+    inversion: InversionTest,
+) -> DeclarationCheck:
+    """Where declared inversion fails: other readings of the declaration, other centres."""
+    basis, crystal = hamiltonian_with_basis.basis, declarations.crystal
+    if basis is None:
+        raise NotApplicable(f"nothing is declared: {hamiltonian_with_basis.reason}")
+    if not len(space_group.centres_frac):
+        raise NotApplicable("the structure has no inversion to test the declaration with")
+    residual = inversion.violation_r_mev
+    if residual is not None and residual <= SOUND_MEV:
+        raise NotApplicable(f"declared inversion holds to {mev(residual)}")
+    if shifts.centres_cart is None or shift_test.adopted == "mended":
+        sites = declared_sites(basis.positions_frac, crystal)
+    else:
+        centres = shifts.centres_cart @ np.linalg.inv(crystal.cell)
+        sites = assign_sites(centres, crystal, model=hamiltonian_with_basis.lattice.model)
+    stated = declarations.settings.inversion_centre
+    return compare_declaration(
+        hamiltonian_with_basis.lattice,
+        crystal,
+        basis,
+        sites,
+        space_group.centres_frac[0] if stated is None else np.array(stated),
+        space_group.centres_frac,
+        spinful=hamiltonian_with_basis.lattice.model.spinful,
+    )
 
 
 def find_symmetry_class(
@@ -164,6 +203,19 @@ TASKS = (
         "infer inversion from the Hamiltonian itself",
         infer_from_hamiltonian,
         needs=("lattice", "declarations", "shifts", "space-group"),
+    ),
+    Task(
+        "declaration-check",
+        "look for what mends the declared orbitals",
+        check_declaration,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "shifts",
+            "shift-test",
+            "space-group",
+            "inversion",
+        ),
     ),
     Task(
         "symmetry-class",

@@ -19,7 +19,8 @@ from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.model.nearest_image import nearest_images
-from topovet.symmetry.centre_search import candidate_centres, common_shift, search_centres
+from topovet.model.origin import common_shift
+from topovet.symmetry.centre_search import candidate_centres, search_centres
 from topovet.symmetry.declaration_results import (
     Correction,
     DeclarationCheck,
@@ -108,6 +109,32 @@ def compare_declaration(
         centres=trials,
         shift_frac=common_shift(sites.function_positions, basis.positions_frac, crystal),
     )
+
+
+def corrected_inversion(
+    basis: OrbitalBasis, crystal: Crystal, correction: Correction
+) -> InversionOperator:
+    """Inversion as it is with a correction of the declaration.
+
+    Parameters
+    ----------
+    basis, crystal
+        As given to `compare_declaration`.
+    correction
+        One of those it found.
+
+    Raises
+    ------
+    NoInversionError
+        The correction is not one of this basis.
+    """
+    reading = correction.reading
+    order = np.arange(basis.n_orb) if reading.order is None else np.array(reading.order)
+    centre = np.array(correction.centre_frac)
+    operator = _declared_operator(crystal, basis.reordered(order), centre, reading.flipped)
+    if isinstance(operator, str):
+        raise NoInversionError(operator)
+    return operator
 
 
 def _readings(

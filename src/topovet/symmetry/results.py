@@ -167,6 +167,8 @@ class ShiftTest:
         Inversion residual with either; None where there is no inversion to test them on.
     reason
         One sentence on the choice.
+    origin_shift_frac
+        Common shift of all centres against the declared sites; None where there is none.
     """
 
     adopted: str
@@ -175,3 +177,4 @@ class ShiftTest:
     given_mev: float | None
     mended_mev: float | None
     reason: str
+    origin_shift_frac: tuple[float, float, float] | None = None

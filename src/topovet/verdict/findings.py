@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
@@ -11,6 +12,7 @@ from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
+from topovet.symmetry.declaration_results import DeclarationCheck
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.results import (
@@ -39,22 +41,23 @@ class Findings:
     audit: HamiltonianAudit
     decay: DecayProfile
     spin_order: SpinOrder
-    shift_test: ShiftTest | None
-    space_group: SpaceGroup | None
-    inferred: InferredInversion | None
-    symmetry_class: AzClass | None
     time_reversal: TimeReversalTest
     inversion: InversionTest
-    electrons: Electrons | None
-    gap: GapSample | None
-    group: GroupTest | None
-    parity: ParityWitness | None
-    inferred_parity: ParityWitness | None
-    wilson: WilsonWitness | None
-    chern: ChernWitness | None
-    s4: S4Indicator | None
-    interpolation: InterpolationCheck | None
-    missing: dict[str, str]
+    shift_test: ShiftTest | None = None
+    space_group: SpaceGroup | None = None
+    declaration: DeclarationCheck | None = None
+    inferred: InferredInversion | None = None
+    symmetry_class: AzClass | None = None
+    electrons: Electrons | None = None
+    gap: GapSample | None = None
+    group: GroupTest | None = None
+    parity: ParityWitness | None = None
+    inferred_parity: ParityWitness | None = None
+    wilson: WilsonWitness | None = None
+    chern: ChernWitness | None = None
+    s4: S4Indicator | None = None
+    interpolation: InterpolationCheck | None = None
+    missing: Mapping[str, str] = field(default_factory=dict)
 
     @property
     def kramers(self) -> bool:

@@ -13,7 +13,6 @@ from topovet.model.crystal import Crystal
 from topovet.symmetry.centre_search import (
     candidate_centres,
     centre_shift,
-    common_shift,
     search_centres,
 )
 from topovet.symmetry.sites import assign_sites, declared_sites
@@ -75,21 +74,6 @@ def test_structure_that_agrees_has_no_shift() -> None:
 
 def test_structure_without_centres_has_nothing_to_compare() -> None:
     assert centre_shift(np.zeros(3), np.zeros((0, 3)), Crystal(np.eye(3), (), ())) == (None, None)
-
-
-def test_common_shift_of_scattered_centres() -> None:
-    rng = np.random.default_rng(0)
-    crystal = Crystal(6 * np.eye(3), (), ())
-    declared = rng.random((12, 3))
-    moved = declared + np.array([0.2, 0.0, -0.1]) + rng.integers(-2, 3, (12, 3))
-    scattered = moved + rng.uniform(-0.02, 0.02, (12, 3))
-    found = common_shift(scattered, declared, crystal)
-    assert found is not None
-    np.testing.assert_allclose(found, [0.2, 0, -0.1], atol=0.02)
-    assert common_shift(declared, declared, crystal) is None
-    broken = scattered.copy()
-    broken[3] += 0.2
-    assert common_shift(broken, declared, crystal) is None
 
 
 def test_atoms_are_not_asked() -> None:
