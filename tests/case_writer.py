@@ -91,6 +91,8 @@ def projection_lines(basis: OrbitalBasis, spinful: bool) -> list[str]:
         if len(columns) != 1 or columns[0] >= len(HARMONICS) or basis.harmonics[n].sum() != 1:
             raise ValueError(f"{basis.labels[n]} is no single s or p harmonic")
         line = f"f={','.join(f'{x:.10f}' for x in basis.positions_frac[n])}:{HARMONICS[columns[0]]}"
+        if basis.shells[n] > 1:
+            line += f":r={basis.shells[n]}"
         if not spinful:
             lines.append(line)
             n += 1
@@ -110,6 +112,7 @@ def _is_pair(basis: OrbitalBasis, n: int) -> bool:
         and np.array_equal(basis.spinors[n : n + 2], np.eye(2))
         and np.array_equal(basis.harmonics[n], basis.harmonics[n + 1])
         and np.array_equal(basis.positions_frac[n], basis.positions_frac[n + 1])
+        and basis.shells[n] == basis.shells[n + 1]
     )
 
 

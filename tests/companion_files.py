@@ -2,15 +2,27 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from topovet.arrays import IntArray
+from topovet.demo import writer
+from topovet.demo.writer import wsvec_records as records_of
 from topovet.errors import InputError
 from topovet.intake.records import HamiltonianFile, WsShifts
+
+__all__ = [
+    "HEADER",
+    "Refusal",
+    "hermitian_file",
+    "mesh_cells",
+    "message_of",
+    "records_of",
+    "wsvec_text",
+]
 
 HEADER = "## written on  1Dec2026 at 07:19:57  with use_ws_distance=.true."
 
@@ -38,23 +50,9 @@ def hermitian_file(
     )
 
 
-def records_of(shifts: WsShifts) -> Iterator[list[str]]:
-    """The lines of each record of a `_wsvec.dat`, in C order of (R, m, n)."""
-    start = 0
-    for (r, m, n), count in np.ndenumerate(shifts.counts):
-        label = (*shifts.r_cells[r].tolist(), m + 1, n + 1)
-        vectors = shifts.shifts[start : start + count].tolist()
-        start += count
-        yield [
-            "".join(f"{value:5d}" for value in label),
-            f"{count:5d}",
-            *("".join(f"{value:5d}" for value in vector) for vector in vectors),
-        ]
-
-
 def wsvec_text(shifts: WsShifts) -> str:
-    """A `_wsvec.dat` in Wannier90's own columns."""
-    return "\n".join([HEADER, *(line for record in records_of(shifts) for line in record)]) + "\n"
+    """A `_wsvec.dat` with the header of a real run."""
+    return writer.wsvec_text(shifts, HEADER)
 
 
 def mesh_cells(mp_grid: tuple[int, int, int]) -> IntArray:

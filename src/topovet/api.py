@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from os import PathLike
 from pathlib import Path
 
@@ -16,6 +17,7 @@ def vet(
     fermi_ev: float | None = None,
     effort: str = "standard",
     surface: tuple[int, int, int] | None = None,
+    lower_gaps: str | Sequence[int] | None = None,
     out: str | PathLike[str] | None = None,
 ) -> Verdict:
     """Vet one case.
@@ -32,6 +34,8 @@ def vet(
         "quick", "standard" or "thorough".
     surface
         Miller indices of the surface of interest; recorded, not used by this version.
+    lower_gaps
+        "all", or numbers of bands: indices of the lowest bands up to lower gaps, besides.
     out
         Dossier folder; nothing is written without it.
 
@@ -47,17 +51,20 @@ def vet(
     FillingError
         Nothing states the electron count, or it cannot be right.
     ValueError
-        Both filling and fermi_ev are given, or effort is unknown.
+        Both filling and fermi_ev are given, or effort or lower_gaps is unknown.
     """
     if filling is not None and fermi_ev is not None:
         raise ValueError("give filling or fermi_ev, not both")
     if effort not in ("quick", "standard", "thorough"):
         raise ValueError(f"effort is quick, standard or thorough, not {effort!r}")
+    if isinstance(lower_gaps, str) and lower_gaps != "all":
+        raise ValueError(f"lower_gaps is all or numbers of bands, not {lower_gaps!r}")
     settings = {
         "filling": filling,
         "fermi_ev": fermi_ev,
         "effort": effort,
         "surface": None if surface is None else list(surface),
+        "lower_gaps": lower_gaps if lower_gaps in (None, "all") else list(lower_gaps),
     }
     dossier = vet_case(Path(case), out=None if out is None else Path(out), settings=settings)
     return dossier.verdict

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 ABSENT = "–"
 """Stands where there is no value; the text next to it says why."""
@@ -128,6 +128,21 @@ def z2_text(z2: Sequence[int] | None, *, plain: bool = False) -> str:
 def signed(value: int) -> str:
     """+1 or −1 with a true minus sign."""
     return f"{value:+d}".replace("-", "−")
+
+
+def nonzero_by_plane(numbers: Mapping[str, int]) -> str:
+    """Integers by plane that are not 0: "m(0 0 1) k=0: −2", "1 on m(1 1 0) k=0 and 5 more"."""
+    planes: dict[int, list[str]] = {}
+    for name, number in numbers.items():
+        if number:
+            planes.setdefault(number, []).append(name)
+    parts = []
+    for number, (first, *others) in planes.items():
+        shown = _minus(str(number))
+        parts.append(
+            f"{shown} on {first} and {len(others)} more" if others else f"{first}: {shown}"
+        )
+    return ", ".join(parts)
 
 
 def _minus(text: str) -> str:

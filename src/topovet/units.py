@@ -6,3 +6,9 @@ BOHR_ANGSTROM = 0.529177210903
 """Bohr radius in angstrom, CODATA 2018."""
 
 MEV_PER_EV = 1000.0
+
+BOLTZMANN_EV_PER_K = 8.617333262e-5
+"""Boltzmann constant in eV/K, exact in the SI of 2019 to the digits given."""
+
+KT_ROOM_MEV = MEV_PER_EV * BOLTZMANN_EV_PER_K * 300.0
+"""kT at 300 K in meV (25.85)."""

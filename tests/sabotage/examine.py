@@ -15,7 +15,7 @@ from truth import Lattice, true_z2
 from topovet.errors import TopovetError
 from topovet.pipeline.dossier import start_run
 from topovet.pipeline.runner import Run
-from topovet.verdict.document import Verdict
+from topovet.verdict.document import CauseEntry, Verdict
 from topovet.verdict.flags import Flag
 
 SETTINGS = {"effort": "quick"}
@@ -36,6 +36,8 @@ class Outcome:
         As asserted.
     flags
         As raised, in the order of the verdict.
+    causes
+        Of the diagnosis, confirmed or possible, no consequence of another; most probable first.
     wrong
         Why the verdict is silently wrong; "" where it is not.
     """
@@ -44,21 +46,31 @@ class Outcome:
     z2: tuple[int, ...] | None
     class_: str
     flags: tuple[Flag, ...]
+    causes: tuple[CauseEntry, ...]
     wrong: str
 
 
 @functools.cache
 def background(case: CleanCase) -> frozenset[tuple[str, str]]:
-    """Codes and severities of the flags that the clean case has already."""
-    return frozenset((flag.code, flag.severity) for flag in examine(case).flags)
+    """Codes and severities of flags, causes and their answers, that the clean case has already."""
+    clean = examine(case)
+    flagged = {(flag.code, flag.severity) for flag in clean.flags}
+    return frozenset(flagged | {(cause.cause, cause.answer) for cause in clean.causes})
 
 
-def top_flag(case: CleanCase, outcome: Outcome) -> str | None:
-    """Code of the first flag of severity warning or error that the clean case does not have."""
-    for flag in outcome.flags:
-        if flag.severity != "info" and (flag.code, flag.severity) not in background(case):
-            return flag.code
-    return None
+def top_cause(case: CleanCase, outcome: Outcome) -> str | None:
+    """The first cause that the clean case does not have; None where no new flag is raised.
+
+    Where the diagnosis names none, the first new flag of severity warning or error.
+    """
+    known = background(case)
+    flagged = [
+        flag.code
+        for flag in outcome.flags
+        if flag.severity != "info" and (flag.code, flag.severity) not in known
+    ]
+    causes = [cause.cause for cause in outcome.causes if (cause.cause, cause.answer) not in known]
+    return next(iter((*causes, *flagged))) if flagged else None
 
 
 def start(folder: Path) -> Run:
@@ -77,9 +89,15 @@ def examine(case: CleanCase, fault: Fault | None = None, size: float = 0.0) -> O
             run = start(folder)
             verdict: Verdict = run.result("verdict")
         except TopovetError as error:
-            return Outcome(str(error), None, "undetermined", (), "")
+            return Outcome(str(error), None, "undetermined", (), (), "")
         wrong = _silently_wrong(case, fault, verdict, run)
-        return Outcome("", verdict.invariants.z2, verdict.class_, verdict.flags, wrong)
+        causes = tuple(
+            cause
+            for cause in verdict.diagnosis.causes
+            if cause.answer != "no" and not cause.consequence_of
+        )
+        z2, class_ = verdict.invariants.z2, verdict.class_
+        return Outcome("", z2, class_, verdict.flags, causes, wrong)
 
 
 def _silently_wrong(case: CleanCase, fault: Fault | None, verdict: Verdict, run: Run) -> str:

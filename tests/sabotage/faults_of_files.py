@@ -324,7 +324,7 @@ FILE_FAULTS = (
     Fault(
         "range-truncated",
         "shells-removed-weights-one",
-        (1, 0.95, 0.7, 0.4),
+        (0.95, 0.7, 0.4),
         "of the longest R kept",
         remove_shells_with_weights,
         flags("range-truncated"),
@@ -358,6 +358,15 @@ FILE_FAULTS = (
         "fraction, at least one",
         lose_partners,
         flags("missing-partner-r"),
+    ),
+    Fault(
+        "interpolation-poor",
+        "weights-divided-out",
+        (1,),
+        "of the longest R kept: no R is lost, but the shifts are",
+        remove_shells_with_weights,
+        MISREAD_SHIFTS,
+        suits=in_real,
     ),
     Fault(
         "interpolation-poor",
@@ -473,8 +482,8 @@ FILE_FAULTS = (
         (1e-5, 0.1, 3, 100),
         "meV on each number",
         noise_of_elements,
-        # it breaks all three, and each flag says so
-        flags("not-hermitian", "time-reversal-broken", "symmetry-broken"),
+        # below the size at which it is told as noise, each symmetry that it breaks says so
+        flags("noise", "not-hermitian", "time-reversal-broken", "symmetry-broken"),
     ),
     Fault(
         "fermi-outside-gap",

@@ -448,7 +448,7 @@ PHYSICS_FAULTS = (
         (0.1, 5, 100, 300),
         "meV",
         noise_hermitian,
-        flags("time-reversal-broken", "symmetry-broken"),
+        flags("noise", "time-reversal-broken", "symmetry-broken"),
         CHANGED,
     ),
     Fault(
@@ -457,7 +457,7 @@ PHYSICS_FAULTS = (
         (0.1, 5, 100, 300, 2000),
         "meV",
         noise_with_kramers,
-        BROKEN,
+        BROKEN | {"noise"},
         CHANGED,
     ),
     Fault(

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from clean_cases import CLEAN_CASES
-from examine import examine, top_flag
+from examine import examine, top_cause
 from fault import Fault
 from faults import FAULTS, trials
 
@@ -37,7 +37,7 @@ def run_trial(case_name: str, fault_name: str, size: float) -> Entry:
     case = CLEAN_CASES[case_name]
     fault = next(fault for fault in FAULTS if fault.name == fault_name)
     outcome = examine(case, fault, size)
-    named = REFUSED if outcome.refused else top_flag(case, outcome) or QUIET
+    named = REFUSED if outcome.refused else top_cause(case, outcome) or QUIET
     return Entry(case_name, fault_name, size, named, named in fault.expected, outcome.wrong)
 
 

@@ -13,7 +13,7 @@ from pathlib import Path
 import pytest
 from clean_cases import CLEAN_CASES, CleanCase
 from confusions import known_confusion
-from examine import examine, top_flag
+from examine import examine, top_cause
 from fault import Fault
 from faults import FAULTS, trials
 
@@ -36,7 +36,7 @@ TRIALS = [
 def test_no_silent_wrong_verdict(case: CleanCase, fault: Fault, size: float) -> None:
     outcome = examine(case, fault, size)
     assert not outcome.wrong
-    named = top_flag(case, outcome)
+    named = top_cause(case, outcome)
     if named is None or named in fault.expected:
         return
     missing = known_confusion(fault, named)

@@ -20,9 +20,12 @@ LAYERS = (
     "symmetry",
     "spectrum",
     "invariants",
+    "diagnosis",
     "verdict",
     "report",
     "pipeline",
+    "screening",
+    "demo",
     "cli",
 )
 """In the order in which a case travels; each may import those before it."""
@@ -38,6 +41,7 @@ HOMES = {
     "rich": "cli",
     "spglib": "symmetry",
     "threadpoolctl": "spectrum",
+    "distributed": "screening",
 }
 """The only place that imports each of these."""
 
@@ -75,6 +79,16 @@ def test_each_library_has_one_home(library: str) -> None:
         inside = path.relative_to(PACKAGE).as_posix().startswith(HOMES[library] + "/")
         if any(name.split(".")[0] == library for name in _imports(path)):
             assert inside, f"{path} imports {library}"
+
+
+def test_the_demo_knows_no_more_than_files_and_models() -> None:
+    """Its right answers must not come from what they are to test."""
+    for path in (PACKAGE / "demo").rglob("*.py"):
+        for name in _imports(path):
+            parts = name.split(".")
+            if parts[0] == "topovet" and len(parts) > 1:
+                allowed = parts[1] in (*GROUND, "demo", "intake", "model")
+                assert allowed, f"{path} imports {name}"
 
 
 def test_pickle_is_never_imported() -> None:

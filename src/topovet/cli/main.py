@@ -16,9 +16,12 @@ from topovet.errors import TopovetError
 
 COMMANDS = {
     "vet": "Vet one case and write its dossier.",
+    "screen": "Vet all cases below a folder, or those of a list.",
+    "shortlist": "Rank what has been vetted: table, page, JSON, CSV.",
     "inspect": "Audit the files of a case, without topology.",
     "tasks": "Show the task graph, with its state for a case.",
     "explain": "What a flag means, how it is tested, what to do.",
+    "demo": "Write an invented screening campaign and run it.",
 }
 """Commands in the order of `--help`; each lives in the module of its name."""
 

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import click
 
-from topovet.cli.options import MillerIndices, case_argument
+from topovet.cli.options import LowerGaps, MillerIndices, case_argument
 from topovet.cli.progress import progress
 from topovet.pipeline.dossier import default_folder, vet_case
 from topovet.pipeline.symmetrised import vet_symmetrised
@@ -39,6 +39,12 @@ from topovet.report.text import verdict_lines
     help="Surface of interest; recorded, not used by this version.",
 )
 @click.option(
+    "--lower-gaps",
+    type=LowerGaps(),
+    metavar="all|N,M,…",
+    help="Also the lowest bands up to every open gap below, or up to these numbers of bands.",
+)
+@click.option(
     "--symmetrise",
     "also_symmetrised",
     is_flag=True,
@@ -53,6 +59,7 @@ def command(
     out: Path | None,
     effort: str,
     surface: tuple[int, int, int] | None,
+    lower_gaps: str | list[int] | None,
     also_symmetrised: bool,
     strict: bool,
     as_json: bool,
@@ -68,6 +75,7 @@ def command(
         "fermi_ev": fermi_ev,
         "effort": effort,
         "surface": None if surface is None else list(surface),
+        "lower_gaps": lower_gaps,
     }
     with progress(Path(case).name) as observe:
         dossier = vet_case(case, out=folder, settings=settings, observe=observe)

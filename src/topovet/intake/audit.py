@@ -77,6 +77,9 @@ def audit_hamiltonian(
         centre_offsets_ang=offsets,
         n_zero_r=int((largest == 0).sum()),
         weakest_block_mev=MEV_PER_EV * _smallest_not_zero(largest),
+        last_digit_mev=0.0
+        if hamiltonian.decimals is None
+        else MEV_PER_EV * 10.0**-hamiltonian.decimals,
     )
 
 

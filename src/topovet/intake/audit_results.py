@@ -52,6 +52,8 @@ class HamiltonianAudit:
         R vectors whose blocks are zero to the last digit.
     weakest_block_mev
         Smallest of the largest |H_mn(R)| of all other R, meV, as printed.
+    last_digit_mev
+        One unit of the last printed digit, meV; 0 for exponent form.
     """
 
     file: str
@@ -75,3 +77,4 @@ class HamiltonianAudit:
     centre_offsets_ang: tuple[float, ...]
     n_zero_r: int = 0
     weakest_block_mev: float = 0.0
+    last_digit_mev: float = 0.0

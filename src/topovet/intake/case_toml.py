@@ -52,7 +52,7 @@ def read_settings(path: str | Path) -> CaseSettings:
         if key not in KEYS:
             raise _unknown_key(path, key, lines)
     values: dict[str, Any] = {}
-    for key, (is_valid, expected) in _RULES.items():
+    for key, (is_valid, expected) in RULES.items():
         if key not in table:
             continue
         if not is_valid(table[key]):
@@ -161,7 +161,7 @@ def _is_miller(value: Any) -> bool:
     )
 
 
-_RULES: dict[str, tuple[Callable[[Any], bool], str]] = {
+RULES: dict[str, tuple[Callable[[Any], bool], str]] = {
     "name": (_is_name, f"a text of 1 to {LONGEST_NAME} printable characters in quotes"),
     "filling": (_is_filling, "a whole number of occupied Wannier bands, at least 1"),
     "fermi_eV": (_is_number, "a Fermi energy in eV"),

@@ -14,6 +14,7 @@ from topovet.invariants.parity import compute_parity
 from topovet.invariants.results import ParityWitness
 from topovet.model.fourier import BlochSum
 from topovet.symmetry.inference import InferredInversion
+from topovet.symmetry.results import InversionOperator
 
 
 def compute_inferred_parity(
@@ -37,8 +38,8 @@ def compute_inferred_parity(
     -------
     ParityWitness
         "failed" where Z2 indices or eta (up to sign) depend on the sign of a decoupled set; z4,
-        kappa and their values about other centres are left out where only they do. z4 = 1 and 3,
-        and eta = 1 and 3, are not told apart.
+        kappa and their values about other centres are left out where only they do. Of the two
+        overall signs the one with the smaller z4 or eta is taken: 1 stands for 1 or 3.
 
     Raises
     ------
@@ -47,10 +48,13 @@ def compute_inferred_parity(
     """
     if inferred.operator is None or inferred.reliability == "refused":
         raise NoInversionError(inferred.reason)
-    witness, *others = (
-        compute_parity(bloch, operator, filling, periodic, kramers=kramers)
-        for operator in (inferred.operator, *inferred.alternatives)
-    )
+
+    def count(operator: InversionOperator) -> ParityWitness:
+        return compute_parity(bloch, operator, filling, periodic, kramers=kramers)
+
+    witness, *others = map(count, (inferred.operator, *inferred.alternatives))
+    if 3 in (witness.z4, witness.eta4):
+        witness = count(replace(inferred.operator, matrix=-inferred.operator.matrix))
     if witness.status != "ok":
         return witness
     if any(other.status != "ok" or _decides(other) != _decides(witness) for other in others):

@@ -28,6 +28,9 @@ MirrorAt = Callable[[FloatArray], ComplexArray]
 MIN_PURITY = 0.8
 """Least |eigenvalue| of the mirror in the occupied space that is read as +i or -i."""
 
+CLOSING_PURITY = 0.9
+"""Least |eigenvalue| with which a change of the numbers of states says that the gap closes."""
+
 SQUARE_TOLERANCE = 1e-6
 """Largest element of D^2 + 1 with which D is a mirror of spinors."""
 
@@ -152,6 +155,8 @@ class _Split:
         self._mirror_at = mirror_at
         self.purity = 1.0
         eigenvalues = np.linalg.eigvalsh(self._restricted(k_frac, states))[0]
+        self._purity_at_first = float(np.abs(eigenvalues).min())
+        self.closes_near: tuple[float, float, float] | None = None
         self.n_minus = int((eigenvalues < 0).sum())
         self.n_plus = len(eigenvalues) - self.n_minus
 
@@ -175,6 +180,9 @@ class _Split:
         changed = (eigenvalues < 0).sum(axis=1) != self.n_minus
         impure = np.abs(eigenvalues).min(axis=1) < MIN_PURITY
         if changed.any():
+            pure = changed & (np.abs(eigenvalues).min(axis=1) >= CLOSING_PURITY)
+            if pure.any() and self._purity_at_first >= CLOSING_PURITY:
+                self.closes_near = _triple(k_frac[pure][0] % 1.0)
             raise NotInvariantError(
                 f"the number of occupied states with mirror eigenvalue -i changes from "
                 f"{self.n_minus} at {_words(k_frac[changed][0])}: the gap closes on the plane"
@@ -216,6 +224,7 @@ class _Evidence:
             n_minus=split.n_minus if split else 0,
             purity=split.purity if split else 0.0,
             violation_mev=self._violation_mev,
+            closes_near=split.closes_near if split else None,
             n_solves=sum(plane.n_solves for plane in (plus, minus) if plane is not None),
         )
 
@@ -228,6 +237,11 @@ def _number(plane: ChernPlane | None) -> int:
 def _status(found: list[ChernPlane | None]) -> tuple[str, str]:
     open_planes = [plane for plane in found if plane is not None and plane.chern is None]
     return ("unresolved", open_planes[0].reason) if open_planes else ("ok", "")
+
+
+def _triple(k: FloatArray) -> tuple[float, float, float]:
+    x, y, z = (float(c) for c in k)
+    return x, y, z
 
 
 def _words(k: FloatArray) -> str:

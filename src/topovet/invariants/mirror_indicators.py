@@ -79,6 +79,8 @@ class MirrorIndicator:
         C_m modulo n, 0 … n - 1; None unless "ok".
     purity, gap_ev
         Smallest over the fixed momenta; None where not applicable.
+    through
+        A point on the mirror that is meant, fractional.
     """
 
     plane: KPlane
@@ -89,6 +91,7 @@ class MirrorIndicator:
     mirror_chern: int | None
     purity: float | None
     gap_ev: float | None
+    through: tuple[float, float, float] = (0.0, 0.0, 0.0)
 
 
 def compute_mirror_indicators(
@@ -151,10 +154,10 @@ def _axes(
             kinds[best.get(normal[0], normal[0])]
         ):
             best[normal[0]] = i
-    return [(unitary[i], _mirror_proper(unitary[m])) for m, i in best.items()]
+    return [(unitary[i], without_glide(unitary[m])) for m, i in best.items()]
 
 
-def _mirror_proper(mirror: WannierOperator) -> WannierOperator:
+def without_glide(mirror: WannierOperator) -> WannierOperator:
     """The mirror followed by the lattice translation that leaves no glide, if there is one."""
     for cell in itertools.product((0, 1, -1), repeat=3):
         glide = (np.eye(3) + mirror.rotation) @ (mirror.translation + np.array(cell))
@@ -228,13 +231,16 @@ def _measure_plane(
     filling: int,
 ) -> MirrorIndicator:
     axis = _triple(rotation_axis(cartesian_rotation(rotation.rotation, crystal.cell)))
+    through = _triple(mirror.translation / 2)
     factors = []
     for power, which in FIXED_MOMENTA[n]:
         for k in _fixed_in_plane(rotation, plane, power)[list(which)]:
             factor = _factor(bloch, mirror, rotation, n, power, k, filling)
             if factor is None:
                 reason = f"no mirror that commutes with C{n} here: a glide, or a screw at the edge"
-                return MirrorIndicator(plane, axis, n, "not-applicable", reason, None, None, None)
+                return MirrorIndicator(
+                    plane, axis, n, "not-applicable", reason, None, None, None, through
+                )
             factors.append(factor)
     reason = _why_not(factors, filling)
     chern = None if reason else _chern_modulo(factors, n)
@@ -249,6 +255,7 @@ def _measure_plane(
         mirror_chern=chern,
         purity=min(f.purity for f in factors),
         gap_ev=min(f.gap_ev for f in factors),
+        through=through,
     )
 
 

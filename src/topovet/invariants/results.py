@@ -275,6 +275,9 @@ class MirrorChern:
         Largest |D H D^-1 - H| met, spectral norm.
     n_solves
         Eigenvalue problems solved.
+    closes_near
+        A k at which the numbers of states differ from those elsewhere on the plane although the
+        mirror holds: the gap closes in between. None where no such k was met.
     """
 
     plane: str
@@ -288,3 +291,4 @@ class MirrorChern:
     purity: float
     violation_mev: float
     n_solves: int
+    closes_near: tuple[float, float, float] | None = None

@@ -39,7 +39,8 @@ class DecayProfile:
     largest_hopping_mev
         Largest element off the site.
     positions
-        "declared sites" or "lattice vectors" (where no sites are known and distance means |R|).
+        "declared sites", "Wannier centres" or "lattice vectors" (where no sites are known and
+        distance means |R|).
     """
 
     distances_ang: tuple[float, ...]
@@ -55,6 +56,8 @@ def measure_decay(
     crystal: Crystal,
     sites_frac: FloatArray | None,
     mp_grid: tuple[int, int, int] | None,
+    *,
+    positions: str = "declared sites",
 ) -> DecayProfile:
     """Fall-off of a Hamiltonian that was read with its shifts.
 
@@ -67,9 +70,11 @@ def measure_decay(
     crystal
         Cell and periodic directions.
     sites_frac
-        (n_orb, 3) declared sites; None takes |R| for the distance.
+        (n_orb, 3) sites; None takes |R| for the distance.
     mp_grid
         Mesh whose supercell limits the range.
+    positions
+        What the sites are, see `DecayProfile`.
     """
     n_orb = model.n_orb
     sites = np.zeros((n_orb, 3)) if sites_frac is None else np.asarray(sites_frac, dtype=float)
@@ -94,7 +99,7 @@ def measure_decay(
         rim_ang=rim_ang,
         rim_mev=None if rim_ang is None else MEV_PER_EV * rim,
         largest_hopping_mev=MEV_PER_EV * hopping,
-        positions="lattice vectors" if sites_frac is None else "declared sites",
+        positions="lattice vectors" if sites_frac is None else positions,
     )
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -18,6 +18,7 @@ from topovet.intake.records import (
     StructureFile,
     WinFile,
 )
+from topovet.model.cell_relation import CellRelation, atoms_in_cell, relate_cells
 from topovet.model.crystal import Crystal
 
 SAME_CELL_ANG = 1e-3
@@ -45,6 +46,9 @@ class Declarations:
     structure_cell
         Cell of the structure file where its lengths or angles disagree with the Hamiltonian's cell;
         None where they agree or no file is there to compare.
+    structure_relation
+        How that cell is related to the Hamiltonian's; None likewise. Where it is the same lattice
+        or a supercell of it, the atoms are told in the Hamiltonian's cell.
     structure_offset_ang
         Largest distance of an atom of the .win file from the nearest one of its kind in the
         structure file; None where there is nothing to compare, infinite for another composition.
@@ -71,6 +75,7 @@ class Declarations:
     use_ws_distance: bool
     ws_distance_tol: float
     ws_search_size: tuple[int, int, int]
+    structure_relation: CellRelation | None = None
 
 
 def declare(
@@ -92,7 +97,12 @@ def declare(
         2 or 3.
     """
     _check_num_wann(files, hamiltonian, win)
+    structure_file = "" if structure is None else Path(structure.file).name
     cell, structure_cell = _cell(files, hamiltonian, win, structure)
+    relation = None
+    if structure is not None and structure_cell is not None:
+        relation = relate_cells(structure_cell, cell)
+        structure = _told_in(cell, structure, relation)
     symbols, positions = _atoms(cell, win, structure)
     mp_grid = None if win is None else win.mp_grid
     periodic = _periodic(files, settings.dimension, mp_grid, hamiltonian.r_cells)
@@ -105,13 +115,14 @@ def declare(
         undeclared_reason=_undeclared(win),
         settings=settings,
         structure_cell=structure_cell,
-        structure_offset_ang=_atom_offset(win, structure) if structure_cell is None else None,
-        structure_file="" if structure is None else Path(structure.file).name,
+        structure_offset_ang=_atom_offset(win, structure),
+        structure_file=structure_file,
         win_file="" if win is None else Path(win.file).name,
         win_fermi_ev=None if win is None else win.fermi_energy_ev,
         use_ws_distance=True if win is None else win.use_ws_distance,
         ws_distance_tol=1e-5 if win is None else win.ws_distance_tol,
         ws_search_size=(2, 2, 2) if win is None else win.ws_search_size,
+        structure_relation=relation,
     )
 
 
@@ -146,6 +157,18 @@ def _cell(
     if structure is None or _same_lattice(own, structure.cell):
         return own, None
     return own, structure.cell
+
+
+def _told_in(
+    cell: FloatArray, structure: StructureFile, relation: CellRelation
+) -> StructureFile | None:
+    """The structure in the Hamiltonian's cell; None where it does not fit into it."""
+    atoms = atoms_in_cell(
+        structure.symbols, structure.positions_frac, structure.cell, cell, relation
+    )
+    if atoms is None:
+        return None
+    return replace(structure, cell=cell, symbols=atoms[0], positions_frac=atoms[1])
 
 
 def _same_lattice(cell: FloatArray, other: FloatArray) -> bool:

@@ -83,6 +83,22 @@ class BlochSum:
         packed = weights.reshape(n_k * d, -1) @ self.table
         return _unpack(packed, self.n_orb).reshape(n_k, d, self.n_orb, self.n_orb)
 
+    def hessian(self, k_frac: FloatArray) -> ComplexArray:
+        """Second derivatives of H, (n_k, d (d + 1) / 2, n_orb, n_orb), for k_frac (n_k, d).
+
+        In eV per unit of fractional k squared; pairs i <= j in the order of np.triu_indices(d).
+        """
+        k_frac = np.asarray(k_frac, dtype=float)
+        n_k, d = k_frac.shape
+        i, j = np.triu_indices(d)
+        phase = 2 * np.pi * (k_frac @ self.r_half.T)
+        curve = -((2 * np.pi) ** 2) * (self.r_half[:, i] * self.r_half[:, j]).T
+        weights = np.concatenate(
+            [np.cos(phase)[:, None, :] * curve, np.sin(phase)[:, None, :] * curve], axis=2
+        )
+        packed = weights.reshape(n_k * len(i), -1) @ self.table
+        return _unpack(packed, self.n_orb).reshape(n_k, len(i), self.n_orb, self.n_orb)
+
     def partial(self, axes: tuple[int, ...], k_fixed: FloatArray) -> BlochSum:
         """The sum over the given axes done at k_fixed; what is left depends on the others only.
 

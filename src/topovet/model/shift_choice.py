@@ -48,6 +48,8 @@ class ShiftProposal:
     origin_shift_frac
         Common shift of all centres against the declared sites; None where there is none. Shifts
         rest on differences of centres and do not notice it.
+    sites_declared
+        Whether the sites that centres were tested on are declared ones.
     """
 
     given: WsShifts | None
@@ -59,6 +61,7 @@ class ShiftProposal:
     offsets_ang: FloatArray | None
     centres_cart: FloatArray | None
     origin_shift_frac: FloatArray | None = None
+    sites_declared: bool = True
 
 
 def propose_shifts(
@@ -66,6 +69,7 @@ def propose_shifts(
     declared: Declarations,
     wsvec: WsShifts | None,
     centres_cart: FloatArray | None,
+    assumed_frac: FloatArray | None = None,
 ) -> ShiftProposal:
     """Choose the source of the shifts and test the centres they rest on.
 
@@ -77,21 +81,29 @@ def propose_shifts(
         The `_wsvec.dat` file, where there is one.
     centres_cart
         (n_wann, 3) angstrom from `_centres.xyz` or `_tb.dat`, where there are any.
+    assumed_frac
+        (n_wann, 3) sites to test the centres on where none are declared.
     """
-    sites = np.array([o.position_frac for o in declared.orbitals]) if declared.orbitals else None
+    stated = None
+    if len(declared.orbitals) == hamiltonian.n_wann:
+        stated = np.array([o.position_frac for o in declared.orbitals])
+    sites = assumed_frac if stated is None else stated
     if centres_cart is None or sites is None or declared.mp_grid is None:
-        given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, sites)
+        given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, stated)
         return ShiftProposal(given, source, note, None, (), (), None, centres_cart)
     cell = declared.crystal.cell
-    shift = common_shift(centres_cart @ np.linalg.inv(cell), sites, declared.crystal)
+    centres = centres_cart @ np.linalg.inv(cell)
+    shift = common_shift(centres, sites, declared.crystal)
     if shift is not None:
-        sites = sites + shift
+        # known modulo the lattice, but centres are compared modulo the supercell
+        sites = sites + shift + np.round(np.median(centres - sites - shift, axis=0))
     offsets = centre_offsets(centres_cart, sites, cell, declared.mp_grid)
     suspects = suspicious_centres(offsets, sites, cell)
     homed = _nearest_to_site(centres_cart, sites, declared)
     n_moved = int((np.linalg.norm(homed - centres_cart, axis=1) > SAME_CENTRE_ANG).sum())
     given, source, note = _as_given(hamiltonian, declared, wsvec, centres_cart, sites)
-    if given is not None and n_moved:
+    elsewhere = centres_on_other_sites(centres_cart, sites, cell, declared.mp_grid, suspects)
+    if given is not None and n_moved and not elsewhere.any():
         given = _rebuild(hamiltonian, declared, homed)
         source = "rebuilt from centres"
         note = (
@@ -103,7 +115,6 @@ def propose_shifts(
         # all of them, not the suspects alone: equivalent centres must stay equivalent, or ties
         # between images are broken and symmetries with them
         mended = _rebuild(hamiltonian, declared, sites @ cell)
-    elsewhere = centres_on_other_sites(centres_cart, sites, cell, declared.mp_grid, suspects)
     return ShiftProposal(
         given,
         source,
@@ -114,6 +125,7 @@ def propose_shifts(
         offsets,
         centres_cart,
         shift,
+        sites_declared=stated is not None,
     )
 
 

@@ -2,25 +2,34 @@
 
 from __future__ import annotations
 
+from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants import irrep_results as irreps
+from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
 from topovet.invariants import rotation_indicators as rotations
 from topovet.invariants.rotation_eigenvalues import EigenvalueCount
+from topovet.model.cell_relation import CellRelation
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
+from topovet.model.plane import KPlane
 from topovet.pipeline import (
+    steps_diagnosis,
     steps_intake,
+    steps_lower,
     steps_physics,
+    steps_proof,
     steps_report,
+    steps_shifts,
     steps_symmetry,
     steps_witnesses,
 )
 from topovet.pipeline.codec import Codec
 from topovet.pipeline.task import Task
 from topovet.spectrum import results as spectrum
+from topovet.spectrum.proof import results as proof
 from topovet.symmetry import group_results
 from topovet.symmetry import results as symmetry
 from topovet.symmetry.az_class import AzClass
@@ -40,6 +49,7 @@ STORED_TYPES = (
     records.DeclaredOrbital,
     Crystal,
     Declarations,
+    CellRelation,
     HamiltonianAudit,
     DecayProfile,
     symmetry.SpinOrder,
@@ -52,6 +62,9 @@ STORED_TYPES = (
     Reading,
     CentreTrial,
     AzClass,
+    diagnosis.Rereading,
+    diagnosis.NoiseTest,
+    diagnosis.Experiments,
     symmetry.SpaceGroup,
     symmetry.TimeReversalTest,
     symmetry.InversionTest,
@@ -61,6 +74,9 @@ STORED_TYPES = (
     group_results.GroupTest,
     spectrum.Electrons,
     spectrum.GapSample,
+    proof.GapProof,
+    proof.Certificate,
+    proof.ProvedGap,
     spectrum.BandPath,
     spectrum.InterpolationCheck,
     invariants.TrimParity,
@@ -69,6 +85,13 @@ STORED_TYPES = (
     invariants.WilsonWitness,
     invariants.ChernPlane,
     invariants.ChernWitness,
+    invariants.MirrorChern,
+    mirror_witness.MirrorPlane,
+    mirror_witness.MirrorWitness,
+    mirror_indicators.MirrorIndicator,
+    KPlane,
+    lower_groups.LowerGroup,
+    lower_groups.LowerGroups,
     IrrepName,
     irreps.IrrepContent,
     irreps.LevelIrreps,
@@ -89,8 +112,12 @@ def case_tasks() -> tuple[Task, ...]:
     """All tasks of one case; every one is declared below the function that does its work."""
     return (
         *steps_intake.TASKS,
+        *steps_shifts.TASKS,
         *steps_physics.TASKS,
+        *steps_proof.TASKS,
         *steps_symmetry.TASKS,
         *steps_witnesses.TASKS,
+        *steps_lower.TASKS,
         *steps_report.TASKS,
+        *steps_diagnosis.TASKS,
     )

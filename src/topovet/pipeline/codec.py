@@ -10,10 +10,17 @@ from __future__ import annotations
 import io
 import json
 import zipfile
+import zlib
 from dataclasses import fields, is_dataclass
 from typing import Any
 
 import numpy as np
+
+DAMAGE = (
+    *(zipfile.BadZipFile, zlib.error, OSError, EOFError, NotImplementedError, RuntimeError),
+    *(ValueError, KeyError, TypeError, IndexError, AttributeError),
+)
+"""What reading a damaged archive can raise: each byte of its heads may be wrong."""
 
 
 class CodecError(Exception):
@@ -62,9 +69,7 @@ class Codec:
             with np.load(io.BytesIO(data), allow_pickle=False) as entries:
                 document = json.loads(entries["document"].tobytes().decode())
                 return self._unmark(document, entries)
-        except (
-            zipfile.BadZipFile, OSError, ValueError, KeyError, TypeError, EOFError, IndexError,
-        ) as error:  # fmt: skip
+        except DAMAGE as error:
             raise CodecError(str(error)) from error
 
     def _mark(self, value: Any, arrays: list[np.ndarray[Any, Any]]) -> Any:

@@ -14,13 +14,14 @@ from typing import Any
 from topovet.intake.discovery import find_case
 from topovet.pipeline.catalogue import case_tasks, result_codec
 from topovet.pipeline.graph import build_graph, task_order
-from topovet.pipeline.inputs import hash_inputs
+from topovet.pipeline.inputs import CaseInput, check_unchanged, hash_inputs
 from topovet.pipeline.runner import Observer, Run
 from topovet.pipeline.store import Store, write_atomically
 from topovet.report.figures import figure_makers
 from topovet.report.html import render_report
 from topovet.report.json_document import verdict_json
 from topovet.report.material import ReportMaterial, TaskEntry
+from topovet.spectrum.eigen import one_blas_thread
 from topovet.verdict.document import Verdict
 
 DEFAULT_SETTINGS: Mapping[str, Any] = {
@@ -28,7 +29,14 @@ DEFAULT_SETTINGS: Mapping[str, Any] = {
     "fermi_ev": None,
     "effort": "standard",
     "surface": None,
+    "lower_gaps": None,
+    "name": None,
+    "dimension": None,
+    "inversion_centre": None,
+    "stated_in": None,
 }
+"""Options of a run. Where they say something that case.toml also says, they prevail; `stated_in`
+names the list that they come from, None for the command line."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,11 +51,14 @@ class Dossier:
         The conclusion.
     report_html
         The report, as text.
+    inputs
+        The files that it rests on, as they were hashed.
     """
 
     folder: Path | None
     verdict: Verdict
     report_html: str
+    inputs: tuple[CaseInput, ...] = ()
 
 
 def start_run(
@@ -109,8 +120,11 @@ def vet_case(
     if out is not None:
         _drop_foreign_verdict(out / "verdict.json", run)
     try:
-        run.execute()
-        material: ReportMaterial = run.result("report-material")
+        # one BLAS thread throughout: with more, sums are cut by the number of processors
+        with one_blas_thread():
+            run.execute()
+            material: ReportMaterial = run.result("report-material")
+        check_unchanged(run.files, run.inputs)
         material = replace(material, tasks=task_entries(run))
         figures = _draw(material, log)
         html = render_report(material, figures)
@@ -126,7 +140,7 @@ def vet_case(
     finally:
         if out is not None:
             log.append_to(out / "log.txt")
-    return Dossier(out, material.verdict, html)
+    return Dossier(out, material.verdict, html, run.inputs)
 
 
 def _draw(material: ReportMaterial, log: Observer) -> dict[str, str]:

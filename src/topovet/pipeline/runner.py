@@ -21,7 +21,7 @@ import networkx as nx
 from topovet.errors import InputError, TopovetError
 from topovet.intake.records import CaseFiles
 from topovet.pipeline.graph import task_order
-from topovet.pipeline.inputs import CaseInput
+from topovet.pipeline.inputs import CaseInput, check_unchanged
 from topovet.pipeline.store import Store, StoreError
 from topovet.pipeline.task import NotApplicable, Task, TaskState
 
@@ -205,6 +205,8 @@ class Run:
         self, task: Task, state: str, reason: str, value: Any = None, seconds: float | None = None
     ) -> None:
         if task.stored and self.store is not None and task.name not in self._provisional:
+            # what was read from a file that has changed since must not be kept under its hash
+            check_unchanged(self.files, self.inputs)
             outcome = {"state": state, "reason": reason, "value": value, "seconds": seconds}
             self.store.save(task.name, self.key(task.name), outcome)
 

@@ -6,15 +6,13 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from topovet.errors import InputError, NoInversionError
+from topovet.errors import InputError
 from topovet.intake.audit import audit_hamiltonian
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.intake.case_toml import read_settings
 from topovet.intake.hamiltonian.hr import read_hr
 from topovet.intake.hamiltonian.tb import read_tb
-from topovet.intake.records import CaseSettings, HamiltonianFile, WsShifts
-from topovet.intake.shifts.centres import read_centres
-from topovet.intake.shifts.wsvec import read_wsvec
+from topovet.intake.records import CaseSettings, HamiltonianFile
 from topovet.intake.structure import read_structure
 from topovet.intake.wannier_input.win import read_win
 from topovet.model.assemble import LatticeHamiltonian, assemble
@@ -22,12 +20,11 @@ from topovet.model.basis import OrbitalBasis
 from topovet.model.build_basis import build_basis
 from topovet.model.decay import DecayProfile, measure_decay
 from topovet.model.declarations import Declarations, declare
-from topovet.model.ordering import interlacing_order, reorder_hamiltonian, reorder_shifts
-from topovet.model.shift_choice import ShiftProposal, propose_shifts
-from topovet.notation import mev
+from topovet.model.ordering import interlacing_order, reorder_hamiltonian
+from topovet.model.shift_choice import ShiftProposal
 from topovet.pipeline.runner import Context
+from topovet.pipeline.steps_shifts import sites_in_use
 from topovet.pipeline.task import NotApplicable, Task
-from topovet.symmetry.inversion import build_inversion, measure_inversion
 from topovet.symmetry.results import ShiftTest, SpaceGroup, SpinOrder, TimeReversalTest
 from topovet.symmetry.spacegroup import SymmetrySearchError, find_space_group
 from topovet.symmetry.time_reversal import find_spin_order, infer_spin, measure_time_reversal
@@ -68,7 +65,7 @@ def read_declarations(*, context: Context, hamiltonian: HamiltonianFile) -> Decl
         hamiltonian,
         None if files.win is None else read_win(files.win),
         None if files.structure is None else read_structure(files.structure),
-        CaseSettings() if files.settings is None else read_settings(files.settings),
+        _stated_settings(context),
     )
     if declared.spinful is not None:
         return declared
@@ -82,6 +79,21 @@ def read_declarations(*, context: Context, hamiltonian: HamiltonianFile) -> Decl
             todo=f"add {files.seedname}.win, if need be with nothing but num_wann and spinors",
         )
     return replace(declared, spinful=spinful)
+
+
+def _stated_settings(context: Context) -> CaseSettings:
+    """case.toml, where the options of the run do not say otherwise."""
+    files, options = context.files, context.settings
+    settings = CaseSettings() if files.settings is None else read_settings(files.settings)
+    centre = options.get("inversion_centre")
+    return replace(
+        settings,
+        name=options.get("name") or settings.name,
+        dimension=options.get("dimension") or settings.dimension,
+        inversion_centre=settings.inversion_centre
+        if centre is None
+        else (float(centre[0]), float(centre[1]), float(centre[2])),
+    )
 
 
 def read_without_shifts(
@@ -125,102 +137,12 @@ def read_interlaced_without_shifts(
     return assemble(interlaced, None, declarations.crystal.periodic, spinful=True)
 
 
-def find_shifts(
-    *,
-    context: Context,
-    hamiltonian: HamiltonianFile,
-    interlaced: HamiltonianFile,
-    declarations: Declarations,
-    spin_order: SpinOrder,
-) -> ShiftProposal:
-    """Wigner-Seitz shifts from the file, or rebuilt; for interlaced spin."""
-    files, n_wann = context.files, hamiltonian.n_wann
-    in_block = spin_order.found == "block"
-    order = interlacing_order(n_wann) if in_block else np.arange(n_wann)
-    centres = interlaced.centres_cart
-    if files.centres is not None:
-        centres = read_centres(files.centres, n_wann).centres_cart[order]
-    wsvec = None
-    if files.wsvec is not None:
-        wsvec = read_wsvec(files.wsvec, hamiltonian, mp_grid=declarations.mp_grid)
-        wsvec = reorder_shifts(wsvec, order) if in_block else wsvec
-    return propose_shifts(interlaced, declarations, wsvec, centres)
-
-
 def search_space_group(*, context: Context, declarations: Declarations) -> SpaceGroup:
     """spglib's space group for the input cell."""
     try:
         return find_space_group(declarations.crystal)
     except SymmetrySearchError as error:
         raise NotApplicable(str(error)) from error
-
-
-def judge_shifts(
-    *,
-    context: Context,
-    interlaced: HamiltonianFile,
-    declarations: Declarations,
-    shifts: ShiftProposal,
-    space_group: SpaceGroup | None,
-) -> ShiftTest:
-    """Where centres look wrong: the shifts that break inversion less, the file's or mended ones."""
-    adopted, given, mended = "given", None, None
-    reason = ""
-    if shifts.elsewhere:
-        reason = "The shifts are used as given."
-    elif shifts.mended is not None:
-        given, mended = (
-            _inversion_residual(interlaced, reading, declarations, space_group)
-            for reading in (shifts.given, shifts.mended)
-        )
-        adopted, reason = _better_shifts(given, mended)
-    origin = shifts.origin_shift_frac
-    return ShiftTest(
-        adopted,
-        shifts.suspects,
-        shifts.elsewhere,
-        given,
-        mended,
-        reason,
-        None if origin is None else (float(origin[0]), float(origin[1]), float(origin[2])),
-    )
-
-
-def _better_shifts(given: float | None, mended: float | None) -> tuple[str, str]:
-    if given is None or mended is None:
-        return "mended", (
-            "Without inversion the shifts cannot be told apart by symmetry; they were rebuilt with "
-            "every centre on its declared site."
-        )
-    if mended < given:
-        return "mended", (
-            "With the shifts rebuilt from the sites the inversion residual falls from "
-            f"{mev(given)} to {mev(mended)}; that reading is used."
-        )
-    return "given", (
-        f"The shifts as given keep inversion to {mev(given)}, rebuilt from the sites to "
-        f"{mev(mended)}; they are used as given."
-    )
-
-
-def _inversion_residual(
-    hamiltonian: HamiltonianFile,
-    shifts: WsShifts | None,
-    declared: Declarations,
-    space_group: SpaceGroup | None,
-) -> float | None:
-    """Inversion residual in meV with some shifts; None where it cannot be measured."""
-    if space_group is None or not len(space_group.centres_frac) or not declared.orbitals:
-        return None
-    crystal = declared.crystal
-    try:
-        basis = build_basis(declared.orbitals, crystal)
-        operator = build_inversion(basis, crystal, space_group.centres_frac[0])
-    except NoInversionError:
-        return None
-    lattice = assemble(hamiltonian, shifts, crystal.periodic, spinful=bool(declared.spinful))
-    test = measure_inversion(lattice.model, lattice.bloch, operator, crystal.periodic)
-    return test.violation_mev
 
 
 def audit(
@@ -258,14 +180,21 @@ def assemble_lattice(
 
 
 def profile_decay(
-    *, context: Context, declarations: Declarations, lattice: LatticeHamiltonian
+    *,
+    context: Context,
+    declarations: Declarations,
+    lattice: LatticeHamiltonian,
+    shifts: ShiftProposal,
+    shift_test: ShiftTest,
 ) -> DecayProfile:
     """Fall-off of the hoppings with distance."""
-    sites = np.array([o.position_frac for o in declarations.orbitals])
-    fits = len(sites) == lattice.model.n_orb
-    return measure_decay(
-        lattice.model, declarations.crystal, sites if fits else None, declarations.mp_grid
-    )
+    crystal, model = declarations.crystal, lattice.model
+    declared = np.array([o.position_frac for o in declarations.orbitals])
+    if len(declared) == model.n_orb:
+        return measure_decay(model, crystal, declared, declarations.mp_grid)
+    sites = sites_in_use(declarations, shifts, shift_test, model)
+    at = None if sites is None else sites.function_positions
+    return measure_decay(model, crystal, at, declarations.mp_grid, positions="Wannier centres")
 
 
 def check_time_reversal(
@@ -310,6 +239,8 @@ TASKS = (
         read_declarations,
         needs=("hamiltonian",),
         reads=("win", "structure", "settings"),
+        settings=("name", "dimension", "inversion_centre"),
+        version=2,
         essential=True,
     ),
     Task(
@@ -351,29 +282,11 @@ TASKS = (
         essential=True,
     ),
     Task(
-        "shifts",
-        "read or rebuild the Wigner-Seitz shifts",
-        find_shifts,
-        needs=("hamiltonian", "interlaced", "declarations", "spin-order"),
-        reads=("wsvec", "centres"),
-        stored=False,
-        essential=True,
-    ),
-    Task(
-        "shift-test",
-        "test suspicious Wannier centres on the Hamiltonian",
-        judge_shifts,
-        needs=("interlaced", "declarations", "shifts"),
-        wants=("space-group",),
-        version=2,
-        essential=True,
-    ),
-    Task(
         "audit",
         "measure the soundness of the files",
         audit,
         needs=("hamiltonian", "declarations", "shifts", "shift-test"),
-        version=2,
+        version=3,
         essential=True,
     ),
     Task(
@@ -388,7 +301,8 @@ TASKS = (
         "decay",
         "follow the hoppings out to the rim",
         profile_decay,
-        needs=("declarations", "lattice"),
+        needs=("declarations", "lattice", "shifts", "shift-test"),
+        version=2,
         essential=True,
     ),
     Task(

@@ -105,10 +105,14 @@ def count(
     time_reversal: TimeReversalTest,
     mesh: MeshEnergies,
 ) -> Electrons:
-    """The filling, from the command line, case.toml or the .win file, in this order."""
+    """The filling, from the command line or list of cases, case.toml or the .win file."""
     settings, stated = context.settings, declarations.settings
     statements = (
-        Statement("command line", settings.get("filling"), settings.get("fermi_ev")),
+        Statement(
+            settings.get("stated_in") or "command line",
+            settings.get("filling"),
+            settings.get("fermi_ev"),
+        ),
         Statement("case.toml", stated.filling, stated.fermi_ev),
         Statement(declarations.win_file, None, declarations.win_fermi_ev),
     )
@@ -249,7 +253,7 @@ TASKS = (
         "settle the filling",
         count,
         needs=("declarations", "time-reversal", "mesh"),
-        settings=("filling", "fermi_ev"),
+        settings=("filling", "fermi_ev", "stated_in"),
         essential=True,
     ),
     Task(
@@ -257,6 +261,7 @@ TASKS = (
         "look for the smallest gaps",
         look_for_gap,
         needs=("hamiltonian-with-basis", "mesh", "electrons"),
+        version=2,
     ),
     Task(
         "inferred-parity",
@@ -269,6 +274,7 @@ TASKS = (
             "electrons",
             "inferred-inversion",
         ),
+        version=2,
     ),
     Task(
         "parity",
@@ -282,6 +288,7 @@ TASKS = (
             "electrons",
         ),
         wants=("inferred-parity",),
+        version=2,
     ),
     Task(
         "bands",

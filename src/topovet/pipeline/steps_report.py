@@ -2,8 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
+from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.irrep_results import PointIrreps
+from topovet.invariants.lower_groups import LowerGroups
+from topovet.invariants.mirror_indicators import MirrorIndicator
+from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
@@ -11,6 +17,8 @@ from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.task import Task
 from topovet.report.material import ReportMaterial
+from topovet.spectrum.gap import gap_status
+from topovet.spectrum.proof.results import ProvedGap
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
 from topovet.symmetry.declaration_results import DeclarationCheck
@@ -44,12 +52,16 @@ def collect_findings(
     inversion: InversionTest,
     electrons: Electrons,
     gap: GapSample | None,
+    gap_proof: ProvedGap | None,
     parity: ParityWitness | None,
     inferred_parity: ParityWitness | None,
     group: GroupTest | None,
     wilson: WilsonWitness | None,
     chern: ChernWitness | None,
     s4: S4Indicator | None,
+    mirror_chern: MirrorWitness | None,
+    mirror_indicators: tuple[MirrorIndicator, ...] | None,
+    lower_gaps: LowerGroups | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
     """What all steps found, and why a step found nothing."""
@@ -67,23 +79,43 @@ def collect_findings(
         time_reversal=time_reversal,
         inversion=inversion,
         electrons=electrons,
-        gap=gap,
+        gap=_with_attained(gap, gap_proof),
+        gap_proof=None if gap_proof is None else gap_proof.proof,
         parity=parity,
         inferred_parity=inferred_parity,
         group=group,
         wilson=wilson,
         chern=chern,
         s4=s4,
+        mirror=mirror_chern,
+        mirror_indicators=mirror_indicators or (),
+        lower=lower_gaps,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
 
 
-def conclude_case(*, context: Context, findings: Findings) -> Verdict:
+def _with_attained(gap: GapSample | None, proved: ProvedGap | None) -> GapSample | None:
+    """The sampled gap, or the smaller one that the search for a proof met on its way."""
+    if gap is None or proved is None or proved.proof.attained_ev >= gap.direct_ev:
+        return gap
+    attained = proved.proof.attained_ev
+    return replace(
+        gap,
+        direct_ev=attained,
+        direct_k=proved.proof.k_frac,
+        status=gap_status(attained, gap.indirect_ev),
+    )
+
+
+def conclude_case(
+    *, context: Context, findings: Findings, experiments: Experiments | None
+) -> Verdict:
     """The verdict from the results of all steps."""
     seconds = {s.name: round(s.seconds, 4) for s in context.trail if s.seconds is not None}
     return judge(
         findings,
+        experiments,
         inputs=[InputEntry(i.file, i.sha256, i.bytes) for i in context.inputs],
         settings=context.settings,
         task_seconds=seconds,
@@ -123,6 +155,9 @@ SHOWN = (
     "wilson",
     "chern",
     "s4",
+    "mirror",
+    "mirror_indicators",
+    "lower",
     "interpolation",
     "audit",
     "decay",
@@ -146,10 +181,14 @@ IF_THERE = (
     "inferred-inversion",
     "symmetry-class",
     "gap",
+    "gap-proof",
     "parity",
     "wilson",
     "chern",
     "s4",
+    "mirror-chern",
+    "mirror-indicators",
+    "lower-gaps",
     "group",
     "interpolation",
 )
@@ -170,6 +209,7 @@ TASKS = (
         "draw the conclusion and raise the flags",
         conclude_case,
         needs=("findings",),
+        wants=("experiments",),
         stored=False,
         essential=True,
     ),

@@ -14,11 +14,12 @@ from topovet.model.shift_choice import ShiftProposal
 from topovet.notation import mev
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
+from topovet.pipeline.steps_shifts import sites_in_use
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import one_blas_thread
 from topovet.spectrum.results import Electrons
 from topovet.symmetry.az_class import AzClass, find_az_class
-from topovet.symmetry.declaration_check import SOUND_MEV, compare_declaration
+from topovet.symmetry.declaration_check import EXPLAINS, SOUND_MEV, compare_declaration
 from topovet.symmetry.declaration_results import DeclarationCheck
 from topovet.symmetry.group import measure_group
 from topovet.symmetry.group_results import GroupTest
@@ -26,7 +27,7 @@ from topovet.symmetry.inference import InferredInversion, infer_inversion
 from topovet.symmetry.operator_set import build_operators
 from topovet.symmetry.operators import WannierOperator, with_time_reversal
 from topovet.symmetry.results import InversionTest, ShiftTest, SpaceGroup, TimeReversalTest
-from topovet.symmetry.sites import assign_sites, declared_sites
+from topovet.symmetry.sites import SiteAssignment, settle_homes
 
 
 def infer_from_hamiltonian(
@@ -35,6 +36,7 @@ def infer_from_hamiltonian(
     lattice: LatticeHamiltonian,
     declarations: Declarations,
     shifts: ShiftProposal,
+    shift_test: ShiftTest,
     space_group: SpaceGroup,
 ) -> InferredInversion:
     """Inversion from H(R) and the centres alone, beside what is declared or in its place."""
@@ -43,12 +45,8 @@ def infer_from_hamiltonian(
         raise NotApplicable(
             f"space group {space_group.number} ({space_group.symbol}) has no inversion"
         )
-    if declarations.orbitals and len(declarations.orbitals) == model.n_orb:
-        sites = declared_sites(np.array([o.position_frac for o in declarations.orbitals]), crystal)
-    elif shifts.centres_cart is not None:
-        centres = shifts.centres_cart @ np.linalg.inv(crystal.cell)
-        sites = assign_sites(centres, crystal, model=model)
-    else:
+    sites = sites_in_use(declarations, shifts, shift_test, model)
+    if sites is None:
         raise NotApplicable("neither declared sites nor Wannier centres say where functions sit")
     declared_centre = declarations.settings.inversion_centre
     centre = space_group.centres_frac[0] if declared_centre is None else np.array(declared_centre)
@@ -77,21 +75,37 @@ def check_declaration(
     residual = inversion.violation_r_mev
     if residual is not None and residual <= SOUND_MEV:
         raise NotApplicable(f"declared inversion holds to {mev(residual)}")
-    if shifts.centres_cart is None or shift_test.adopted == "mended":
-        sites = declared_sites(basis.positions_frac, crystal)
-    else:
-        centres = shifts.centres_cart @ np.linalg.inv(crystal.cell)
-        sites = assign_sites(centres, crystal, model=hamiltonian_with_basis.lattice.model)
+    lattice = hamiltonian_with_basis.lattice
+    sites = sites_in_use(declarations, shifts, shift_test, lattice.model)
+    assert sites is not None  # there is a basis, so all orbitals are declared
     stated = declarations.settings.inversion_centre
-    return compare_declaration(
-        hamiltonian_with_basis.lattice,
-        crystal,
-        basis,
-        sites,
-        space_group.centres_frac[0] if stated is None else np.array(stated),
-        space_group.centres_frac,
-        spinful=hamiltonian_with_basis.lattice.model.spinful,
-    )
+    centre = space_group.centres_frac[0] if stated is None else np.array(stated)
+
+    def compare(assignment: SiteAssignment) -> DeclarationCheck:
+        return compare_declaration(
+            lattice,
+            crystal,
+            basis,
+            assignment,
+            centre,
+            space_group.centres_frac,
+            spinful=lattice.model.spinful,
+        )
+
+    check = compare(sites)
+    if check.corrections or _is_explained(check) or sites.source == "centres":
+        return check
+    rehomed = settle_homes(sites, crystal, lattice.model, doubt_cells=0.5)
+    if not rehomed.rehomed:
+        return check
+    moved = compare(rehomed)
+    return moved if moved.inferred_fit.worst_mev < check.inferred_fit.worst_mev else check
+
+
+def _is_explained(check: DeclarationCheck) -> bool:
+    """Inferred inversion holds where the declared one does not."""
+    fits = check.inferred_fit.worst_mev <= EXPLAINS * check.declared.worst_mev
+    return check.inferred.reliability == "good" and fits
 
 
 def find_symmetry_class(
@@ -202,7 +216,8 @@ TASKS = (
         "inferred-inversion",
         "infer inversion from the Hamiltonian itself",
         infer_from_hamiltonian,
-        needs=("lattice", "declarations", "shifts", "space-group"),
+        needs=("lattice", "declarations", "shifts", "shift-test", "space-group"),
+        version=2,
     ),
     Task(
         "declaration-check",

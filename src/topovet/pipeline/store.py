@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import tempfile
 from pathlib import Path
@@ -15,8 +16,19 @@ class StoreError(TopovetError):
     """The dossier cannot be written."""
 
 
-def write_atomically(path: Path, data: bytes) -> None:
+def write_atomically(path: Path, data: bytes, *, durable: bool = True) -> None:
     """Write a file so that any reader sees the old contents or the new, never a part.
+
+    Parameters
+    ----------
+    path
+        Its folder is made if need be.
+    data
+        The whole content.
+    durable
+        Whether the file must also outlast a loss of power: it is on disk before it gets its name,
+        and its name before this returns. Without it a file may come back empty or damaged after
+        one, never after the end of a process.
 
     Raises
     ------
@@ -32,16 +44,33 @@ def write_atomically(path: Path, data: bytes) -> None:
             temporary = Path(out.name)
             out.write(data)
             out.flush()
-            os.fsync(out.fileno())
+            if durable:
+                os.fsync(out.fileno())
         temporary.chmod(0o666 & ~_umask())
         os.replace(temporary, path)
+        temporary = None
+        if durable:
+            _sync_folder(path.parent)
     except OSError as error:
-        if temporary is not None:
-            temporary.unlink(missing_ok=True)
         raise StoreError(
             f"{path}: cannot be written ({error.strerror or error}); make room or choose another "
             "place with --out, then run again: finished tasks are kept."
         ) from error
+    finally:
+        if temporary is not None:
+            temporary.unlink(missing_ok=True)
+
+
+def _sync_folder(folder: Path) -> None:
+    """Bring a new name to disk; file systems that cannot do it for a folder do it by themselves."""
+    if not hasattr(os, "O_DIRECTORY"):
+        return
+    with contextlib.suppress(OSError):
+        handle = os.open(folder, os.O_RDONLY | os.O_DIRECTORY)
+        try:
+            os.fsync(handle)
+        finally:
+            os.close(handle)
 
 
 def _umask() -> int:
@@ -81,5 +110,9 @@ class Store:
         return (True, value) if stored_key == key else (False, None)
 
     def save(self, name: str, key: str, value: Any) -> None:
-        """Keep a result; raises `StoreError` where that is impossible."""
-        write_atomically(self.path(name, key), self._codec.encode((key, value)))
+        """Keep a result; raises `StoreError` where that is impossible.
+
+        Not made durable: `load` tells a damaged file from a whole one, and the task runs again.
+        """
+        data = self._codec.encode((key, value))
+        write_atomically(self.path(name, key), data, durable=False)

@@ -38,8 +38,10 @@ _CLASSES = {
     "higher-order": ClassWords(
         "Higher-order topological insulator",
         "a higher-order topological insulator",
-        "Surfaces may be gapped, but conducting channels run along hinges of a crystal whose "
-        "shape keeps the protecting symmetry.",
+        "The time-reversal indices are zero but an indicator is not, and no mirror was found to "
+        "protect surface states: conducting channels then run along hinges of a crystal whose "
+        "shape keeps the protecting symmetry, unless an invariant listed as not tested keeps "
+        "surfaces conducting.",
     ),
     "chern": ClassWords(
         "Chern insulator",
@@ -110,6 +112,16 @@ _SEMIMETALS = {
         "a semimetal whose filled bands carry a weak topological index",
         _INDICES_EXIST + "Boundary states that the index calls for lie beside states of the bulk.",
     ),
+    "crystalline-ti": ClassWords(
+        "Semimetal with a crystalline index",
+        "a semimetal whose filled bands carry a mirror Chern number",
+        _INDICES_EXIST + "Boundary states that the index calls for lie beside states of the bulk.",
+    ),
+    "higher-order": ClassWords(
+        "Semimetal with a nontrivial indicator",
+        "a semimetal whose filled bands carry a nontrivial symmetry indicator",
+        _INDICES_EXIST + "What it calls for at surfaces or hinges lies beside states of the bulk.",
+    ),
     "trivial": ClassWords(
         "Trivial semimetal",
         "a semimetal, trivial by the indices that were computed",
@@ -120,8 +132,13 @@ _SEMIMETALS = {
 
 def class_words(verdict: Verdict) -> ClassWords:
     """Heading, noun phrase and meaning of the verdict's class, for its dimension and gap."""
-    if verdict.gap.status == "semimetal-direct-gap" and verdict.class_ in _SEMIMETALS:
-        return _SEMIMETALS[verdict.class_]
-    if verdict.class_ == "strong-ti" and verdict.case.dimension == 2:
+    return words_of_class(verdict.class_, verdict.gap.status, verdict.case.dimension)
+
+
+def words_of_class(class_: str, gap_status: str, dimension: int) -> ClassWords:
+    """As `class_words`, for a verdict that is known by these three alone."""
+    if gap_status == "semimetal-direct-gap" and class_ in _SEMIMETALS:
+        return _SEMIMETALS[class_]
+    if class_ == "strong-ti" and dimension == 2:
         return _STRONG_2D
-    return _CLASSES[verdict.class_]
+    return _CLASSES[class_]

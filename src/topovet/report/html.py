@@ -12,13 +12,21 @@ from markupsafe import Markup, escape
 
 from topovet import notation
 from topovet.report import words
-from topovet.report.classes import class_words
+from topovet.report.classes import class_words, words_of_class
+from topovet.report.diagnosis_words import AGREEMENT, ANSWERS, cause_name, sort_causes
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import FONTS
 from topovet.report.handling import handling_cautions
+from topovet.report.indicator_words import (
+    direction,
+    indicator_name,
+    indicator_note,
+    open_z2,
+)
 from topovet.report.material import ReportMaterial, TaskEntry
 from topovet.report.svg import inline_svg
 from topovet.verdict.advice import advice_sections
+from topovet.verdict.document import Verdict
 from topovet.verdict.flags import SEVERITIES, Flag
 
 _UNITS = {"mev": "meV", "ev": "eV", "ang": "Å", "s": "s", "seconds": "s", "bytes": "bytes"}
@@ -52,6 +60,10 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         grounds=words.grounds(material),
         untested=words.untested(material),
         radius_note=words.radius_note(material.verdict),
+        causes=sort_causes(material.verdict.diagnosis.causes),
+        answer_words=ANSWERS,
+        agreement_words=AGREEMENT,
+        nouns=_mended_nouns(material.verdict),
         flags=sorted(material.verdict.flags, key=_worst_first),
         cautions=handling_cautions(material.crystal.symbols),
         cell=_cell(material),
@@ -88,6 +100,11 @@ def _environment() -> jinja2.Environment:
         "evidence_name": evidence_name,
         "evidence_value": evidence_value,
         "status_words": words.status_words,
+        "indicator_name": indicator_name,
+        "indicator_note": indicator_note,
+        "open_z2": open_z2,
+        "direction": direction,
+        "cause_name": cause_name,
     }
     environment.globals["advice"] = advice_sections
     return environment
@@ -181,6 +198,13 @@ def _cell(material: ReportMaterial) -> dict[str, Any]:
         "measure_name": "area" if flat else "volume",
         "measure_unit": "Å²" if flat else "Å³",
     }
+
+
+def _mended_nouns(verdict: Verdict) -> dict[str, str]:
+    """What each class is called that the verdict would have with a cause mended."""
+    mended = [cause.if_mended for cause in verdict.diagnosis.causes if cause.if_mended is not None]
+    dimension = verdict.case.dimension
+    return {m.class_: words_of_class(m.class_, "insulator", dimension).noun for m in mended}
 
 
 def _slowest(tasks: tuple[TaskEntry, ...]) -> float:

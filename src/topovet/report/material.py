@@ -6,6 +6,9 @@ from dataclasses import dataclass
 
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.irrep_results import PointIrreps
+from topovet.invariants.lower_groups import LowerGroups
+from topovet.invariants.mirror_indicators import MirrorIndicator
+from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.crystal import Crystal
@@ -98,6 +101,12 @@ class ReportMaterial:
         The task graph as it was run.
     log_note
         One sentence on where the log is or what it says; may be empty.
+    mirror
+        Mirror Chern numbers; None where no mirror was tested.
+    mirror_indicators
+        Mirror Chern numbers modulo n from rotation eigenvalues; empty without such axes.
+    lower
+        Groups of bands below lower gaps; None where they were not asked for.
     """
 
     verdict: Verdict
@@ -122,3 +131,6 @@ class ReportMaterial:
     spin_order: SpinOrder
     tasks: tuple[TaskEntry, ...]
     log_note: str = ""
+    mirror: MirrorWitness | None = None
+    mirror_indicators: tuple[MirrorIndicator, ...] = ()
+    lower: LowerGroups | None = None

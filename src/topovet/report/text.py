@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterable, Sequence
 
-from topovet.notation import ev, k_text, mev, one_line, z2_text
+from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, z2_text
 from topovet.report.classes import class_words
+from topovet.report.diagnosis_words import diagnosis_line
 from topovet.report.words import radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 
@@ -45,6 +46,9 @@ def verdict_lines(verdict: Verdict) -> str:
     lines += [
         f"  {flag.severity:<10} {flag.code}: {_plain(flag.summary)}" for flag in verdict.flags
     ]
+    cause = diagnosis_line(verdict)
+    if cause:
+        lines.append(f"  {'cause':<10} {_plain(cause)}")
     return "\n".join(lines)
 
 
@@ -104,6 +108,11 @@ def _indices(verdict: Verdict) -> str:
     parts = [f"Z2 = {z2_text(z2, plain=True)}" if z2 is not None else "Z2 not given"]
     if z4 is not None:
         parts.append(f"Z4 = {z4} about the centre {k_text(verdict.inversion.centre, plain=True)}")
+    mirrors = verdict.invariants.mirror_chern
+    if mirrors:
+        shown = nonzero_by_plane(mirrors).replace("−", "-")
+        none = f"0 on {len(mirrors)} plane{'' if len(mirrors) == 1 else 's'}"
+        parts.append(f"mirror Chern numbers {shown or none}")
     return ", ".join(parts)
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from topovet.notation import ev, k_text, mev, one_line, significant, z2_text
+from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, significant, z2_text
 from topovet.report.classes import class_words
 from topovet.report.material import ReportMaterial
 from topovet.verdict.document import Verdict
@@ -116,6 +116,12 @@ def _second_grounds(verdict: Verdict) -> tuple[str, ...]:
             f"Wilson loops give Z₂ = {z2_text(wilson.z2)} on {len(wilson.planes)} "
             f"plane{'' if len(wilson.planes) == 1 else 's'}, without any use of inversion."
         )
+    mirrors = verdict.invariants.mirror_chern
+    if mirrors:
+        lines.append(
+            f"Mirror Chern numbers of {len(mirrors)} plane{'' if len(mirrors) == 1 else 's'}: "
+            f"{nonzero_by_plane(mirrors) or 'all 0'}."
+        )
     if surface.status == "ok":
         lines.append(f"Surface states give a strong index of {surface.z2_strong}.")
     return tuple(lines)
@@ -166,6 +172,10 @@ def untested(material: ReportMaterial) -> tuple[str, ...]:
     if verdict.gap.direct_proved_min_eV is None:
         lines.append(
             "The gap between the sampled k-points: a closing there would void every index."
+        )
+    if verdict.case.dimension == 3 and verdict.case.spinful:
+        lines.append(
+            "Invariants of glides, screws and rotations, beyond the indicators that are listed."
         )
     if not _compared(material):
         lines.append(

@@ -18,6 +18,9 @@ from topovet.model.fourier import BlochSum, chunks_of_k
 
 Result = TypeVar("Result")
 
+FEWEST_PARTS = 8
+"""Batches that a list of k is cut into where it is long enough: work for as many threads."""
+
 
 @functools.cache
 def worker_count() -> int:
@@ -120,9 +123,13 @@ def mesh_solves(mesh: tuple[int, int, int], *, even: bool) -> int:
 
 
 def _parts(n_k: int, n_orb: int) -> list[slice]:
-    """Chunks within the memory bound, at least one for each worker."""
+    """Chunks within the memory bound, a few of them even where fewer would do.
+
+    How k are cut must not depend on the machine: the size of a batch moves the last digits of
+    H(k), and the same input would give other bytes on another number of processors.
+    """
     slices = chunks_of_k(n_k, n_orb)
-    if slices and len(slices) < worker_count() and n_k >= 2 * worker_count():
-        edges = np.linspace(0, n_k, worker_count() + 1).astype(int)
+    if len(slices) < FEWEST_PARTS <= n_k // 2:
+        edges = np.linspace(0, n_k, FEWEST_PARTS + 1).astype(int)
         return [slice(a, b) for a, b in itertools.pairwise(edges)]
     return slices

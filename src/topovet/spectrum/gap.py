@@ -1,4 +1,4 @@
-"""A first look at the gap: a mesh, then local refinement of its lowest points.
+"""A first look at the gap: a mesh, then Newton steps from its lowest points.
 
 Everything here is an attained value. The smallest direct gap that was met is an upper bound of the
 true one; nothing is proved, and the result says so.
@@ -6,16 +6,16 @@ true one; nothing is proved, and the result says so.
 
 from __future__ import annotations
 
-import itertools
-from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 from scipy.ndimage import minimum_filter
 
-from topovet.arrays import FloatArray
+from topovet.arrays import BoolArray, FloatArray
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
-from topovet.spectrum.eigen import eigenvalues, mesh_points
+from topovet.spectrum.descent import FINE_MULTIPLET, Objective, descend
+from topovet.spectrum.eigen import mesh_points
 from topovet.spectrum.results import GapSample
 
 MESH_SPACING = {"quick": 0.2, "standard": 0.1, "thorough": 0.05}
@@ -27,13 +27,17 @@ GAPLESS_EV = 1e-4
 UNRESOLVED_EV = 1e-3
 """Attained direct gaps between `GAPLESS_EV` and this are too small for a sampled judgement."""
 
-N_CANDIDATES = 12
-FINEST_STEP = 1e-5
-MAX_ROUNDS = 60
-THINNING_ROUNDS = (4, 8, 12)
-SETTLED_EV = 1e-10
+N_LOWEST, N_MINIMA = 96, 24
+"""Searches start from so many of the lowest mesh points, and of the lowest local minima among them.
+A narrow cone between mesh points shows in a low value, often not in a local minimum: in Sb the
+smallest gap is reached from the 4th and 5th lowest of 3,240 mesh points, neither of them one."""
 
-Objective = Callable[[FloatArray], FloatArray]
+IMAGE_EV, MOST_IMAGES = 5e-5, 4
+"""Mesh points as equal as this are likely images of each other by symmetry: a few stand for all."""
+
+FIRST_ROUNDS, LAST_ROUNDS = 4, 30
+N_FOLLOWED = 16
+"""After the first rounds only so many of the lowest are followed to the end."""
 
 
 def choose_mesh(crystal: Crystal, effort: str) -> tuple[int, int, int]:
@@ -51,8 +55,8 @@ def sample_gap(
 ) -> GapSample:
     """Direct and indirect gap at a filling, by sampling.
 
-    Local extrema of the mesh are followed downhill with shrinking steps, for the direct gap, the
-    valence-band maximum and the conduction-band minimum separately.
+    The lowest mesh points are followed downhill, for the direct gap, the valence-band maximum and
+    the conduction-band minimum separately.
 
     Parameters
     ----------
@@ -66,33 +70,22 @@ def sample_gap(
         Eigenvalue problems already spent on the mesh, for the record.
     """
     n_1, n_2, n_3, _ = mesh_energies.shape
-    mesh = (n_1, n_2, n_3)
-    valence, conduction = mesh_energies[..., filling - 1], mesh_energies[..., filling]
-    spent = n_solves
-
-    def search(pick: Callable[[FloatArray], FloatArray]) -> _Found:
-        def objective(k_frac: FloatArray) -> FloatArray:
-            nonlocal spent
-            spent += len(k_frac)
-            return pick(eigenvalues(bloch, k_frac))
-
-        return _descend(objective, _local_minima(pick(mesh_energies)), mesh)
-
-    direct, direct_k = search(lambda e: e[..., filling] - e[..., filling - 1])
-    minus_vbm, vbm_k = search(lambda e: -e[..., filling - 1])
-    cbm, cbm_k = search(lambda e: e[..., filling])
+    direct = _search(bloch, Objective(filling, 1, -1), mesh_energies)
+    valence = _search(bloch, Objective(filling, 0, -1), mesh_energies)
+    conduction = _search(bloch, Objective(filling, 1, 0), mesh_energies)
+    indirect_ev = conduction.value + valence.value
     return GapSample(
-        direct_ev=direct,
-        direct_k=direct_k,
-        indirect_ev=cbm + minus_vbm,
-        vbm_ev=-minus_vbm,
-        vbm_k=vbm_k,
-        cbm_ev=cbm,
-        cbm_k=cbm_k,
-        mesh=mesh,
-        mesh_direct_ev=float((conduction - valence).min()),
-        status=gap_status(direct, cbm + minus_vbm),
-        n_solves=spent,
+        direct_ev=direct.value,
+        direct_k=direct.k_frac,
+        indirect_ev=indirect_ev,
+        vbm_ev=-valence.value,
+        vbm_k=valence.k_frac,
+        cbm_ev=conduction.value,
+        cbm_k=conduction.k_frac,
+        mesh=(n_1, n_2, n_3),
+        mesh_direct_ev=float(Objective(filling, 1, -1).of(mesh_energies).min()),
+        status=gap_status(direct.value, indirect_ev),
+        n_solves=n_solves + direct.n_solves + valence.n_solves + conduction.n_solves,
     )
 
 
@@ -105,42 +98,46 @@ def gap_status(direct_ev: float, indirect_ev: float) -> str:
     return "insulator" if indirect_ev > 0 else "semimetal-direct-gap"
 
 
-_Found = tuple[float, tuple[float, float, float]]
+@dataclass(frozen=True, slots=True)
+class _Found:
+    """Lowest value of an objective, eV, where, and the solves spent on it."""
+
+    value: float
+    k_frac: tuple[float, float, float]
+    n_solves: int
 
 
-def _local_minima(on_mesh: FloatArray) -> FloatArray:
-    """(n, 3) k of the lowest local minima on a periodic mesh, lowest first."""
-    is_lowest = on_mesh <= minimum_filter(on_mesh, size=3, mode="wrap") + 1e-9
-    k_frac = mesh_points(on_mesh.shape)[is_lowest.reshape(-1)]
-    order = np.argsort(on_mesh[is_lowest], kind="stable")[:N_CANDIDATES]
-    return np.asarray(k_frac[order])
+def _search(bloch: BlochSum, objective: Objective, mesh_energies: FloatArray) -> _Found:
+    start = _starting_points(objective.of(mesh_energies))
+    first = descend(bloch, objective, start, max_rounds=FIRST_ROUNDS)
+    kept = np.argsort(first.values, kind="stable")[:N_FOLLOWED]
+    rest = descend(bloch, objective, first.k_frac[kept], max_rounds=LAST_ROUNDS)
+    last = descend(bloch, objective, rest.k_frac, max_rounds=LAST_ROUNDS, multiplet=FINE_MULTIPLET)
+    leader = int(last.values.argmin())
+    x, y, z = (float(c) for c in _wrapped(last.k_frac[leader]))
+    n_solves = first.n_solves + rest.n_solves + last.n_solves
+    return _Found(float(last.values[leader]), (x, y, z), n_solves)
 
 
-def _descend(objective: Objective, start: FloatArray, mesh: tuple[int, int, int]) -> _Found:
-    """Compass search of all candidates together, each with its own shrinking step."""
-    in_use = np.array(mesh) > 1
-    moves = np.array(list(itertools.product(*([-1, 0, 1] if used else [0] for used in in_use))))
-    moves = moves[np.any(moves != 0, axis=1)]
-    step = np.where(in_use, 0.5 / np.array(mesh), 0.0)
-    k_frac, scale, best = start.copy(), np.ones(len(start)), objective(start)
-    for round_number in range(MAX_ROUNDS):
-        trial = k_frac[:, None, :] + moves * (scale[:, None, None] * step)
-        values = objective(trial.reshape(-1, 3)).reshape(len(k_frac), -1)
-        rows, winner = np.arange(len(k_frac)), values.argmin(axis=1)
-        improves = values[rows, winner] < best - SETTLED_EV
-        k_frac = np.where(improves[:, None], trial[rows, winner], k_frac)
-        best = np.where(improves, values[rows, winner], best)
-        scale = np.where(improves, scale, scale / 2)
-        if round_number in THINNING_ROUNDS:  # follow the better half only
-            kept = np.argsort(best, kind="stable")[: max(1, len(best) // 2)]
-            k_frac, best, scale = k_frac[kept], best[kept], scale[kept]
-        if scale.max() * step.max() < FINEST_STEP:
-            break
-    leader = int(best.argmin())
-    x, y, z = (float(c) for c in _wrapped(k_frac[leader]))
-    return float(best[leader]), (x, y, z)
+def _starting_points(on_mesh: FloatArray) -> FloatArray:
+    """(n, 3) k of the lowest points and of the lowest local minima of a periodic mesh."""
+    flat = on_mesh.reshape(-1)
+    is_lowest = (on_mesh <= minimum_filter(on_mesh, size=3, mode="wrap") + 1e-9).reshape(-1)
+    order = np.argsort(flat, kind="stable")
+    order = order[_few_of_each(flat[order])]
+    minima = order[is_lowest[order]][:N_MINIMA]
+    chosen = np.unique(np.concatenate([order[:N_LOWEST], minima]))
+    return np.asarray(mesh_points(on_mesh.shape)[chosen])
+
+
+def _few_of_each(ascending: FloatArray) -> BoolArray:
+    """Which of the values to keep so that `MOST_IMAGES` stand for each set of nearly equal ones."""
+    new_set = np.diff(ascending, prepend=-np.inf) > IMAGE_EV
+    position = np.arange(len(ascending))
+    first = np.maximum.accumulate(np.where(new_set, position, 0))
+    return np.asarray(position - first < MOST_IMAGES)
 
 
 def _wrapped(k_frac: FloatArray) -> FloatArray:
-    """The same k with components in (-1/2, 1/2], to six decimals."""
-    return np.asarray(0.5 - np.round((0.5 - k_frac) % 1.0, 6) % 1.0)
+    """The same k with components in (-1/2, 1/2], to nine decimals."""
+    return np.asarray(np.round(0.5 - np.round((0.5 - k_frac) % 1.0, 9) % 1.0, 9) + 0.0)

@@ -16,7 +16,7 @@ class Electrons:
     filling
         Occupied Wannier bands, spin counted.
     source
-        "command line", "case.toml" or "NAME.win".
+        "command line", "case.toml", "NAME.win", or the name of a list of cases.
     how
         One sentence for people.
     fermi_ev

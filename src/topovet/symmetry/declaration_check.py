@@ -108,6 +108,7 @@ def compare_declaration(
         corrections=_corrections(sample, basis, centre, readings, declared_fit),
         centres=trials,
         shift_frac=common_shift(sites.function_positions, basis.positions_frac, crystal),
+        rehomed=sites.rehomed,
     )
 
 

@@ -114,6 +114,8 @@ class DeclarationCheck:
         Inference about every point that the sites allow.
     shift_frac
         Common shift of the sites against the declared positions; None where there is none.
+    rehomed
+        Functions that were taken from another cell than declared, because the hoppings say so.
     """
 
     centre_frac: FloatArray
@@ -124,6 +126,7 @@ class DeclarationCheck:
     corrections: tuple[Correction, ...]
     centres: tuple[CentreTrial, ...]
     shift_frac: FloatArray | None
+    rehomed: tuple[int, ...] = ()
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "centre_frac", frozen(self.centre_frac))

@@ -14,6 +14,11 @@ import numpy as np
 from topovet.arrays import IntArray
 from topovet.model.plane import Cell, KPlane
 from topovet.symmetry.group_results import GroupTest
+from topovet.units import MEV_PER_EV
+
+PLANES_SHARE = 0.05
+"""Operations that hold to within this share of the smallest direct gap met make planes equivalent:
+what is counted on one of them is then taken over to the others."""
 
 OFFSET_DECIMALS = 9
 """Offsets are 0 or 1/2 up to rounding."""
@@ -35,6 +40,27 @@ def held_within(group: GroupTest, limit_mev: float) -> list[int]:
         for i, test in enumerate(group.operations)
         if test.judged_mev is not None and test.judged_mev <= limit_mev
     ]
+
+
+def equivalent_planes(
+    planes: Sequence[KPlane], group: GroupTest | None, direct_gap_ev: float
+) -> tuple[tuple[str, ...], ...]:
+    """Names of planes that operations of H make of each other, see `group_planes`.
+
+    Parameters
+    ----------
+    planes
+        Planes spanned by reciprocal lattice vectors.
+    group
+        The structure's operations as tested on H; None where they were not.
+    direct_gap_ev
+        Smallest direct gap met.
+    """
+    if group is None:
+        return ()
+    held = held_within(group, PLANES_SHARE * MEV_PER_EV * direct_gap_ev)
+    # an operation holds as well as its inverse, so that W serves for k' = k W^-1
+    return group_planes(planes, [group.operations[i].rotation for i in held])
 
 
 def group_planes(

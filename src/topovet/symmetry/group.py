@@ -73,6 +73,11 @@ def measure_group(
         Coarse mesh; None where unknown.
     filling
         Occupied bands; None where unknown, and nothing is then said about bands.
+
+    Raises
+    ------
+    NotClosedError
+        Not even the identity has an operator: functions are declared twice.
     """
     probe = prepare_probe(model, bloch, unshifted_bloch, crystal.periodic, mp_grid, filling)
     structure = OperationGroup(crystal.cell, space_group.rotations, space_group.translations)
@@ -110,6 +115,8 @@ def _test_structure(
 ) -> tuple[list[OperationTest], dict[int, WannierOperator]]:
     """Tests in the order of `GroupTest.tests`, and the operators of those that have one."""
     built = build_operators(basis, crystal, structure.rotations, structure.translations)
+    if not built.operators:
+        raise NotClosedError(f"no operation has an operator: {built.reasons[0]}")
     at = dict(zip(built.indices.tolist(), built.operators, strict=True))
     order = structure.reversed_order
     theta, theta_operator = _test_reversed(probe, structure, order[0], at, built, basis)

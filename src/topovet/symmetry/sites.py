@@ -116,7 +116,7 @@ def assign_sites(
     label = atom_of.copy()
     label[off] = len(crystal.symbols) + _clusters(centres[off], crystal.cell, CLUSTER_ANG)
     found = _from_labels(centres, label, atom_of, crystal, "centres")
-    return found if model is None else _settle_homes(found, crystal, model)
+    return found if model is None else settle_homes(found, crystal, model)
 
 
 def declared_sites(positions_frac: FloatArray, crystal: Crystal) -> SiteAssignment:
@@ -259,12 +259,25 @@ def _deviation(sites: SiteAssignment, crystal: Crystal, model: TightBindingModel
     return deviation
 
 
-def _settle_homes(
-    sites: SiteAssignment, crystal: Crystal, model: TightBindingModel
+def settle_homes(
+    sites: SiteAssignment,
+    crystal: Crystal,
+    model: TightBindingModel,
+    *,
+    doubt_cells: float = HOME_DOUBT_CELLS,
 ) -> SiteAssignment:
-    """Home cells that the hoppings contradict replaced by those they say."""
+    """Home cells that the hoppings contradict replaced by those they say.
+
+    Parameters
+    ----------
+    sites, crystal, model
+        As in `assign_sites`.
+    doubt_cells
+        Lattice vectors by which the hoppings must contradict; with 1/2 every cell is the nearest
+        one to where they put the function, a guess that only symmetry can confirm.
+    """
     deviation = _deviation(sites, crystal, model)
-    wrong = np.any(np.abs(deviation) > HOME_DOUBT_CELLS, axis=1)
+    wrong = np.any(np.abs(deviation) > doubt_cells, axis=1)
     if not wrong.any():
         return sites
     moved = np.where(wrong[:, None], np.round(deviation).astype(np.int64), 0)

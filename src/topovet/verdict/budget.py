@@ -38,6 +38,7 @@ def total_error(budget: dict[str, float | None]) -> float:
 
 
 def robustness_radius(findings: Findings) -> float | None:
-    """Half of the attained direct gap, meV; not proved while the gap is only sampled."""
-    gap = findings.direct_gap_mev
+    """Half of the proved direct gap, meV; of the attained one where none is proved."""
+    proved = findings.proved_gap_mev
+    gap = findings.direct_gap_mev if proved is None else proved
     return None if gap is None else 0.5 * gap

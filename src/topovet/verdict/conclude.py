@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.verdict.agreement import Agreement, Statement, weigh
+from topovet.verdict.crystalline import class_without_z2, indicator_values, mirror_numbers
 from topovet.verdict.document import InvariantsEntry
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
@@ -57,20 +58,28 @@ def conclude(findings: Findings, flags: Sequence[Flag]) -> Conclusion:
         return _undetermined(agreement.word, _silence(findings))
     parity = findings.parity if _speaks(findings.parity) else None
     z4 = None if parity is None else parity.z4
-    class_, grounds = _class_from_indices(findings, agreement.z2, parity)
-    indicators = {} if z4 is None else {"z4": z4}
-    indicators |= _s4_indicators(findings)
-    invariants = InvariantsEntry(z2=agreement.z2, z4=z4, indicators=indicators)
+    indicators = indicator_values(findings)
+    class_, grounds = _class_from_indices(findings, agreement.z2, parity, indicators)
+    invariants = InvariantsEntry(
+        z2=agreement.z2, z4=z4, indicators=indicators, mirror_chern=mirror_numbers(findings)
+    )
     return Conclusion(invariants, agreement.word, class_, grounds)
 
 
 def weigh_witnesses(findings: Findings) -> Agreement:
     """The Z2 indices of all witnesses that speak, side by side."""
-    return weigh(witness_statements(findings))
+    agreement = weigh(witness_statements(findings))
+    mirror = findings.mirror
+    if agreement.z2 is not None and mirror is not None and mirror.contradicts(agreement.z2):
+        return Agreement("disagree", None, ("mirror planes",))
+    return agreement
 
 
 def witness_statements(findings: Findings) -> list[Statement]:
-    """What each witness that speaks says of Z2; S4 knows the strong index alone."""
+    """What each witness that speaks says of Z2.
+
+    S4 knows the strong index alone, mirror Chern numbers the sums of indices on their planes.
+    """
     named = (("parity", findings.parity), ("Wilson loops", findings.wilson))
     statements = [
         Statement(name, witness.z2)
@@ -80,15 +89,11 @@ def witness_statements(findings: Findings) -> list[Statement]:
     s4 = findings.s4
     if s4 is not None and s4.status == "ok" and s4.z2 is not None:
         statements.append(Statement("S4 eigenvalues", (s4.z2, None, None, None)))
+    if findings.mirror is not None:
+        z2 = findings.mirror.z2(findings.declared.crystal.dimension)
+        if any(value is not None for value in z2):
+            statements.append(Statement("mirror Chern numbers", z2))
     return statements
-
-
-def _s4_indicators(findings: Findings) -> dict[str, int]:
-    s4 = findings.s4
-    if s4 is None or s4.status != "ok" or s4.kappa is None:
-        return {}
-    found = {"s4": s4.kappa % 2}
-    return found if s4.z8 is None else {**found, "z8": s4.z8}
 
 
 def _speaks(witness: ParityWitness | WilsonWitness | ChernWitness | None) -> bool:
@@ -111,7 +116,10 @@ def _silence(findings: Findings) -> str:
 
 
 def _class_from_indices(
-    findings: Findings, z2: tuple[int, ...], parity: ParityWitness | None
+    findings: Findings,
+    z2: tuple[int, ...],
+    parity: ParityWitness | None,
+    indicators: Mapping[str, int],
 ) -> tuple[str, tuple[str, ...]]:
     strong, weak = z2[0], z2[1:]
     if strong:
@@ -120,15 +128,7 @@ def _class_from_indices(
         centre = "kappa depends on the inversion centre here and is quoted for the one stated"
         grounds = ("the strong Z2 index is 0, weak ones are not",)
         return "weak-ti", grounds if parity is None else (*grounds, centre)
-    if parity is not None and parity.z4 == 2:
-        return "higher-order", (
-            "all Z2 indices are 0 and kappa = 2: hinge states protected by inversion, or surface "
-            "states protected by a mirror or rotation; parities alone do not tell which",
-        )
-    seen = "all Z2 indices are 0" if parity is None else "all indices that parities can see are 0"
-    if findings.declared.crystal.dimension == 3:
-        return "trivial", (seen, "mirror and rotation invariants were not tested")
-    return "trivial", (seen,)
+    return class_without_z2(findings, indicators)
 
 
 def _without_kramers(findings: Findings) -> Conclusion:

@@ -49,3 +49,7 @@ SAME_ATOM_ANG = 0.05
 ZERO_BLOCK_MEV = 0.1
 """Blocks of H(R) that are zero to the last digit were cut off if the weakest other block holds more
 than this: hoppings that decay fill six decimals (0.001 meV) on the way to zero."""
+
+ZERO_BLOCK_DIGITS = 100.0
+"""The same in units of the last digit, for files with fewer than six decimals: there weak blocks
+are rounded to zero."""

@@ -109,10 +109,20 @@ class SurfaceEntry:
 
 
 @dataclass(frozen=True, slots=True)
+class MirrorEntry:
+    """Mirror Chern numbers; `planes` says of each how it was found."""
+
+    status: str = "not-applicable"
+    reason: str = ""
+    planes: tuple[Mapping[str, Any], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
 class WitnessesEntry:
     parity: ParityEntry
     wilson: WilsonEntry
     surface: SurfaceEntry
+    mirror: MirrorEntry = field(default_factory=MirrorEntry)
 
 
 @dataclass(frozen=True, slots=True)
@@ -122,6 +132,22 @@ class InvariantsEntry:
     indicators: Mapping[str, int] = field(default_factory=dict)
     chern: int | tuple[int, int, int] | None = None
     mirror_chern: Mapping[str, int] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class LowerGapEntry:
+    """The lowest bands up to one lower gap: what each witness says of them."""
+
+    filling: int
+    direct_eV: float  # noqa: N815
+    direct_k: tuple[float, float, float]
+    indirect_eV: float  # noqa: N815
+    status: str
+    reason: str
+    parity_z2: tuple[int, ...] | None
+    z4: int | None
+    wilson_z2: tuple[int, ...] | None
+    chern: int | tuple[int, ...] | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -149,6 +175,44 @@ class ProvenanceEntry:
 
 
 @dataclass(frozen=True, slots=True)
+class MendedEntry:
+    """What the verdict would be were one cause mended and nothing else."""
+
+    z2: tuple[int, ...] | None
+    z4: int | None
+    class_: str
+    agreement: str
+    gap_eV: float | None  # noqa: N815
+
+
+@dataclass(frozen=True, slots=True)
+class CauseEntry:
+    """One possible cause of what is wrong, with its test.
+
+    answer is "yes", "no" or "open"; weight, 0 to 1, orders them; consequence_of names the cause
+    that explains this one, "" where none does.
+    """
+
+    cause: str
+    answer: str
+    weight: float
+    test: str
+    finding: str
+    evidence: Mapping[str, Any]
+    advice: str
+    if_mended: MendedEntry | None
+    consequence_of: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class DiagnosisEntry:
+    """Why the verdict is in doubt; empty where it is not."""
+
+    asked_because: str = ""
+    causes: tuple[CauseEntry, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
 class Verdict:
     """All that is concluded about one case; see `as_dict` for the JSON form."""
 
@@ -167,12 +231,13 @@ class Verdict:
     confidence: ConfidenceEntry
     measurable: Mapping[str, Any]
     provenance: ProvenanceEntry
+    diagnosis: DiagnosisEntry = DiagnosisEntry()
+    lower_gaps: tuple[LowerGapEntry, ...] | None = None
     schema: str = SCHEMA
 
     def as_dict(self) -> dict[str, Any]:
         """The JSON document (plain dicts, lists, numbers and strings)."""
         plain = _plain(self)
-        plain["class"] = plain.pop("class_")
         order = ["schema", *(f.name.rstrip("_") for f in fields(self) if f.name != "schema")]
         return {key: plain[key] for key in order}
 
@@ -182,7 +247,7 @@ class Verdict:
 
 def _plain(value: Any) -> Any:
     if is_dataclass(value) and not isinstance(value, type):
-        return {f.name: _plain(getattr(value, f.name)) for f in fields(value)}
+        return {f.name.rstrip("_"): _plain(getattr(value, f.name)) for f in fields(value)}
     if isinstance(value, Mapping):
         return {str(k): _plain(v) for k, v in value.items()}
     if isinstance(value, tuple | list):

@@ -6,10 +6,14 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.lower_groups import LowerGroups
+from topovet.invariants.mirror_indicators import MirrorIndicator
+from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
+from topovet.spectrum.proof.results import GapProof
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
 from topovet.symmetry.declaration_results import DeclarationCheck
@@ -50,12 +54,16 @@ class Findings:
     symmetry_class: AzClass | None = None
     electrons: Electrons | None = None
     gap: GapSample | None = None
+    gap_proof: GapProof | None = None
     group: GroupTest | None = None
     parity: ParityWitness | None = None
     inferred_parity: ParityWitness | None = None
     wilson: WilsonWitness | None = None
     chern: ChernWitness | None = None
     s4: S4Indicator | None = None
+    mirror: MirrorWitness | None = None
+    mirror_indicators: tuple[MirrorIndicator, ...] = ()
+    lower: LowerGroups | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)
 
@@ -67,3 +75,10 @@ class Findings:
     @property
     def direct_gap_mev(self) -> float | None:
         return None if self.gap is None else 1000.0 * self.gap.direct_ev
+
+    @property
+    def proved_gap_mev(self) -> float | None:
+        """Bound that the direct gap exceeds at every k; None where none was proved."""
+        proof = self.gap_proof
+        proved = proof is not None and proof.status == "proved" and proof.proved_min_ev > 0
+        return 1000.0 * proof.proved_min_ev if proved and proof is not None else None

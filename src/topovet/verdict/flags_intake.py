@@ -6,11 +6,21 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from topovet.arrays import FloatArray
+from topovet.intake.audit_results import HamiltonianAudit
+from topovet.model.cell_relation import CellRelation
 from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.budget import robustness_radius
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+
+BY_DIGITS = {
+    "time-reversal-broken": "broken time reversal",
+    "symmetry-broken": "broken inversion",
+    "interpolation-poor": "wrong energies on the mesh",
+}
+"""What too few digits can bring about."""
 
 
 def intake_flags(findings: Findings) -> Iterator[Flag]:
@@ -31,7 +41,7 @@ def _digits(findings: Findings) -> Iterator[Flag]:
     fatal = radius is not None and rounding >= radius
     if gap is not None and gap.status in ("gapless", "unresolved"):
         fatal = False  # the gap has a flag of its own, and no digits would help
-    explained = _explained_by_digits(findings)
+    explained = tuple(explained_by_digits(findings).values())
     if not fatal and not explained:
         return
     yield Flag(
@@ -46,32 +56,39 @@ def _digits(findings: Findings) -> Iterator[Flag]:
     )
 
 
-def _explained_by_digits(findings: Findings) -> list[str]:
-    """Violations that are flagged though rounding allows them: |S E S^-1 - E| <= 2 |E|."""
+def explained_by_digits(findings: Findings) -> dict[str, str]:
+    """Flag codes, in words, of violations that rounding allows: |S E S^-1 - E| <= 2 |E|."""
     rounding, check = findings.audit.rounding_mev, findings.interpolation
     mesh = None if check is None else check.mesh_occupied_mev
     measured = (
-        (findings.time_reversal.violation_mev, criteria.SYMMETRY_MEV, 2, "broken time reversal"),
-        (findings.inversion.violation_mev, criteria.SYMMETRY_MEV, 2, "broken inversion"),
-        (mesh, criteria.MESH_ENERGY_MEV, 1, "wrong energies on the mesh"),
+        ("time-reversal-broken", findings.time_reversal.violation_mev, criteria.SYMMETRY_MEV, 2),
+        ("symmetry-broken", findings.inversion.violation_mev, criteria.SYMMETRY_MEV, 2),
+        ("interpolation-poor", mesh, criteria.MESH_ENERGY_MEV, 1),
     )
-    return [
-        what
-        for value, limit, factor, what in measured
+    return {
+        code: BY_DIGITS[code]
+        for code, value, limit, factor in measured
         if value is not None and limit < value <= factor * rounding
-    ]
+    }
 
 
 def _hermiticity(findings: Findings) -> Iterator[Flag]:
     violation = findings.audit.hermiticity_mev
     if violation <= criteria.HERMITICITY_MEV:
         return
-    gap = findings.direct_gap_mev
+    gap, reversal = findings.direct_gap_mev, findings.time_reversal
     fatal = gap is not None and violation >= gap
+    # Damage E in one block moves the mean H(k) by at most |E|, and |S E S^-1 - E| <= 2 |E|.
+    excuse = not reversal.present and reversal.violation_mev <= 2 * violation
     yield Flag(
         "not-hermitian",
-        "error" if fatal else "warning",
-        f"H(-R) differs from H(R)† by up to {mev(violation)}; their mean is used.",
+        "error" if fatal or excuse else "warning",
+        f"H(-R) differs from H(R)† by up to {mev(violation)}; their mean is used."
+        + (
+            f" This damage may be all that breaks time reversal, by {mev(reversal.violation_mev)}."
+            if excuse
+            else ""
+        ),
         {"violation_meV": violation, "direct_gap_meV": gap},
         "Check that the file was not edited or mixed from two runs; write it again.",
     )
@@ -127,7 +144,7 @@ def _range(findings: Findings) -> Iterator[Flag]:
             {"n_r": audit.n_r, "mesh_points": points},
             "Use the _hr.dat that Wannier90 wrote, with all R vectors.",
         )
-    elif audit.n_zero_r and audit.weakest_block_mev > criteria.ZERO_BLOCK_MEV:
+    elif audit.n_zero_r and audit.weakest_block_mev > _cut_off_mev(audit):
         yield Flag(
             "range-truncated",
             "warning" if missed is None else "error",
@@ -142,6 +159,11 @@ def _range(findings: Findings) -> Iterator[Flag]:
             },
             "Use the _hr.dat that Wannier90 wrote, without any cut-off.",
         )
+
+
+def _cut_off_mev(audit: HamiltonianAudit) -> float:
+    """What the weakest block must exceed for zero blocks beside it to have been cut off, meV."""
+    return max(criteria.ZERO_BLOCK_MEV, criteria.ZERO_BLOCK_DIGITS * audit.last_digit_mev)
 
 
 def _wrong_number_of_r(findings: Findings, missed_mev: float | None) -> Flag:
@@ -197,11 +219,12 @@ def _centres(findings: Findings) -> Iterator[Flag]:
             "by line, site, l, mr and spin.",
         )
         return
+    home = "their declared sites" if findings.declared.orbitals else "the atoms left for them"
     yield Flag(
         "centres-off",
         "warning",
         f"the centres of {len(test.suspects)} Wannier functions ({_numbers(test.suspects)}) lie up "
-        f"to {furthest:.2f} angstrom from their declared sites. {test.reason}",
+        f"to {furthest:.2f} angstrom from {home}. {test.reason}",
         {
             "wannier_functions": [i + 1 for i in test.suspects],
             "largest_offset_ang": furthest,
@@ -222,16 +245,7 @@ def _numbers(functions: tuple[int, ...]) -> str:
 def _structure(findings: Findings) -> Iterator[Flag]:
     declared = findings.declared
     if declared.structure_cell is not None:
-        ours = np.linalg.norm(declared.crystal.cell, axis=1)
-        theirs = np.linalg.norm(declared.structure_cell, axis=1)
-        yield Flag(
-            "cell-mismatch",
-            "warning",
-            f"the cell of {declared.structure_file} is not the Hamiltonian's: lengths "
-            f"{_lengths(theirs)} against {_lengths(ours)} angstrom; the Hamiltonian's is used.",
-            {"structure_ang": theirs.tolist(), "hamiltonian_ang": ours.tolist()},
-            "Give the structure in the cell of the Wannier90 run, or remove the file.",
-        )
+        yield _other_cell(findings, declared.structure_cell)
     offset = declared.structure_offset_ang
     if offset is not None and offset > criteria.SAME_ATOM_ANG:
         moved = "another composition" if np.isinf(offset) else f"atoms up to {offset:.2f} angstrom"
@@ -243,6 +257,49 @@ def _structure(findings: Findings) -> Iterator[Flag]:
             {"largest_offset_ang": None if np.isinf(offset) else offset},
             "Use the structure that the Wannier90 run was made with.",
         )
+
+
+def _other_cell(findings: Findings, structure_cell: FloatArray) -> Flag:
+    """A cell of the same lattice costs nothing; any other is another crystal."""
+    declared = findings.declared
+    relation = declared.structure_relation
+    ours = np.linalg.norm(declared.crystal.cell, axis=1)
+    theirs = np.linalg.norm(structure_cell, axis=1)
+    related = relation is not None and relation.kind != "unrelated" and relation.larger != "second"
+    return Flag(
+        "cell-mismatch",
+        "info" if related else "warning",
+        f"the cell of {declared.structure_file} is not the Hamiltonian's: lengths "
+        f"{_lengths(theirs)} against {_lengths(ours)} angstrom; {_relation(relation)}.",
+        {
+            "structure_ang": theirs.tolist(),
+            "hamiltonian_ang": ours.tolist(),
+            "relation": "unrelated" if relation is None else relation.kind,
+            "matrix": None
+            if relation is None or relation.matrix is None
+            else relation.matrix.reshape(-1).tolist(),
+        },
+        "Nothing, if atoms and space group in this report are as expected."
+        if related
+        else "Give the structure in the cell of the Wannier90 run, or remove the file.",
+    )
+
+
+def _relation(relation: CellRelation | None) -> str:
+    if relation is None or relation.kind == "unrelated":
+        return "no integer matrix relates the two, and the Hamiltonian's is used"
+    turned = ", turned," if relation.turned else ""
+    if relation.kind == "supercell" and relation.larger == "first":
+        return (
+            f"it is a supercell{turned} of {relation.multiple} of the Hamiltonian's, in which its "
+            "atoms are told"
+        )
+    if relation.kind == "supercell":
+        return (
+            f"the Hamiltonian's is a supercell{turned} of {relation.multiple} of it, and its own "
+            "atoms are used"
+        )
+    return f"both{turned} span the same lattice, and the Hamiltonian's vectors are used"
 
 
 def _cells(cells: tuple[tuple[int, int, int], ...]) -> str:

@@ -6,11 +6,11 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from topovet.notation import mev, z2_text
-from topovet.symmetry.spacegroup import nearest_centre_distance
+from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+from topovet.verdict.flags_declaration import declaration_flags
 
 
 def symmetry_flags(findings: Findings) -> Iterator[Flag]:
@@ -18,8 +18,7 @@ def symmetry_flags(findings: Findings) -> Iterator[Flag]:
     yield from _spin_order(findings)
     yield from _time_reversal(findings)
     yield from _spin_orbit(findings)
-    yield from _centre(findings)
-    yield from _declaration(findings)
+    yield from declaration_flags(findings)
     yield from _inversion(findings)
     yield from _group(findings)
 
@@ -149,36 +148,6 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
     )
 
 
-def _declaration(findings: Findings) -> Iterator[Flag]:
-    """Inversion as declared against inversion as the Hamiltonian itself has it."""
-    declared, inferred = findings.inversion, findings.inferred
-    if declared.basis != "declared" or declared.violation_r_mev is None:
-        return
-    if inferred is None or inferred.reliability != "good" or inferred.max_residual_mev is None:
-        return
-    limit = max(criteria.SYMMETRY_MEV, criteria.INFERENCE_GAIN * inferred.max_residual_mev)
-    if declared.violation_r_mev <= limit:
-        return
-    mended = findings.inferred_parity
-    z2 = None if mended is None or mended.status != "ok" else mended.z2
-    beside = "" if z2 is None else f" On that reading parities give Z2 = {z2_text(z2)}."
-    yield Flag(
-        "orbital-declaration-wrong",
-        "error",
-        f"inversion built from the declared orbitals misses by {mev(declared.violation_r_mev)}, "
-        f"inferred from the Hamiltonian itself it holds to {mev(inferred.max_residual_mev)}: kind, "
-        f"order or spin of the declared projections is wrong.{beside}",
-        {
-            "declared_residual_meV": declared.violation_r_mev,
-            "inferred_residual_meV": inferred.max_residual_mev,
-            "eigenvalue_ratio": inferred.eigenvalue_ratio,
-            "z2_if_inferred": None if z2 is None else list(z2),
-        },
-        "Take the projections of the run that made the Hamiltonian, or remove the projections "
-        "block: inversion is then inferred.",
-    )
-
-
 def _group(findings: Findings) -> Iterator[Flag]:
     """Operations that the structure has and the Hamiltonian lacks; inversion has its own flag."""
     group = findings.group
@@ -224,26 +193,6 @@ def _inversion_beyond_gap(findings: Findings) -> bool:
     missing_shifts = findings.audit.shift_source == "not available"
     violation = test.violation_trim_mev if missing_shifts else test.violation_mev
     return gap is not None and violation is not None and violation >= gap
-
-
-def _centre(findings: Findings) -> Iterator[Flag]:
-    declared, group = findings.declared.settings.inversion_centre, findings.space_group
-    if declared is None or group is None or not len(group.centres_frac):
-        return
-    distance = nearest_centre_distance(
-        np.array(declared), group.centres_frac, findings.declared.crystal.cell
-    )
-    if distance <= 2 * group.symprec_ang:
-        return
-    nearest = ", ".join(f"{c:g}" for c in group.centres_frac[0])
-    yield Flag(
-        "inversion-centre-shifted",
-        "error",
-        f"the inversion centre in case.toml lies {distance:.3f} angstrom from the nearest one of "
-        "the structure.",
-        {"distance_ang": distance, "structure_centre": group.centres_frac[0].tolist()},
-        f"Remove inversion_centre from case.toml, or set it to a centre such as [{nearest}].",
-    )
 
 
 def _finite(value: float) -> float | None:

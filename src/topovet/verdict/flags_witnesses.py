@@ -10,6 +10,7 @@ from topovet.verdict import criteria
 from topovet.verdict.agreement import weigh
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
 from topovet.verdict.conclude import witness_statements
+from topovet.verdict.crystalline import indicator_conflicts
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 
@@ -19,6 +20,7 @@ def witness_flags(findings: Findings) -> Iterator[Flag]:
     yield from _parity(findings)
     yield from _wilson(findings)
     yield from _disagreement(findings)
+    yield from _mirrors(findings)
     yield from _error_bar(findings)
 
 
@@ -84,6 +86,52 @@ def _disagreement(findings: Findings) -> Iterator[Flag]:
     yield from _chern_against_parity(findings)
 
 
+def _mirrors(findings: Findings) -> Iterator[Flag]:
+    """Mirror Chern numbers against Z2, against rotation eigenvalues, and against the gap."""
+    mirror = findings.mirror
+    if mirror is None:
+        return
+    agreed = weigh(witness_statements(findings)).z2
+    dimension = findings.declared.crystal.dimension
+    wrong = mirror.contradicts(agreed) if agreed is not None else ()
+    if wrong or not mirror.allowed_z2(dimension):
+        shown = wrong or mirror.planes
+        numbers = {p.name: p.number for p in shown if p.number is not None}
+        yield Flag(
+            "witnesses-disagree",
+            "error",
+            "mirror Chern numbers have another parity than the Z2 indices give their planes: "
+            + ", ".join(f"{name}: {n}" for name, n in numbers.items())
+            + ".",
+            {"z2": None if agreed is None else _indices(agreed), **numbers},
+            "The other flags name what breaks the ground of one of them; trust none until it is "
+            "mended.",
+        )
+    for indicator, plane in indicator_conflicts(findings):
+        yield Flag(
+            "witnesses-disagree",
+            "error",
+            f"the mirror Chern number of {plane.name} is {plane.number}, but rotation eigenvalues "
+            f"say {indicator.mirror_chern} modulo {indicator.n}.",
+            {"mirror_chern": plane.number, "by_rotation": indicator.mirror_chern},
+            "A gap that closes on the plane, or a rotation that the Hamiltonian breaks.",
+        )
+    for plane in mirror.planes:
+        closes = None if plane.evidence is None else plane.evidence.closes_near
+        if closes is None:
+            continue
+        yield Flag(
+            "gap-closes",
+            "error",
+            f"the number of filled states of either mirror eigenvalue differs between two points "
+            f"of the mirror plane {plane.name}: the gap closes between them, though sampling did "
+            "not meet it.",
+            {"mirror_plane": plane.name, "k": list(closes)},
+            "Look at the bands of this plane on a fine mesh; if they cross there, the compound is "
+            "a nodal-line or Dirac semimetal.",
+        )
+
+
 def _indices(z2: tuple[int | None, ...]) -> str:
     """1;(000), with "?" for an index the witness does not know."""
     strong, *weak = ["?" if value is None else str(value) for value in z2]
@@ -121,7 +169,7 @@ def _error_bar(findings: Findings) -> Iterator[Flag]:
     yield Flag(
         "inside-error-bar",
         "warning",
-        f"the known errors add up to {mev(total)}, the robustness radius (half of the sampled "
+        f"the known errors add up to {mev(total)}, the robustness radius (half of the "
         f"direct gap) is {mev(radius)}.",
         {"errors_meV": total, "radius_meV": radius}
         | {f"{name}_meV": value for name, value in budget.items()},

@@ -6,8 +6,6 @@ B   as A, but with one witness or with a gap that was only sampled;
 C   a verdict that stands, with a warning that touches it or an error budget above half of the
     radius;
 D   undetermined.
-
-This version samples the gap, so B is the best it gives.
 """
 
 from __future__ import annotations
@@ -33,7 +31,7 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
     reasons = [
         *conclusion.grounds,
         _voices(conclusion),
-        "the gap is sampled, not proved",
+        _gap(findings),
     ]
     warnings = [
         flag.code
@@ -49,7 +47,18 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
         )
     if warnings:
         reasons.append("warnings that touch the verdict: " + ", ".join(dict.fromkeys(warnings)))
-    return ConfidenceEntry("C" if warnings or too_large else "B", tuple(reasons))
+    best = conclusion.agreement == "agree" and findings.proved_gap_mev is not None
+    letter = "C" if warnings or too_large else "A" if best else "B"
+    return ConfidenceEntry(letter, tuple(reasons))
+
+
+def _gap(findings: Findings) -> str:
+    proved, proof = findings.proved_gap_mev, findings.gap_proof
+    if proved is not None:
+        return f"the gap is proved to exceed {mev(proved)} at every k"
+    if proof is not None and proof.reason:
+        return f"the gap is sampled, not proved ({proof.reason})"
+    return "the gap is sampled, not proved"
 
 
 def _voices(conclusion: Conclusion) -> str:

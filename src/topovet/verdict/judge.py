@@ -7,15 +7,20 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 import topovet
+from topovet.diagnosis.results import Experiments
 from topovet.invariants.results import ChernWitness
 from topovet.verdict.budget import error_budget, robustness_radius
 from topovet.verdict.conclude import conclude
+from topovet.verdict.diagnose import diagnose
 from topovet.verdict.document import (
     CaseEntry,
+    DiagnosisEntry,
     ElectronsEntry,
     GapEntry,
     InputEntry,
     InversionEntry,
+    LowerGapEntry,
+    MirrorEntry,
     ParityEntry,
     ProvenanceEntry,
     RobustnessEntry,
@@ -28,12 +33,10 @@ from topovet.verdict.document import (
     WitnessesEntry,
 )
 from topovet.verdict.findings import Findings
-from topovet.verdict.flags import SEVERITIES, Flag
-from topovet.verdict.flags_intake import intake_flags
-from topovet.verdict.flags_spectrum import spectrum_flags
-from topovet.verdict.flags_symmetry import symmetry_flags
-from topovet.verdict.flags_witnesses import witness_flags
+from topovet.verdict.flags import Flag
 from topovet.verdict.grade import grade
+from topovet.verdict.inquiry import Inquiry
+from topovet.verdict.raised import raise_flags
 
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
 """Libraries whose versions can change a number or a figure."""
@@ -43,6 +46,7 @@ NOT_IN_THIS_VERSION = "not part of this version"
 
 def judge(
     findings: Findings,
+    experiments: Experiments | None = None,
     *,
     inputs: Sequence[InputEntry],
     settings: Mapping[str, Any],
@@ -54,6 +58,8 @@ def judge(
     ----------
     findings
         Results of all steps.
+    experiments
+        Of a case that is in doubt.
     inputs
         The files that were read, with their hashes.
     settings
@@ -98,11 +104,16 @@ def judge(
             parity=_parity(findings),
             wilson=_wilson(findings),
             surface=SurfaceEntry("not-applicable", NOT_IN_THIS_VERSION),
+            mirror=_mirror(findings),
         ),
         invariants=conclusion.invariants,
         agreement=conclusion.agreement,
         class_=conclusion.class_,
-        robustness=RobustnessEntry(radius_meV=radius, errors_meV=error_budget(findings)),
+        robustness=RobustnessEntry(
+            radius_meV=radius,
+            errors_meV=error_budget(findings),
+            proved=findings.proved_gap_mev is not None,
+        ),
         flags=flags,
         confidence=grade(findings, conclusion, flags),
         measurable={},
@@ -112,18 +123,17 @@ def judge(
             settings=dict(settings),
             task_seconds=dict(task_seconds),
         ),
+        diagnosis=_diagnosis(findings, flags, experiments),
+        lower_gaps=_lower_gaps(findings),
     )
 
 
-def raise_flags(findings: Findings) -> tuple[Flag, ...]:
-    """All flags, the most severe first."""
-    raised = [
-        *intake_flags(findings),
-        *symmetry_flags(findings),
-        *spectrum_flags(findings),
-        *witness_flags(findings),
-    ]
-    return tuple(sorted(raised, key=lambda flag: -SEVERITIES.index(flag.severity)))
+def _diagnosis(
+    findings: Findings, flags: tuple[Flag, ...], experiments: Experiments | None
+) -> DiagnosisEntry:
+    if experiments is None:
+        return DiagnosisEntry()
+    return diagnose(Inquiry(findings, flags, experiments))
 
 
 def _case(findings: Findings) -> CaseEntry:
@@ -139,15 +149,16 @@ def _case(findings: Findings) -> CaseEntry:
 
 
 def _gap(findings: Findings) -> GapEntry:
-    gap = findings.gap
+    gap, proved = findings.gap, findings.proved_gap_mev
     if gap is None:
         return GapEntry(None, None, None, None, "unresolved")
     return GapEntry(
         direct_eV=gap.direct_ev,
-        direct_proved_min_eV=None,
+        direct_proved_min_eV=None if proved is None else proved / 1000.0,
         direct_k=gap.direct_k,
         indirect_eV=gap.indirect_ev,
         status=gap.status,
+        method="sampled" if proved is None else "proved",
     )
 
 
@@ -160,6 +171,46 @@ def _parity(findings: Findings) -> ParityEntry:
         TrimEntry(t.k, t.n_plus, t.n_minus, t.delta, t.purity, t.gap_ev) for t in parity.trim
     )
     return ParityEntry(parity.status, parity.reason, parity.z2, parity.z4, trim)
+
+
+def _lower_gaps(findings: Findings) -> tuple[LowerGapEntry, ...] | None:
+    if findings.lower is None:
+        return None
+    return tuple(
+        LowerGapEntry(
+            filling=g.filling,
+            direct_eV=g.direct_gap_ev,
+            direct_k=g.direct_k,
+            indirect_eV=g.indirect_gap_ev,
+            status=g.status,
+            reason=g.reason,
+            parity_z2=g.parity_z2,
+            z4=g.z4,
+            wilson_z2=g.wilson_z2,
+            chern=g.chern[0] if g.chern is not None and len(g.chern) == 1 else g.chern,
+        )
+        for g in findings.lower.groups
+    )
+
+
+def _mirror(findings: Findings) -> MirrorEntry:
+    mirror = findings.mirror
+    if mirror is None:
+        return MirrorEntry("not-applicable", findings.missing.get("mirror-chern", "not tested"))
+    planes = tuple(
+        {
+            "plane": p.name,
+            "mirror_chern": p.number,
+            "status": p.status,
+            "reason": p.reason,
+            "normal": list(p.normal_cart),
+            "mirror_through": list(p.through),
+            "violation_meV": p.judged_mev,
+            "taken_from": p.taken_from,
+        }
+        for p in mirror.planes
+    )
+    return MirrorEntry(mirror.status, mirror.reason, planes)
 
 
 def _wilson(findings: Findings) -> WilsonEntry:

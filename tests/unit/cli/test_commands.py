@@ -75,6 +75,8 @@ def test_strict_turns_error_flags_into_exit_code_3(case: Path, tmp_path: Path) -
         (("--filling", "2", "--fermi", "0"), "give --filling or --fermi, not both"),
         (("--surface", "0,0"), "is not three integers such as 0,0,1"),
         (("--surface", "0,0,0"), "Miller indices cannot all be 0"),
+        (("--lower-gaps", "2,x"), "is neither all nor numbers such as 10,14"),
+        (("--lower-gaps", "0"), "numbers of bands begin with 1"),
         (("--filling", "0"), "0 is not in the range"),
         (("--effort", "heroic"), "is not one of"),
     ],

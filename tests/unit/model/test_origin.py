@@ -10,7 +10,7 @@ from topovet.model.origin import common_shift
 
 def test_common_shift_of_scattered_centres() -> None:
     rng = np.random.default_rng(0)
-    crystal = Crystal(6 * np.eye(3), (), ())
+    crystal = Crystal(6 * np.eye(3), (), np.zeros((0, 3)))
     declared = rng.random((12, 3))
     moved = declared + np.array([0.2, 0.0, -0.1]) + rng.integers(-2, 3, (12, 3))
     scattered = moved + rng.uniform(-0.02, 0.02, (12, 3))

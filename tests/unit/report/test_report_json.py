@@ -76,6 +76,10 @@ def test_schema_knows_every_flag_code(schema: dict[str, Any]) -> None:
     assert tuple(flag["severity"]["enum"]) == SEVERITIES
 
 
+LATER = {"diagnosis", "mirror", "lower_gaps"}
+"""Keys that older dossiers lack and that a reader must not ask for."""
+
+
 def test_schema_follows_the_dataclasses(schema: dict[str, Any]) -> None:
     compared = _compare(Verdict, schema)
     assert compared >= 15
@@ -86,7 +90,7 @@ def _compare(entry: Any, node: dict[str, Any]) -> int:
     hints = typing.get_type_hints(entry)
     names = {f.name.rstrip("_") for f in dataclasses.fields(entry)}
     assert set(node["properties"]) == names, entry
-    assert set(node["required"]) == names, entry
+    assert set(node["required"]) == names - LATER, entry
     assert node["additionalProperties"] is False
     met = 1
     for field in dataclasses.fields(entry):
@@ -141,7 +145,7 @@ def test_schema_refuses(
 
 def test_every_required_key_is_required(validator: jsonschema.Draft202012Validator) -> None:
     whole = _document(invented.strong().verdict)
-    for key in whole:
+    for key in set(whole) - LATER:
         assert not validator.is_valid({k: v for k, v in whole.items() if k != key}), key
 
 

@@ -70,6 +70,7 @@ def _band_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
             gap=gap,
             fermi_ev=material.electrons.fermi_ev,
             trim=trim,
+            irreps=material.irreps,
             window_ev=window_ev,
             name=name,
         )

@@ -10,15 +10,18 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from topovet.arrays import FloatArray
+from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.results import TrimParity
 from topovet.notation import ev, one_line
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import bare, drawing, new_figure, to_svg
+from topovet.report.figures.irrep_labels import Frame, IrrepLabel, draw_irreps, place_irreps
 from topovet.report.figures.parity_marks import (
     PLOT_HEIGHT_PT,
     PLOT_WIDTH_PT,
     draw_parities,
     legend_marks,
+    place_parities,
 )
 from topovet.spectrum.results import BandPath, GapSample
 
@@ -30,6 +33,8 @@ _WIDTH_IN, _HEIGHT_IN = 8.8, 5.4
 _LETTER_PT = 8.0
 _COINCIDE_PT = 0.1
 """Bands that stay this close are drawn once: a fraction of the finest line."""
+_MARGIN = 0.012
+"""Of the length of the path, left free at either end."""
 _DEPTH_EV, _HEADROOM_EV = 8.0, 2.5
 
 
@@ -63,6 +68,7 @@ def bands_figure(
     gap: GapSample | None = None,
     fermi_ev: float | None = None,
     trim: Sequence[TrimParity] = (),
+    irreps: Sequence[PointIrreps] = (),
     window_ev: tuple[float, float] | None = None,
     name: str = "bands",
 ) -> str:
@@ -80,6 +86,8 @@ def bands_figure(
         Fermi energy in eV; the zero where there is no insulating gap.
     trim
         Parities of all levels; drawn where the path meets their k.
+    irreps
+        Irreps at special points; the levels next to the gap are labelled.
     window_ev
         Lowest and highest energy shown, eV, relative to the zero.
     name
@@ -95,10 +103,18 @@ def bands_figure(
         _shade(axes, bands, energies, n_occ, gap, zero)
         _draw_fermi(axes, fermi_ev, zero)
         _draw_bands(axes, bands, energies, n_occ)
-        met = draw_parities(axes, bands, trim, zero.ev, (low, high))
+        marks = place_parities(bands, trim, zero.ev, (low, high))
+        draw_parities(axes, marks)
+        met, frame = {mark.kind for mark in marks}, _plot_frame(bands, (low, high))
+        centres = np.array([[mark.distance, mark.energy_ev] for mark in marks]).reshape(-1, 2)
+        centres = np.stack([frame.x_pt(centres[:, 0]), frame.y_pt(centres[:, 1])], axis=1)
+        labels = place_irreps(bands, irreps, n_occ, zero.ev, frame, centres)
+        draw_irreps(axes, labels, frame)
         _legend(figure, axes, met, gap)
         title = f"Band structure from {low:.1f} to {high:.1f} eV about {zero.name}"
-        return to_svg(figure, name, title=title, description=_words(bands, n_occ, zero, met))
+        return to_svg(
+            figure, name, title=title, description=_words(bands, n_occ, zero, met, labels)
+        )
 
 
 def wide_window(energies: FloatArray, n_occ: int) -> tuple[float, float]:
@@ -121,7 +137,7 @@ def near_gap_window(gap: GapSample) -> tuple[float, float]:
 def _frame(axes: Axes, bands: BandPath, zero: EnergyZero, window: tuple[float, float]) -> None:
     length = float(bands.distance[-1]) or 1.0
     positions, labels = _path_labels(bands)
-    axes.set_xlim(-0.012 * length, 1.012 * length)
+    axes.set_xlim(-_MARGIN * length, (1 + _MARGIN) * length)
     axes.set_ylim(*window)
     axes.set_xticks(positions, _staggered(positions, labels, length * _LETTER_PT / PLOT_WIDTH_PT))
     axes.tick_params(axis="x", length=0, pad=6, labelsize=10.5)
@@ -266,9 +282,29 @@ def _legend(figure: Figure, axes: Axes, met: set[str], gap: GapSample | None) ->
     )
 
 
-def _words(bands: BandPath, n_occ: int, zero: EnergyZero, met: set[str]) -> str:
+def _plot_frame(bands: BandPath, window: tuple[float, float]) -> Frame:
+    length = float(bands.distance[-1]) or 1.0
+    return Frame(
+        left=-_MARGIN * length,
+        length=(1 + 2 * _MARGIN) * length,
+        low=window[0],
+        height=window[1] - window[0],
+        width_pt=PLOT_WIDTH_PT,
+        height_pt=PLOT_HEIGHT_PT,
+    )
+
+
+def _words(
+    bands: BandPath,
+    n_occ: int,
+    zero: EnergyZero,
+    met: set[str],
+    labels: Sequence[IrrepLabel],
+) -> str:
     names = ", ".join(_path_labels(bands)[1])
     marks = f" Parity marks at the TRIM: {', '.join(sorted(met))}." if met else ""
+    if labels:
+        marks += f" Irreps beside the levels next to the gap: {', '.join(x.text for x in labels)}."
     return (
         f"Bands along {names}; energies in eV from {zero.name}, {ev(zero.ev)} in the file. "
         f"The lowest {n_occ} bands are filled and drawn heavy.{marks}"

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -44,36 +45,47 @@ _MARKS: dict[str, dict[str, Any]] = {
 }
 
 
-def draw_parities(
-    axes: Axes,
-    bands: BandPath,
-    trim: Sequence[TrimParity],
-    zero_ev: float,
-    window: tuple[float, float],
-) -> set[str]:
-    """Marks at every TRIM on the path; which kinds were drawn."""
+@dataclass(frozen=True, slots=True)
+class Mark:
+    """One mark: distance along the path, energy shown in eV, and its kind."""
+
+    distance: float
+    energy_ev: float
+    kind: str
+
+
+def place_parities(
+    bands: BandPath, trim: Sequence[TrimParity], zero_ev: float, window: tuple[float, float]
+) -> tuple[Mark, ...]:
+    """Marks at every TRIM on the path; those that would overlap stand side by side."""
     ev_per_mark = _MARK_PT * (window[1] - window[0]) / PLOT_HEIGHT_PT
     k_per_mark = 1.15 * _MARK_PT * float(bands.distance[-1]) / PLOT_WIDTH_PT
-    drawn: set[str] = set()
+    marks: list[Mark] = []
     for x, side, parity in _trim_on_path(bands, trim):
         levels = np.asarray(parity.level_energies_ev) - zero_ev
         shown = (levels > window[0]) & (levels < window[1])
         kinds = [parity_kind(p) for p, s in zip(parity.level_parities, shown, strict=True) if s]
-        drawn.update(kinds)
         places = spread(levels[shown], ev_per_mark)
         if side and len(places):
             places += side * (0.6 + np.abs(places).max())
-        for energy, place, kind in zip(levels[shown], places, kinds, strict=True):
-            axes.plot(
-                [x + place * k_per_mark],
-                [energy],
-                markersize=_MARK_PT,
-                markeredgewidth=1.0,
-                clip_on=False,
-                zorder=4,
-                **_MARKS[kind],
-            )
-    return drawn
+        marks += [
+            Mark(x + float(place) * k_per_mark, float(energy), kind)
+            for energy, place, kind in zip(levels[shown], places, kinds, strict=True)
+        ]
+    return tuple(marks)
+
+
+def draw_parities(axes: Axes, marks: Sequence[Mark]) -> None:
+    for mark in marks:
+        axes.plot(
+            [mark.distance],
+            [mark.energy_ev],
+            markersize=_MARK_PT,
+            markeredgewidth=1.0,
+            clip_on=False,
+            zorder=4,
+            **_MARKS[mark.kind],
+        )
 
 
 def parity_kind(parity: float) -> str:

@@ -15,10 +15,13 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.arrays import FloatArray, IntArray, frozen
-from topovet.model.nearest_image import reduce_cell
+from topovet.model.nearest_image import nearest_images, reduce_cell
 
 CELL_TOLERANCE_ANG = 0.01
 """Lattice vectors that agree this well are the same; files carry few digits."""
+
+ATOM_TOLERANCE_ANG = 0.05
+"""Atoms of a larger cell nearer than this, modulo the smaller lattice, are one."""
 
 MAX_MULTIPLE = 64
 """Largest supercell that is looked for."""
@@ -99,6 +102,49 @@ def relate_cells(
             if best is None or _preference(found) < _preference(best):
                 best = found
     return best or _UNRELATED
+
+
+def atoms_in_cell(
+    symbols: tuple[str, ...],
+    positions_frac: FloatArray,
+    cell: FloatArray,
+    other: FloatArray,
+    relation: CellRelation,
+) -> tuple[tuple[str, ...], FloatArray] | None:
+    """Atoms of one cell told in another that holds as many or fewer of them.
+
+    Parameters
+    ----------
+    symbols, positions_frac, cell
+        Elements, (n, 3) fractional and (3, 3) angstrom.
+    other
+        (3, 3) the cell that is asked for.
+    relation
+        relate_cells(cell, other).
+
+    Returns
+    -------
+    tuple or None
+        Elements and fractional positions in [0, 1); None where the cells are unrelated, `other` is
+        the larger, or the atoms do not repeat with its lattice.
+    """
+    if relation.rotation is None or relation.larger == "second":
+        return None
+    at = (positions_frac @ cell) @ relation.rotation.T @ np.linalg.inv(other)
+    kept: list[int] = []
+    images = np.zeros(0, dtype=np.int64)
+    for n in range(len(at)):
+        distance = nearest_images(at[kept] - at[n], other)[1] if kept else np.zeros(0)
+        alike = [symbols[i] == symbols[n] for i in kept]
+        same = np.flatnonzero((distance < ATOM_TOLERANCE_ANG) & np.array(alike, dtype=bool))
+        if len(same):
+            images[same[0]] += 1
+            continue
+        kept.append(n)
+        images = np.append(images, 1)
+    if len(kept) * relation.multiple != len(at) or (images != relation.multiple).any():
+        return None
+    return tuple(symbols[n] for n in kept), np.asarray(at[kept] % 1.0)
 
 
 _UNRELATED = CellRelation("unrelated", "", 0, None, None, None)

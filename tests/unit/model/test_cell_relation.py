@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
-from topovet.symmetry.cell_relation import relate_cells
+from topovet.model.cell_relation import atoms_in_cell, relate_cells
 
 TRICLINIC = np.array([[4.1, 0.0, 0.2], [0.9, 5.3, 0.0], [-0.4, 1.1, 6.7]])
 TURN = Rotation.from_rotvec([0.3, -0.8, 0.5]).as_matrix()
@@ -99,3 +99,40 @@ def test_tolerance_is_what_it_says() -> None:
     stretched[0, 0] += 0.015
     assert relate_cells(stretched, TRICLINIC).kind == "unrelated"
     assert relate_cells(stretched, TRICLINIC, tolerance_ang=0.02).kind == "identical"
+
+
+def test_atoms_of_a_conventional_cell_come_out_in_the_primitive_one() -> None:
+    """Rock salt: eight atoms in the cube are two in the face-centred cell, turned or not."""
+    cube = 6.0 * np.eye(3)
+    primitive = 3.0 * np.array([[0, 1, 1], [1, 0, 1], [1, 1, 0]], dtype=float)
+    turn = np.array([[0.0, 1, 0], [-1, 0, 0], [0, 0, 1]])
+    corners = np.array([[0, 0, 0], [0, 0.5, 0.5], [0.5, 0, 0.5], [0.5, 0.5, 0]])
+    positions = np.concatenate([corners, corners + np.array([0.5, 0, 0])]) % 1.0
+    symbols = ("Pb",) * 4 + ("Te",) * 4
+    for cell in (cube, cube @ turn):
+        relation = relate_cells(cell, primitive)
+        found = atoms_in_cell(symbols, positions, cell, primitive, relation)
+        assert found is not None
+        assert found[0] == ("Pb", "Te")
+        apart = (found[1][1] - found[1][0] - 0.5 + 0.5) % 1.0 - 0.5
+        np.testing.assert_allclose(apart, 0.0, atol=1e-9)
+
+
+def test_atoms_that_break_the_smaller_lattice_are_not_mapped() -> None:
+    cell, small = np.diag([8.0, 4.0, 4.0]), 4.0 * np.eye(3)
+    relation = relate_cells(cell, small)
+    assert relation.kind == "supercell"
+    moved = np.array([[0.0, 0, 0], [0.55, 0, 0]])
+    assert atoms_in_cell(("Sb", "Sb"), moved, cell, small, relation) is None
+    assert (
+        atoms_in_cell(("Sb", "Bi"), np.array([[0.0, 0, 0], [0.5, 0, 0]]), cell, small, relation)
+        is None
+    )
+
+
+def test_a_smaller_or_unrelated_cell_has_no_atoms_to_give() -> None:
+    small, large = 4.0 * np.eye(3), np.diag([8.0, 4.0, 4.0])
+    at = np.zeros((1, 3))
+    assert atoms_in_cell(("Sb",), at, small, large, relate_cells(small, large)) is None
+    odd = 4.1 * np.eye(3)
+    assert atoms_in_cell(("Sb",), at, odd, small, relate_cells(odd, small)) is None

@@ -1,0 +1,1 @@
+"""Lattice models of the literature enter, an invented campaign of case folders leaves."""

@@ -1,0 +1,1 @@
+"""Discriminating experiments: the case read in other ways, each put to the witnesses."""

@@ -1,0 +1,35 @@
+"""What the tests of whole screens share."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+
+from screening_runs import QUICK, Program, copy_program, results, write_small_cases
+
+
+@pytest.fixture(scope="session")
+def program(tmp_path_factory: pytest.TempPathFactory) -> Program:
+    return copy_program(tmp_path_factory.mktemp("program"))
+
+
+@pytest.fixture(scope="session")
+def twelve(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Twelve small cases."""
+    root = tmp_path_factory.mktemp("twelve")
+    write_small_cases(root, 12)
+    return root
+
+
+@pytest.fixture(scope="session")
+def undisturbed(
+    program: Program, twelve: Path, tmp_path_factory: pytest.TempPathFactory
+) -> dict[str, str]:
+    """What comes out of the twelve cases when nothing happens."""
+    out = tmp_path_factory.mktemp("undisturbed") / "out"
+    done = program.run("screen", twelve, "--out", out, *QUICK)
+    assert done.returncode == 0, done.stderr
+    found = results(out)
+    assert len(found) == 12
+    return found
