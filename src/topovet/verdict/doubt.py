@@ -48,11 +48,11 @@ def reason_for_doubt(findings: Findings, flags: Sequence[Flag]) -> str:
     for severity in ("error", "warning"):
         codes = list(dict.fromkeys(flag.code for flag in flags if flag.severity == severity))
         if codes:
-            return f"flags of severity {severity}: " + ", ".join(codes)
+            return f"there are flags of severity {severity}: " + ", ".join(codes)
     named = (("parities", findings.parity), ("Wilson loops", findings.wilson))
     for name, witness in named:
         if witness is not None and witness.status in ("unresolved", "failed"):
-            return f"{name}: {witness.reason.rstrip('.')}"
+            return f"{name} say nothing: {witness.reason.rstrip('.')}"
     return ""
 
 

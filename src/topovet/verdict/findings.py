@@ -82,3 +82,16 @@ class Findings:
         proof = self.gap_proof
         proved = proof is not None and proof.status == "proved" and proof.proved_min_ev > 0
         return 1000.0 * proof.proved_min_ev if proved and proof is not None else None
+
+    @property
+    def inversion_beyond_gap(self) -> bool:
+        """Whether H may lie beyond a gap closing from its inversion-symmetric average.
+
+        The average is half of the violation away, so indices are safe while the violation is below
+        the gap (Weyl). Shifts that are not available break inversion between mesh points only,
+        which is an artefact of reading: there the TRIM, which are mesh points, decide.
+        """
+        test, gap = self.inversion, self.direct_gap_mev
+        missing_shifts = self.audit.shift_source == "not available"
+        violation = test.violation_trim_mev if missing_shifts else test.violation_mev
+        return gap is not None and violation is not None and violation >= gap

@@ -127,16 +127,13 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
     if violation is None or at_trim is None or violation <= criteria.SYMMETRY_MEV:
         return
     readable = findings.parity is None or findings.parity.status == "ok"
+    beyond = findings.inversion_beyond_gap
     yield Flag(
         "symmetry-broken",
-        "warning" if readable and not _inversion_beyond_gap(findings) else "error",
+        "warning" if readable and not beyond else "error",
         f"the Hamiltonian breaks the inversion of its structure by {mev(violation)} between "
         f"mesh points and {mev(at_trim)} at the TRIM; "
-        + (
-            "the indices are those of its inversion-symmetric average."
-            if readable
-            else "either it lacks this symmetry or its orbitals are not the declared ones."
-        ),
+        + _what_parities_mean(readable=readable, beyond=beyond),
         {
             "violation_meV": violation,
             "violation_trim_meV": at_trim,
@@ -146,6 +143,17 @@ def _inversion(findings: Findings) -> Iterator[Flag]:
         "Read the Hamiltonian with its _wsvec.dat file (or centres and mp_grid); if that is done, "
         "check the declared projections, use some that respect the symmetry, and check the window.",
     )
+
+
+def _what_parities_mean(*, readable: bool, beyond: bool) -> str:
+    if not readable:
+        return "either it lacks this symmetry or its orbitals are not the declared ones."
+    if beyond:
+        return (
+            "the gap may close on the way to its inversion-symmetric average, to which the "
+            "parities belong."
+        )
+    return "parities are those of its inversion-symmetric average, with no gap closing between."
 
 
 def _group(findings: Findings) -> Iterator[Flag]:
@@ -180,19 +188,6 @@ def _group(findings: Findings) -> Iterator[Flag]:
         else "Check that structure and Hamiltonian are of one run: strain, magnetism or another "
         "structure lower the group.",
     )
-
-
-def _inversion_beyond_gap(findings: Findings) -> bool:
-    """Whether H may lie beyond a gap closing from its symmetric average.
-
-    The average is half of the violation away, so indices are safe while the violation is below the
-    gap (Weyl). Shifts that are not available break inversion between mesh points only, which is an
-    artefact of reading: there the TRIM, which are mesh points, decide.
-    """
-    test, gap = findings.inversion, findings.direct_gap_mev
-    missing_shifts = findings.audit.shift_source == "not available"
-    violation = test.violation_trim_mev if missing_shifts else test.violation_mev
-    return gap is not None and violation is not None and violation >= gap
 
 
 def _finite(value: float) -> float | None:

@@ -9,6 +9,7 @@ from typing import Any
 import topovet
 from topovet.diagnosis.results import Experiments
 from topovet.invariants.results import ChernWitness
+from topovet.notation import mev
 from topovet.verdict.budget import error_budget, robustness_radius
 from topovet.verdict.conclude import conclude
 from topovet.verdict.diagnose import diagnose
@@ -93,13 +94,7 @@ def judge(
             violation_meV=_finite(findings.time_reversal.violation_mev),
             spin_order=findings.spin_order.found,
         ),
-        inversion=InversionEntry(
-            present=findings.inversion.present,
-            centre=findings.inversion.centre,
-            violation_meV=findings.inversion.violation_mev,
-            basis=findings.inversion.basis,
-            reason=findings.inversion.reason,
-        ),
+        inversion=_inversion(findings),
         witnesses=WitnessesEntry(
             parity=_parity(findings),
             wilson=_wilson(findings),
@@ -159,6 +154,21 @@ def _gap(findings: Findings) -> GapEntry:
         indirect_eV=gap.indirect_ev,
         status=gap.status,
         method="sampled" if proved is None else "proved",
+    )
+
+
+def _inversion(findings: Findings) -> InversionEntry:
+    """Present where it can be built and no gap can close on the way to having it exactly."""
+    test, reason = findings.inversion, findings.inversion.reason
+    broken = test.present and findings.inversion_beyond_gap
+    if broken:
+        reason = f"broken by {mev(test.violation_mev)}, more than the direct gap"
+    return InversionEntry(
+        present=test.present and not broken,
+        centre=test.centre,
+        violation_meV=test.violation_mev,
+        basis=test.basis,
+        reason=reason,
     )
 
 

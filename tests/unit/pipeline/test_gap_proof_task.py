@@ -28,7 +28,7 @@ def test_certificate_is_kept_and_holds_when_read_again(case: Path, tmp_path: Pat
     assert 1.9 - 1e-9 <= verdict.gap.direct_proved_min_eV <= 2.0 + 1e-9
     again = start_run(case, out=tmp_path / "dossier")
     kept: ProvedGap = again.result("gap-proof")
-    assert {s.name: s.state for s in again.trail}["gap-proof"] == "cached"
+    assert again.states["gap-proof"].state == "cached"
     assert kept.proof.n_operations > 1
     model = again.result("hamiltonian-with-basis").lattice.model
     found = recheck(model, kept.certificate)

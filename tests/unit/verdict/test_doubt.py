@@ -27,9 +27,9 @@ def test_sound_case_is_not_in_doubt() -> None:
 def test_reasons_for_doubt() -> None:
     assert reason(replace(SOUND, wilson=wilson((0, 0, 0, 0)))) == "the witnesses disagree"
     errors = reason(changed(electrons={"filling": 5}, decay={"rim_mev": 80.0}))
-    assert errors == "flags of severity error: filling-off"
+    assert errors == "there are flags of severity error: filling-off"
     warnings = reason(changed(decay={"rim_mev": 80.0}))
-    assert warnings == "flags of severity warning: range-truncated"
+    assert warnings == "there are flags of severity warning: range-truncated"
 
 
 def test_an_info_is_no_doubt() -> None:
@@ -38,7 +38,7 @@ def test_an_info_is_no_doubt() -> None:
 
 def test_silent_witness_is_a_doubt_even_without_a_flag() -> None:
     assert reason_for_doubt(replace(SOUND, wilson=wilson(None, "unresolved")), ()) == (
-        "Wilson loops: the budget ended"
+        "Wilson loops say nothing: the budget ended"
     )
 
 
