@@ -93,6 +93,28 @@ def test_missing_partners(sound: HamiltonianFile) -> None:
     assert found.missing_partner_mev == pytest.approx(1e3 * largest)
 
 
+def test_blocks_of_zeros_beside_the_weakest_that_is_none(sound: HamiltonianFile) -> None:
+    assert audit(sound).n_zero_r == 0
+    sound.h_r[row_of(sound, (1, 1, 1))] = 0.0
+    sound.h_r[row_of(sound, (-1, -1, -1))] = 0.0
+    sound.h_r[row_of(sound, (1, 0, 0))] = 0.0
+    sound.h_r[row_of(sound, (1, 0, 0)), 0, 2] = 0.0004j
+    found = audit(sound)
+    assert found.n_zero_r == 2
+    assert found.weakest_block_mev == pytest.approx(0.4)
+    assert found.last_digit_mev == pytest.approx(0.001)
+
+
+def test_file_of_zeros_has_no_weakest_block(sound: HamiltonianFile) -> None:
+    sound.h_r[:] = 0.0
+    found = audit(sound)
+    assert (found.n_zero_r, found.weakest_block_mev) == (27, 0.0)
+
+
+def test_exponent_form_has_no_last_digit(sound: HamiltonianFile) -> None:
+    assert audit(replace(sound, decimals=None)).last_digit_mev == 0.0
+
+
 def test_at_most_ten_vectors_are_named() -> None:
     line = hermitian_file([[i, 0, 0] for i in range(30)] * 2, 1)
     found = audit(line)

@@ -34,23 +34,13 @@ def overlaps_with(singular: FloatArray, rng: np.random.Generator) -> Links:
 
 @pytest.mark.parametrize("lowest", [0.999, 0.9, 0.6, 0.3, 0.01, 1e-6])
 def test_unitary_part_is_that_of_the_svd(lowest: float) -> None:
-    """By polynomials where little is lost, by SVD elsewhere, and both in one batch.
-
-    What is left is a Hermitian factor near 1, to which eigenphases of products are blind.
-    """
+    """By series where little is lost, by SVD elsewhere, and both in one batch."""
     rng = np.random.default_rng(1)
     singular = rng.uniform(lowest, 1.0, size=(20, 5))
     singular[:10] = rng.uniform(0.95, 1.0, size=(10, 5))
     links = overlaps_with(singular, rng)
     w, _, v = np.linalg.svd(links.overlaps)
-    found = unitary_part(links)
-    np.testing.assert_allclose(found, w @ v, atol=2e-5)
-    rest = (w @ v).conj().swapaxes(1, 2) @ found
-    np.testing.assert_allclose(rest, rest.conj().swapaxes(1, 2), atol=1e-10)
-    counts = np.array([10, 10])
-    exact, nearly = (ordered_products(u, counts) for u in (w @ v, found))
-    phases = [np.sort(np.angle(np.linalg.eigvals(p)), axis=1) for p in (exact, nearly)]
-    np.testing.assert_allclose(*phases, atol=2e-8)
+    np.testing.assert_allclose(unitary_part(links), w @ v, atol=2e-8)
 
 
 def test_loss_bounds_the_smallest_singular_value() -> None:

@@ -51,7 +51,7 @@ def page(verdict: Verdict) -> str:
 
 
 @cache
-def _figures() -> Figures:
+def _figures() -> dict[str, str]:
     """They show nothing of the diagnosis."""
     return build_figures(BASE)
 

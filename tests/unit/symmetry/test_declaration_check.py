@@ -9,6 +9,7 @@ import pytest
 
 from inverted_models import with_noise
 from lattice_models import LatticeModel, Terms, bonds, build_basis
+from model_changes import with_home_cells
 from topovet.arrays import IntArray
 from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.basis import OrbitalBasis
@@ -16,7 +17,7 @@ from topovet.model.crystal import Crystal
 from topovet.model.fourier import build_bloch_sum
 from topovet.symmetry.declaration_check import compare_declaration
 from topovet.symmetry.declaration_results import DeclarationCheck
-from topovet.symmetry.sites import declared_sites
+from topovet.symmetry.sites import SiteAssignment, declared_sites, settle_homes
 
 CENTRE = np.zeros(3)
 
@@ -193,6 +194,35 @@ def test_declared_positions_from_another_origin() -> None:
     assert "moves the site" in found.declared.reason
     kinds = {c.reading.kind: c for c in found.corrections}
     np.testing.assert_allclose(kinds["centre"].centre_frac, [0.1, 0, 0.05], atol=1e-9)
+
+
+def test_functions_in_another_cell_than_declared() -> None:
+    """s of the first atom taken from the cell at a1: no order mends it, its own cell does."""
+    moves = np.zeros((16, 3), dtype=np.int64)
+    moves[:2, 0] = 1
+    moved = with_home_cells(MODEL, moves)
+    built = moved.tight_binding()
+
+    def compare(sites: SiteAssignment) -> DeclarationCheck:
+        return compare_declaration(
+            LatticeHamiltonian(built, build_bloch_sum(built)),
+            MODEL.crystal,
+            MODEL.basis,
+            sites,
+            CENTRE,
+            np.array([CENTRE]),
+            spinful=True,
+        )
+
+    as_declared = compare(SITES)
+    assert as_declared.declared.worst_mev > 100
+    assert as_declared.rehomed == ()
+    assert as_declared.inferred_fit.worst_mev > 100
+    settled = settle_homes(SITES, MODEL.crystal, built, doubt_cells=0.5)
+    found = compare(settled)
+    assert found.rehomed == (0, 1)
+    assert found.inferred.reliability == "good"
+    assert found.inferred_fit.worst_mev == pytest.approx(0, abs=1e-9)
 
 
 def test_evidence_stands_out_of_noise() -> None:

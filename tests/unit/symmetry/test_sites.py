@@ -14,6 +14,7 @@ from topovet.symmetry.sites import (
     estimate_positions,
     nominal_positions,
     relocate_strays,
+    settle_homes,
 )
 
 BOND = Crystal(6 * np.eye(3), ("A", "B"), np.array([[0, 0, 0], [0.4, 0, 0]]))
@@ -116,6 +117,23 @@ def test_printed_supercell_images_are_brought_home() -> None:
     untouched = assign_sites(printed, made.crystal)
     assert untouched.rehomed == ()
     np.testing.assert_allclose(untouched.function_positions, printed)
+
+
+def test_home_cell_one_off_is_only_doubted_when_asked_to() -> None:
+    """One cell off is within what the estimate may miss: only symmetry can confirm it."""
+    rng = np.random.default_rng(1)
+    made = random_inverted_model(
+        rng, [(2, True)], cell=5 * np.eye(3), centre=np.zeros(3), spinful=False, radius=2
+    )
+    declared = made.positions_frac.copy()
+    declared[2] += [1, 0, 0]
+    sites = declared_sites(declared, made.crystal)
+    assert settle_homes(sites, made.crystal, made.model) is sites
+    settled = settle_homes(sites, made.crystal, made.model, doubt_cells=0.5)
+    assert settled.rehomed == (2,)
+    np.testing.assert_allclose(settled.function_positions, made.positions_frac, atol=1e-9)
+    right = declared_sites(made.positions_frac, made.crystal)
+    assert settle_homes(right, made.crystal, made.model, doubt_cells=0.5) is right
 
 
 def test_strays_are_put_on_the_free_atom() -> None:

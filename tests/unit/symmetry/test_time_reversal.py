@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from lattice_models import LatticeModel, fu_kane_mele, kane_mele
+from lattice_models import LatticeModel, fu_kane_mele, kane_mele, wilson_dirac
 from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import TightBindingModel, build_model
@@ -52,6 +52,51 @@ def test_spin_order_is_found() -> None:
     order = find_spin_order(build_bloch_sum(shuffled), PERIODIC, spinful=True)
     assert order.found == "block"
     assert order.block_mev == pytest.approx(0, abs=1e-9)
+
+
+@pytest.mark.parametrize("pairs", [(0,), (1,)])
+def test_pairs_turned_round_are_found(pairs: tuple[int, ...]) -> None:
+    """Down before up in one of two orbitals: neither order has time reversal, this reading has."""
+    order = np.arange(FKM.model.n_orb).reshape(-1, 2)
+    order[list(pairs)] = order[list(pairs), ::-1]
+    flat = order.reshape(-1)
+    turned = TightBindingModel(FKM.model.r_cells, FKM.model.h_r[:, flat[:, None], flat], True)
+    found = find_spin_order(build_bloch_sum(turned), PERIODIC, spinful=True)
+    assert found.found == "interlaced"
+    assert found.interlaced_mev is not None
+    assert found.interlaced_mev > 10
+    # one of two orbitals: which of them is turned is a matter of the overall sign
+    assert len(found.swapped_pairs) == 1
+    assert found.swapped_mev == pytest.approx(0, abs=1e-9)
+
+
+def test_minority_of_pairs_is_the_one_that_is_turned() -> None:
+    model = wilson_dirac(m=-2.0)
+    order = np.arange(model.n_orb).reshape(-1, 2)
+    order[2] = order[2, ::-1]
+    flat = order.reshape(-1)
+    built = model.tight_binding()
+    turned = TightBindingModel(built.r_cells, built.h_r[:, flat[:, None], flat], True)
+    found = find_spin_order(build_bloch_sum(turned), PERIODIC, spinful=True)
+    assert found.swapped_pairs == (2,)
+    assert found.swapped_mev == pytest.approx(0, abs=1e-9)
+
+
+def test_all_pairs_turned_round_are_no_fault() -> None:
+    """Another name for the axis of the spin: time reversal holds as it stands."""
+    flat = np.arange(FKM.model.n_orb).reshape(-1, 2)[:, ::-1].reshape(-1)
+    turned = TightBindingModel(FKM.model.r_cells, FKM.model.h_r[:, flat[:, None], flat], True)
+    found = find_spin_order(build_bloch_sum(turned), PERIODIC, spinful=True)
+    assert (found.swapped_pairs, found.swapped_mev) == ((), None)
+
+
+def test_a_moment_is_not_taken_for_turned_pairs() -> None:
+    h = FKM.model.h_r.copy()
+    h[len(h) // 2] += 0.05 * np.kron(np.eye(FKM.model.n_orb // 2), np.diag([1.0, -1.0]))
+    magnetic = build_bloch_sum(TightBindingModel(FKM.model.r_cells, h, True))
+    found = find_spin_order(magnetic, PERIODIC, spinful=True)
+    assert found.swapped_mev is not None
+    assert found.swapped_mev > 10
 
 
 def test_spin_that_was_not_declared_shows() -> None:

@@ -7,6 +7,7 @@ from typing import Any
 import pytest
 
 from invented_findings import changed
+from topovet.spectrum.results import InterpolationCheck
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 from topovet.verdict.raised import raise_flags
@@ -50,3 +51,44 @@ def test_damage_that_may_be_all_that_breaks_time_reversal_is_fatal(
 def test_blocks_that_rounding_made_zero_were_not_cut_off(audit: dict[str, Any], cut: bool) -> None:
     flag = _flag(changed(audit={"n_zero_r": 12, **audit}), "range-truncated")
     assert (flag is not None) == cut
+
+
+RADIUS_MEV = 350.0
+
+
+@pytest.mark.parametrize(
+    ("rounding_mev", "parts", "severity", "said"),
+    [
+        (RADIUS_MEV, {}, "error", "robustness radius is 350 meV"),
+        (349.0, {}, None, ""),
+        (20.0, {"inversion": {"violation_mev": 40.0}}, "warning", "stands behind broken inversion"),
+        (19.9, {"inversion": {"violation_mev": 40.0}}, None, ""),
+        (
+            20.0,
+            {"time_reversal": {"violation_mev": 40.0}, "inversion": {"violation_mev": 40.0}},
+            "warning",
+            "broken time reversal and broken inversion",
+        ),
+        (
+            30.0,
+            {"interpolation": InterpolationCheck(30.0, None, 64, None, None, 0, 0)},
+            "warning",
+            "wrong energies on the mesh",
+        ),
+        (29.0, {"interpolation": InterpolationCheck(30.0, None, 64, None, None, 0, 0)}, None, ""),
+        # violations within their tolerance need no explanation
+        (20.0, {"inversion": {"violation_mev": 0.9}}, None, ""),
+        # a closed gap has a flag of its own, and no digits would help
+        (5.0, {"gap": {"direct_ev": 2e-6, "status": "gapless"}}, None, ""),
+    ],
+)
+def test_digits(
+    rounding_mev: float, parts: dict[str, Any], severity: str | None, said: str
+) -> None:
+    """Rounding E moves energies by E and breaks a symmetry by 2 E at most."""
+    findings = changed(audit={"rounding_mev": rounding_mev}, **parts)
+    raised = [flag for flag in raise_flags(findings) if "printed digits" in flag.summary]
+    assert [flag.severity for flag in raised] == ([] if severity is None else [severity])
+    if raised:
+        assert said in raised[0].summary
+        assert raised[0].code == "inside-error-bar"
