@@ -89,6 +89,11 @@ class Fault:
             return ()
         return self.sizes[::-1][::2][::-1] if case.large else self.sizes
 
+    @property
+    def only_real(self) -> bool:
+        """Needs what only a first-principles run leaves: shifts, centres, energies."""
+        return self.suits in (in_real,)
+
     def _meets_hamiltonian(self) -> bool:
         return self.truth != CLEAN or self.code in HAMILTONIAN_DECIDES
 

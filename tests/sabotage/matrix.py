@@ -1,4 +1,4 @@
-"""The confusion matrix fault x first flag over the whole sabotage suite, written to MATRIX.md."""
+"""The confusion matrix fault x first cause over the whole sabotage suite, written to MATRIX.md."""
 
 from __future__ import annotations
 
@@ -17,8 +17,12 @@ from faults import FAULTS, trials
 TARGET = Path(__file__).with_name("MATRIX.md")
 WORKERS = 2
 
-QUIET = "no flag"
+AIM = 0.95
+"""Share of the trials in which something is flagged that are to name the right cause first."""
+
+QUIET = "nothing"
 REFUSED = "refused"
+SUMMARY = ("- trials:", "- silently wrong", "- flagged:")
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,25 +59,25 @@ def run_all() -> list[Entry]:
 
 def document(entries: Sequence[Entry]) -> str:
     """The page: share, matrix, faults one by one, confusions, silent wrong verdicts."""
-    flagged = [entry for entry in entries if entry.named not in (QUIET, REFUSED)]
+    flagged = _flagged(entries)
     right = sum(entry.right for entry in flagged)
     wrong = [entry for entry in entries if entry.wrong]
     parts = [
         "# Sabotage: what was done to a case, and what was named first",
         "Made by `bash workflows/sabotage`. Clean cases, models of the literature and "
         "first-principles ones, are spoiled in one way at a time, in sizes from harmless to fatal. "
-        "The flag that counts is the first of severity warning or error that the clean case does "
-        "not have.",
+        "Named is the first cause of the diagnosis that is confirmed or possible, follows from no "
+        "other and is not there in the clean case; where the diagnosis has none, the first new "
+        "flag of severity warning or error.",
         f"- trials: {len(entries)}, of {len({e.case for e in entries})} cases and "
         f"{len({e.fault for e in entries})} faults\n"
         f"- silently wrong verdicts: {len(wrong)}\n"
         f"- flagged: {len(flagged)}; right cause first: {right} "
-        f"({100 * right / max(1, len(flagged)):.1f} %)",
-        "## Cause against first flag",
+        f"({100 * _share_right(entries):.1f} %)",
+        "## What was wrong, against what was named first",
         _matrix(entries),
         "## Fault by fault",
-        "Flagged right and flagged otherwise count trials with a flag; a trial without one kept "
-        "the right answer, or is undetermined.",
+        "A trial in which nothing is named kept the right answer, or is undetermined.",
         _by_fault(entries),
         "## Where another cause is named first",
         _list(entry for entry in flagged if not entry.right),
@@ -96,13 +100,27 @@ def _by_fault(entries: Sequence[Entry]) -> str:
     rows = []
     for fault in FAULTS:
         mine = [entry for entry in entries if entry.fault == fault.name]
-        tally = Counter(
-            entry.named if entry.named in (QUIET, REFUSED) else str(entry.right) for entry in mine
+        tally = Counter(entry.named for entry in mine)
+        right = sorted((name for name in tally if name in fault.expected), key=lambda n: -tally[n])
+        other = sorted(set(tally) - fault.expected - {QUIET, REFUSED})
+        counts = [str(tally[key] or "") for key in (QUIET, REFUSED)]
+        rows.append(
+            [
+                fault.code,
+                fault.name,
+                _sizes(fault),
+                str(len(mine)),
+                _tallied(tally, right),
+                _tallied(tally, other),
+                *counts,
+            ]
         )
-        counts = [str(tally[key] or "") for key in ("True", "False", QUIET, REFUSED)]
-        rows.append([fault.code, fault.name, _sizes(fault), str(len(mine)), *counts])
-    head = ["cause", "fault", "sizes", "trials", "flagged right", "otherwise", QUIET, REFUSED]
-    return _table(head, rows)
+    head = ["cause", "fault", "sizes", "trials", "named rightly", "named otherwise"]
+    return _table([*head, QUIET, REFUSED], rows)
+
+
+def _tallied(tally: Counter[str], names: Sequence[str]) -> str:
+    return ", ".join(f"{name} {tally[name]}" for name in names)
 
 
 def _sizes(fault: Fault) -> str:
@@ -124,11 +142,22 @@ def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
 
 
 def main() -> int:
-    """Write the page; the exit code is 1 if any verdict was silently wrong."""
+    """Write the page; the exit code is 1 if a verdict was silently wrong or the aim is missed."""
     entries = run_all()
-    TARGET.write_text(document(entries), encoding="utf-8")
-    print("\n".join(document(entries).splitlines()[4:7]))
-    return 1 if any(entry.wrong for entry in entries) else 0
+    page = document(entries)
+    TARGET.write_text(page, encoding="utf-8")
+    print("\n".join(line for line in page.splitlines() if line.startswith(SUMMARY)))
+    wrong = any(entry.wrong for entry in entries)
+    return 1 if wrong or _share_right(entries) < AIM else 0
+
+
+def _flagged(entries: Sequence[Entry]) -> list[Entry]:
+    return [entry for entry in entries if entry.named not in (QUIET, REFUSED)]
+
+
+def _share_right(entries: Sequence[Entry]) -> float:
+    flagged = _flagged(entries)
+    return sum(entry.right for entry in flagged) / max(1, len(flagged))
 
 
 if __name__ == "__main__":

@@ -2,8 +2,8 @@
 
 Whatever was done to a case, the verdict keeps the right answer (or, where the Hamiltonian itself
 was changed, gives the one of the changed Hamiltonian), or it is undetermined, or a flag of severity
-error is raised, or the case is refused with a message. And the first flag names the right cause,
-but for the debts listed in `confusions`.
+error is raised, or the case is refused with a message. And the right cause is named first, but for
+the debts listed in `confusions`. The short part is run every day, all of it with `-m sabotage`.
 """
 
 from __future__ import annotations
@@ -12,23 +12,29 @@ from pathlib import Path
 
 import pytest
 from clean_cases import CLEAN_CASES, CleanCase
-from confusions import known_confusion
+from confusions import CONFUSIONS, known_confusion
 from examine import examine, top_cause
 from fault import Fault
-from faults import FAULTS, trials
-
-QUICK = ("kane_mele",)
-"""Cases of the default part; all others are marked slow."""
+from faults import FAULTS, SHORT_REAL, is_short, trials
 
 
-def marks(case: CleanCase) -> list[pytest.MarkDecorator]:
-    found = [] if case.name in QUICK else [pytest.mark.slow]
+def marks(case: CleanCase, *, short: bool) -> list[pytest.MarkDecorator]:
+    found = [] if short else [pytest.mark.sabotage]
     return [*found, pytest.mark.real_data] if case.real else found
 
 
 TRIALS = [
-    pytest.param(case, fault, size, id=f"{case.name}-{fault.name}-{size:g}", marks=marks(case))
-    for case, fault, size in trials()
+    pytest.param(
+        *trial,
+        id=f"{trial[0].name}-{trial[1].name}-{trial[2]:g}",
+        marks=marks(trial[0], short=is_short(*trial)),
+    )
+    for trial in trials()
+]
+
+CASES = [
+    pytest.param(case, id=case.name, marks=marks(case, short=not case.large))
+    for case in CLEAN_CASES.values()
 ]
 
 
@@ -45,7 +51,7 @@ def test_no_silent_wrong_verdict(case: CleanCase, fault: Fault, size: float) -> 
     pytest.xfail(missing)
 
 
-@pytest.mark.parametrize("case", CLEAN_CASES.values(), ids=lambda case: case.name)
+@pytest.mark.parametrize("case", CASES)
 def test_clean_case_is_right_and_without_error(case: CleanCase) -> None:
     outcome = examine(case)
     assert (outcome.z2, outcome.class_) == (case.z2, case.class_)
@@ -72,3 +78,24 @@ def contents(folder: Path) -> dict[str, bytes]:
 
 def test_names_of_faults_are_unique() -> None:
     assert len({fault.name for fault in FAULTS}) == len(FAULTS)
+
+
+def test_short_part_has_every_fault_and_every_model() -> None:
+    chosen = [(case, fault) for case, fault, size in trials() if is_short(case, fault, size)]
+    for_some_alone = {fault.name for fault in FAULTS} - {fault.name for _, fault in chosen}
+    # faults that need a compound with a twin, or p shells: the full suite has them
+    assert for_some_alone <= {
+        "shifts-of-another-compound",
+        "eig-of-another-compound",
+        "p-shell-turned",
+    }
+    models = {case.name for case in CLEAN_CASES.values() if not case.real}
+    assert {case.name for case, _ in chosen} == {*models, SHORT_REAL}
+
+
+def test_confusions_are_of_faults_that_exist() -> None:
+    faults = {fault.name: fault for fault in FAULTS}
+    for confusion in CONFUSIONS:
+        assert confusion.fault in faults
+        assert not confusion.named & faults[confusion.fault].expected
+        assert confusion.missing

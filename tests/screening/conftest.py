@@ -23,13 +23,30 @@ def twelve(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 
 @pytest.fixture(scope="session")
-def undisturbed(
+def six(twelve: Path) -> Path:
+    """Half of them."""
+    return twelve / "batch0"
+
+
+@pytest.fixture(scope="session")
+def twelve_undisturbed(
     program: Program, twelve: Path, tmp_path_factory: pytest.TempPathFactory
 ) -> dict[str, str]:
     """What comes out of the twelve cases when nothing happens."""
-    out = tmp_path_factory.mktemp("undisturbed") / "out"
-    done = program.run("screen", twelve, "--out", out, *QUICK)
+    return _undisturbed(program, twelve, tmp_path_factory.mktemp("undisturbed"), 12)
+
+
+@pytest.fixture(scope="session")
+def undisturbed(
+    program: Program, six: Path, tmp_path_factory: pytest.TempPathFactory
+) -> dict[str, str]:
+    """What comes out of the six cases when nothing happens."""
+    return _undisturbed(program, six, tmp_path_factory.mktemp("undisturbed"), 6)
+
+
+def _undisturbed(program: Program, root: Path, folder: Path, count: int) -> dict[str, str]:
+    done = program.run("screen", root, "--out", folder / "out", *QUICK)
     assert done.returncode == 0, done.stderr
-    found = results(out)
-    assert len(found) == 12
+    found = results(folder / "out")
+    assert len(found) == count
     return found

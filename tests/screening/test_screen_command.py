@@ -145,33 +145,33 @@ def test_only_failures_is_exit_code_1(program: Program, three: Path, tmp_path: P
 
 
 def test_shards_together_make_the_whole(
-    program: Program, twelve: Path, undisturbed: dict[str, str], tmp_path: Path
+    program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path
 ) -> None:
     out = tmp_path / "out"
     for i in range(1, 4):
-        done = program.run("screen", twelve, "--out", out, "--shard", f"{i}/3", *QUICK)
-        assert "4 cases: 4 vetted" in done.stdout
+        done = program.run("screen", six, "--out", out, "--shard", f"{i}/3", *QUICK)
+        assert "2 cases: 2 vetted" in done.stdout
         assert (out / f"screen-{i}of3.log").exists()
     assert results(out) == undisturbed
-    empty = program.run("screen", twelve, "--out", out, "--shard", "13/13", *QUICK)
+    empty = program.run("screen", six, "--out", out, "--shard", "7/7", *QUICK)
     assert empty.returncode == 0
     assert "0 cases" in empty.stdout
 
 
 def test_one_worker_gives_what_two_give(
-    program: Program, twelve: Path, undisturbed: dict[str, str], tmp_path: Path
+    program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path
 ) -> None:
-    done = program.run("screen", twelve, "--out", tmp_path / "out", "--workers", "1", *QUICK)
+    done = program.run("screen", six, "--out", tmp_path / "out", "--workers", "1", *QUICK)
     assert done.returncode == 0
     assert results(tmp_path / "out") == undisturbed
 
 
 @pytest.mark.parametrize("signum", [signal.SIGINT, signal.SIGTERM])
 def test_a_stopped_screen_says_how_to_go_on_and_leaves_no_worker(
-    program: Program, twelve: Path, undisturbed: dict[str, str], tmp_path: Path, signum: int
+    program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path, signum: int
 ) -> None:
     out = tmp_path / "out"
-    process = program.start("screen", twelve, "--out", out, *QUICK)
+    process = program.start("screen", six, "--out", out, *QUICK)
     deadline = time.monotonic() + 60
     while not list(out.glob("*/verdict.json")) and time.monotonic() < deadline:
         time.sleep(0.02)
@@ -181,8 +181,8 @@ def test_a_stopped_screen_says_how_to_go_on_and_leaves_no_worker(
         os.killpg(process.pid, 0)
     assert "run it again to go on" in _log(out)[-1]
     n_done = len(list(out.glob("*/screened.json")))
-    assert 0 < n_done < 12
-    done = program.run("screen", twelve, "--out", out, *QUICK)
-    assert f"{12 - n_done} vetted, {n_done} unchanged" in done.stdout
+    assert 0 < n_done < 6
+    done = program.run("screen", six, "--out", out, *QUICK)
+    assert f"{6 - n_done} vetted, {n_done} unchanged" in done.stdout
     assert results(out) == undisturbed
     assert not list(out.rglob(".*"))

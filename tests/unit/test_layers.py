@@ -20,6 +20,7 @@ LAYERS = (
     "symmetry",
     "spectrum",
     "invariants",
+    "boundary",
     "diagnosis",
     "verdict",
     "report",

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from topovet.notation import mev
+from topovet.verdict.flags import Flag
 from topovet.verdict.inquiry import Cause, Inquiry
 
 
@@ -113,28 +114,36 @@ def _centres(inquiry: Inquiry) -> Iterator[Cause]:
     )
 
 
+OF_THE_RIM = frozenset({"inside-error-bar", "interpolation-poor"})
+"""What a range that ends too early brings about; cut files bring about much more."""
+
+
 def _range(inquiry: Inquiry) -> Cause:
     """Cut files by their flag; the range of the run by what its outermost hoppings decide."""
-    flag, shorter = inquiry.flag("range-truncated"), inquiry.reading("shorter-range")
-    radius, decay = inquiry.radius_mev, inquiry.findings.decay
+    flag = inquiry.flag("range-truncated")
     test = "the R list is counted against the mesh, and the outermost hoppings are left out."
-    evidence: dict[str, Any] = {"rim_meV": decay.rim_mev}
     if flag is not None and flag.severity == "error":
         return Cause("range-truncated", "yes", test, flag.summary, flag.evidence, flag.advice)
-    said = "" if flag is None else flag.summary + " "
+    answer, finding, evidence = _outermost(inquiry, flag)
     advice = "" if flag is None else flag.advice
+    return Cause("range-truncated", answer, test, finding, evidence, advice, explains=OF_THE_RIM)
+
+
+def _outermost(inquiry: Inquiry, flag: Flag | None) -> tuple[str, str, dict[str, Any]]:
+    """Answer, finding and evidence on what the longest hoppings decide."""
+    shorter, radius = inquiry.reading("shorter-range"), inquiry.radius_mev
     fills_bar = inquiry.is_largest_error("range")
     answer = "no" if flag is None else "yes" if fills_bar else "open"
+    said = "" if flag is None else flag.summary + " "
+    evidence: dict[str, Any] = {"rim_meV": inquiry.findings.decay.rim_mev}
     if shorter is None or shorter.moved_mev is None:
-        finding = said or "the list is whole, and nothing in it is short enough to leave out. "
-        return Cause("range-truncated", answer, test, finding.rstrip(), evidence, advice)
+        finding = said or "the list is whole, and its longest hoppings were not put to the test."
+        return answer, finding.rstrip(), evidence
     evidence |= {"moved_meV": shorter.moved_mev, "z2_if_shorter": shorter.z2}
     finding = f"{said}{shorter.change}, bands move by up to {mev(shorter.moved_mev)}"
     if radius is not None and shorter.moved_mev < radius:
         finding += f", less than the radius of {mev(radius)}"
         finding += "; it is the largest of the known errors all the same." if fills_bar else "."
-        answer = answer if fills_bar else "no"
-    else:
-        finding += ": the verdict rests on hoppings near the end of the range."
-        answer = "yes" if answer == "yes" else "open"
-    return Cause("range-truncated", answer, test, finding, evidence, advice)
+        return answer if fills_bar else "no", finding, evidence
+    finding += ": the verdict rests on hoppings near the end of the range."
+    return "yes" if answer == "yes" else "open", finding, evidence

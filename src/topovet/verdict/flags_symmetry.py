@@ -178,8 +178,8 @@ def _group(findings: Findings) -> Iterator[Flag]:
         {
             "operations_lost": [test.name for test in lost][:12],
             "worst_operation": worst.name,
-            "worst_violation_meV": worst.judged_mev,
-            "worst_band_shift_meV": worst.judged_shift_mev,
+            "worst_violation_meV": _nano(worst.judged_mev),
+            "worst_band_shift_meV": _nano(worst.judged_shift_mev),
             "own_group": f"{group.own.symbol} ({group.own.number})",
         },
         "Symmetry-adapted Wannier functions or projections without localisation keep the group; "
@@ -188,6 +188,11 @@ def _group(findings: Findings) -> Iterator[Flag]:
         else "Check that structure and Hamiltonian are of one run: strain, magnetism or another "
         "structure lower the group.",
     )
+
+
+def _nano(value_mev: float | None) -> float | None:
+    """To a nano-eV: what is below differs between machines and means nothing."""
+    return None if value_mev is None else round(value_mev, 6)
 
 
 def _finite(value: float) -> float | None:

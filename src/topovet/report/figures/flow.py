@@ -29,7 +29,7 @@ def flow_figure(planes: Sequence[WilsonPlane], *, name: str = "flow") -> str:
     planes
         At least one.
     """
-    columns = min(PANELS_IN_A_ROW, len(planes))
+    columns = PANELS_IN_A_ROW  # also for fewer planes: letters keep their size on the page
     rows = -(-len(planes) // columns)
     with drawing(name):
         figure = new_figure(2.75 * columns + 0.4, 2.35 * rows + 0.3)
@@ -38,8 +38,9 @@ def flow_figure(planes: Sequence[WilsonPlane], *, name: str = "flow") -> str:
             _panel(axes, plane)
         for axes in panels.flat[len(planes) :]:
             axes.set_visible(False)
-        for axes in panels[-1]:
+        for axes in panels.flat[max(0, len(planes) - columns) : len(planes)]:
             axes.set_xlabel("k across the lines")
+            axes.tick_params(labelbottom=True)
         for axes in panels[:, 0]:
             axes.set_ylabel("centre (periods)")
         return to_svg(

@@ -14,6 +14,9 @@ from topovet.symmetry.group_results import GroupTest, OperationTest
 LEAST_MEV = 1e-3
 """Smaller violations are rounding of the file; they stand at the left edge."""
 
+ROW_IN = 0.17
+"""Height of a row, inches: 48 operations fit on a page."""
+
 
 def operations_figure(group: GroupTest, *, name: str = "operations") -> str:
     """One row for each operation as SVG text: where it was judged, and between mesh points.
@@ -26,7 +29,7 @@ def operations_figure(group: GroupTest, *, name: str = "operations") -> str:
     tests = [test for test in (*group.operations, group.time_reversal) if not test.missing]
     rows = np.arange(len(tests))[::-1]
     with drawing(name):
-        figure = new_figure(5.2, 0.55 + 0.2 * max(len(tests), 3))
+        figure = new_figure(7.6, 0.75 + ROW_IN * max(len(tests), 3))
         axes = figure.add_subplot()
         bare(axes)
         judged = _values([t.judged_mev for t in tests])
