@@ -56,8 +56,8 @@ def surface_of(
 def ssh_chain(*, v: float, w: float) -> LatticeModel:
     """Su, Schrieffer and Heeger's chain along a_2, repeated without coupling along a_1.
 
-    H = v sum |A j><B j| + w sum |B j><A j+1| + h.c.: a chain that starts with A and v < w has an end
-    state at zero energy with amplitude (-v/w)^j on A in cell j.
+    H = v sum |A j><B j| + w sum |B j><A j+1| + h.c.: a chain that starts with A and v < w has an
+    end state at zero energy with amplitude (-v/w)^j on A in cell j.
 
     References
     ----------
@@ -76,7 +76,8 @@ def ssh_chain(*, v: float, w: float) -> LatticeModel:
 
 
 def tilted(model: LatticeModel, hops: Mapping[Miller, float]) -> LatticeModel:
-    """The model and 2 t cos(k.R) on every orbital: eigenvectors and direct gaps stay, bands tilt."""
+    """The model and 2 t cos(k.R) on every orbital: eigenvectors and direct gaps stay, bands
+    tilt."""
     eye = np.eye(model.n_orb, dtype=complex)
     blocks: dict[Miller, ComplexArray] = {r: t * eye for r, t in hops.items()}
     return replace(with_hops(model, blocks), name=f"tilted_{model.name}")

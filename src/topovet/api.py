@@ -33,7 +33,7 @@ def vet(
     effort
         "quick", "standard" or "thorough".
     surface
-        Miller indices of the surface of interest; recorded, not used by this version.
+        Miller indices, in the Hamiltonian's own cell, of the surface (in 2D: the edge) to follow.
     lower_gaps
         "all", or numbers of bands: indices of the lowest bands up to lower gaps, besides.
     out

@@ -53,12 +53,23 @@ class Outcome:
     wrong: str
 
 
+Named = tuple[str, str, str]
+"""Code, severity or answer, and advice, which tells two kinds of one code apart."""
+
+
 @functools.cache
-def background(case: CleanCase) -> frozenset[tuple[str, str]]:
-    """Codes and severities of flags, causes and their answers, that the clean case has already."""
+def background(case: CleanCase) -> frozenset[Named]:
+    """Flags and causes that the clean case has already."""
     clean = examine(case)
-    flagged = {(flag.code, flag.severity) for flag in clean.flags}
-    return frozenset(flagged | {(cause.cause, cause.answer) for cause in clean.causes})
+    return frozenset({*map(_of_flag, clean.flags), *map(_of_cause, clean.causes)})
+
+
+def _of_flag(flag: Flag) -> Named:
+    return flag.code, flag.severity, flag.advice
+
+
+def _of_cause(cause: CauseEntry) -> Named:
+    return cause.cause, cause.answer, cause.advice
 
 
 def top_cause(case: CleanCase, outcome: Outcome) -> str | None:
@@ -70,9 +81,9 @@ def top_cause(case: CleanCase, outcome: Outcome) -> str | None:
     flagged = [
         flag.code
         for flag in outcome.flags
-        if flag.severity != "info" and (flag.code, flag.severity) not in known
+        if flag.severity != "info" and _of_flag(flag) not in known
     ]
-    causes = [cause.cause for cause in outcome.causes if (cause.cause, cause.answer) not in known]
+    causes = [cause.cause for cause in outcome.causes if _of_cause(cause) not in known]
     return next(iter((*causes, *flagged))) if flagged else None
 
 

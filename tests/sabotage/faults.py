@@ -11,15 +11,15 @@ from faults_of_physics import PHYSICS_FAULTS
 FAULTS: tuple[Fault, ...] = (*FILE_FAULTS, *DECLARATION_FAULTS, *PHYSICS_FAULTS)
 
 
-SHORT_MODELS, SHORT_REAL = ("dirac_strong", "kane_mele"), "Bi111_bilayer"
+SHORT_MODEL, SHORT_REAL = "kane_mele", "Bi111_bilayer"
 """Cases of the short part that is run every day, see `is_short`."""
 
 
 def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
-    """Whether a trial belongs to the short part: two models at the first and the last size, the
+    """Whether a trial belongs to the short part: one model at the first and the last size, the
     others at the last, and one first-principles case where only such a case will do."""
     sizes = fault.sizes_for(case)
-    if case.name in SHORT_MODELS:
+    if case.name == SHORT_MODEL:
         return size in (sizes[0], sizes[-1])
     if case.name == SHORT_REAL:
         return fault.only_real and size == sizes[-1]

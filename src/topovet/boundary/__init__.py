@@ -1,1 +1,1 @@
-"""A model and Miller indices go in; half-crystals, slabs, their surface spectra and what they witness come out."""
+"""A model and Miller indices go in; surface spectra, films and what they witness come out."""

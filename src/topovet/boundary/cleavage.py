@@ -87,7 +87,7 @@ def natural_surface(
     if crystal.dimension == 2:
         first = crystal.periodic.index(True)
         second = crystal.periodic.index(True, first + 1)
-        h, k, l = (int(i == second) for i in range(3))  # noqa: E741
+        h, k, l = (int(i == second) for i in range(3))
         return h, k, l
     if positions_frac is None:
         positions_frac = np.zeros((model.n_orb, 3))

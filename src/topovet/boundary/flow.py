@@ -1,8 +1,8 @@
 """Surface levels that cross an energy curve, counted by the phases of a unitary matrix.
 
-For E in the window between the projected bulk bands A = E - eps, the inverse of the Green's function
-on the outermost layer, is Hermitian, and a surface level at E is a zero eigenvalue of it. Its Cayley
-transform
+For E in the window between the projected bulk bands A = E - eps, the inverse of the Green's
+function on the outermost layer, is Hermitian, and a surface level at E is a zero eigenvalue of it.
+Its Cayley transform
 
     W = (A + i gamma)(A - i gamma)^-1,    phases 2 arccot(a / gamma) in [0, 2 pi]
 
@@ -19,13 +19,10 @@ is the change of the number of phases from pi up to the reference. Both the step
 refined until that, and `topovet.boundary.projected.largest_step`, leave no room for a level to
 cross the window unseen.
 
-References
-----------
-Spectral flow: Atiyah, Patodi, Singer, Math. Proc. Camb. Phil. Soc. 79, 71 (1976),
-doi:10.1017/S0305004100052105. Eigenvalues of unitaries: Bhatia, Davis, Lin. Multilin. Algebra 15, 71
-(1984). Scattering matrices and surface invariants: Fulga, Hassler, Akhmerov, PRB 85, 165409 (2012),
-doi:10.1103/PhysRevB.85.165409. (All from memory.)
-"""
+References ---------- Spectral flow: Atiyah, Patodi, Singer, Math. Proc. Camb. Phil. Soc. 79, 71
+(1976), doi:10.1017/S0305004100052105. Eigenvalues of unitaries: Bhatia, Davis, Lin. Multilin.
+Algebra 15, 71 (1984). Scattering matrices and surface invariants: Fulga, Hassler, Akhmerov, PRB
+85, 165409 (2012), doi:10.1103/PhysRevB.85.165409. (All from memory.)"""
 
 from __future__ import annotations
 

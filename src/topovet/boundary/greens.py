@@ -3,11 +3,12 @@
 Layers ... -1, 0, 1 ... with H inside each and T from one to the next; every step removes every
 second layer, so that i steps reach 2^i layers deep:
 
-    g = (E - eps)^-1,  eps_u += a g b,  eps_l += b g a,  eps += a g b + b g a,  a <- a g a,  b <- b g b
+    g = (E - eps)^-1,   eps_u += a g b,   eps_l += b g a,   eps += a g b + b g a,
+    a <- a g a,   b <- b g b
 
-from eps = eps_u = eps_l = H, a = T, b = T†. In the end (E - eps_u)^-1 is the Green's function on the
-outermost layer of the half-crystal of layers 0, 1, 2 ... ("upper"), (E - eps_l)^-1 that of layers
-... -1, 0 ("lower"), (E - eps)^-1 that of a layer deep inside.
+from eps = eps_u = eps_l = H, a = T, b = T†. In the end (E - eps_u)^-1 is the Green's function on
+the outermost layer of the half-crystal of layers 0, 1, 2 ... ("upper"), (E - eps_l)^-1 that of
+layers ... -1, 0 ("lower"), (E - eps)^-1 that of a layer deep inside.
 
 References
 ----------
@@ -79,8 +80,9 @@ def decimate(
     active = np.arange(len(inside))
     converged = np.zeros(len(inside), dtype=bool)
     eye = np.eye(size)
-    step = 0
-    for step in range(1, MAX_STEPS + 1):
+    steps = 0
+    while len(active) and steps < MAX_STEPS:
+        steps += 1
         resolvent = np.asarray(energy)[active, None, None] * eye - bulk[active]
         solved = np.linalg.solve(resolvent, np.concatenate([a, b], axis=2))
         g_a, g_b = solved[:, :, :size], solved[:, :, size:]
@@ -95,17 +97,11 @@ def decimate(
         # couplings that grow without bound end as NaN; they have not converged
         kept = ~done & np.isfinite(left)
         a, b, active = a[kept], b[kept], active[kept]
-        if len(active) == 0:
-            break
-    return Decimated(upper, lower, bulk, converged, step)
+    return Decimated(upper, lower, bulk, converged, steps)
 
 
 def greens_functions(energy: ComplexArray, effective: ComplexArray) -> ComplexArray:
     """(E - eps)^-1, (n, size, size) in 1/eV."""
     eye = np.eye(effective.shape[1])
-    return np.linalg.inv(np.asarray(energy)[:, None, None] * eye - effective)
-
-
-def batch_length(size: int, chunk_bytes: int) -> int:
-    """Energies of one batch within the memory allowed; at least one."""
-    return max(1, chunk_bytes // (16 * size * size * ARRAYS_PER_ENERGY))
+    g = np.linalg.inv(np.asarray(energy)[:, None, None] * eye - effective)
+    return np.asarray(g, dtype=np.complex128)

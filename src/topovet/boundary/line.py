@@ -24,8 +24,8 @@ from topovet.spectrum.eigen import map_threads
 SIDES = ("upper", "lower")
 
 MOST_SKEW = 1e-6
-"""Largest |eps - eps†| over |eps| of a half-crystal in the gap, where it is Hermitian: the digits that
-decimation left."""
+"""Largest |eps - eps†| over |eps| of a half-crystal in the gap, where it is Hermitian: the digits
+that decimation left."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,7 +121,7 @@ class Line:
         Unfollowed
             The projected bands leave no window somewhere, or the points run out.
         """
-        points = np.linspace(0, 1, self.criteria.intervals + 1).tolist()
+        points = [i / self.criteria.intervals for i in range(self.criteria.intervals + 1)]
         self._look(points)
         pairs = list(itertools.pairwise(points))
         while pairs:
@@ -282,9 +282,7 @@ class _Walk:
         def solve(part: list[float]) -> list[tuple[SurfacePhases, SurfacePhases]]:
             both = self._line.inverse_greens(part, self._fraction)
             upper, lower = (surface_phases(a, self._gamma) for a in both)
-            return [
-                (_one(upper, i), _one(lower, i)) for i in range(len(part))
-            ]
+            return [(_one(upper, i), _one(lower, i)) for i in range(len(part))]
 
         parts = [t[i : i + 4] for i in range(0, len(t), 4)]
         self._line._look(t)

@@ -1,18 +1,20 @@
 """Half-crystals at many energies: one diagonalisation for each k_par, then small matrices only.
 
-Neighbouring principal layers are coupled by T = A B†, A and B of rank r much below the size of a layer:
-bonds across a layer's face are few. Of a stretch of layers only its Green's function between the
-ends matters, projected on B at its first and on A at its last layer: four r x r matrices. For one
-layer they follow from its eigenstates at any energy; two equal stretches joined give one of twice
-the length,
+Neighbouring principal layers are coupled by T = A B†, A and B of rank r much below the size of a
+layer: bonds across a layer's face are few. Of a stretch of layers only its Green's function
+between the ends matters, projected on B at its first and on A at its last layer: four r x r
+matrices. For one layer they follow from its eigenstates at any energy; two equal stretches joined
+give one of twice the length,
 
     D = 1 - g_aa g_bb,   P = D^-1 g_ab,   Q = D^-1 g_aa g_ba,
     g_bb += g_ba g_bb P,   g_aa += g_ab Q,   g_ab <- g_ab P,   g_ba <- g_ba (g_ba + g_bb Q),
 
-so that the cost of a decimation falls by (size / r)^3. In the end g_bb and g_aa are those of the upper
-and of the lower half-crystal, and the outermost layer, coupled to the next half-crystal, is
+so that the cost of a decimation falls by (size / r)^3. In the end g_bb and g_aa are those of the
+upper and of the lower half-crystal, and the outermost layer, coupled to the next half-crystal, is
 
-    G = G_0 + G_0 A (1 - g_bb g_aa^0)^-1 g_bb A† G_0 (upper),   likewise with B, g_aa, g_bb^0 (lower).
+    G = G_0 + G_0 A (1 - g_bb g_aa^0)^-1 g_bb A† G_0   for the upper half,
+
+and the same with B, g_aa and g_bb^0 for the lower.
 """
 
 from __future__ import annotations
@@ -52,7 +54,7 @@ def face_densities(
     *,
     negligible_ev: float,
 ) -> tuple[FaceDensity, FaceDensity]:
-    """Spectral density on the outermost plane of the upper and the lower half-crystal, at one k_par.
+    """Spectral density on the outermost plane of both half-crystals, at one k_par.
 
     Parameters
     ----------

@@ -1,4 +1,4 @@
-"""The bulk seen along the surface normal: band edges at fixed k_par, and how fast H changes there."""
+"""The bulk seen along the surface normal: band edges at fixed k_par, and how fast H changes."""
 
 from __future__ import annotations
 

@@ -1,11 +1,10 @@
 """The cell re-cut along Miller indices, in exact integer arithmetic.
 
-A surface (h k l) of the lattice a_1, a_2, a_3 is spanned by the lattice vectors R with
-n.R = h R_1 + k R_2 + l R_3 = 0, and n.R counts the lattice plane that R lies on. The re-cut cell has
-a'_1 and a'_2 in the plane and a'_3 one plane up, so that the third component of R in it is n.R.
-Miller indices refer to the Hamiltonian's own cell, primitive as it may be: the layers of
-rhombohedral Bi2Se3, (001) in its hexagonal setting, are (111) here.
-"""
+A surface (h k l) of the lattice a_1, a_2, a_3 is spanned by the lattice vectors R with n.R = h R_1
++ k R_2 + l R_3 = 0, and n.R counts the lattice plane that R lies on. The re-cut cell has a'_1 and
+a'_2 in the plane and a'_3 one plane up, so that the third component of R in it is n.R. Miller
+indices refer to the Hamiltonian's own cell, primitive as it may be: the layers of rhombohedral
+Bi2Se3, (001) in its hexagonal setting, are (111) here."""
 
 from __future__ import annotations
 
@@ -87,11 +86,11 @@ def recut(crystal: Crystal, miller: Miller) -> Recut:
     """
     normal = _primitive(miller, crystal.periodic)
     cell = np.asarray(crystal.cell)
+    axes: tuple[int, ...] = (0,) if crystal.dimension == 2 else (0, 1)
     if crystal.dimension == 2:
-        matrix, axes = _edge_rows(normal, crystal.periodic), (0,)
+        matrix = _edge_rows(normal, crystal.periodic)
     else:
-        in_plane = _reduced(_plane_rows(normal), cell)
-        matrix, axes = [*in_plane, _one_plane_up(normal)], (0, 1)
+        matrix = [*_reduced(_plane_rows(normal), cell), _one_plane_up(normal)]
     matrix[2] = _uprighted(matrix, axes, cell)
     rows = np.array(matrix, dtype=np.int64)
     if _determinant(matrix) < 0:
@@ -138,7 +137,7 @@ def recut_model(
 
 
 def _primitive(miller: Miller, periodic: tuple[bool, bool, bool]) -> Miller:
-    h, k, l = (int(c) for c in miller)  # noqa: E741  (the trade's own name)
+    h, k, l = (int(c) for c in miller)
     divisor = math.gcd(h, k, l)
     shown = f"({h} {k} {l})"
     if divisor == 0:
@@ -166,7 +165,7 @@ def _bezout(a: int, b: int) -> tuple[int, int, int]:
 
 def _plane_rows(normal: Miller) -> list[list[int]]:
     """Two vectors that span the integer vectors normal to (h, k, l)."""
-    h, k, l = normal  # noqa: E741
+    h, k, l = normal
     g, x, y = _bezout(h, k)
     if g == 0:
         return [[1, 0, 0], [0, 1, 0]]
@@ -176,7 +175,7 @@ def _plane_rows(normal: Miller) -> list[list[int]]:
 
 def _one_plane_up(normal: Miller) -> list[int]:
     """A vector with n.R = 1."""
-    h, k, l = normal  # noqa: E741
+    h, k, l = normal
     g, x, y = _bezout(h, k)
     _, u, v = _bezout(g, l)
     return [u * x, u * y, v]

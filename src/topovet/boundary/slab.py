@@ -1,4 +1,4 @@
-"""Films: bands of a finite stack of planes, where their states sit, and how they depend on thickness."""
+"""Films: bands of a finite stack of planes, where their states sit, what thickness does."""
 
 from __future__ import annotations
 

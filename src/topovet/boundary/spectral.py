@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 from ase.cell import Cell
 from ase.dft.kpoints import parse_path_string
 
-from topovet.arrays import FloatArray
+from topovet.arrays import ComplexArray, FloatArray
 from topovet.boundary.layers import CHUNK_BYTES, LayerStack, principal_blocks
 from topovet.boundary.many_energies import FaceDensity, face_densities
 from topovet.boundary.projected import projected_edges
@@ -14,8 +16,9 @@ from topovet.boundary.recut import Recut
 from topovet.boundary.results import SurfaceMap
 from topovet.spectrum.eigen import map_threads
 
-NEGLIGIBLE_SHARE = 0.02
-"""Couplings between layers are left out up to this share of the broadening."""
+NEGLIGIBLE_SHARE = 0.2
+"""Singular values of the coupling of layers are left out up to this share of the broadening: levels
+move by at most twice as much, and the ranks that remain are what a map costs."""
 
 Path = tuple[FloatArray, FloatArray, tuple[int, ...], tuple[str, ...]]
 
@@ -50,11 +53,11 @@ def surface_path(cut: Recut, n_points: int) -> Path:
 
 
 def _along(corners: list[FloatArray], names: list[str], cut: Recut, n_points: int) -> Path:
-    steps = [(b - a)[: len(cut.axes)] @ cut.reciprocal for a, b in zip(corners, corners[1:])]
+    steps = [(b - a)[: len(cut.axes)] @ cut.reciprocal for a, b in itertools.pairwise(corners)]
     lengths = np.array([np.linalg.norm(step) for step in steps])
     counts = np.maximum(1, np.round((n_points - 1) * lengths / lengths.sum()).astype(int))
     k_parts, d_parts, at, start = [corners[0][None]], [np.zeros(1)], [0], 0.0
-    for a, b, length, n in zip(corners, corners[1:], lengths, counts, strict=False):
+    for (a, b), length, n in zip(itertools.pairwise(corners), lengths, counts, strict=True):
         t = np.arange(1, n + 1) / n
         k_parts.append(a + t[:, None] * (b - a))
         d_parts.append(start + t * length)
@@ -95,7 +98,7 @@ def compute_surface_maps(
     k_par, distance, at, labels = path
     per_energy = 16 * stack.layer_size * (2 * stack.layer_size + 6 * stack.n_orb)
     batch = max(1, CHUNK_BYTES // per_energy)
-    shifted = energies_ev + 1j * broadening_ev
+    shifted: ComplexArray = energies_ev + np.complex128(1j * broadening_ev)
 
     def solve(k: FloatArray) -> tuple[FaceDensity, FaceDensity]:
         inside, across = principal_blocks(stack.planes_at(k[None]))

@@ -1,18 +1,19 @@
 """The third witness: crossings between the surface's time-reversal-invariant momenta.
 
-With k' = k.a'_i in the re-cut cell the four surface TRIM are L = (l_1, l_2)/2. A line between two of
-them that differ in one component, together with the normal, spans an invariant plane of the bulk,
-k'_2 = l_2/2 for a line along k'_1, and its surface levels cross an energy curve in the gap an odd number
-of times exactly if the Z2 index of that plane is 1: Kramers partners change there. With inversion
-it is the product of the surface fermion parities, pi(L) pi(L') = product of the delta at the four
-bulk TRIM of the plane (Fu and Kane 2007, Eqs. 2.10 and 3.10 to 3.12). Hence, all modulo 2,
+With k' = k.a'_i in the re-cut cell the four surface TRIM are L = (l_1, l_2)/2. A line between two
+of them that differ in one component, together with the normal, spans an invariant plane of the
+bulk, k'_2 = l_2/2 for a line along k'_1, and its surface levels cross an energy curve in the gap
+an odd number of times exactly if the Z2 index of that plane is 1: Kramers partners change there.
+With inversion it is the product of the surface fermion parities, pi(L) pi(L') = product of the
+delta at the four bulk TRIM of the plane (Fu and Kane 2007, Eqs. 2.10 and 3.10 to 3.12). Hence, all
+modulo 2,
 
     nu_0 = n(k'_2 = 0) + n(k'_2 = 1/2) = n(k'_1 = 0) + n(k'_1 = 1/2)
 
 from one surface alone, the two routes being equal exactly if the crossings on the closed loop over
-the four TRIM are even in number; and the weak indices nu'_1 = n(k'_1 = 1/2), nu'_2 = n(k'_2 = 1/2) of
-the re-cut cell, where nu'_i = sum_j M_ij nu_j. The index that belongs to the normal does not show on
-this surface. In two dimensions the one line from 0 to 1/2 gives nu.
+the four TRIM are even in number; and the weak indices nu'_1 = n(k'_1 = 1/2), nu'_2 = n(k'_2 = 1/2)
+of the re-cut cell, where nu'_i = sum_j M_ij nu_j. The index that belongs to the normal does not
+show on this surface. In two dimensions the one line from 0 to 1/2 gives nu.
 
 Without Kramers pairs, in two dimensions, the net number of levels that rise along the closed edge
 zone is the Chern number (Hatsugai 1993): nothing but the bulk gap is needed.
@@ -66,7 +67,8 @@ GAMMA_SHARE = 0.25
 """gamma over the median |a|: the phases of all but the surface levels stay far from pi."""
 
 GAMMA_FRACTION = 0.47
-"""Where in the window that is read off: not its middle, where models with E -> -E have their levels."""
+"""Where in the window that is read off: not its middle, where models with E -> -E have their
+levels."""
 
 DROPPED_SHARE = 0.02
 """Couplings between far planes are left out up to this share of the gap. Half of the gap could not
@@ -255,9 +257,7 @@ class _Survey:
         if any(line.status == "failed" for line in lines):
             return self._result("failed", _first_reason(lines, "failed"), lines)
         routes = [
-            (a + b) % 2
-            for a, b in ((n[0], n[1]), (n[2], n[3]))
-            if a is not None and b is not None
+            (a + b) % 2 for a, b in ((n[0], n[1]), (n[2], n[3])) if a is not None and b is not None
         ]
         if len(set(routes)) > 1:
             why = "the crossings on the loop over the four surface TRIM are odd in number"
@@ -273,7 +273,9 @@ class _Survey:
 
     def _chern(self, line: SurfaceLine) -> SurfaceWitness:
         nets = {
-            (c.termination, c.net) for c in line.crossings if c.net is not None and line.status == "ok"
+            (c.termination, c.net)
+            for c in line.crossings
+            if c.net is not None and line.status == "ok"
         }
         upper = {net for side, net in nets if side == "upper"}
         lower = {-(net or 0) for side, net in nets if side == "lower"}
@@ -336,8 +338,10 @@ def weak_indices(known: Sequence[tuple[FloatArray, int]]) -> tuple[int | None, .
 
 def _resolved(crossings: Sequence[Crossing]) -> int:
     """Curves that are resolved on both terminations."""
-    ok = [{c.fraction for c in crossings if c.termination == s and c.status == "ok"} for s in
-          ("upper", "lower")]
+    ok = [
+        {c.fraction for c in crossings if c.termination == s and c.status == "ok"}
+        for s in ("upper", "lower")
+    ]
     return len(ok[0] & ok[1])
 
 

@@ -10,6 +10,7 @@ import click
 from topovet.cli.options import LowerGaps, MillerIndices, case_argument
 from topovet.cli.progress import progress
 from topovet.pipeline.dossier import default_folder, vet_case
+from topovet.pipeline.rechecked import recheck_gap
 from topovet.pipeline.symmetrised import vet_symmetrised
 from topovet.report.json_document import verdict_json
 from topovet.report.text import verdict_lines
@@ -36,7 +37,7 @@ from topovet.report.text import verdict_lines
     "--surface",
     type=MillerIndices(),
     metavar="h,k,l",
-    help="Surface of interest; recorded, not used by this version.",
+    help="Miller indices of the surface (2D: edge) to follow, in the Hamiltonian's own cell.",
 )
 @click.option(
     "--lower-gaps",
@@ -50,6 +51,12 @@ from topovet.report.text import verdict_lines
     is_flag=True,
     help="Vet the symmetrised Hamiltonian too, in DIR/symmetrised.",
 )
+@click.option(
+    "--recheck",
+    "also_rechecked",
+    is_flag=True,
+    help="Check the certificate of the proved gap again, by other code than made it.",
+)
 @click.option("--strict", is_flag=True, help="Exit with 3 when a flag of severity error is raised.")
 @click.option("--json", "as_json", is_flag=True, help="Print the verdict as JSON on stdout.")
 def command(
@@ -61,14 +68,13 @@ def command(
     surface: tuple[int, int, int] | None,
     lower_gaps: str | list[int] | None,
     also_symmetrised: bool,
+    also_rechecked: bool,
     strict: bool,
     as_json: bool,
 ) -> None:
     """Vet CASE, a folder with NAME_hr.dat and its companions, and write its dossier."""
     if filling is not None and fermi_ev is not None:
         raise click.UsageError("give --filling or --fermi, not both")
-    if surface is not None:
-        click.echo("topovet: --surface is recorded; surface states are not yet computed.", err=True)
     folder = default_folder(case) if out is None else out
     settings = {
         "filling": filling,
@@ -79,7 +85,9 @@ def command(
     }
     with progress(Path(case).name) as observe:
         dossier = vet_case(case, out=folder, settings=settings, observe=observe)
-        beside = None
+        beside, checked = None, ""
+        if also_rechecked:
+            checked = recheck_gap(case, out=folder, settings=settings, observe=observe)
         if also_symmetrised:
             where = folder / "symmetrised"
             beside = vet_symmetrised(case, out=where, settings=settings, observe=observe)
@@ -87,6 +95,8 @@ def command(
         click.echo(verdict_json(dossier.verdict), nl=False)
     else:
         click.echo(verdict_lines(dossier.verdict))
+        if checked:
+            click.echo(f"  {'recheck':<10} {checked}")
         click.echo(f"report: {folder / 'report.html'}")
         if beside is not None:
             click.echo(f"\n{beside.sentence}\n{verdict_lines(beside.dossier.verdict)}")

@@ -16,7 +16,7 @@ are the true centres. Counts of how centres flow are the same for both.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -26,11 +26,19 @@ SERIES_LOSS = 0.95
 """Links that lose more than this go through an SVD; below it the series for the unitary part
 converges in two to four steps."""
 
-SERIES = (5 / 16, 3 / 8, 1 / 2, 1.0)
-"""(1 - g)^-1/2 to third order, highest power first."""
+SERIES = (1.0, 1 / 2, 3 / 8, 5 / 16, 35 / 128)
+"""(1 - g)^-1/2 to fourth order, lowest power first; of any g between 0 and 1 it leaves at most g^5
+of |1 - M†M|."""
 
-SERIES_ENDS = 0.01
-"""|1 - M†M| after which one more step leaves less than 1e-8 of it: it turns G into 0.55 G^4."""
+SERIES_ENDS = 1e-8
+"""|1 - M†M| of a link that counts as unitary."""
+
+BRANCH = np.exp(2j * np.pi * (np.sqrt(5) - 1) / 2)
+"""Where the circle of eigenvalues is cut open: far from the fractions at which symmetry puts
+centres."""
+
+NEAR_BRANCH = 1e6
+"""Cotangents up to this leave ten good digits of all phases."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -45,21 +53,21 @@ class LinePoints:
         (n_points,) coordinate in [0, 1), ascending within each line, lines one after the other.
     states
         (n_points, n_orb, n_occ) orthonormal occupied states.
+    start
+        (n_lines,) index of the first point of each line.
+    line
+        (n_points,) index of the line that each point lies on.
     """
 
     counts: IntArray
     along: FloatArray
     states: ComplexArray
+    start: IntArray = field(init=False)
+    line: IntArray = field(init=False)
 
-    @property
-    def line(self) -> IntArray:
-        """(n_points,) index of the line that each point lies on."""
-        return np.repeat(np.arange(len(self.counts)), self.counts)
-
-    @property
-    def start(self) -> IntArray:
-        """(n_lines,) index of the first point of each line."""
-        return np.asarray(np.cumsum(self.counts) - self.counts)
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "start", np.cumsum(self.counts) - self.counts)
+        object.__setattr__(self, "line", np.repeat(np.arange(len(self.counts)), self.counts))
 
     @property
     def following(self) -> IntArray:
@@ -71,7 +79,7 @@ class LinePoints:
     @property
     def place(self) -> IntArray:
         """(n_points,) position of each point on its line, from 0."""
-        return np.asarray(np.arange(len(self.along)) - np.repeat(self.start, self.counts))
+        return np.asarray(np.arange(len(self.along)) - self.start[self.line])
 
     def kept(self, keep: BoolArray) -> LinePoints:
         """The points where keep is set; lines that lose all of theirs disappear."""
@@ -145,10 +153,26 @@ def hybrid_wannier_centres(links: Links, counts: IntArray) -> FloatArray:
     counts
         (n_lines,) links of each.
     """
-    loops = ordered_products(unitary_part(links), counts)
-    centres = (-np.angle(np.linalg.eigvals(loops)) / (2 * np.pi)) % 1.0
+    phases = eigenphases(ordered_products(unitary_part(links), counts))
+    centres = (-phases / (2 * np.pi)) % 1.0
     centres[centres == 1.0] = 0.0  # -1e-17 % 1.0
     return np.sort(centres, axis=1)
+
+
+def eigenphases(unitary: ComplexArray) -> FloatArray:
+    """Phases (n, m), unordered, of the eigenvalues of unitary matrices (n, m, m).
+
+    A Cayley transform makes a Hermitian matrix of each, with cotangents of half the phases for
+    eigenvalues: a third of the time of the eigenvalues of a general matrix.
+    """
+    one = np.eye(unitary.shape[1])
+    turned = unitary / BRANCH
+    cotangents = np.linalg.eigvalsh(np.linalg.solve(turned - one, 1j * (turned + one)))
+    phases = np.angle(BRANCH) + 2 * np.arctan2(1.0, cotangents)
+    near = np.abs(cotangents).max(axis=1) > NEAR_BRANCH
+    if near.any():
+        phases[near] = np.angle(np.linalg.eigvals(unitary[near]))
+    return np.asarray(phases)
 
 
 def unitary_part(links: Links) -> ComplexArray:
@@ -172,7 +196,7 @@ def ordered_products(matrices: ComplexArray, counts: IntArray) -> ComplexArray:
     """Product of each run of consecutive matrices, in order: (n_runs, m, m).
 
     Neighbours are multiplied pairwise, so that all runs are worked on together and the number of
-    steps is the logarithm of the longest run.
+    steps is the logarithm of the longest run; shorter ones are filled up with 1.
 
     Parameters
     ----------
@@ -181,15 +205,15 @@ def ordered_products(matrices: ComplexArray, counts: IntArray) -> ComplexArray:
     counts
         (n_runs,) length of each run, at least 1.
     """
-    counts = np.asarray(counts)
-    while counts.max() > 1:
-        place = np.arange(len(matrices)) - np.repeat(np.cumsum(counts) - counts, counts)
-        left = np.flatnonzero(place % 2 == 0)
-        paired = place[left] + 1 < np.repeat(counts, counts)[left]
-        halved = matrices[left]
-        halved[paired] = halved[paired] @ matrices[left[paired] + 1]
-        matrices, counts = halved, (counts + 1) // 2
-    return matrices
+    run = np.repeat(np.arange(len(counts)), counts)
+    place = np.arange(len(matrices)) - (np.cumsum(counts) - counts)[run]
+    products = np.empty((len(counts), counts.max(), *matrices.shape[1:]), dtype=matrices.dtype)
+    products[:] = np.eye(matrices.shape[1])
+    products[run, place] = matrices
+    while (n := products.shape[1]) > 1:
+        pairs = products[:, : n - 1 : 2] @ products[:, 1::2]
+        products = np.concatenate([pairs, products[:, n - 1 :]], axis=1) if n % 2 else pairs
+    return np.asarray(products[:, 0])
 
 
 def worst_singular_values(links: Links, counts: IntArray) -> FloatArray:
@@ -217,15 +241,24 @@ def _add_to_diagonal(matrices: ComplexArray, value: float) -> None:
 
 def _unitary_by_series(links: Links) -> ComplexArray:
     """M (1 - G)^-1/2, repeated with what is left of G = 1 - M†M until that is nothing."""
-    m, g, loss = links.overlaps, links.defects, float(links.losses.max(initial=0.0))
+    m, left = links.overlaps @ _series(links.defects), links.losses**5
     while True:
-        series = SERIES[0] * g
-        for coefficient in SERIES[1:-1]:
-            _add_to_diagonal(series, coefficient)
-            series = series @ g
-        _add_to_diagonal(series, SERIES[-1])
-        m = m @ series
-        if loss < SERIES_ENDS:
-            return m
-        g = defects_of(m)
-        loss = float(np.abs(g).sum(axis=2).max())
+        again = left > SERIES_ENDS
+        if not again.any():
+            return np.asarray(m)
+        part = m if again.all() else m[again]
+        m[again] = part @ _series(defects_of(part))
+        left[again] **= 5
+
+
+def _series(g: ComplexArray) -> ComplexArray:
+    """(1 - G)^-1/2 to fourth order, with two products: c0 + c1 G + (c2 + c3 G + c4 G^2) G^2."""
+    c_0, c_1, c_2, c_3, c_4 = SERIES
+    square = g @ g
+    upper = c_4 * square
+    upper += c_3 * g
+    _add_to_diagonal(upper, c_2)
+    series = upper @ square
+    series += c_1 * g
+    _add_to_diagonal(series, c_0)
+    return np.asarray(series)

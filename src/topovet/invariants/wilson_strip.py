@@ -17,7 +17,9 @@ import numpy as np
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
 from topovet.invariants.wilson_line import SolvedLine
-from topovet.invariants.wilson_loop import defects_of, link_overlaps
+from topovet.invariants.wilson_loop import LinePoints, defects_of, link_overlaps
+
+NOWHERE = np.empty(0)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -76,76 +78,128 @@ def strip_fluxes(
     closing
         See `topovet.invariants.wilson_loop.loop_links`.
     """
-    zips = [_zip(lower, upper) for lower, upper in strips]
-    counts = np.array([len(z.lower) for z in zips])
-    left = [_states(a, z.lower, closing) for (a, _), z in zip(strips, zips, strict=True)]
-    right = [_states(b, z.upper, closing) for (_, b), z in zip(strips, zips, strict=True)]
-    overlaps = link_overlaps(np.concatenate(left), np.concatenate(right))
+    lower, upper = (_side([strip[i] for strip in strips]) for i in (0, 1))
+    links = _zip(lower, upper)
+    overlaps = link_overlaps(
+        _states(lower, links.lower, closing), _states(upper, links.upper, closing)
+    )
     phase, losses = np.angle(np.linalg.det(overlaps)), _losses(overlaps, limits.loss)
-    edge = np.concatenate([_edges(*s, z) for s, z in zip(strips, zips, strict=True)])
-    start = np.cumsum(counts) - counts
-    following = np.arange(1, len(phase) + 1)
-    following[start + counts - 1] = start
-    # around each plaquette: across, along its edges, and back across
-    around = (phase + edge - phase[following]) / (2 * np.pi)
+    # around each plaquette: across, on along the upper line, back across and along the lower
+    around = phase - phase[links.following]
+    around += _edges([upper for _, upper in strips], links.upper)
+    around -= _edges([lower for lower, _ in strips], links.lower)
+    around /= 2 * np.pi
     flux = np.round(around) - around  # A = i <u|du> is minus the phase of an overlap
-    large = 2 * np.pi * np.abs(flux) > limits.flux
-    beyond = (losses > limits.loss) | large
-    beyond[following[large]] = True
+    size = 2 * np.pi * np.abs(flux)
+    beyond = losses > limits.loss
+    beyond[size > limits.flux] = True
+    beyond[links.following[size > limits.flux]] = True
+    turns, largest = np.add.reduceat(flux, links.start), np.maximum.reduceat(size, links.start)
+    loss = np.maximum.reduceat(losses, links.start)
+    coarse = [(NOWHERE, NOWHERE)] * len(strips)
+    for i in np.unique(links.strip[beyond]).tolist():
+        here = beyond & (links.strip == i)
+        coarse[i] = (
+            _coarse_edges(strips[i], 0, links.lower.point[here] - lower.start[i]),
+            _coarse_edges(strips[i], 1, links.upper.point[here] - upper.start[i]),
+        )
     return [
-        StripFlux(
-            float(flux[part].sum()),
-            float(2 * np.pi * np.abs(flux[part]).max()),
-            float(losses[part].max()),
-            _coarse_edges(lower, z.lower[beyond[part]], upper.across - lower.across),
-            _coarse_edges(upper, z.upper[beyond[part]], upper.across - lower.across),
-        )
-        for (lower, upper), z, part in zip(
-            strips, zips, map(slice, start, start + counts), strict=True
-        )
+        StripFlux(float(turns[i]), float(largest[i]), float(loss[i]), *coarse[i])
+        for i in range(len(strips))
     ]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _Zip:
-    """Links across a strip in order, and the plaquette that follows each.
+class _Corners:
+    """Where links across the strips end on the lines of one side.
 
     Attributes
     ----------
-    lower, upper
-        (n_links,) corners of each link, counted on over the end of their line.
-    on_lower, on_upper
-        (n_links,) whether the plaquette after the link has an edge on either line.
+    point
+        (n_links,) index among the points of that side, lines one after the other.
+    again
+        (n_links,) whether that is the first point of a line once more, at its end.
+    edge
+        (n_links,) whether the plaquette after the link has an edge on the line.
     """
 
-    lower: IntArray
-    upper: IntArray
-    on_lower: BoolArray
-    on_upper: BoolArray
+    point: IntArray
+    again: BoolArray
+    edge: BoolArray
 
 
-def _zip(lower: SolvedLine, upper: SolvedLine) -> _Zip:
-    """Edges of both lines by the height of their middles: no link across is longer than need be."""
-    heights, rank = np.unique(
-        np.concatenate([_middles(lower), _middles(upper)]), return_inverse=True
+@dataclass(frozen=True, slots=True, eq=False)
+class _Links:
+    """Links across the strips, one strip after the other, and the plaquette that follows each.
+
+    Attributes
+    ----------
+    start
+        (n_strips,) the first link of each strip.
+    strip
+        (n_links,) the strip of each link.
+    following
+        (n_links,) the link on the other side of the plaquette.
+    lower, upper
+        Their ends.
+    """
+
+    start: IntArray
+    strip: IntArray
+    following: IntArray
+    lower: _Corners
+    upper: _Corners
+
+
+def _side(lines: list[SolvedLine]) -> LinePoints:
+    return LinePoints(
+        np.array([line.n_points for line in lines]),
+        np.concatenate([line.along for line in lines]),
+        np.concatenate([line.states for line in lines if line.states is not None]),
     )
-    on_lower, on_upper = np.zeros((2, len(heights)), dtype=bool)
-    on_lower[rank[: lower.n_points]] = True
-    on_upper[rank[lower.n_points :]] = True
-    return _Zip(np.cumsum(on_lower) - on_lower, np.cumsum(on_upper) - on_upper, on_lower, on_upper)
 
 
-def _middles(line: SolvedLine) -> FloatArray:
-    y = np.append(line.along, line.along[0] + 1.0)
-    return np.asarray((y[:-1] + y[1:]) / 2)
+def _zip(lower: LinePoints, upper: LinePoints) -> _Links:
+    """Edges of both lines by the height of their middles: no link across is longer than need be."""
+    # heights are below 2, so that all strips can be sorted at once
+    heights = np.concatenate([2 * side.line + _middles(side) for side in (lower, upper)])
+    ordered, rank = np.unique(heights, return_inverse=True)
+    strip = (ordered // 2).astype(np.int64)
+    counts = np.bincount(strip)
+    start = np.cumsum(counts) - counts
+    following = np.arange(1, len(strip) + 1)
+    following[start + counts - 1] = start
+    on_lower, on_upper = rank[: len(lower.along)], rank[len(lower.along) :]
+    return _Links(
+        start, strip, following, _corners(lower, on_lower, strip), _corners(upper, on_upper, strip)
+    )
 
 
-def _states(line: SolvedLine, index: IntArray, closing: ComplexArray | None) -> ComplexArray:
-    assert line.states is not None
-    states = line.states[index % line.n_points]
+def _corners(side: LinePoints, links: IntArray, strip: IntArray) -> _Corners:
+    """Ends of links on one side, given which of them are followed by its edges, in order."""
+    edge = np.zeros(len(strip), dtype=bool)
+    edge[links] = True
+    point = np.cumsum(edge) - edge
+    again = point == (side.start + side.counts)[strip]
+    return _Corners(np.where(again, side.start[strip], point), again, edge)
+
+
+def _middles(side: LinePoints) -> FloatArray:
+    following = side.along[side.following]
+    return np.asarray((side.along + following + (following <= side.along)) / 2)
+
+
+def _states(side: LinePoints, ends: _Corners, closing: ComplexArray | None) -> ComplexArray:
+    states = side.states[ends.point]
     if closing is not None:
-        states[index >= line.n_points] *= closing[:, None]
+        states[ends.again] *= closing[:, None]
     return states
+
+
+def _edges(lines: list[SolvedLine], ends: _Corners) -> FloatArray:
+    """Phase along the edge of each plaquette on one side, 0 where it has none there."""
+    phases = np.concatenate([line.link_phases for line in lines])
+    return np.asarray(np.where(ends.edge, phases[ends.point], 0.0))
 
 
 def _losses(overlaps: ComplexArray, limit: float) -> FloatArray:
@@ -159,16 +213,9 @@ def _losses(overlaps: ComplexArray, limit: float) -> FloatArray:
     return np.asarray(losses)
 
 
-def _edges(lower: SolvedLine, upper: SolvedLine, z: _Zip) -> FloatArray:
-    """Phase along the edges of each plaquette: on along the upper line, back along the lower."""
-    on = z.on_upper * upper.link_phases[z.upper % upper.n_points]
-    return np.asarray(on - z.on_lower * lower.link_phases[z.lower % lower.n_points])
-
-
-def _coarse_edges(line: SolvedLine, corners: IntArray, width: float) -> FloatArray:
+def _coarse_edges(strip: tuple[SolvedLine, SolvedLine], side: int, corners: IntArray) -> FloatArray:
     """Middles of edges on either side of the corners that are longer than the strip is wide."""
-    if len(corners) == 0:
-        return np.empty(0)
+    line, width = strip[side], strip[1].across - strip[0].across
     edges = np.unique(np.concatenate([corners, corners - 1]) % line.n_points)
-    length = np.diff(line.along, append=line.along[0] + 1.0)
-    return np.asarray(_middles(line)[edges][length[edges] > width])
+    length = np.diff(line.along, append=line.along[0] + 1.0)[edges]
+    return np.asarray((line.along[edges] + length / 2)[length > width])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from topovet.boundary import results as boundary
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
@@ -16,6 +17,7 @@ from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.model.plane import KPlane
 from topovet.pipeline import (
+    steps_boundary,
     steps_diagnosis,
     steps_intake,
     steps_lower,
@@ -99,6 +101,10 @@ STORED_TYPES = (
     EigenvalueCount,
     rotations.S4Axis,
     rotations.S4Indicator,
+    boundary.Crossing,
+    boundary.SurfaceLine,
+    boundary.SurfaceWitness,
+    boundary.SurfaceMap,
 )
 """Dataclasses that results on disk are made of."""
 
@@ -118,6 +124,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_symmetry.TASKS,
         *steps_witnesses.TASKS,
         *steps_lower.TASKS,
+        *steps_boundary.TASKS,
         *steps_report.TASKS,
         *steps_diagnosis.TASKS,
     )

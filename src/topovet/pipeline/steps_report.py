@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.irrep_results import PointIrreps
@@ -62,6 +63,7 @@ def collect_findings(
     mirror_chern: MirrorWitness | None,
     mirror_indicators: tuple[MirrorIndicator, ...] | None,
     lower_gaps: LowerGroups | None,
+    surface: SurfaceWitness | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
     """What all steps found, and why a step found nothing."""
@@ -90,6 +92,7 @@ def collect_findings(
         mirror=mirror_chern,
         mirror_indicators=mirror_indicators or (),
         lower=lower_gaps,
+        surface=surface,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -129,6 +132,7 @@ def gather(
     findings: Findings,
     bands: BandPath | None,
     irreps: tuple[PointIrreps, ...] | None,
+    surface_map: tuple[SurfaceMap, ...] | None,
 ) -> ReportMaterial:
     """All that the report shows; the graph of tasks is added by the dossier."""
     assert findings.electrons is not None
@@ -137,6 +141,7 @@ def gather(
         crystal=findings.declared.crystal,
         bands=bands,
         irreps=irreps or (),
+        surface_maps=surface_map or (),
         tasks=(),
         **{name: getattr(findings, name) for name in SHOWN},
     )
@@ -158,6 +163,7 @@ SHOWN = (
     "mirror",
     "mirror_indicators",
     "lower",
+    "surface",
     "interpolation",
     "audit",
     "decay",
@@ -189,6 +195,7 @@ IF_THERE = (
     "mirror-chern",
     "mirror-indicators",
     "lower-gaps",
+    "surface",
     "group",
     "interpolation",
 )
@@ -218,7 +225,7 @@ TASKS = (
         "gather what the report shows",
         gather,
         needs=("verdict", "findings"),
-        wants=("irreps", "bands"),
+        wants=("irreps", "bands", "surface-map"),
         stored=False,
         essential=True,
     ),

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
@@ -107,6 +108,10 @@ class ReportMaterial:
         Mirror Chern numbers modulo n from rotation eigenvalues; empty without such axes.
     lower
         Groups of bands below lower gaps; None where they were not asked for.
+    surface
+        Crossings of surface levels; None where no surface was followed.
+    surface_maps
+        Spectral density of both terminations; empty where none was made.
     """
 
     verdict: Verdict
@@ -134,3 +139,5 @@ class ReportMaterial:
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
     lower: LowerGroups | None = None
+    surface: SurfaceWitness | None = None
+    surface_maps: tuple[SurfaceMap, ...] = ()

@@ -226,18 +226,15 @@ def narrow_spots(states: PlaneStates) -> NarrowSpots:
 
 def _lowest_apart(xy: FloatArray, gaps: FloatArray) -> FloatArray:
     spots: list[FloatArray] = []
-    for i in np.argsort(gaps, kind="stable"):
+    left = gaps.copy()
+    while len(spots) < SPOTS and np.isfinite(left.min()):
+        spot = xy[left.argmin()]
+        spots.append(spot)
         # -k is the same spot: equal gaps there under time reversal, and no harm without it
-        images = [s for spot in spots for s in (spot, -spot)]
-        if all(_distance(xy[i], image) > SPOTS_APART for image in images):
-            spots.append(xy[i])
-        if len(spots) == SPOTS:
-            break
+        for image in (spot, -spot):
+            apart = (xy - image + 0.5) % 1.0 - 0.5
+            left[np.hypot(*apart.T) <= SPOTS_APART] = np.inf
     return np.array(spots)
-
-
-def _distance(a: FloatArray, b: FloatArray) -> float:
-    return float(np.linalg.norm((a - b + 0.5) % 1.0 - 0.5))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -53,8 +53,11 @@ def _declaration(inquiry: Inquiry) -> Iterator[Cause]:
         "built from other orders, sites and parities of the declared orbitals."
     )
     if flag is not None:
-        reading = inquiry.reading("declaration")
-        yield Cause(code, "yes", test, flag.summary, flag.evidence, flag.advice, reading)
+        reading, finding, answer = inquiry.reading("declaration"), flag.summary, "yes"
+        if reading is not None and reading.parity is not None and reading.parity.status != "ok":
+            finding += " Parities cannot be read with it either."
+            answer = "open"
+        yield Cause(code, answer, test, finding, flag.evidence, flag.advice, reading)
     elif broken := _operations_of_bands_alone(inquiry):
         finding, evidence = broken
         advice = "Check order, kind and home cells of the projections against the run."
@@ -323,7 +326,7 @@ def _digits(inquiry: Inquiry) -> Cause | None:
     if explains or flag.severity == "error":
         explains |= {"parity-impure", "witnesses-disagree", "wilson-unresolved"}
     if flag.severity == "error":
-        explains |= {"symmetry-broken", "fermi-outside-gap", "range-truncated"}
+        explains |= {"symmetry-broken", "fermi-outside-gap", "range-truncated", "gap-closes"}
     return Cause(
         flag.code, "yes", test, flag.summary, flag.evidence, flag.advice, explains=explains
     )

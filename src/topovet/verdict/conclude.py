@@ -78,7 +78,8 @@ def weigh_witnesses(findings: Findings) -> Agreement:
 def witness_statements(findings: Findings) -> list[Statement]:
     """What each witness that speaks says of Z2.
 
-    S4 knows the strong index alone, mirror Chern numbers the sums of indices on their planes.
+    S4 knows the strong index alone, a surface that and the weak ones of its own planes, mirror Chern
+    numbers the sums of indices on their planes.
     """
     named = (("parity", findings.parity), ("Wilson loops", findings.wilson))
     statements = [
@@ -89,6 +90,9 @@ def witness_statements(findings: Findings) -> list[Statement]:
     s4 = findings.s4
     if s4 is not None and s4.status == "ok" and s4.z2 is not None:
         statements.append(Statement("S4 eigenvalues", (s4.z2, None, None, None)))
+    surface = findings.surface
+    if surface is not None and surface.status == "ok" and surface.z2 is not None:
+        statements.append(Statement("surface states", surface.z2))
     if findings.mirror is not None:
         z2 = findings.mirror.z2(findings.declared.crystal.dimension)
         if any(value is not None for value in z2):
@@ -160,11 +164,15 @@ def _without_kramers(findings: Findings) -> Conclusion:
         grounds.append("what broken time reversal leaves of a Z2 phase was not tested")
     if findings.chern is not None and chern is None:
         grounds.append(f"Chern numbers: {findings.chern.reason}")
+    edge = None if findings.surface is None else findings.surface.chern
+    if edge is not None and chern is not None and chern.chern != (edge,):
+        grounds.append(f"edge levels count {edge}, against the Chern number of the bulk")
+        return Conclusion(InvariantsEntry(), "disagree", "undetermined", tuple(grounds))
     invariants = InvariantsEntry(
         indicators={} if eta4 is None else {"eta4": eta4}, chern=_chern_entry(values)
     )
-    voices = (parity is not None) + (chern is not None)
-    word = ("undetermined", "one-witness", "agree")[voices]
+    voices = (parity is not None) + (chern is not None) + (edge is not None)
+    word = ("undetermined", "one-witness", "agree", "agree")[voices]
     return Conclusion(invariants, word, class_, tuple(grounds))
 
 

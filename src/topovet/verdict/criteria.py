@@ -46,6 +46,10 @@ PATH_ENERGY_MEV = 1.0
 SAME_ATOM_ANG = 0.05
 """Atoms of two structure files that are further apart are not the same structure."""
 
+COARSE_DIGITS_MEV = 1.0
+"""Error left by the printed digits from which on they may be what closes a gap; six decimals leave
+0.01 to 0.3 meV in the cases of the tests."""
+
 ZERO_BLOCK_MEV = 0.1
 """Blocks of H(R) that are zero to the last digit were cut off if the weakest other block holds more
 than this: hoppings that decay fill six decimals (0.001 meV) on the way to zero."""

@@ -31,7 +31,6 @@ EXPLAINS: dict[str, frozenset[str]] = {
     "not-hermitian": _READ_WRONG,
     "duplicate-r": _READ_WRONG,
     "missing-partner-r": _READ_WRONG,
-    "range-truncated": _READ_WRONG,
     "cell-mismatch": _BROKEN
     | SYMPTOMS
     | {
@@ -42,6 +41,7 @@ EXPLAINS: dict[str, frozenset[str]] = {
         "inside-error-bar",
         "interpolation-poor",
     },
+    "range-truncated": _READ_WRONG,
     "spin-order-mismatch": _READ_WRONG | {"orbital-declaration-wrong", "no-spin-orbit"},
     "no-spin-orbit": SYMPTOMS | {"gap-closes", "inside-error-bar", "fermi-outside-gap"},
     "centres-off": _READ_WRONG,
@@ -77,8 +77,9 @@ def diagnose(inquiry: Inquiry) -> DiagnosisEntry:
     """
     causes = [*file_causes(inquiry), *physics_causes(inquiry)]
     tested = [_tested(cause, inquiry) for cause in causes]
+    tested.sort(key=lambda item: _rank(item.cause))
     entries = [_entry(item, tested, inquiry.flags) for item in tested]
-    entries.sort(key=lambda e: (-e.weight, _rank(e.cause)))
+    entries.sort(key=lambda entry: -entry.weight)
     return DiagnosisEntry(inquiry.experiments.asked_because, tuple(entries))
 
 
@@ -126,22 +127,24 @@ def _weight(item: _Tested, flags: Sequence[Flag]) -> float:
         weight += FLAGGED
     if item.mended is not None and item.mended.class_ != "undetermined":
         weight += MENDS
-    return weight + UPSTREAM * (1 - _rank(item.cause.cause) / len(EXPLAINS))
+    return weight + UPSTREAM * (1 - _rank(item.cause) / len(EXPLAINS))
 
 
 def _explained_by(item: _Tested, all_tested: Sequence[_Tested]) -> str:
     """The first cause upstream of this one that explains it; "" where there is none."""
     if item.cause.answer == "no":
         return ""
-    rank = _rank(item.cause.cause)
     upstream = [
-        other.cause.cause
+        other.cause
         for other in all_tested
-        if item.cause.cause in other.explained and _rank(other.cause.cause) < rank
+        if item.cause.cause in other.explained and _rank(other.cause) < _rank(item.cause)
     ]
-    return min(upstream, key=_rank, default="")
+    return min(upstream, key=_rank).cause if upstream else ""
 
 
-def _rank(cause: str) -> int:
+def _rank(cause: Cause) -> int:
+    """Place in `EXPLAINS`; last for what can explain nothing, such as a sum of errors."""
     order = list(EXPLAINS)
-    return order.index(cause) if cause in order else len(order)
+    if cause.cause not in order or cause.explains == frozenset():
+        return len(order)
+    return order.index(cause.cause)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
+from topovet.boundary.results import SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
@@ -64,6 +65,7 @@ class Findings:
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
     lower: LowerGroups | None = None
+    surface: SurfaceWitness | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)
 

@@ -40,7 +40,8 @@ def _digits(findings: Findings) -> Iterator[Flag]:
     radius = robustness_radius(findings)
     fatal = radius is not None and rounding >= radius
     if gap is not None and gap.status in ("gapless", "unresolved"):
-        fatal = False  # the gap has a flag of its own, and no digits would help
+        # the gap has a flag of its own, and the usual digits would not help
+        fatal = rounding >= criteria.COARSE_DIGITS_MEV
     explained = tuple(explained_by_digits(findings).values())
     if not fatal and not explained:
         return

@@ -97,24 +97,25 @@ def findings_of(findings: Findings, reading: Rereading) -> Findings:
         declared = replace(declared, settings=replace(declared.settings, inversion_centre=None))
     if reading.kind == "declaration" and shift_test is not None:
         shift_test = replace(shift_test, suspects=(), elsewhere=())
-    return replace(
-        findings,
+    # built anew, so that a witness that is not asked again is left out, whatever it is
+    return Findings(
         declared=declared,
-        shift_test=shift_test,
-        interpolation=None if reading.kind in ("filling", "bare") else findings.interpolation,
-        electrons=replace(electrons, filling=reading.filling),
-        gap=reading.gap,
+        spinful=findings.spinful,
+        audit=findings.audit,
+        decay=findings.decay,
+        spin_order=findings.spin_order,
         time_reversal=reading.time_reversal,
         inversion=reading.inversion,
+        shift_test=shift_test,
+        space_group=findings.space_group,
+        inferred=findings.inferred,
+        symmetry_class=findings.symmetry_class,
+        electrons=replace(electrons, filling=reading.filling),
+        gap=reading.gap,
         parity=reading.parity,
         wilson=reading.wilson,
-        declaration=None,
-        inferred_parity=None,
-        group=None,
-        chern=None,
-        s4=None,
-        mirror=None,
-        mirror_indicators=(),
+        interpolation=None if reading.kind in ("filling", "bare") else findings.interpolation,
+        missing=findings.missing,
     )
 
 

@@ -42,8 +42,6 @@ from topovet.verdict.raised import raise_flags
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
 """Libraries whose versions can change a number or a figure."""
 
-NOT_IN_THIS_VERSION = "not part of this version"
-
 
 def judge(
     findings: Findings,
@@ -98,7 +96,7 @@ def judge(
         witnesses=WitnessesEntry(
             parity=_parity(findings),
             wilson=_wilson(findings),
-            surface=SurfaceEntry("not-applicable", NOT_IN_THIS_VERSION),
+            surface=_surface(findings),
             mirror=_mirror(findings),
         ),
         invariants=conclusion.invariants,
@@ -221,6 +219,44 @@ def _mirror(findings: Findings) -> MirrorEntry:
         for p in mirror.planes
     )
     return MirrorEntry(mirror.status, mirror.reason, planes)
+
+
+def _surface(findings: Findings) -> SurfaceEntry:
+    surface = findings.surface
+    if surface is None:
+        return SurfaceEntry("not-applicable", findings.missing.get("surface", "not tested"))
+    lines = tuple(
+        {
+            "from": list(line.start),
+            "to": list(line.end),
+            "status": line.status,
+            "reason": line.reason,
+            "parity": line.parity,
+            "smallest_window_eV": line.smallest_window_ev,
+            "counts": [
+                {
+                    "termination": c.termination,
+                    "curve": c.fraction,
+                    "status": c.status,
+                    "net": c.net,
+                    "points": c.points,
+                }
+                for c in line.crossings
+            ],
+        }
+        for line in surface.lines
+    )
+    return SurfaceEntry(
+        surface.status,
+        surface.reason,
+        surface.z2_strong,
+        lines,
+        z2=surface.z2,
+        chern=surface.chern,
+        miller=surface.miller,
+        chosen_by=surface.chosen_by,
+        terminations=surface.terminations,
+    )
 
 
 def _wilson(findings: Findings) -> WilsonEntry:

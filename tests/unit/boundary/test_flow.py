@@ -59,7 +59,9 @@ def test_flow_along_a_path_equals_the_known_turns(seed: int, n: int) -> None:
             assume(largest_moves(last.unitary, point.unitary)[0] < room)  # else it were refined
             net += rising_levels(last.phases[0], point.phases[0], reference)
         last = point
-    passed = np.floor((start + turn - np.pi) / (2 * np.pi)) - np.floor((start - np.pi) / (2 * np.pi))
+    passed = np.floor((start + turn - np.pi) / (2 * np.pi)) - np.floor(
+        (start - np.pi) / (2 * np.pi)
+    )
     assert net == passed.sum()
 
 

@@ -113,11 +113,11 @@ def test_spectral_density_adds_up_to_one_per_orbital() -> None:
     """The integral over all energies of -Im G_mm / pi is 1, whatever the surface."""
     _, _, stack = prepared(bhz(m=1.0), (0, 1, 0))
     inside, across = principal_blocks(stack.planes_at(np.array([[0.15, 0.0]])))
-    # E = tan(t) stretches the line to an interval on which the trapezoidal rule is exact enough
+    # E = 8 tan(t) maps the line to an interval, with points enough where the levels are
     t = (np.arange(4000) + 0.5) / 4000 * np.pi - np.pi / 2
-    measure = np.pi / 4000 / np.cos(t) ** 2
+    measure = 8 * np.pi / 4000 / np.cos(t) ** 2
     upper, lower = face_densities(
-        inside[0], across[0], np.tan(t) + 0.2j, stack.n_orb, negligible_ev=0.0
+        inside[0], across[0], 8 * np.tan(t) + 0.2j, stack.n_orb, negligible_ev=0.0
     )
     for face in (upper, lower):
         assert (face.same * measure[:, None]).sum(axis=0) == pytest.approx(1.0, abs=1e-4)

@@ -45,7 +45,9 @@ def test_the_new_cell_spans_the_same_lattice(miller: tuple[int, int, int], cell)
     assert abs(a @ b) <= 0.5 * min(a @ a, b @ b) * (1 + 1e-6)
 
 
-@pytest.mark.parametrize("periodic", [(True, True, False), (True, False, True), (False, True, True)])
+@pytest.mark.parametrize(
+    "periodic", [(True, True, False), (True, False, True), (False, True, True)]
+)
 @pytest.mark.parametrize("indices", [(1, 0), (0, 1), (-2, 3), (4, 6)])
 def test_edges_keep_the_vacuum_apart(periodic, indices) -> None:
     vacuum = periodic.index(False)

@@ -19,7 +19,8 @@ def test_a_film_is_the_bulk_chain_cut_off() -> None:
     h = slab_hamiltonian(stack.planes_at(k[None]), 3)[0]
     by_hand = np.zeros((3, 8, 3, 8), dtype=complex)
     matrix = prepared(model, (0, 0, 1))[0].matrix
-    for r, block in zip(model.r_cells @ np.linalg.inv(matrix).round().astype(int), model.h_r):
+    r_new = model.r_cells @ np.linalg.inv(matrix).round().astype(int)
+    for r, block in zip(r_new, model.h_r, strict=True):
         for a in range(3):
             if 0 <= a + r[2] < 3:
                 by_hand[a, :, a + r[2]] += np.exp(2j * np.pi * (k @ r[:2])) * block
@@ -40,8 +41,8 @@ def test_faces_of_a_topological_film() -> None:
     assert bands.lower_face.sum(axis=1) == pytest.approx(3 * 8)
 
 
-def test_spin_turns_with_k() -> None:
-    """Theta maps k to -k on the same face and turns the spin; the two faces have opposite helicity."""
+def test_spins_of_the_two_faces_cancel() -> None:
+    """Inversion and Theta pair the levels of the two faces, with opposite spins."""
     cut, _, stack = prepared(wilson_dirac(m=-2.0), (0, 0, 1))
     k = np.array([[0.03, 0.01], [-0.03, -0.01]])
     bands = compute_slab_bands(stack, cut, k, 14, face_planes=14)
@@ -77,10 +78,9 @@ def test_spin_map_is_helical_and_odd() -> None:
 def test_hybridisation_gap_dies_out_exponentially() -> None:
     """At the Dirac momentum of the Wilson-Dirac film the split falls by a constant factor a plane.
 
-    With H(0, 0, k_z) the mass is m + 2c + c cos k_z; at m = -2.5 and a = c = 1 the end states of the
-    chain decay as 0.5^j per plane (the root of the Jackiw-Rebbi equation: -(m + 2c)/c), and so does
-    the overlap of the two faces.
-    """
+    With H(0, 0, k_z) the mass is m + 2c + c cos k_z; at m = -2.5 and a = c = 1 the end states of
+    the chain decay as 0.5^j per plane (the root of the Jackiw-Rebbi equation: -(m + 2c)/c), and so
+    does the overlap of the two faces."""
     cut, _, stack = prepared(wilson_dirac(m=-2.5), (0, 0, 1))
     found = compute_thickness_series(stack, cut, np.zeros(2), 2, range(4, 12))
     gaps = np.array(found.gap_ev)
@@ -110,4 +110,4 @@ def test_paths_close_and_measure_their_length(miller) -> None:
     flat = g - np.outer(g @ cut.normal_cart, cut.normal_cart)
     lengths = np.linalg.norm(np.diff(k, axis=0) @ flat, axis=1)
     assert np.diff(distance) == pytest.approx(lengths, rel=1e-6)
-    assert labels[0] == "G"
+    assert k[at[labels.index("G")]] == pytest.approx([0, 0])

@@ -91,9 +91,7 @@ def test_counts_that_differ_in_parity_are_a_contradiction() -> None:
 
 
 def test_both_routes_are_taken_when_thorough() -> None:
-    found = surface_of(
-        wilson_dirac(m=0.3), (0, 0, 1), kramers=True, criteria=CRITERIA["thorough"]
-    )
+    found = surface_of(wilson_dirac(m=0.3), (0, 0, 1), kramers=True, criteria=CRITERIA["thorough"])
     assert len(found.lines) == 4
     assert found.z2 == (0, 1, 1, None)
 

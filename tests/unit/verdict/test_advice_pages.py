@@ -52,7 +52,7 @@ def test_pages_refer_to_flags_that_exist(code: str) -> None:
     assert set(named) <= set(CODES)
 
 
-@pytest.mark.parametrize("code", ["gap-closes", "witnesses-disagree", "inside-error-bar"])
+@pytest.mark.parametrize("code", ["gap-closes", "inside-error-bar"])
 def test_what_this_version_lacks_is_said(code: str) -> None:
     assert "not tested by this version" in advice_page(code).replace("\n", " ").lower()
 

@@ -331,3 +331,25 @@ def test_digits_explain_what_their_numbers_allow(rounding_mev: float, explained:
     found = causes(diagnosis(findings, reading("symmetrised", moved_mev=GAP_MEV)))
     upstream = "inside-error-bar" if explained else ""
     assert found["symmetry-broken"].consequence_of == upstream
+
+
+def test_sum_of_errors_follows_from_its_largest_part() -> None:
+    broken = {"violation_mev": 720.0, "violation_trim_mev": 720.0}
+    gap = {"direct_ev": 0.74, "indirect_ev": 0.74}
+    findings = changed(inversion=broken, decay={"rim_mev": 40.0}, gap=gap)
+    found = causes(diagnosis(findings, reading("symmetrised", moved_mev=20.0, gap=gap)))
+    assert found["inside-error-bar"].consequence_of == "symmetry-broken"
+
+
+@pytest.mark.parametrize(("status", "answer"), [("ok", "yes"), ("failed", "open")])
+def test_other_declaration_must_let_parities_be_read(status: str, answer: str) -> None:
+    findings = changed(
+        inversion=BROKEN,
+        parity={"status": "failed", "reason": "impure"},
+        shift_test=ShiftTest("given", (3, 4), (3, 4), None, None, "As given."),
+    )
+    other = reading("declaration", parity={"status": status}, inversion={"violation_mev": 90.0})
+    found = diagnosis(findings, other)
+    assert causes(found)["orbital-declaration-wrong"].answer == answer
+    first = "orbital-declaration-wrong" if answer == "yes" else "symmetry-broken"
+    assert named(found)[0] == first

@@ -78,8 +78,9 @@ RADIUS_MEV = 350.0
         (29.0, {"interpolation": InterpolationCheck(30.0, None, 64, None, None, 0, 0)}, None, ""),
         # violations within their tolerance need no explanation
         (20.0, {"inversion": {"violation_mev": 0.9}}, None, ""),
-        # a closed gap has a flag of its own, and no digits would help
-        (5.0, {"gap": {"direct_ev": 2e-6, "status": "gapless"}}, None, ""),
+        # a closed gap has a flag of its own, and the usual digits would not help
+        (0.3, {"gap": {"direct_ev": 2e-6, "status": "gapless"}}, None, ""),
+        (1.0, {"gap": {"direct_ev": 2e-6, "status": "gapless"}}, "error", "up to 1.00 meV"),
     ],
 )
 def test_digits(

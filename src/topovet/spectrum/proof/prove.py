@@ -130,7 +130,12 @@ def prove_direct_gap(
     tolerance
         Relative distance of proved and attained gap that is asked for.
     max_solves
-        Budget of eigenvalue problems.
+        Budget of eigenvalue problems; the last batch may exceed it.
+
+    Raises
+    ------
+    ValueError
+        No such pair of bands, or no tolerance.
     """
     goal = _Goal("direct", filling, tolerance, 0.0)
     return _prove(hamiltonian, goal, np.atleast_2d(attained_k), max_solves)
@@ -155,6 +160,11 @@ def prove_indirect_gap(
         (3,) where the edges are believed to be.
     tolerance_ev
         Distance of proved and attained gap that is asked for, eV: an indirect gap can be zero.
+
+    Raises
+    ------
+    ValueError
+        As `prove_direct_gap`.
     """
     proofs, certificates = [], []
     for quantity, start in (("valence", valence_k), ("conduction", conduction_k)):
@@ -176,11 +186,16 @@ def _prove(
     hamiltonian: ProvenHamiltonian, goal: _Goal, start: FloatArray, max_solves: int
 ) -> tuple[GapProof, Certificate]:
     """Search with the symmetries that the value attained can pay for; again if it fell too far."""
+    if not 0 < goal.filling < hamiltonian.model.n_orb:
+        raise ValueError(f"no gap above band {goal.filling} of {hamiltonian.model.n_orb}")
+    if goal.relative + goal.absolute_ev <= 0:
+        raise ValueError("a proof without tolerance never ends")
     value, k_frac, spent = _lowest(hamiltonian, goal.objective, start)
     while True:
         images = affordable_images(hamiltonian.images, goal.allowance_ev(value))
         cost = goal.n_levels * images.worst_ev
-        found, region = _search(hamiltonian, goal, images, (value, k_frac), max_solves - spent)
+        allowed = max(1, max_solves - spent)  # one batch at least: its bounds hold
+        found, region = _search(hamiltonian, goal, images, (value, k_frac), allowed)
         spent += found.n_solves
         value, k_frac = found.attained_ev, found.k_frac
         if goal.affords(value, cost) or spent >= max_solves:
@@ -234,9 +249,9 @@ def _conclude(
 ) -> GapProof:
     cost = goal.n_levels * images.worst_ev
     floor = 0.0 if goal.quantity == "direct" else -np.inf
-    elsewhere = float(found.settled.lower.min(initial=np.inf)) - cost
-    proved = min(elsewhere, float(found.open.lower.min(initial=np.inf)) - cost)
-    proved = min(proved, found.attained_ev)
+    settled = float(found.settled.lower.min(initial=np.inf)) - cost
+    proved = min(settled, float(found.open.lower.min(initial=np.inf)) - cost, found.attained_ev)
+    elsewhere = settled if len(found.settled) else proved
     x, y, z = (float(c) for c in found.k_frac - np.round(found.k_frac))
     status, reason = _status(goal, found)
     return GapProof(

@@ -30,8 +30,9 @@ DEEPEST, FINEST = 50, 30
 is a hole: far below the margin."""
 
 N_SAMPLED = 12
-PLANE_MARGIN = 1e-6
-"""How far beyond a plane, in units of the bounding box, a part of it must lie to be left out."""
+PLANE_MARGIN = 5e-7
+"""How far beyond a plane, in units of the bounding box, a part of it must lie to be left out: half
+of what the search asks for, so that rounding makes no holes."""
 
 ROUNDING_EV = 1e-9
 

@@ -90,7 +90,8 @@ def search(
         Eigenvalue problems; the last batch may exceed it.
     """
     value, k_frac = attained
-    waiting, settled, left = whole(expansion.n_axes), [], []
+    waiting = whole(expansion.n_axes)
+    settled, left = [waiting.only(np.zeros(1, dtype=bool))], list[Boxes]()
     remainders = _Remainders(expansion)
     n_solves = 0
     while len(waiting) and n_solves < max_solves and worth_while(value):

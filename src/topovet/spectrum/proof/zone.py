@@ -16,6 +16,7 @@ import itertools
 from dataclasses import dataclass
 
 import numpy as np
+from ase.geometry import minkowski_reduce
 from scipy.optimize import linprog
 from scipy.spatial import HalfspaceIntersection, QhullError
 
@@ -81,9 +82,11 @@ def choose_region(
     metric = (reciprocal @ reciprocal.T)[np.ix_(used, used)]
     metric = np.mean([w @ metric @ w.T for w in group], axis=0)
     to_cart = np.linalg.cholesky(metric)  # x = k @ to_cart keeps distances
+    short = _short_vectors(to_cart)
     best: tuple[float, FloatArray, FloatArray, FloatArray] | None = None
-    for seed in np.random.default_rng(0).random((N_SEEDS, len(used))) - 0.5:
-        sites = _nearest_sites(seed, group, to_cart)
+    for place in np.random.default_rng(0).random((N_SEEDS, len(used))) - 0.5:
+        seed = place @ short
+        sites = _nearest_sites(seed, group, to_cart, short)
         corners = _corners(seed @ to_cart, sites @ to_cart)
         if corners is None:
             continue
@@ -122,10 +125,22 @@ def bounding_box(normals: FloatArray, offsets: FloatArray) -> tuple[FloatArray, 
     return np.array(ends[:d]), -np.array(ends[d:])
 
 
-def _nearest_sites(seed: FloatArray, group: IntArray, to_cart: FloatArray) -> FloatArray:
+def _short_vectors(to_cart: FloatArray) -> FloatArray:
+    """(d, d) integers: the shortest reciprocal lattice vectors of a cell, however skewed."""
+    d = len(to_cart)
+    padded = np.eye(3)
+    padded[:d, :d] = to_cart
+    _, short = minkowski_reduce(padded, pbc=np.arange(3) < d)
+    return np.asarray(short, dtype=float)[:d, :d]
+
+
+def _nearest_sites(
+    seed: FloatArray, group: IntArray, to_cart: FloatArray, short: FloatArray
+) -> FloatArray:
     """The nearest other points of the orbit, fractional."""
-    cells = np.array(list(itertools.product(range(-2, 3), repeat=len(seed))))
-    orbit = (seed @ group - np.round(seed @ group - seed))[:, None, :] + cells
+    cells = np.array(list(itertools.product(range(-2, 3), repeat=len(seed)))) @ short
+    away = (seed @ group - seed) @ np.linalg.inv(short)
+    orbit = (seed + (away - np.round(away)) @ short)[:, None, :] + cells
     orbit = orbit.reshape(-1, len(seed))
     distance = np.linalg.norm((orbit - seed) @ to_cart, axis=1)
     order = np.argsort(distance, kind="stable")

@@ -14,6 +14,7 @@ from lattice_models import LatticeModel, kane_mele, wilson_dirac
 from proof_models import hidden_pair, plain_energies, proven, random_model, weyl_pair
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import build_bloch_sum
+from topovet.model.hamiltonian import build_model
 from topovet.spectrum.eigen import mesh_eigenvalues
 from topovet.spectrum.gap import sample_gap
 from topovet.spectrum.proof.prove import (
@@ -71,7 +72,23 @@ def test_known_gaps(name: str) -> None:
     assert recheck(model.tight_binding(), certificate).holds
 
 
-@settings(max_examples=40, deadline=None)
+def test_a_chain() -> None:
+    """Su, Schrieffer and Heeger's chain, |t_1 + t_2 exp(i k)|: gap 2 |t_1 - t_2| at k = 1/2."""
+    raising = np.array([[0, 1], [0, 0]], dtype=complex)
+    hops = np.array([0.7 * (raising + raising.T), 0.5 * raising, 0.5 * raising.T])
+    model = build_model(np.array([[0, 0, 0], [-1, 0, 0], [1, 0, 0]]), hops, spinful=False)
+    crystal = Crystal(np.diag([2.5, 9.0, 9.0]), ("C",), np.zeros((1, 3)), (True, False, False))
+    images = images_of(model, [], time_reversal=True)
+    assert len(images.matrices) == 2
+    proof, certificate = prove_direct_gap(
+        proven(model, crystal=crystal, images=images), 1, attained_k=GAMMA + 0.1, **EASY
+    )
+    assert proof.attained_ev == pytest.approx(0.4)
+    assert proof.proved_min_ev >= 0.392 - 1e-9
+    assert recheck(model, certificate).holds
+
+
+@settings(max_examples=25, deadline=None)
 @given(seed=st.integers(0, 1_000_000), filling=st.integers(1, 3), planar=st.booleans())
 def test_nothing_sampled_is_below_the_proof(seed: int, filling: int, planar: bool) -> None:
     model = random_model(seed, 4, level_ev=3.0, planar=planar)
@@ -144,6 +161,21 @@ def test_spent_budget_leaves_a_bound() -> None:
         bounds.append(proof.proved_min_ev)
     assert bounds == sorted(bounds)
     assert bounds[-1] < whole.proved_min_ev
+
+
+def test_a_budget_of_nothing_says_nothing_false() -> None:
+    model = random_model(5, 4, level_ev=3.0)
+    proof, certificate = prove_direct_gap(proven(model), 2, attained_k=GAMMA, max_solves=1)
+    assert proof.status == "budget ended"
+    assert 0.0 <= proof.proved_min_ev <= proof.elsewhere_ev <= proof.attained_ev
+    assert (proof.n_boxes, len(certificate.levels)) == (0, 0)
+
+
+@pytest.mark.parametrize(("filling", "tolerance"), [(0, 0.02), (4, 0.02), (2, 0.0)])
+def test_questions_without_an_answer(filling: int, tolerance: float) -> None:
+    hamiltonian = proven(random_model(5, 4))
+    with pytest.raises(ValueError, match=r"no gap above band|without tolerance"):
+        prove_direct_gap(hamiltonian, filling, attained_k=GAMMA, tolerance=tolerance, max_solves=10)
 
 
 def test_indirect_gap() -> None:

@@ -37,6 +37,7 @@ TURN_Z, TURN_111 = (
 )
 HALF, ROOT = 0.5, np.sqrt(3) / 2
 SIXTH = np.array([[HALF, -ROOT, 0], [ROOT, HALF, 0], [0, 0, 1]])
+SKEWED = np.array([[1, 0, 0], [3, 1, 0], [-2, 4, 1]]) @ FCC
 OBLIQUE = np.array([[3.0, 0.2, 0.1], [-1.0, 3.5, 0.0], [0.4, 0.9, 4.0]])
 CASES = {
     "none": (OBLIQUE, IDENTITY[None], (True, True, True), 1),
@@ -44,6 +45,12 @@ CASES = {
     "cubic": (
         FCC,
         _generated(_in_cell(FCC, TURN_Z), _in_cell(FCC, TURN_111), -IDENTITY),
+        (True, True, True),
+        48,
+    ),
+    "skewed": (
+        SKEWED,
+        _generated(_in_cell(SKEWED, TURN_Z), _in_cell(SKEWED, TURN_111), -IDENTITY),
         (True, True, True),
         48,
     ),
@@ -65,10 +72,14 @@ def test_every_k_has_one_image(name: str) -> None:
     region = choose_region(images, 2 * np.pi * np.linalg.inv(cell).T, periodic)
     used = np.flatnonzero(periodic)
     k = np.random.default_rng(0).random((200, 3)) * np.array(periodic)
+    reciprocal = np.linalg.inv(cell).T
+    short = np.linalg.inv(FCC).T if name == "skewed" else reciprocal
+    to_short = reciprocal @ np.linalg.inv(short)
     shifts = np.array(list(np.ndindex((7,) * len(used)))) - 3
     cells = np.zeros((len(shifts), 3))
     cells[:, used] = shifts
-    candidates = (k @ images)[:, :, None, :] + cells  # (g, k, cells, 3)
+    moved = k @ images @ to_short
+    candidates = ((moved - np.round(moved))[:, :, None, :] + cells) @ np.linalg.inv(to_short)
     u = (candidates - region.origin) @ np.linalg.pinv(region.axes)
     beyond = (u @ region.normals.T - region.offsets).max(axis=-1)
     n_images = np.sum(beyond < 1e-9, axis=(0, 2))

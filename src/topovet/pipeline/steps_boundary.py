@@ -1,0 +1,152 @@
+"""Task functions of the boundary: crossings between surface TRIM, and the surface spectral map."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from topovet.boundary.cleavage import natural_surface
+from topovet.boundary.layers import LayerStack
+from topovet.boundary.recut import Miller
+from topovet.boundary.results import SurfaceMap, SurfaceWitness
+from topovet.boundary.spectral import compute_surface_maps, surface_path
+from topovet.boundary.witness import CRITERIA, DROPPED_SHARE, compute_surface, prepare_surface
+from topovet.model.declarations import Declarations
+from topovet.pipeline.runner import Context
+from topovet.pipeline.steps_intake import BasedHamiltonian
+from topovet.pipeline.task import NotApplicable, Task
+from topovet.spectrum.results import Electrons, GapSample
+from topovet.symmetry.results import TimeReversalTest
+from topovet.units import MEV_PER_EV
+
+MAP_WORK = {"standard": 4e8, "thorough": 1.2e10}
+"""Points of the spectral map times (orbitals of a principal layer)^3: seconds, minutes."""
+
+MOST_POINTS = {"standard": (64, 80), "thorough": (140, 180)}
+"""Points along the path and energies of a map, at most."""
+
+FEWEST_POINTS = (24, 40)
+"""Fewer show nothing; a crystal that is too large even for these gets no map at this effort."""
+
+MAP_MARGIN_EV = 0.3
+"""Energies shown beyond the edges of the gap, at least; half of the gap where that is more."""
+
+
+def count_surface_crossings(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+    gap: GapSample,
+) -> SurfaceWitness:
+    """Crossings of surface levels between the surface TRIM; on a closed edge the Chern number."""
+    _check(context, gap)
+    kramers = time_reversal.present and bool(declarations.spinful)
+    if kramers and electrons.filling % 2:
+        raise NotApplicable("an odd filling leaves a Kramers pair half filled")
+    if not kramers and declarations.crystal.dimension == 3:
+        raise NotApplicable("surfaces are followed only for spinors with time reversal")
+    miller, chosen_by = _surface(context, hamiltonian_with_basis, declarations)
+    basis = hamiltonian_with_basis.basis
+    return compute_surface(
+        hamiltonian_with_basis.lattice.model,
+        declarations.crystal,
+        None if basis is None else basis.positions_frac,
+        electrons.filling,
+        miller,
+        gap.direct_ev,
+        CRITERIA[context.settings["effort"]],
+        kramers=kramers,
+        chosen_by=chosen_by,
+    )
+
+
+def map_surface(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    electrons: Electrons,
+    gap: GapSample,
+) -> tuple[SurfaceMap, ...]:
+    """Spectral density of both terminations along the path of the surface zone."""
+    _check(context, gap)
+    miller, _ = _surface(context, hamiltonian_with_basis, declarations)
+    basis = hamiltonian_with_basis.basis
+    cut, place, stack = prepare_surface(
+        hamiltonian_with_basis.lattice.model,
+        declarations.crystal,
+        None if basis is None else basis.positions_frac,
+        miller,
+        most_dropped_mev=MEV_PER_EV * DROPPED_SHARE * gap.direct_ev,
+    )
+    n_k, n_e = _map_points(stack, context.settings["effort"])
+    margin = max(MAP_MARGIN_EV, 0.5 * abs(gap.cbm_ev - gap.vbm_ev))
+    low, high = sorted((gap.vbm_ev, gap.cbm_ev))
+    energies = np.linspace(low - margin, high + margin, n_e)
+    upper, lower = place.terminations
+    return compute_surface_maps(
+        stack,
+        cut,
+        surface_path(cut, n_k),
+        energies,
+        float(energies[1] - energies[0]),
+        electrons.filling,
+        (upper.name, lower.name),
+    )
+
+
+def _check(context: Context, gap: GapSample) -> None:
+    if context.settings["effort"] == "quick":
+        raise NotApplicable("left out at --effort quick")
+    if gap.status == "gapless":
+        raise NotApplicable("the occupied bands touch the others: no energy lies between them")
+
+
+def _surface(
+    context: Context, based: BasedHamiltonian, declared: Declarations
+) -> tuple[Miller, str]:
+    """Miller indices in the Hamiltonian's own cell, and who said so."""
+    asked = context.settings["surface"]
+    if asked is not None:
+        h, k, l = asked
+        return (int(h), int(k), int(l)), "options of the run"
+    if declared.settings.surface is not None:
+        return declared.settings.surface, "case.toml"
+    positions = None if based.basis is None else based.basis.positions_frac
+    miller = natural_surface(based.lattice.model, declared.crystal, positions)
+    return miller, "along a1" if declared.crystal.dimension == 2 else "weakest coupling"
+
+
+def _map_points(stack: LayerStack, effort: str) -> tuple[int, int]:
+    """Points along the path and energies that the effort allows for, three to four."""
+    points = MAP_WORK[effort] / stack.layer_size**3
+    n_k = int(np.sqrt(0.75 * points))
+    n_e = int(points / max(1, n_k))
+    if n_k < FEWEST_POINTS[0]:
+        raise NotApplicable(
+            f"a principal layer holds {stack.layer_size} orbitals: too many for a map at this effort"
+        )
+    most_k, most_e = MOST_POINTS[effort]
+    return min(n_k, most_k), min(n_e, most_e)
+
+
+NEEDS = ("hamiltonian-with-basis", "declarations", "electrons", "gap")
+
+TASKS = (
+    Task(
+        "surface",
+        "count crossings of surface levels",
+        count_surface_crossings,
+        needs=(*NEEDS, "time-reversal"),
+        settings=("surface", "effort"),
+    ),
+    Task(
+        "surface-map",
+        "map the surface spectral density",
+        map_surface,
+        needs=NEEDS,
+        settings=("surface", "effort"),
+    ),
+)
