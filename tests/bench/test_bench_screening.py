@@ -28,7 +28,7 @@ from topovet.screening.memory import AT_REST, estimate
 
 pytestmark = pytest.mark.bench
 
-CASES = 16
+CASES = 8
 
 
 @pytest.fixture(scope="module")

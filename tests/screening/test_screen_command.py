@@ -173,7 +173,7 @@ def test_a_stopped_screen_says_how_to_go_on_and_leaves_no_worker(
     out = tmp_path / "out"
     process = program.start("screen", six, "--out", out, *QUICK)
     deadline = time.monotonic() + 60
-    while not list(out.glob("*/verdict.json")) and time.monotonic() < deadline:
+    while not list(out.glob("*/screened.json")) and time.monotonic() < deadline:
         time.sleep(0.02)
     process.send_signal(signum)
     assert process.wait(30) == 128 + signum

@@ -44,9 +44,15 @@ def outcome_text(outcome: Outcome) -> str:
         return f"failed: {printable(outcome.message)}"
     errors = sum(severity == "error" for _, severity in outcome.flags)
     grade = f"{outcome.class_}, grade {outcome.grade}"
-    flags = f", {len(outcome.flags)} flags ({errors} errors)" if outcome.flags else ""
+    count = len(outcome.flags)
+    flags = f", {counted(count, 'flag')} ({counted(errors, 'error')})" if count else ""
     took = f", {outcome.seconds:.1f} s" if outcome.status == "vetted" else ", unchanged"
     return f"{grade}{flags}{took}"
+
+
+def counted(number: int, thing: str) -> str:
+    """A number with its noun, in the singular for one."""
+    return f"{number} {thing}" if number == 1 else f"{number} {thing}s"
 
 
 def step_text(step: Step) -> str:
