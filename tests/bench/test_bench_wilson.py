@@ -9,13 +9,16 @@ turn, smallest of several rounds: on a shared machine the minimum is what the co
 Lines and points are put where the states turn, so that a plane takes a twentieth of the k of the
 even mesh. Per k the witness does more than a plain loop (links across lines, the test with every
 second point left out, gaps looked into), and the decompositions, which both sides need alike, are
-half of its time: over as many k the two are equally fast.
+half of the time of either: over as many k the two are equally fast, and with everything else for
+nothing the witness would be twice as fast. What is left are products of small matrices, which grow
+with the bands as the decompositions do; `test_where_the_time_goes` prints their shares.
 
 Run with `pytest -m bench -s tests/bench/test_bench_wilson.py`.
 """
 
 from __future__ import annotations
 
+import collections
 import functools
 import time
 from collections.abc import Callable
@@ -25,6 +28,7 @@ import pytest
 
 from real_cases import CASES
 from topovet.arrays import ComplexArray, FloatArray
+from topovet.invariants import wilson_line, wilson_sheet
 from topovet.invariants.results import WilsonPlane, WilsonWitness
 from topovet.invariants.wilson_plane import compute_wilson_plane
 from topovet.invariants.wilson_sheet import SheetCriteria
@@ -46,6 +50,17 @@ POINTS_PER_LOOP = 16
 FIXED_MESH = 6 * 61 * 60
 """61 lines of 60 points on half of each plane, the mesh of the plain loops in `fixtures`."""
 AIM_LAPACK, AIM_PLAIN = 1.4, 4.0
+
+STAGES = {
+    "eigenstates": (plane_states.PlaneStates, "states_at"),
+    "gaps": (plane_states.PlaneStates, "gaps_at"),
+    "links": (wilson_line, "loop_links"),
+    "links of new points": (wilson_line, "renewed_links"),
+    "centres": (wilson_line, "hybrid_wannier_centres"),
+    "strips": (wilson_sheet, "strip_fluxes"),
+}
+"""Functions that do not call each other, H(k) included in the first two. Centres are those of each
+line and of every second of its points."""
 
 
 @functools.cache
@@ -114,6 +129,35 @@ def seconds(*functions: Callable[[], object], rounds: int = ROUNDS) -> list[floa
     return best
 
 
+def seconds_by_stage(
+    monkeypatch: pytest.MonkeyPatch, run: Callable[[], object]
+) -> dict[str, float]:
+    """CPU time of each stage in one run, smallest of several; what is left is choosing points."""
+    spent: collections.Counter[str] = collections.Counter()
+
+    def timed(stage: str, function: Callable[..., object]) -> Callable[..., object]:
+        def call(*args: object, **options: object) -> object:
+            start = time.process_time()
+            try:
+                return function(*args, **options)
+            finally:
+                spent[stage] += time.process_time() - start
+
+        return call
+
+    rounds = []
+    with monkeypatch.context() as patch, one_blas_thread():
+        for stage, (owner, name) in STAGES.items():
+            patch.setattr(owner, name, timed(stage, getattr(owner, name)))
+        for _ in range(ROUNDS):
+            spent.clear()
+            start = time.process_time()
+            run()
+            whole = time.process_time() - start
+            rounds.append({**spent, "the rest": whole - sum(spent.values())})
+    return min(rounds, key=lambda found: sum(found.values()))
+
+
 def lapack_alone(bloch: BlochSum, n_states: int, n_gaps: int) -> Callable[[], object]:
     h = bloch.at(np.random.default_rng(0).random((min(n_states, 1000), 3)))
 
@@ -159,6 +203,17 @@ def test_six_planes(monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixtu
             f"loop {plain / ours:.1f} times (aim {AIM_PLAIN}) over as many k; over an even mesh of "
             f"{FIXED_MESH} k, by extrapolation, {plain * FIXED_MESH / len(k_frac) / ours:.0f} times"
         )
+
+
+def test_where_the_time_goes(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    bloch = bloch_of(CASE)
+    spent = seconds_by_stage(monkeypatch, lambda: all_planes(bloch, FILLING, SheetCriteria()))
+    assert set(STAGES) <= set(spent)
+    with capsys.disabled():
+        shown = ", ".join(f"{stage} {1e3 * s:.0f}" for stage, s in spent.items())
+        print(f"\n{CASE}, six planes, ms: {shown}; in all {1e3 * sum(spent.values()):.0f}")
 
 
 @pytest.mark.parametrize("copies", [1, 2, 4])

@@ -22,6 +22,7 @@ from topovet.invariants.wilson_loop import (
     Links,
     hybrid_wannier_centres,
     loop_links,
+    renewed_links,
     worst_singular_values,
 )
 
@@ -169,8 +170,8 @@ def _settle(
     active = np.arange(len(batch.across))
     allowed = np.full(len(active), criteria.loss)
     done: dict[int, SolvedLine] = {}
+    links = loop_links(points, closing)
     while True:
-        links = loop_links(points, closing)
         worst = np.maximum.reduceat(links.losses, points.start)
         ready = worst <= allowed[active]
         on_ready = ready[points.line]
@@ -190,9 +191,11 @@ def _settle(
         if not unsettled.any():
             return [done[i] for i in range(len(batch.across))]
         on_unsettled = unsettled[points.line]
-        points, losses = points.kept(on_unsettled), links.losses[on_unsettled]
-        active = active[unsettled]
-        points = _split(batch, active, points, losses > allowed[active[points.line]], criteria)
+        active, points = active[unsettled], points.kept(on_unsettled)
+        links = links.kept(on_unsettled)
+        finer = _split(batch, active, points, links.losses > allowed[active[points.line]], criteria)
+        links = renewed_links(points, links, finer, closing)
+        points = finer
 
 
 def _settled_lines(

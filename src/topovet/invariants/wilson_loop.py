@@ -19,19 +19,22 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
+from numpy.typing import NDArray
 
-from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
+from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray, Scalar
 
 SERIES_LOSS = 0.95
 """Links that lose more than this go through an SVD; below it the series for the unitary part
 converges in two to four steps."""
 
 SERIES = (1.0, 1 / 2, 3 / 8, 5 / 16, 35 / 128)
-"""(1 - g)^-1/2 to fourth order, lowest power first; of any g between 0 and 1 it leaves at most g^5
-of |1 - M†M|."""
+"""(1 - g)^-1/2 to fourth order, lowest power first; of a g between 0 and 1 it leaves |1 - M†M| of
+g^5 or less."""
 
-SERIES_ENDS = 1e-8
-"""|1 - M†M| of a link that counts as unitary."""
+NEAR_LOSS = 0.36
+NEAR = (1.00000759, 0.49895231, 0.39746628, 0.15104095, 0.70251447)
+"""The fourth-order polynomial through (1 - g)^-1/2 at the five Chebyshev points of [0, 0.36], where
+it leaves |1 - M†M| below 2e-5; one step of first order then leaves less than 1e-9."""
 
 BRANCH = np.exp(2j * np.pi * (np.sqrt(5) - 1) / 2)
 """Where the circle of eigenvalues is cut open: far from the fractions at which symmetry puts
@@ -126,7 +129,9 @@ def measure_links(left: ComplexArray, right: ComplexArray) -> Links:
     return Links(overlaps, defects, np.linalg.norm(defects, axis=(1, 2)))
 
 
-def loop_links(points: LinePoints, closing: ComplexArray | None = None) -> Links:
+def loop_links(
+    points: LinePoints, closing: ComplexArray | None = None, some: BoolArray | None = None
+) -> Links:
     """Links from each point to the next on its line, the last one closing the line.
 
     Parameters
@@ -136,11 +141,49 @@ def loop_links(points: LinePoints, closing: ComplexArray | None = None) -> Links
     closing
         (n_orb,) factors exp(-2 pi i G.tau) that take the first states of a line to k_0 + G; None
         is 1, the periodic gauge.
+    some
+        (n_points,) the points to begin from; all of them by default.
     """
-    right = points.states[points.following]
+    part = slice(None) if some is None else np.flatnonzero(some)
+    right = points.states[points.following[part]]
     if closing is not None:
-        right[points.start + points.counts - 1] *= closing[:, None]
-    return measure_links(points.states, right)
+        last = points.place[part] == points.counts[points.line[part]] - 1
+        right[last] *= closing[:, None]
+    return measure_links(points.states[part], right)
+
+
+def renewed_links(
+    before: LinePoints, links: Links, after: LinePoints, closing: ComplexArray | None = None
+) -> Links:
+    """Links of lines that have got more points; those between old neighbours are kept.
+
+    Parameters
+    ----------
+    before, links
+        The lines without the new points, and their links.
+    after
+        The same lines with them.
+    closing
+        See `loop_links`.
+    """
+    old = np.isin(after.line + after.along, before.line + before.along)
+    same = old & old[after.following]
+    known = links.kept(same[old])
+    if same.all():
+        return known
+    new = loop_links(after, closing, ~same)
+    return Links(
+        _interleaved(same, known.overlaps, new.overlaps),
+        _interleaved(same, known.defects, new.defects),
+        _interleaved(same, known.losses, new.losses),
+    )
+
+
+def _interleaved(where: BoolArray, yes: NDArray[Scalar], no: NDArray[Scalar]) -> NDArray[Scalar]:
+    """The rows of one array where it is set, those of the other elsewhere."""
+    rows: NDArray[Scalar] = np.empty((len(where), *yes.shape[1:]), dtype=yes.dtype)
+    rows[where], rows[~where] = yes, no
+    return rows
 
 
 def hybrid_wannier_centres(links: Links, counts: IntArray) -> FloatArray:
@@ -163,11 +206,15 @@ def eigenphases(unitary: ComplexArray) -> FloatArray:
     """Phases (n, m), unordered, of the eigenvalues of unitary matrices (n, m, m).
 
     A Cayley transform makes a Hermitian matrix of each, with cotangents of half the phases for
-    eigenvalues: a third of the time of the eigenvalues of a general matrix.
+    eigenvalues: a third of the time of the eigenvalues of a general matrix. Its Hermitian part is
+    taken, in which small errors of the moduli cancel: one triangle alone would not do.
     """
-    one = np.eye(unitary.shape[1])
-    turned = unitary / BRANCH
-    cotangents = np.linalg.eigvalsh(np.linalg.solve(turned - one, 1j * (turned + one)))
+    one, turned = np.eye(unitary.shape[1]), unitary / BRANCH
+    try:
+        cayley = np.linalg.solve(turned - one, 0.5j * (turned + one))
+    except np.linalg.LinAlgError:  # an eigenvalue on the cut to the last digit
+        return np.asarray(np.angle(np.linalg.eigvals(unitary)))
+    cotangents = np.linalg.eigvalsh(cayley + cayley.conj().swapaxes(1, 2))
     phases = np.angle(BRANCH) + 2 * np.arctan2(1.0, cotangents)
     near = np.abs(cotangents).max(axis=1) > NEAR_BRANCH
     if near.any():
@@ -240,25 +287,29 @@ def _add_to_diagonal(matrices: ComplexArray, value: float) -> None:
 
 
 def _unitary_by_series(links: Links) -> ComplexArray:
-    """M (1 - G)^-1/2, repeated with what is left of G = 1 - M†M until that is nothing."""
-    m, left = links.overlaps @ _series(links.defects), links.losses**5
-    while True:
-        again = left > SERIES_ENDS
-        if not again.any():
-            return np.asarray(m)
-        part = m if again.all() else m[again]
-        m[again] = part @ _series(defects_of(part))
-        left[again] **= 5
+    """M (1 - G)^-1/2 by polynomials in what is left of G = 1 - M†M, until nothing is."""
+    m, g, bound = links.overlaps.copy(), links.defects.copy(), links.losses.copy()
+    while (far := bound > NEAR_LOSS).any():
+        m[far] = m[far] @ _polynomial(g[far], SERIES)
+        g[far] = defects_of(m[far])
+        bound[far] **= 5
+    m = m @ _polynomial(g, NEAR)
+    half = defects_of(m)
+    half /= 2
+    _add_to_diagonal(half, 1.0)
+    return np.asarray(m @ half)
 
 
-def _series(g: ComplexArray) -> ComplexArray:
-    """(1 - G)^-1/2 to fourth order, with two products: c0 + c1 G + (c2 + c3 G + c4 G^2) G^2."""
-    c_0, c_1, c_2, c_3, c_4 = SERIES
+def _polynomial(
+    g: ComplexArray, coefficients: tuple[float, float, float, float, float]
+) -> ComplexArray:
+    """p(G) with two products: c0 + c1 G + (c2 + c3 G + c4 G^2) G^2."""
+    c_0, c_1, c_2, c_3, c_4 = coefficients
     square = g @ g
     upper = c_4 * square
     upper += c_3 * g
     _add_to_diagonal(upper, c_2)
-    series = upper @ square
-    series += c_1 * g
-    _add_to_diagonal(series, c_0)
-    return np.asarray(series)
+    found = upper @ square
+    found += c_1 * g
+    _add_to_diagonal(found, c_0)
+    return np.asarray(found)

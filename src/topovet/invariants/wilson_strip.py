@@ -79,32 +79,27 @@ def strip_fluxes(
         See `topovet.invariants.wilson_loop.loop_links`.
     """
     lower, upper = (_side([strip[i] for strip in strips]) for i in (0, 1))
-    links = _zip(lower, upper)
+    across = _zip(lower, upper)
     overlaps = link_overlaps(
-        _states(lower, links.lower, closing), _states(upper, links.upper, closing)
+        _states(lower, across.lower, closing), _states(upper, across.upper, closing)
     )
-    phase, losses = np.angle(np.linalg.det(overlaps)), _losses(overlaps, limits.loss)
-    # around each plaquette: across, on along the upper line, back across and along the lower
-    around = phase - phase[links.following]
-    around += _edges([upper for _, upper in strips], links.upper)
-    around -= _edges([lower for lower, _ in strips], links.lower)
-    around /= 2 * np.pi
-    flux = np.round(around) - around  # A = i <u|du> is minus the phase of an overlap
-    size = 2 * np.pi * np.abs(flux)
+    losses = _losses(overlaps, limits.loss)
+    turns = _plaquette_turns(strips, across, np.angle(np.linalg.det(overlaps)))
+    flux = 2 * np.pi * np.abs(turns)
     beyond = losses > limits.loss
-    beyond[size > limits.flux] = True
-    beyond[links.following[size > limits.flux]] = True
-    turns, largest = np.add.reduceat(flux, links.start), np.maximum.reduceat(size, links.start)
-    loss = np.maximum.reduceat(losses, links.start)
+    beyond[flux > limits.flux] = True
+    beyond[across.following[flux > limits.flux]] = True
     coarse = [(NOWHERE, NOWHERE)] * len(strips)
-    for i in np.unique(links.strip[beyond]).tolist():
-        here = beyond & (links.strip == i)
+    for i in np.unique(across.strip[beyond]).tolist():
+        here = beyond & (across.strip == i)
         coarse[i] = (
-            _coarse_edges(strips[i], 0, links.lower.point[here] - lower.start[i]),
-            _coarse_edges(strips[i], 1, links.upper.point[here] - upper.start[i]),
+            _coarse_edges(strips[i], 0, across.lower.point[here] - lower.start[i]),
+            _coarse_edges(strips[i], 1, across.upper.point[here] - upper.start[i]),
         )
+    total, largest = np.add.reduceat(turns, across.start), np.maximum.reduceat(flux, across.start)
+    loss = np.maximum.reduceat(losses, across.start)
     return [
-        StripFlux(float(turns[i]), float(largest[i]), float(loss[i]), *coarse[i])
+        StripFlux(float(total[i]), float(largest[i]), float(loss[i]), *coarse[i])
         for i in range(len(strips))
     ]
 
@@ -129,7 +124,7 @@ class _Corners:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _Links:
+class _Across:
     """Links across the strips, one strip after the other, and the plaquette that follows each.
 
     Attributes
@@ -159,7 +154,7 @@ def _side(lines: list[SolvedLine]) -> LinePoints:
     )
 
 
-def _zip(lower: LinePoints, upper: LinePoints) -> _Links:
+def _zip(lower: LinePoints, upper: LinePoints) -> _Across:
     """Edges of both lines by the height of their middles: no link across is longer than need be."""
     # heights are below 2, so that all strips can be sorted at once
     heights = np.concatenate([2 * side.line + _middles(side) for side in (lower, upper)])
@@ -170,7 +165,7 @@ def _zip(lower: LinePoints, upper: LinePoints) -> _Links:
     following = np.arange(1, len(strip) + 1)
     following[start + counts - 1] = start
     on_lower, on_upper = rank[: len(lower.along)], rank[len(lower.along) :]
-    return _Links(
+    return _Across(
         start, strip, following, _corners(lower, on_lower, strip), _corners(upper, on_upper, strip)
     )
 
@@ -196,7 +191,19 @@ def _states(side: LinePoints, ends: _Corners, closing: ComplexArray | None) -> C
     return states
 
 
-def _edges(lines: list[SolvedLine], ends: _Corners) -> FloatArray:
+def _plaquette_turns(
+    strips: list[tuple[SolvedLine, SolvedLine]], across: _Across, phase: FloatArray
+) -> FloatArray:
+    """Flux over 2 pi through the plaquette after each link, from the phases of the links."""
+    # across, on along the upper line, back across and along the lower
+    around = phase - phase[across.following]
+    around += _edge_phases([upper for _, upper in strips], across.upper)
+    around -= _edge_phases([lower for lower, _ in strips], across.lower)
+    around /= 2 * np.pi
+    return np.asarray(np.round(around) - around)  # A = i <u|du> is minus the phase of an overlap
+
+
+def _edge_phases(lines: list[SolvedLine], ends: _Corners) -> FloatArray:
     """Phase along the edge of each plaquette on one side, 0 where it has none there."""
     phases = np.concatenate([line.link_phases for line in lines])
     return np.asarray(np.where(ends.edge, phases[ends.point], 0.0))

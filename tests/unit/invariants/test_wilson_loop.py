@@ -9,12 +9,15 @@ from lattice_models import atomic_insulator, fu_kane_mele
 from plain_wilson import plain_hwcc
 from topovet.arrays import ComplexArray, FloatArray
 from topovet.invariants.wilson_loop import (
+    BRANCH,
     LinePoints,
     Links,
+    eigenphases,
     hybrid_wannier_centres,
     loop_links,
     measure_links,
     ordered_products,
+    renewed_links,
     unitary_part,
     worst_singular_values,
 )
@@ -64,6 +67,36 @@ def test_products_keep_their_order(counts: list[int]) -> None:
         np.testing.assert_allclose(product, expected, atol=1e-12)
 
 
+@pytest.mark.parametrize("from_cut", [0.0, 1e-13, 1e-9, 1e-5, 1e-2, 1.0])
+def test_phases_are_those_of_the_eigenvalues(from_cut: float) -> None:
+    """With an eigenvalue however near to where the circle is cut, and one at the cut's far side."""
+    rng = np.random.default_rng(5)
+    phases = rng.uniform(-np.pi, np.pi, size=(7, 6))
+    phases[:4, 0] = np.angle(BRANCH) + from_cut * np.array([1, -1, 1, -1])
+    phases[:, 1] = phases[:, 2]
+    turn = random_unitaries(rng, 7, 6)
+    unitary = (turn * np.exp(1j * phases)[:, None, :]) @ turn.conj().swapaxes(1, 2)
+    found, expected = np.exp(1j * eigenphases(unitary)), np.exp(1j * phases)
+    nearest = np.abs(found[:, :, None] - expected[:, None, :])
+    assert nearest.min(axis=2).max() < 1e-9
+    assert nearest.min(axis=1).max() < 1e-9
+
+
+def test_phases_of_matrices_on_the_cut() -> None:
+    phases = eigenphases(BRANCH * np.broadcast_to(np.eye(3), (2, 3, 3)))
+    np.testing.assert_allclose(np.exp(1j * phases), BRANCH, atol=1e-12)
+
+
+def test_phases_do_not_feel_errors_of_the_moduli() -> None:
+    """U (1 + E) with E Hermitian and small: the phases change to second order in E only."""
+    rng = np.random.default_rng(6)
+    unitary = random_unitaries(rng, 50, 8)
+    error = 1e-8 * (rng.normal(size=(50, 8, 8)) + 1j * rng.normal(size=(50, 8, 8)))
+    nearly = unitary @ (np.eye(8) + error + error.conj().swapaxes(1, 2))
+    found, expected = np.sort(eigenphases(nearly)), np.sort(eigenphases(unitary))
+    np.testing.assert_allclose(found, expected, atol=1e-11)
+
+
 def solved(k_frac: FloatArray, counts: list[int], along: FloatArray) -> LinePoints:
     model = fu_kane_mele(dt=(0.4, 0, 0, 0))
     h = build_bloch_sum(model.tight_binding()).at(k_frac)
@@ -109,3 +142,20 @@ def test_atomic_gauge_gives_positions(axis: int) -> None:
     points = LinePoints(np.array([8]), along, atomic)
     centres = hybrid_wannier_centres(loop_links(points, np.exp(-2j * np.pi * tau)), points.counts)
     np.testing.assert_allclose(centres, (0.5 + shift[axis]) % 1.0, atol=1e-10)
+
+
+def test_links_are_kept_where_a_line_got_no_points() -> None:
+    """Both lines get points, one of them at its end; what comes out is as if all were measured."""
+    along = np.concatenate([[*np.arange(8) / 8, 0.93], np.sort([*np.arange(6) / 6, 0.2, 0.55])])
+    across = np.repeat([0.1, 0.4], [9, 8])
+    after = solved(np.stack([across, along, 0 * along], axis=1), [9, 8], along)
+    before = after.kept(~np.isin(along, [0.93, 0.2, 0.55]))
+    assert before.counts.tolist() == [8, 6]
+    closing = np.exp(1j * np.arange(after.states.shape[1]))
+    links = loop_links(before, closing)
+    found, expected = renewed_links(before, links, after, closing), loop_links(after, closing)
+    np.testing.assert_allclose(found.overlaps, expected.overlaps, atol=1e-12)
+    np.testing.assert_allclose(found.defects, expected.defects, atol=1e-12)
+    np.testing.assert_allclose(found.losses, expected.losses, atol=1e-12)
+    # the first line keeps all links but its last one
+    assert np.array_equal(found.overlaps[:7], links.overlaps[:7])
