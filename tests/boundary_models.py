@@ -38,6 +38,7 @@ def surface_of(
     *,
     kramers: bool,
     criteria: LineCriteria = CRITERIA["standard"],
+    symmetry_error_ev: float = 0.0,
 ) -> SurfaceWitness:
     """What the surface of a lattice model says; nothing is left out of H."""
     return compute_surface(
@@ -50,6 +51,7 @@ def surface_of(
         criteria,
         kramers=kramers,
         chosen_by="test",
+        symmetry_error_ev=symmetry_error_ev,
     )
 
 

@@ -14,7 +14,7 @@ from pathlib import Path
 import numpy as np
 
 from companion_files import wsvec_text
-from topovet.arrays import FloatArray
+from topovet.arrays import BoolArray, FloatArray, IntArray
 from topovet.intake.bands import read_eig
 from topovet.intake.discovery import find_case
 from topovet.intake.hamiltonian.hr import read_hr
@@ -158,7 +158,7 @@ class CaseFolder:
 
     def centres(self) -> FloatArray:
         n_wann = self.hamiltonian().n_wann
-        return read_centres(self._existing("_centres.xyz"), n_wann).centres_cart.copy()
+        return np.array(read_centres(self._existing("_centres.xyz"), n_wann).centres_cart)
 
     def write_centres(self, centres_cart: FloatArray) -> None:
         path = self._existing("_centres.xyz")
@@ -168,7 +168,7 @@ class CaseFolder:
 
     def eig(self) -> FloatArray:
         """(n_k, n_bands) eV."""
-        return read_eig(self._existing(".eig")).energies_ev.copy()
+        return np.array(read_eig(self._existing(".eig")).energies_ev)
 
     def write_eig(self, energies_ev: FloatArray) -> None:
         self.remove(".eig")
@@ -192,7 +192,7 @@ def onsite_row(hamiltonian: HamiltonianFile) -> int:
     return int(np.flatnonzero(~hamiltonian.r_cells.any(axis=1))[0])
 
 
-def keep_rows(hamiltonian: HamiltonianFile, rows: FloatArray) -> HamiltonianFile:
+def keep_rows(hamiltonian: HamiltonianFile, rows: BoolArray | IntArray) -> HamiltonianFile:
     """The same file with some of its R vectors only (boolean mask or indices)."""
     return replace(
         hamiltonian,

@@ -10,7 +10,7 @@ from case_folder import CaseFolder, keep_rows, onsite_row
 from clean_cases import CLEAN_CASES, CleanCase
 from fault import CHANGED, Fault, flags, in_real
 
-from topovet.arrays import FloatArray, IntArray
+from topovet.arrays import BoolArray, FloatArray, IntArray
 from topovet.intake.records import HamiltonianFile
 from topovet.model.ordering import reorder_shifts
 
@@ -66,7 +66,7 @@ def scale_one_block(folder: Path, size: float) -> None:
     CaseFolder(folder).change_blocks(change)
 
 
-def _beyond(case: CaseFolder, h: HamiltonianFile, fraction: float) -> FloatArray:
+def _beyond(case: CaseFolder, h: HamiltonianFile, fraction: float) -> BoolArray:
     """Mask of the R that are longer than a fraction of the longest."""
     cell = case.win().cell
     assert cell is not None

@@ -211,7 +211,7 @@ def flux(folder: Path, size: float) -> None:
         elif image[a] == a and image[b] == b and sign[a] != sign[b]:
             same_site = orbitals[a].position_frac == orbitals[b].position_frac
             odd[a, b] = float(same_site and orbitals[a].spin == orbitals[b].spin)
-    v = 0.5e-3 * size * 1j * odd
+    v = np.asarray(0.5e-3 * size * 1j * odd, dtype=np.complex128)
     add_blocks(folder, {(1, 0, 0): v, (-1, 0, 0): -v})
 
 

@@ -71,7 +71,7 @@ class Lattice:
         """H(k), (n_k, n_orb, n_orb), for (n_k, 3)."""
         phases = np.exp(2j * np.pi * np.asarray(k_frac) @ self.r_cells.T)
         n = self.h_r.shape[1]
-        return (phases @ self.h_r.reshape(len(self.h_r), -1)).reshape(-1, n, n)
+        return np.asarray((phases @ self.h_r.reshape(len(self.h_r), -1)).reshape(-1, n, n))
 
 
 def true_z2(lattice: Lattice, filling: int) -> tuple[int, ...] | None:

@@ -57,6 +57,8 @@ class LineCriteria:
     both_routes
         Whether the strong index is found along both directions of the surface even where one gives
         it.
+    least_margin_ev
+        Least |a| at the two ends, and least window, whatever the rest: what levels may be off by.
     """
 
     fractions: tuple[float, ...]
@@ -67,8 +69,9 @@ class LineCriteria:
     end_share: float = 0.01
     most_points: int = 400
     least_window_ev: float = 1e-4
-    most_layer: int = 240
+    most_layer: int = 160
     both_routes: bool = False
+    least_margin_ev: float = 0.0
 
 
 class Unfollowed(Exception):  # noqa: N818  (an answer, not an error)
@@ -188,7 +191,7 @@ class Line:
         for x, top, bottom in zip(new, found.top_ev, found.bottom_ev, strict=True):
             self._edges[x] = (float(top), float(bottom))
         width, t_min = self.narrowest()
-        if width < self.criteria.least_window_ev:
+        if width < max(self.criteria.least_window_ev, self.criteria.least_margin_ev):
             how = f"overlap by {-1e3 * width:.3g}" if width < 0 else f"are {1e3 * width:.2g} apart"
             raise Unfollowed(
                 f"no energy curve separates the projected bulk bands: they {how} meV at "
@@ -249,7 +252,8 @@ class _Walk:
     def crossing(self, side: int) -> Crossing:
         line = self._line
         margin = min(self._ends[side])
-        close = margin < line.criteria.end_share * self._gamma
+        least = max(line.criteria.end_share * self._gamma, line.criteria.least_margin_ev)
+        close = margin < least
         reason = "a surface level lies at the curve at an end of the line" if close else ""
         net = None if close else self._net[side]
         return self._entry(side, "unresolved" if close else "ok", reason, net, margin)

@@ -24,6 +24,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray
+from topovet.boundary.greens import decimate, greens_functions
+
+PLAIN_FROM = 0.7
+"""Rank over size of a layer from which whole layers are decimated: that takes some 50 size^3
+operations a step, the four matrices between the ends some 70 r^3, and more to begin with."""
 
 MAX_DOUBLINGS = 40
 CONVERGED = 1e-9
@@ -68,6 +73,8 @@ def face_densities(
         Singular values of T up to this are left out; levels move by at most twice as much.
     """
     a, b = factors(across, negligible_ev)
+    if a.shape[1] > PLAIN_FROM * len(inside):
+        return _by_decimation(inside, across, energy, n_orb)
     levels, states = np.linalg.eigh(inside)
     at_a, at_b = states.conj().T @ a, states.conj().T @ b
     propagator = 1 / (energy[:, None] - levels)
@@ -82,6 +89,27 @@ def face_densities(
     upper = _face(states[:n_orb], propagator, at_a, joined.bb, ends.aa)
     lower = _face(states[size - n_orb :], propagator, at_b, joined.aa, ends.bb)
     return upper, lower
+
+
+def _by_decimation(
+    inside: ComplexArray, across: ComplexArray, energy: ComplexArray, n_orb: int
+) -> tuple[FaceDensity, FaceDensity]:
+    """The same from whole layers, which is less work where they are coupled by many bonds."""
+    many = (len(energy), *inside.shape)
+    found = decimate(np.broadcast_to(inside, many), np.broadcast_to(across, many), energy)
+    upper = greens_functions(energy, found.upper)[:, :n_orb, :n_orb]
+    first = len(inside) - n_orb
+    lower = greens_functions(energy, found.lower)[:, first:, first:]
+    return _from_block(upper), _from_block(lower)
+
+
+def _from_block(g: ComplexArray) -> FaceDensity:
+    same = -np.diagonal(g, axis1=1, axis2=2).imag / np.pi
+    n = g.shape[1]
+    if n % 2:
+        return FaceDensity(same, np.empty((len(g), 0), dtype=complex))
+    up, down = np.arange(0, n, 2), np.arange(1, n, 2)
+    return FaceDensity(same, 1j * (g[:, down, up] - g[:, up, down].conj()) / (2 * np.pi))
 
 
 def factors(across: ComplexArray, negligible_ev: float) -> tuple[ComplexArray, ComplexArray]:

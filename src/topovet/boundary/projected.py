@@ -39,7 +39,9 @@ class ProjectedEdges:
         return self.bottom_ev - self.top_ev
 
 
-def projected_edges(stack: LayerStack, k_par: FloatArray, filling: int) -> ProjectedEdges:
+def projected_edges(
+    stack: LayerStack, k_par: FloatArray, filling: int, *, zooms: int = ZOOMS
+) -> ProjectedEdges:
     """Band edges at each k_par, sampled along the normal and refined around the extrema.
 
     Attained values: the true window can only be narrower.
@@ -52,18 +54,20 @@ def projected_edges(stack: LayerStack, k_par: FloatArray, filling: int) -> Proje
         (n_k, 2) fractional.
     filling
         Occupied bands per cell.
+    zooms
+        Times that the extrema are looked at again.
     """
     n_normal = max(LEAST_NORMAL_POINTS, 4 * stack.reach)
     step = max(1, CHUNK_BYTES // (3 * 16 * stack.n_orb**2 * n_normal))
     parts = [k_par[i : i + step] for i in range(0, len(k_par), step)]
-    found = map_threads(lambda part: _edges(stack, part, filling, n_normal), parts)
-    solves = len(k_par) * (n_normal + 2 * ZOOMS * 9)
+    found = map_threads(lambda part: _edges(stack, part, filling, n_normal, zooms), parts)
+    solves = len(k_par) * (n_normal + 2 * zooms * 9)
     top, bottom = (np.concatenate([f[i] for f in found]) for i in (0, 1))
     return ProjectedEdges(top, bottom, solves)
 
 
 def _edges(
-    stack: LayerStack, k_par: FloatArray, filling: int, n_normal: int
+    stack: LayerStack, k_par: FloatArray, filling: int, n_normal: int, zooms: int
 ) -> tuple[FloatArray, FloatArray]:
     planes = stack.planes_at(k_par)
     grid = np.broadcast_to(np.arange(n_normal) / n_normal, (len(k_par), n_normal))
@@ -73,7 +77,7 @@ def _edges(
         # the lowest point of sign * E, looked at again and again around where it was found
         values, at, width = sign * sampled[:, :, band], grid, 1.0 / n_normal
         best = values.min(axis=1)
-        for _ in range(ZOOMS):
+        for _ in range(zooms):
             centre = np.take_along_axis(at, values.argmin(axis=1)[:, None], axis=1)
             at = centre + width * np.linspace(-1, 1, 9)
             values, width = sign * _energies(planes, at)[:, :, band], width / 4

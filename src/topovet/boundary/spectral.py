@@ -9,6 +9,7 @@ from ase.cell import Cell
 from ase.dft.kpoints import parse_path_string
 
 from topovet.arrays import ComplexArray, FloatArray
+from topovet.boundary.greens import ARRAYS_PER_ENERGY
 from topovet.boundary.layers import CHUNK_BYTES, LayerStack, principal_blocks
 from topovet.boundary.many_energies import FaceDensity, face_densities
 from topovet.boundary.projected import projected_edges
@@ -19,6 +20,12 @@ from topovet.spectrum.eigen import map_threads
 NEGLIGIBLE_SHARE = 0.2
 """Singular values of the coupling of layers are left out up to this share of the broadening: levels
 move by at most twice as much, and the ranks that remain are what a map costs."""
+
+SURVEY_POINTS = 160
+"""Points along the path at which the bulk is looked at before the map's own points are chosen."""
+
+WINDOW_SCALE_EV = 0.15
+"""A window this much wider than the narrowest gets half of its density of points."""
 
 Path = tuple[FloatArray, FloatArray, tuple[int, ...], tuple[str, ...]]
 
@@ -49,7 +56,31 @@ def surface_path(cut: Recut, n_points: int) -> Path:
     cell[:2, :2] = plane
     path = Cell(cell).bandpath(pbc=(True, True, False), npoints=0)
     names = parse_path_string(path.path)[0]
+    if names[0] == names[-1] == "G":
+        # the same loop with a cone at G in the middle, not cut in two
+        names = [*names[1:], names[1]]
     return _along([np.asarray(path.special_points[n])[:2] for n in names], names, cut, n_points)
+
+
+def adapted_path(stack: LayerStack, cut: Recut, filling: int, n_points: int) -> Path:
+    """The same path with points closest where the projected bulk bands are.
+
+    There surface levels disperse in a narrow window, and a map with evenly spread points would show
+    them as a row of spots.
+    """
+    k_par, distance, at, labels = surface_path(cut, SURVEY_POINTS)
+    window = projected_edges(stack, k_par, filling, zooms=0).gap_ev
+    weight = 1 / (window - window.min() + WINDOW_SCALE_EV)
+    steps = 0.5 * (weight[1:] + weight[:-1]) * np.diff(distance)
+    passed = np.concatenate([[0.0], np.cumsum(steps)])
+    wanted = np.interp(np.linspace(0, passed[-1], n_points), passed, distance)
+    corners = distance[list(at)]
+    # every corner is a point; wanted ones next to it make room
+    spacing = np.gradient(wanted)
+    near = np.abs(wanted[:, None] - corners) < 0.5 * spacing[:, None]
+    chosen = np.sort(np.concatenate([wanted[~near.any(axis=1)], corners]))
+    k_chosen = np.stack([np.interp(chosen, distance, k_par[:, i]) for i in (0, 1)], axis=1)
+    return k_chosen, chosen, tuple(np.searchsorted(chosen, corners).tolist()), labels
 
 
 def _along(corners: list[FloatArray], names: list[str], cut: Recut, n_points: int) -> Path:
@@ -96,8 +127,7 @@ def compute_surface_maps(
     Memory: at most `CHUNK_BYTES` per thread beyond the result.
     """
     k_par, distance, at, labels = path
-    per_energy = 16 * stack.layer_size * (2 * stack.layer_size + 6 * stack.n_orb)
-    batch = max(1, CHUNK_BYTES // per_energy)
+    batch = max(1, CHUNK_BYTES // (16 * stack.layer_size**2 * ARRAYS_PER_ENERGY))
     shifted: ComplexArray = energies_ev + np.complex128(1j * broadening_ev)
 
     def solve(k: FloatArray) -> tuple[FaceDensity, FaceDensity]:

@@ -33,6 +33,7 @@ Hatsugai, PRL 71, 3697 (1993), doi:10.1103/PhysRevLett.71.3697
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -53,7 +54,7 @@ CRITERIA = {
         curves=3,
         intervals=32,
         most_points=2000,
-        most_layer=1000,
+        most_layer=480,
         both_routes=True,
     ),
 }
@@ -73,6 +74,10 @@ levels."""
 DROPPED_SHARE = 0.02
 """Couplings between far planes are left out up to this share of the gap. Half of the gap could not
 change an index; the less, the cheaper."""
+
+ERROR_ROOM = 4.0
+"""|a| at the ends over the violation of time reversal: |a| exceeds the distance of a level by one
+over its weight on the layer, which may be 3."""
 
 CHERN_SIGN = 1
 """Chern number over the net number of levels of the upper half that rise along +a'_1."""
@@ -123,6 +128,7 @@ def compute_surface(
     *,
     kramers: bool,
     chosen_by: str,
+    symmetry_error_ev: float = 0.0,
 ) -> SurfaceWitness:
     """Count crossings on the lines between the surface TRIM, or on the closed edge.
 
@@ -142,6 +148,9 @@ def compute_surface(
         Whether time reversal squares to -1.
     chosen_by
         Where the Miller indices come from.
+    symmetry_error_ev
+        By how much H violates time reversal: Kramers pairs are split by that much, and must keep
+        `ERROR_ROOM` times as far from the curve at the surface TRIM.
 
     Raises
     ------
@@ -157,6 +166,8 @@ def compute_surface(
         miller,
         most_dropped_mev=1e3 * DROPPED_SHARE * direct_gap_ev,
     )
+    if kramers:
+        criteria = replace(criteria, least_margin_ev=ERROR_ROOM * symmetry_error_ev)
     survey = _Survey(cut, place, stack, filling, criteria, chosen_by, kramers=kramers)
     return survey.witness()
 

@@ -8,7 +8,7 @@ from topovet.boundary.cleavage import natural_surface
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.recut import Miller
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
-from topovet.boundary.spectral import compute_surface_maps, surface_path
+from topovet.boundary.spectral import adapted_path, compute_surface_maps
 from topovet.boundary.witness import CRITERIA, DROPPED_SHARE, compute_surface, prepare_surface
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
@@ -21,10 +21,10 @@ from topovet.units import MEV_PER_EV
 MAP_WORK = {"standard": 4e8, "thorough": 1.2e10}
 """Points of the spectral map times (orbitals of a principal layer)^3: seconds, minutes."""
 
-MOST_POINTS = {"standard": (64, 80), "thorough": (140, 180)}
+MOST_POINTS = {"standard": 72, "thorough": 160}
 """Points along the path and energies of a map, at most."""
 
-FEWEST_POINTS = (24, 40)
+FEWEST_POINTS = 24
 """Fewer show nothing; a crystal that is too large even for these gets no map at this effort."""
 
 MAP_MARGIN_EV = 0.3
@@ -59,6 +59,7 @@ def count_surface_crossings(
         CRITERIA[context.settings["effort"]],
         kramers=kramers,
         chosen_by=chosen_by,
+        symmetry_error_ev=time_reversal.violation_mev / MEV_PER_EV,
     )
 
 
@@ -81,15 +82,15 @@ def map_surface(
         miller,
         most_dropped_mev=MEV_PER_EV * DROPPED_SHARE * gap.direct_ev,
     )
-    n_k, n_e = _map_points(stack, context.settings["effort"])
+    n_points = _map_points(stack, context.settings["effort"])
     margin = max(MAP_MARGIN_EV, 0.5 * abs(gap.cbm_ev - gap.vbm_ev))
     low, high = sorted((gap.vbm_ev, gap.cbm_ev))
-    energies = np.linspace(low - margin, high + margin, n_e)
+    energies = np.linspace(low - margin, high + margin, n_points)
     upper, lower = place.terminations
     return compute_surface_maps(
         stack,
         cut,
-        surface_path(cut, n_k),
+        adapted_path(stack, cut, electrons.filling, n_points),
         energies,
         float(energies[1] - energies[0]),
         electrons.filling,
@@ -119,17 +120,15 @@ def _surface(
     return miller, "along a1" if declared.crystal.dimension == 2 else "weakest coupling"
 
 
-def _map_points(stack: LayerStack, effort: str) -> tuple[int, int]:
-    """Points along the path and energies that the effort allows for, three to four."""
-    points = MAP_WORK[effort] / stack.layer_size**3
-    n_k = int(np.sqrt(0.75 * points))
-    n_e = int(points / max(1, n_k))
-    if n_k < FEWEST_POINTS[0]:
+def _map_points(stack: LayerStack, effort: str) -> int:
+    """Points along the path, and as many energies, that the effort allows for."""
+    each_way = int(np.sqrt(MAP_WORK[effort] / stack.layer_size**3))
+    if each_way < FEWEST_POINTS:
         raise NotApplicable(
-            f"a principal layer holds {stack.layer_size} orbitals: too many for a map at this effort"
+            f"a principal layer holds {stack.layer_size} orbitals: too many for a map at "
+            f"--effort {effort}"
         )
-    most_k, most_e = MOST_POINTS[effort]
-    return min(n_k, most_k), min(n_e, most_e)
+    return min(each_way, MOST_POINTS[effort])
 
 
 NEEDS = ("hamiltonian-with-basis", "declarations", "electrons", "gap")

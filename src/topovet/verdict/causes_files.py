@@ -114,8 +114,9 @@ def _centres(inquiry: Inquiry) -> Iterator[Cause]:
     )
 
 
-OF_THE_RIM = frozenset({"inside-error-bar", "interpolation-poor"})
-"""What a range that ends too early brings about; cut files bring about much more."""
+OF_THE_RIM = frozenset({"inside-error-bar"})
+"""What a range that ends too early brings about: it is no matter of how this file is read, so that
+energies on the mesh and Wannier90's own interpolation are met all the same."""
 
 
 def _range(inquiry: Inquiry) -> Cause:

@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from topovet.verdict.causes_declared import declared_causes
 from topovet.verdict.causes_files import file_causes
 from topovet.verdict.causes_physics import physics_causes
 from topovet.verdict.document import CauseEntry, DiagnosisEntry, MendedEntry
@@ -56,7 +57,7 @@ EXPLAINS: dict[str, frozenset[str]] = {
     "time-reversal-broken": SYMPTOMS | {"symmetry-broken", "inside-error-bar"},
     "symmetry-broken": SYMPTOMS | {"inside-error-bar"},
     "gap-closes": SYMPTOMS | {"fermi-outside-gap", "inside-error-bar"},
-    "interpolation-poor": SYMPTOMS | {"inside-error-bar"},
+    "interpolation-poor": SYMPTOMS | {"inside-error-bar", "range-truncated"},
     "wilson-unresolved": SYMPTOMS,
 }
 """What each cause can bring about, upstream first; the order breaks ties."""
@@ -75,7 +76,7 @@ def diagnose(inquiry: Inquiry) -> DiagnosisEntry:
     inquiry
         The case with its flags and experiments.
     """
-    causes = [*file_causes(inquiry), *physics_causes(inquiry)]
+    causes = [*file_causes(inquiry), *declared_causes(inquiry), *physics_causes(inquiry)]
     tested = [_tested(cause, inquiry) for cause in causes]
     tested.sort(key=lambda item: _rank(item.cause))
     entries = [_entry(item, tested, inquiry.flags) for item in tested]
@@ -131,13 +132,17 @@ def _weight(item: _Tested, flags: Sequence[Flag]) -> float:
 
 
 def _explained_by(item: _Tested, all_tested: Sequence[_Tested]) -> str:
-    """The first cause upstream of this one that explains it; "" where there is none."""
+    """The first cause that explains this one; "" where there is none.
+
+    Of two that explain each other the one that stands first in `EXPLAINS` is upstream.
+    """
     if item.cause.answer == "no":
         return ""
     upstream = [
         other.cause
         for other in all_tested
-        if item.cause.cause in other.explained and _rank(other.cause) < _rank(item.cause)
+        if item.cause.cause in other.explained
+        and (other.cause.cause not in item.explained or _rank(other.cause) < _rank(item.cause))
     ]
     return min(upstream, key=_rank).cause if upstream else ""
 

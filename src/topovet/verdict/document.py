@@ -102,18 +102,18 @@ class WilsonEntry:
 
 @dataclass(frozen=True, slots=True)
 class SurfaceEntry:
-    """Surface or edge states; z2 is None at an index that the surface does not settle.
+    """Surface or edge states; z2_partial is None at an index that the surface does not settle.
 
-    `crossings` holds the lines between surface TRIM in the reciprocal lattice of the surface; miller
-    refers to the Hamiltonian's own cell.
+    `crossings` holds the lines between surface TRIM in the reciprocal lattice of the surface;
+    miller refers to the Hamiltonian's own cell.
     """
 
     status: str
     reason: str
     z2_strong: int | None = None
     crossings: tuple[Mapping[str, Any], ...] = ()
-    z2: tuple[int | None, ...] | None = None
-    chern: int | None = None
+    z2_partial: tuple[int | None, ...] | None = None
+    edge_chern: int | None = None
     miller: tuple[int, int, int] | None = None
     chosen_by: str = ""
     terminations: tuple[str, ...] = ()

@@ -84,6 +84,7 @@ def _disagreement(findings: Findings) -> Iterator[Flag]:
             "mended.",
         )
     yield from _chern_against_parity(findings)
+    yield from _surface(findings)
 
 
 def _mirrors(findings: Findings) -> Iterator[Flag]:
@@ -153,6 +154,31 @@ def _chern_against_parity(findings: Findings) -> Iterator[Flag]:
             f"the Chern number is {chern.chern[0]}, but parities say it is "
             f"{'odd' if odd else 'even'}.",
             {"chern": chern.chern[0], "odd_by_parities": bool(odd)},
+            "The other flags name what breaks the ground of one of them.",
+        )
+
+
+def _surface(findings: Findings) -> Iterator[Flag]:
+    """Edge levels against the Chern number, and a surface that contradicts itself."""
+    surface, chern = findings.surface, findings.chern
+    if surface is None:
+        return
+    if surface.status == "failed":
+        yield Flag(
+            "witnesses-disagree",
+            "warning",
+            f"surface levels give no index: {surface.reason.rstrip('.')}.",
+            {"miller": list(surface.miller)},
+            "Follow another surface with --surface, or with --effort thorough; crossings of both "
+            "terminations must have one parity while time reversal holds.",
+        )
+    known = None if chern is None or chern.status != "ok" else chern.chern
+    if surface.chern is not None and known is not None and known != (surface.chern,):
+        yield Flag(
+            "witnesses-disagree",
+            "error",
+            f"the Chern number is {known[0]}, but edge levels count {surface.chern}.",
+            {"chern": known[0], "by_edge_levels": surface.chern},
             "The other flags name what breaks the ground of one of them.",
         )
 

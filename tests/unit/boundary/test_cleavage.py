@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -17,8 +19,13 @@ def _natural(model):
     return natural_surface(model.tight_binding(), model.crystal, model.basis.positions_frac)
 
 
-def test_layers_are_cut_apart() -> None:
-    assert _natural(layered_bhz(t_z=0.05)) == (0, 0, 1)
+@pytest.mark.parametrize("c_ang", [3.0, 8.0])
+def test_layers_are_cut_apart(c_ang: float) -> None:
+    """Whether the planes are dense or not: what counts is how little couples them."""
+    model = layered_bhz(t_z=0.05)
+    cell = np.diag([6.46, 6.46, c_ang])
+    crystal = Crystal(cell, model.crystal.symbols, model.crystal.positions_frac)
+    assert _natural(replace(model, crystal=crystal)) == (0, 0, 1)
 
 
 def test_a_cube_is_cut_along_its_densest_planes() -> None:

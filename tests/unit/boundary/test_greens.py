@@ -78,7 +78,9 @@ def test_green_is_hermitian_in_the_gap() -> None:
 
 
 @pytest.mark.parametrize("negligible", [0.0, 1e-3])
-def test_fast_route_equals_decimation(negligible: float) -> None:
+@pytest.mark.parametrize("plain_from", [0.0, 1.1])
+def test_both_routes_equal_decimation(negligible: float, plain_from: float, monkeypatch) -> None:
+    monkeypatch.setattr("topovet.boundary.many_energies.PLAIN_FROM", plain_from)
     model = random_model(4, inversion=False)
     _, _, stack = prepared(model, (1, 2, 0))
     inside, across = principal_blocks(stack.planes_at(np.array([[0.2, 0.37]])))

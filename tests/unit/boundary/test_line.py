@@ -78,6 +78,16 @@ def test_a_level_at_the_curve_where_the_line_ends_is_not_counted() -> None:
     assert all(c.net is None for line in found.lines for c in line.crossings if c.status != "ok")
 
 
+def test_kramers_pairs_that_are_split_need_room() -> None:
+    """Levels known to 50 meV only cannot be told from a curve 0.1 eV away."""
+    model = wilson_dirac(m=-2.0)
+    tight = surface_of(model, (0, 0, 1), kramers=True, symmetry_error_ev=1e-3)
+    assert tight.z2_strong == 1
+    loose = surface_of(model, (0, 0, 1), kramers=True, symmetry_error_ev=0.1)
+    assert (loose.status, loose.z2) == ("unresolved", None)
+    assert "a surface level lies at the curve" in loose.reason
+
+
 def test_evidence_is_kept() -> None:
     found = surface_of(wilson_dirac(m=-2.0), (0, 0, 1), kramers=True)
     assert [(line.start, line.end, line.parity) for line in found.lines] == [

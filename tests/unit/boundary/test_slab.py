@@ -75,6 +75,29 @@ def test_spin_map_is_helical_and_odd() -> None:
     assert np.all(np.abs(maps[0].spin[:, :, 0]) <= maps[0].density + 1e-12)
 
 
+def test_spin_of_map_and_film_point_the_same_way() -> None:
+    """The film ends towards -n with the face of the upper half: level by level the same spin."""
+    model = wilson_dirac(m=-2.0)
+    cut, place, stack = prepared(model, (0, 0, 1))
+    k_par = np.array([[0.03, 0.0], [0.05, 0.0]])
+    film = compute_slab_bands(stack, cut, k_par, 16)
+    names = tuple(t.name for t in place.terminations)
+    level = float(film.energies_ev[1][film.energies_ev[1] > 0][0])
+    path = (k_par, np.arange(2.0), (0, 1), ("G", "X"))
+    maps = compute_surface_maps(stack, cut, path, np.array([level, level + 1]), 0.01, 2, names)
+    along = cut.cell[0] / np.linalg.norm(cut.cell[0])
+    above = (film.energies_ev[1] > 0) & (film.energies_ev[1] < level + 0.1)
+    for found, spins, outward in (
+        (maps[0], film.spin_lower, -cut.normal_cart),
+        (maps[1], film.spin_upper, cut.normal_cart),
+    ):
+        sideways = spins[1, above].sum(axis=0) @ np.cross(outward, along)
+        assert abs(sideways) > 0.3
+        assert np.sign(found.spin[1, 0, 0]) == np.sign(sideways)
+        # a Lorentzian's height is its weight over pi times the broadening
+        assert found.spin[1, 0, 0] * np.pi * 0.01 == pytest.approx(sideways, rel=0.05)
+
+
 def test_hybridisation_gap_dies_out_exponentially() -> None:
     """At the Dirac momentum of the Wilson-Dirac film the split falls by a constant factor a plane.
 

@@ -5,9 +5,9 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from lattice_models import LatticeModel
-from topovet.arrays import ComplexArray
 from topovet.diagnosis.subject import Subject
 from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.fourier import build_bloch_sum
@@ -49,8 +49,8 @@ def subject_of(
     )
 
 
-def with_onsite(model: LatticeModel, block: ComplexArray) -> LatticeModel:
+def with_onsite(model: LatticeModel, block: ArrayLike) -> LatticeModel:
     """H(0) += block, eV."""
     h_r = model.h_r.astype(complex)
-    h_r[~model.r_cells.any(axis=1)] += block
+    h_r[~model.r_cells.any(axis=1)] += np.asarray(block)
     return replace(model, h_r=h_r)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import fields, replace
 from typing import Any
 
 import numpy as np
@@ -353,3 +353,42 @@ def test_other_declaration_must_let_parities_be_read(status: str, answer: str) -
     assert causes(found)["orbital-declaration-wrong"].answer == answer
     first = "orbital-declaration-wrong" if answer == "yes" else "symmetry-broken"
     assert named(found)[0] == first
+
+
+def test_no_witness_of_the_old_reading_is_carried_over() -> None:
+    """Whatever witnesses there are: only what the reading itself was put to may speak."""
+    asked_again = {"time_reversal", "inversion", "electrons", "gap", "parity", "wilson"}
+    of_the_files = {
+        "declared",
+        "spinful",
+        "audit",
+        "decay",
+        "spin_order",
+        "shift_test",
+        "space_group",
+        "inferred",
+        "symmetry_class",
+        "interpolation",
+        "missing",
+    }
+    everything: dict[str, Any] = {
+        f.name: object() for f in fields(SOUND) if f.name not in asked_again
+    }
+    findings = replace(SOUND, **{k: v for k, v in everything.items() if k not in of_the_files})
+    moved = findings_of(findings, reading("symmetrised"))
+    for name in everything.keys() - of_the_files:
+        assert not getattr(moved, name), name
+
+
+@pytest.mark.parametrize("cut", [False, True])
+def test_misread_shifts_put_hoppings_on_the_rim(cut: bool) -> None:
+    """Bands unlike Wannier90's own explain a large rim; a list that was cut explains them."""
+    findings = changed(
+        interpolation=InterpolationCheck(None, None, 0, 900.0, 900.0, 100, None),
+        decay={"rim_mev": 400.0},
+        audit={"degeneracy_sum": 60.5 if cut else 64.0},
+    )
+    found = diagnosis(findings, reading("shorter-range", moved_mev=400.0))
+    first, then = ("range-truncated", "interpolation-poor")[:: 1 if cut else -1]
+    assert named(found)[0] == first
+    assert causes(found)[then].consequence_of == first

@@ -131,7 +131,7 @@ def test_centre_that_holds_little_better_is_not_moved() -> None:
 
 @pytest.mark.parametrize("kind", sorted(KINDS))
 def test_corrections_are_told_in_words(kind: str) -> None:
-    parts = {"flipped": (0, 1)} if kind == "parity" else {}
+    parts: dict[str, Any] = {"flipped": (0, 1)} if kind == "parity" else {}
     flags = flags_of(check(corrections=(correction(kind, **parts),)))
     assert [(f.code, f.severity) for f in flags] == [("orbital-declaration-wrong", "error")]
     assert KINDS[kind] in flags[0].summary

@@ -9,6 +9,7 @@ from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
 from topovet.report.figures.flow import flow_figure
 from topovet.report.figures.operations import operations_figure
+from topovet.report.figures.surface import surface_figure
 from topovet.report.figures.tasks import tasks_figure
 from topovet.report.figures.zone import zone_figure
 from topovet.report.material import ReportMaterial
@@ -20,6 +21,7 @@ __all__ = [
     "figure_makers",
     "flow_figure",
     "operations_figure",
+    "surface_figure",
     "tasks_figure",
     "zone_figure",
 ]
@@ -31,8 +33,8 @@ _WORTH_A_CLOSER_LOOK_EV = 1.2
 def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     """A maker of SVG text for every figure that the material allows, by name.
 
-    The names are "zone", "bands", "bands-near-gap", "operations", "flow", "decay" and "tasks";
-    `render_report` places them, and each also stands alone as a file.
+    The names are "zone", "bands", "bands-near-gap", "operations", "flow", "surface", "decay" and
+    "tasks"; `render_report` places them, and each also stands alone as a file.
     """
     m = material
     trim = m.parity.trim if m.parity is not None else ()
@@ -46,6 +48,8 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
         makers["operations"] = lambda: operations_figure(group)
     if wilson is not None and wilson.planes:
         makers["flow"] = lambda: flow_figure(wilson.planes)
+    if m.surface_maps:
+        makers["surface"] = lambda: _surface(m)
     if m.tasks:
         makers["tasks"] = lambda: tasks_figure(m.tasks)
     return makers
@@ -54,6 +58,18 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
 def build_figures(material: ReportMaterial) -> dict[str, str]:
     """Every figure that the material allows, by name: the SVG text of each."""
     return {name: make() for name, make in figure_makers(material).items()}
+
+
+def _surface(m: ReportMaterial) -> str:
+    if m.electrons.fermi_ev is not None:
+        name = "E(F)"
+        return surface_figure(
+            m.surface_maps, zero_ev=m.electrons.fermi_ev, zero_name=name, zero_symbol=name
+        )
+    assert m.gap is not None
+    middle = 0.5 * (m.gap.vbm_ev + m.gap.cbm_ev)
+    name = "the middle between the band edges"
+    return surface_figure(m.surface_maps, zero_ev=middle, zero_name=name, zero_symbol="E(mid)")
 
 
 def _band_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
