@@ -55,13 +55,14 @@ class Cut:
     height
         Of the cut in units of the lattice planes' distance, 0 to 1.
     width_ang
-        Distance of the atomic planes on its two sides.
+        Distance of the atomic planes on its two sides; None where home cells are cut apart as they
+        are, and what ends up outermost is not known.
     terminations
         The upper half-crystal, then the lower one.
     """
 
     height: float
-    width_ang: float
+    width_ang: float | None
     terminations: tuple[Termination, Termination]
 
 
@@ -167,6 +168,11 @@ def place_cut(crystal: Crystal, cut: Recut) -> Cut:
         symbols = [s for s, out in zip(crystal.symbols, outermost, strict=True) if out]
         names.append(" and ".join(dict.fromkeys(symbols)))
     return Cut(height, width, (Termination("upper", names[0]), Termination("lower", names[1])))
+
+
+def home_cell_cut() -> Cut:
+    """The cut between the cells that the file counts from, where no sites are declared."""
+    return Cut(0.0, None, (Termination("upper", ""), Termination("lower", "")))
 
 
 def layers_of(positions_frac: FloatArray, cut: Recut, height: float) -> IntArray:

@@ -125,7 +125,7 @@ class Line:
             The projected bands leave no window somewhere, or the points run out.
         """
         points = [i / self.criteria.intervals for i in range(self.criteria.intervals + 1)]
-        self._look(points)
+        self.look(points)
         pairs = list(itertools.pairwise(points))
         while pairs:
             wide = self._too_wide(pairs)
@@ -137,7 +137,7 @@ class Line:
                     f"more than {self.criteria.most_points} points are needed where the window "
                     f"between the projected bulk bands is {1e3 * width:.2g} meV ({self._name(t)})"
                 )
-            self._look(middles)
+            self.look(middles)
             pairs = [pair for a, b in wide for pair in ((a, (a + b) / 2), ((a + b) / 2, b))]
         return points
 
@@ -160,7 +160,7 @@ class Line:
             The coupling does not die out: there are bulk states at the curve; or a slab of 2^i - 1
             layers has a level there, which costs digits.
         """
-        self._look(t)
+        self.look(t)
         edges = np.array([self._edges[x] for x in t])
         energy = edges[:, 0] + fraction * (edges[:, 1] - edges[:, 0])
         planes = self.stack.planes_at(self.k_at(np.array(t)))
@@ -182,7 +182,14 @@ class Line:
         (top_a, bottom_a), (top_b, bottom_b) = self._edges[0.0], self._edges[1.0]
         return top_a + fraction * (bottom_a - top_a), top_b + fraction * (bottom_b - top_b)
 
-    def _look(self, t: list[float]) -> None:
+    def look(self, t: list[float]) -> None:
+        """Solve for the window at positions where it is not known yet.
+
+        Raises
+        ------
+        Unfollowed
+            There is none somewhere.
+        """
         new = [x for x in t if x not in self._edges]
         if not new:
             return
@@ -289,7 +296,7 @@ class _Walk:
             return [(_one(upper, i), _one(lower, i)) for i in range(len(part))]
 
         parts = [t[i : i + 4] for i in range(0, len(t), 4)]
-        self._line._look(t)
+        self._line.look(t)
         for part, solved in zip(parts, map_threads(solve, parts), strict=True):
             self._at.update(zip(part, solved, strict=True))
         self._points += len(t)

@@ -110,11 +110,12 @@ class SurfaceWitness:
     spacing_ang
         Of the lattice planes.
     chosen_by
-        "command line", "case.toml" or "weakest coupling"; "along a1" for an edge.
+        "options of the run", "case.toml" or "weakest coupling"; "along a1" for an edge.
     terminations
         Names of the upper and the lower half-crystal.
     cut_width_ang
-        Distance of the atomic planes on the two sides of the cut.
+        Distance of the atomic planes on the two sides of the cut; None where no sites are declared
+        and home cells are cut apart as they are.
     matrix
         Rows: the re-cut lattice vectors in units of the old ones; k'_i = k.a'_i.
     lines
@@ -138,7 +139,7 @@ class SurfaceWitness:
     spacing_ang: float
     chosen_by: str
     terminations: tuple[str, str]
-    cut_width_ang: float
+    cut_width_ang: float | None
     matrix: tuple[tuple[int, int, int], ...]
     lines: tuple[SurfaceLine, ...]
     dropped_mev: float

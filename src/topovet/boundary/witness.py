@@ -38,7 +38,7 @@ from dataclasses import replace
 import numpy as np
 
 from topovet.arrays import FloatArray
-from topovet.boundary.cleavage import Cut, layers_of, place_cut
+from topovet.boundary.cleavage import Cut, home_cell_cut, layers_of, place_cut
 from topovet.boundary.layers import LayerStack, build_layers
 from topovet.boundary.line import Line, LineCriteria, Unfollowed
 from topovet.boundary.recut import Miller, Recut, recut, recut_model
@@ -105,10 +105,10 @@ def prepare_surface(
     UndefinedError
         The indices name no surface of this crystal.
     """
-    cut = recut(crystal, miller)
-    place = place_cut(crystal, cut)
+    cut, place = recut(crystal, miller), home_cell_cut()
     layers = sites = None
     if positions_frac is not None:
+        place = place_cut(crystal, cut)
         layers = layers_of(positions_frac, cut, place.height)
         sites = cut.in_cell(positions_frac)[:, :2]
     stack = build_layers(

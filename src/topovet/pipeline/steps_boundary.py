@@ -1,4 +1,9 @@
-"""Task functions of the boundary: crossings between surface TRIM, and the surface spectral map."""
+"""Task functions of the boundary: crossings between surface TRIM, and the surface spectral map.
+
+What they cost at standard effort, in CPU time of one core: the count 100 to 400 half-crystals, 0.2
+to 4 s for principal layers of 36 to 96 orbitals and as the cube of that beyond; the map as much
+work whatever the crystal, 1 to 3 s. Both are left out at quick effort.
+"""
 
 from __future__ import annotations
 
@@ -18,7 +23,7 @@ from topovet.spectrum.results import Electrons, GapSample
 from topovet.symmetry.results import TimeReversalTest
 from topovet.units import MEV_PER_EV
 
-MAP_WORK = {"standard": 4e8, "thorough": 1.2e10}
+MAP_WORK = {"standard": 8e8, "thorough": 1.2e10}
 """Points of the spectral map times (orbitals of a principal layer)^3: seconds, minutes."""
 
 MOST_POINTS = {"standard": 72, "thorough": 160}

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import Any
 
-from topovet.diagnosis.results import NoiseTest
+from topovet.diagnosis.results import NoiseTest, Rereading
 from topovet.notation import k_text, mev, z2_text
 from topovet.spectrum.gap import GAPLESS_EV, UNRESOLVED_EV
 from topovet.verdict.budget import total_error
@@ -57,7 +57,7 @@ def _noise(inquiry: Inquiry) -> Iterator[Cause]:
         "Look for what made H(R) noisy: an unconverged run, a lossy copy, digits cut off. "
         "--symmetrise averages the noise over the group."
     )
-    yield Cause("noise", "yes", test, finding, evidence, advice, inquiry.reading("symmetrised"))
+    yield Cause("noise", "yes", test, finding, evidence, advice, _near_average(inquiry))
 
 
 def _unlike_noise(test: NoiseTest) -> str:
@@ -79,8 +79,21 @@ def _time_reversal(inquiry: Inquiry) -> Iterator[Cause]:
         finding = f"they agree to {mev(reversal.violation_mev)}."
         yield Cause(code, "no", test, finding, {"violation_meV": reversal.violation_mev})
         return
-    reading = inquiry.reading("symmetrised")
+    reading = _near_average(inquiry)
     yield Cause(code, "yes", test, flag.summary, flag.evidence, flag.advice, reading)
+
+
+def _near_average(inquiry: Inquiry) -> Rereading | None:
+    """The Hamiltonian averaged over its group, where that tells of the one that is mended.
+
+    By Weyl's inequality no gap closes between the two while their distance is below half of the
+    gap of either. Further away the average is another Hamiltonian, and its indices say nothing.
+    """
+    average = inquiry.reading("symmetrised")
+    if average is None or average.moved_mev is None:
+        return None
+    own_radius = 500.0 * average.gap.direct_ev
+    return average if average.moved_mev < max(inquiry.radius_mev or 0.0, own_radius) else None
 
 
 def _inversion(inquiry: Inquiry) -> Iterator[Cause]:
@@ -92,18 +105,20 @@ def _inversion(inquiry: Inquiry) -> Iterator[Cause]:
             finding = f"inversion holds to {mev(violation)}."
             yield Cause(code, "no", test, finding, {"violation_meV": violation})
         return
-    average = inquiry.reading("symmetrised")
+    average, near = inquiry.reading("symmetrised"), _near_average(inquiry)
     evidence: dict[str, Any] = dict(flag.evidence)
     finding, answer = flag.summary, "yes"
     if average is not None:
-        z2 = average.z2
-        evidence |= {"moved_meV": average.moved_mev, "z2_if_symmetrised": z2}
+        evidence["moved_meV"] = average.moved_mev
         finding += f" Averaging moves bands by up to {mev(average.moved_mev)}"
-        finding += "." if z2 is None else f" and gives Z2 = {z2_text(z2)}."
+        finding += ", too far to tell from it what a sound file would say." if near is None else "."
         within = radius is not None and (average.moved_mev or 0.0) < radius
         beside = within and not inquiry.is_largest_error("symmetry")
         answer = "no" if beside and flag.severity == "warning" else "yes"
-    yield Cause(code, answer, test, finding, evidence, flag.advice, average)
+    if near is not None and near.z2 is not None:
+        evidence["z2_if_symmetrised"] = near.z2
+        finding = f"{finding[:-1]} and gives Z2 = {z2_text(near.z2)}."
+    yield Cause(code, answer, test, finding, evidence, flag.advice, near)
 
 
 def _gap(inquiry: Inquiry) -> Cause:

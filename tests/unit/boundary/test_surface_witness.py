@@ -11,7 +11,14 @@ import pytest
 from boundary_models import surface_of
 from lattice_models import wilson_dirac
 from topovet.boundary.results import SurfaceLine
-from topovet.boundary.witness import CRITERIA, _judge, _Survey, prepare_surface, weak_indices
+from topovet.boundary.witness import (
+    CRITERIA,
+    _judge,
+    _Survey,
+    compute_surface,
+    prepare_surface,
+    weak_indices,
+)
 from topovet.errors import UndefinedError
 
 
@@ -99,6 +106,23 @@ def test_both_routes_are_taken_when_thorough() -> None:
 def test_surfaces_without_kramers_pairs_are_not_counted() -> None:
     found = surface_of(wilson_dirac(m=-2.0, zeeman=0.1), (0, 0, 1), kramers=False)
     assert (found.status, found.z2) == ("not-applicable", None)
+
+
+def test_undeclared_sites_leave_the_termination_unnamed() -> None:
+    model = wilson_dirac(m=-2.0)
+    found = compute_surface(
+        model.tight_binding(),
+        model.crystal,
+        None,
+        2,
+        (0, 0, 1),
+        1.0,
+        CRITERIA["standard"],
+        kramers=True,
+        chosen_by="test",
+    )
+    assert found.z2_strong == 1
+    assert (found.terminations, found.cut_width_ang) == (("upper half", "lower half"), None)
 
 
 def test_a_filling_without_empty_bands_is_refused() -> None:

@@ -73,6 +73,14 @@ def test_a_surface_without_a_curve_says_why() -> None:
     assert "no energy curve separates the projected bulk bands" in page
 
 
+def test_an_unknown_termination_is_admitted() -> None:
+    unnamed = surfaces.witness(
+        (1, None, 0, None), cut_width_ang=None, terminations=("upper half", "lower half")
+    )
+    material = _material(surface=unnamed)
+    assert "what ends up outermost is not known" in render_report(material, {})
+
+
 def test_no_surface_no_section() -> None:
     material = invented.strong()
     page = render_report(material, build_figures(material))
