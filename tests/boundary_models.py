@@ -64,7 +64,7 @@ def ssh_chain(*, v: float, w: float) -> LatticeModel:
     References
     ----------
     Su, Schrieffer, Heeger, PRL 42, 1698 (1979), doi:10.1103/PhysRevLett.42.1698; end state in the
-    textbook form, e.g. Asboth, Oroszlany, Palyi, Lecture Notes in Physics 919 (2016), chapter 1.
+    textbook form, e.g. Asboth, Oroszlany, Palyi (Springer LNP 919, 2016), chapter 1.
     """
     terms, a, b = Terms(2), slice(0, 1), slice(1, 2)
     terms.add((0, 0, 0), a, b, 0.5 * v * np.eye(1))  # added with its partner in the same cell

@@ -37,7 +37,7 @@ def test_qi_wu_zhang_edges_disperse_as_sin_k(k: float) -> None:
 
     The ansatz with sigma_y psi = +-psi on a half-plane solves the model exactly. Source: Qi, Wu,
     Zhang, PRB 74, 085308 (2006), doi:10.1103/PhysRevB.74.085308 (their Fig. 2); closed form as in
-    Asboth, Oroszlany, Palyi, Lecture Notes in Physics 919 (2016), chapter 6 (from memory).
+    Asboth, Oroszlany, Palyi (Springer LNP 919, 2016), chapter 6 (from memory).
     """
     model = qi_wu_zhang(m=1.0)
     slope = float(recut(model.crystal, (0, 1, 0)).matrix[0, 0])  # k' runs along a'_1 = +-a_1

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import difflib
 import re
-import sys
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -12,11 +11,7 @@ from typing import Any
 from topovet.errors import InputError, quoted
 from topovet.intake.opening import read_lines
 from topovet.intake.records import CaseSettings
-
-if sys.version_info >= (3, 11):
-    import tomllib
-else:
-    import tomli as tomllib
+from topovet.intake.toml_text import parse_toml
 
 MAX_BYTES = 100_000
 """No case needs more settings; a larger file is something else."""
@@ -47,7 +42,12 @@ def read_settings(path: str | Path) -> CaseSettings:
         wrong kind.
     """
     lines = read_lines(path, max_bytes=MAX_BYTES)
-    table = _parsed(path, lines)
+    table = parse_toml(
+        path,
+        lines,
+        expected="each key once, in lines such as filling = 18",
+        todo="correct the line",
+    )
     for key in table:
         if key not in KEYS:
             raise _unknown_key(path, key, lines)
@@ -65,22 +65,6 @@ def read_settings(path: str | Path) -> CaseSettings:
             )
         values[key] = table[key]
     return _settings(values)
-
-
-def _parsed(path: str | Path, lines: list[str]) -> dict[str, Any]:
-    try:
-        return tomllib.loads("\n".join(lines) + "\n")
-    except (ValueError, RecursionError) as error:
-        at = re.search(r"at line (\d+)", str(error))
-        line = int(at.group(1)) if at else None
-        shown = quoted(lines[line - 1]) if line is not None and line <= len(lines) else "text"
-        raise InputError(
-            path,
-            line=line,
-            found=f"{shown}, which is not TOML",
-            expected="each key once, in lines such as filling = 18",
-            todo="correct the line",
-        ) from error
 
 
 def _unknown_key(path: str | Path, key: str, lines: list[str]) -> InputError:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import difflib
 import re
-import sys
 from collections.abc import Mapping
 from dataclasses import dataclass
 from importlib import resources
@@ -13,11 +12,7 @@ from typing import Any
 
 from topovet.errors import InputError, quoted
 from topovet.intake.opening import read_lines
-
-if sys.version_info >= (3, 11):
-    import tomllib
-else:
-    import tomli as tomllib
+from topovet.intake.toml_text import parse_toml
 
 MAX_BYTES = 100_000
 LARGEST_WEIGHT = 1000.0
@@ -55,7 +50,9 @@ def default_text() -> str:
 
 def default_rules() -> MeritRules:
     """The shipped rules."""
-    return MeritRules(tomllib.loads(default_text()), "defaults")
+    return MeritRules(
+        parse_toml("defaults", default_text().splitlines(), expected="", todo=""), "defaults"
+    )
 
 
 def read_rules(path: str | Path) -> MeritRules:
@@ -73,7 +70,12 @@ def read_rules(path: str | Path) -> MeritRules:
         is no number or out of range; no weight above 0.
     """
     lines = read_lines(path, max_bytes=MAX_BYTES)
-    given = _parsed(path, lines)
+    given = parse_toml(
+        path,
+        lines,
+        expected="lines such as gap = 30 below a heading such as [weights]",
+        todo="correct the line; topovet shortlist --show-merit prints an example",
+    )
     tables = {name: dict(table) for name, table in default_rules().tables.items()}
     for name, table in given.items():
         if name not in tables or not isinstance(table, dict):
@@ -90,22 +92,6 @@ def read_rules(path: str | Path) -> MeritRules:
             todo="give one part of the merit a weight",
         )
     return MeritRules(tables, Path(path).name)
-
-
-def _parsed(path: str | Path, lines: list[str]) -> dict[str, Any]:
-    try:
-        return tomllib.loads("\n".join(lines) + "\n")
-    except (ValueError, RecursionError) as error:
-        at = re.search(r"at line (\d+)", str(error))
-        line = int(at.group(1)) if at else None
-        shown = quoted(lines[line - 1]) if line is not None and line <= len(lines) else "text"
-        raise InputError(
-            path,
-            line=line,
-            found=f"{shown}, which is not TOML",
-            expected="lines such as gap = 30 below a heading such as [weights]",
-            todo="correct the line; topovet shortlist --show-merit prints an example",
-        ) from error
 
 
 def _unknown(
