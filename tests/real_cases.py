@@ -7,7 +7,7 @@ import json
 from pathlib import Path
 from typing import Any
 
-import topovet
+from topovet.pipeline.dossier import start_run
 from topovet.verdict.document import Verdict
 
 CASES = Path(__file__).parents[1] / "fixtures" / "cases"
@@ -16,7 +16,16 @@ CENTROSYMMETRIC = tuple(sorted(p.parent.name for p in CASES.glob("*/dft_parity.j
 
 @functools.cache
 def vetted(case: str) -> Verdict:
-    return topovet.vet(CASES / case)
+    """The verdict at quick effort; the proved gap and surfaces have tests of their own."""
+    verdict: Verdict = start_run(CASES / case, settings={"effort": "quick"}).result("verdict")
+    return verdict
+
+
+@functools.cache
+def vetted_in_full(case: str) -> Verdict:
+    """The verdict at standard effort, surfaces and proof included."""
+    verdict: Verdict = start_run(CASES / case).result("verdict")
+    return verdict
 
 
 @functools.cache

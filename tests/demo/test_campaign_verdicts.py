@@ -18,7 +18,9 @@ from topovet.demo.campaign import COMPOUNDS
 from topovet.demo.compound import Compound
 from topovet.demo.writer import write_draft
 from topovet.errors import InputError, TopovetError
+from topovet.pipeline.dossier import start_run
 from topovet.report.json_document import verdict_json
+from topovet.verdict.document import Verdict
 
 SCHEMA = json.loads(
     resources.files("topovet").joinpath("report/verdict.schema.json").read_text(encoding="utf-8")
@@ -30,7 +32,7 @@ READABLE = [c for c in COMPOUNDS if c.truth]
 @pytest.mark.parametrize("compound", READABLE, ids=lambda c: c.code)
 def test_verdict_is_true_or_open_with_its_reason(compound: Compound, tmp_path: Path) -> None:
     write_draft(compound.draft(), tmp_path, compound.code)
-    verdict = topovet.vet(tmp_path)
+    verdict: Verdict = start_run(tmp_path).result("verdict")
     raised = {flag.code for flag in verdict.flags}
     assert set(compound.flags) <= raised, f"{compound.about}: only {sorted(raised)}"
     if verdict.class_ == "undetermined" and compound.may_stay_open:

@@ -65,7 +65,7 @@ def _lay(name: str, folder: Path) -> Path:
 @pytest.mark.parametrize(
     "name",
     [
-        "GX-06",  # 16 bands, triclinic
+        pytest.param("GX-06", marks=pytest.mark.endurance),  # 16 bands, triclinic
         "GX-19",  # witnesses disagree: the longest diagnosis
         pytest.param("CdTe", marks=pytest.mark.real_data),
     ],

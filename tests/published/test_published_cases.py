@@ -23,11 +23,14 @@ from lattice_models import (
     kane_mele,
     wilson_dirac,
 )
+from topovet.pipeline.dossier import start_run
 from topovet.verdict.document import Verdict
 
 
 def vetted(model: LatticeModel, folder: Path) -> Verdict:
-    return topovet.vet(write_case(model, folder))
+    run = start_run(write_case(model, folder), settings={"effort": "quick"})
+    verdict: Verdict = run.result("verdict")
+    return verdict
 
 
 def codes(verdict: Verdict) -> set[str]:

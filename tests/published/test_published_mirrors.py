@@ -8,15 +8,17 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-import topovet
 from case_writer import write_case
 from chern_models import double_wilson_dirac, layered_bhz, snte
 from lattice_models import LatticeModel, bhz, kane_mele, wilson_dirac
+from topovet.pipeline.dossier import start_run
 from topovet.verdict.document import Verdict
 
 
 def vetted(model: LatticeModel, folder: Path) -> Verdict:
-    return topovet.vet(write_case(model, folder))
+    run = start_run(write_case(model, folder), settings={"effort": "quick"})
+    verdict: Verdict = run.result("verdict")
+    return verdict
 
 
 def boron_nitride() -> LatticeModel:

@@ -12,7 +12,7 @@ import pytest
 
 from real_cases import CASES
 
-pytestmark = [pytest.mark.real_data, pytest.mark.slow]
+pytestmark = [pytest.mark.real_data, pytest.mark.endurance]
 
 SURROUNDINGS = (
     {"TOPOVET_THREADS": "1", "OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"},

@@ -11,7 +11,7 @@ import functools
 import numpy as np
 import pytest
 
-from real_cases import CASES, CENTROSYMMETRIC, reference, vetted
+from real_cases import CASES, CENTROSYMMETRIC, reference, vetted_in_full
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.projected import projected_edges
 from topovet.boundary.recut import Recut
@@ -35,7 +35,7 @@ def _expected(case: str) -> tuple[int, ...]:
 
 @pytest.mark.parametrize("case", [*CENTROSYMMETRIC, *NO_INVERSION])
 def test_crossings_are_odd_where_the_bulk_is_strong(case: str) -> None:
-    surface = vetted(case).witnesses.surface
+    surface = vetted_in_full(case).witnesses.surface
     assert (surface.status, surface.reason) == ("ok", "")
     expected = _expected(case)
     assert surface.z2_strong == expected[0]
@@ -64,7 +64,7 @@ def _prepared(case: str, miller: tuple[int, int, int]) -> tuple[Recut, LayerStac
 @pytest.mark.parametrize("case", ["Bi2Se3", "Sb2Se3"])
 def test_the_natural_surface_lies_between_the_quintuple_layers(case: str) -> None:
     """(001) of the hexagonal setting, between two planes of Se; 9.5 to 10 angstrom to the next."""
-    surface = vetted(case).witnesses.surface
+    surface = vetted_in_full(case).witnesses.surface
     assert surface.miller == (1, 1, 1)
     assert surface.chosen_by == "weakest coupling"
     assert all("Se outermost" in name for name in surface.terminations)
@@ -146,5 +146,5 @@ def test_edges_of_bismuth_against_antimony() -> None:
 
     The antimony bilayer is trivial: Chuang, Hsu, Chen, et al., Appl. Phys. Lett. 102, 022424
     (2013), doi:10.1063/1.4776734 (from memory)."""
-    bismuth, antimony = (vetted(f"{x}111_bilayer").witnesses.surface for x in ("Bi", "Sb"))
+    bismuth, antimony = (vetted_in_full(f"{x}111_bilayer").witnesses.surface for x in ("Bi", "Sb"))
     assert (bismuth.z2_strong, antimony.z2_strong) == (1, 0)
