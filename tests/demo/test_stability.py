@@ -66,7 +66,7 @@ def _lay(name: str, folder: Path) -> Path:
     "name",
     [
         pytest.param("GX-06", marks=pytest.mark.endurance),  # 16 bands, triclinic
-        "GX-19",  # witnesses disagree: the longest diagnosis
+        pytest.param("GX-19", marks=pytest.mark.endurance),  # the longest diagnosis
         pytest.param("CdTe", marks=pytest.mark.real_data),
     ],
 )

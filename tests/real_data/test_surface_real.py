@@ -23,6 +23,9 @@ pytestmark = pytest.mark.real_data
 
 NO_INVERSION = {"BiTeI": (0, 0, 0, 0), "BiTeI_pressed": (1, 0, 0, 1), "CdTe": (0, 0, 0, 0)}
 
+COSTLY = ("Sb", "Bi2Se3_k666", "Bi2Se3_mlwf", "Bi2Se3_centres_off", "Sb2Se3_compressed")
+"""Half a minute together, and much like others; run with the endurance tests."""
+
 EV_ANG_IN_M_PER_S = 1e-10 / 6.582119569e-16
 """1 eV angstrom over hbar, in m/s."""
 
@@ -33,7 +36,13 @@ def _expected(case: str) -> tuple[int, ...]:
     return tuple(reference(case, "dft_parity.json")["indices_wannier_occupied"])
 
 
-@pytest.mark.parametrize("case", [*CENTROSYMMETRIC, *NO_INVERSION])
+@pytest.mark.parametrize(
+    "case",
+    [
+        pytest.param(name, marks=pytest.mark.endurance) if name in COSTLY else name
+        for name in (*CENTROSYMMETRIC, *NO_INVERSION)
+    ],
+)
 def test_crossings_are_odd_where_the_bulk_is_strong(case: str) -> None:
     surface = vetted_in_full(case).witnesses.surface
     assert (surface.status, surface.reason) == ("ok", "")

@@ -16,14 +16,16 @@ SHORT_MODEL, SHORT_REAL = "kane_mele", "Bi111_bilayer"
 
 
 def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
-    """Whether a trial belongs to the short part: one model at the first and the last size, the
-    others at the last, and one first-principles case where only such a case will do."""
+    """Whether a trial belongs to the short part: one model at the first and the last size, of the
+    other models every third fault in turn at the last, and one first-principles case where only
+    such a case will do."""
     sizes = fault.sizes_for(case)
     if case.name == SHORT_MODEL:
         return size in (sizes[0], sizes[-1])
     if case.name == SHORT_REAL:
         return fault.only_real and size == sizes[-1]
-    return not case.real and size == sizes[-1]
+    turn = FAULTS.index(fault) + list(CLEAN_CASES).index(case.name)
+    return not case.real and size == sizes[-1] and turn % 3 == 0
 
 
 def trials() -> list[tuple[CleanCase, Fault, float]]:

@@ -96,6 +96,7 @@ def test_a_worker_that_is_killed_midway_costs_nothing(
     assert "2 threads of Dask workers" in (out / "screen.log").read_text()
 
 
+@pytest.mark.endurance
 def test_the_address_of_the_scheduler_does_as_well(
     program: Program, six: Path, undisturbed: dict[str, str], cluster: Cluster, tmp_path: Path
 ) -> None:
@@ -108,6 +109,7 @@ def test_the_address_of_the_scheduler_does_as_well(
     assert results(out) == undisturbed
 
 
+@pytest.mark.endurance
 def test_no_scheduler_is_one_sentence(program: Program, six: Path, tmp_path: Path) -> None:
     words = ("--out", tmp_path / "out", "--dask", "tcp://127.0.0.1:9")
     done = program.run("screen", six, *words, *QUICK)

@@ -166,7 +166,9 @@ def test_one_worker_gives_what_two_give(
     assert results(tmp_path / "out") == undisturbed
 
 
-@pytest.mark.parametrize("signum", [signal.SIGINT, signal.SIGTERM])
+@pytest.mark.parametrize(
+    "signum", [pytest.param(signal.SIGINT, marks=pytest.mark.endurance), signal.SIGTERM]
+)
 def test_a_stopped_screen_says_how_to_go_on_and_leaves_no_worker(
     program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path, signum: int
 ) -> None:
