@@ -57,7 +57,8 @@ def _noise(inquiry: Inquiry) -> Iterator[Cause]:
         "Look for what made H(R) noisy: an unconverged run, a lossy copy, digits cut off. "
         "--symmetrise averages the noise over the group."
     )
-    yield Cause("noise", "yes", test, finding, evidence, advice, _near_average(inquiry))
+    average, far = _average(inquiry)
+    yield Cause("noise", "yes", test, finding, evidence, advice, average, far=far)
 
 
 def _unlike_noise(test: NoiseTest) -> str:
@@ -79,21 +80,21 @@ def _time_reversal(inquiry: Inquiry) -> Iterator[Cause]:
         finding = f"they agree to {mev(reversal.violation_mev)}."
         yield Cause(code, "no", test, finding, {"violation_meV": reversal.violation_mev})
         return
-    reading = _near_average(inquiry)
-    yield Cause(code, "yes", test, flag.summary, flag.evidence, flag.advice, reading)
+    average, far = _average(inquiry)
+    yield Cause(code, "yes", test, flag.summary, flag.evidence, flag.advice, average, far=far)
 
 
-def _near_average(inquiry: Inquiry) -> Rereading | None:
-    """The Hamiltonian averaged over its group, where that tells of the one that is mended.
+def _average(inquiry: Inquiry) -> tuple[Rereading | None, bool]:
+    """The Hamiltonian averaged over its group, and whether it is too far to speak for it.
 
     By Weyl's inequality no gap closes between the two while their distance is below half of the
     gap of either. Further away the average is another Hamiltonian, and its indices say nothing.
     """
     average = inquiry.reading("symmetrised")
     if average is None or average.moved_mev is None:
-        return None
+        return average, True
     own_radius = 500.0 * average.gap.direct_ev
-    return average if average.moved_mev < max(inquiry.radius_mev or 0.0, own_radius) else None
+    return average, average.moved_mev >= max(inquiry.radius_mev or 0.0, own_radius)
 
 
 def _inversion(inquiry: Inquiry) -> Iterator[Cause]:
@@ -105,20 +106,20 @@ def _inversion(inquiry: Inquiry) -> Iterator[Cause]:
             finding = f"inversion holds to {mev(violation)}."
             yield Cause(code, "no", test, finding, {"violation_meV": violation})
         return
-    average, near = inquiry.reading("symmetrised"), _near_average(inquiry)
+    average, far = _average(inquiry)
     evidence: dict[str, Any] = dict(flag.evidence)
     finding, answer = flag.summary, "yes"
     if average is not None:
         evidence["moved_meV"] = average.moved_mev
         finding += f" Averaging moves bands by up to {mev(average.moved_mev)}"
-        finding += ", too far to tell from it what a sound file would say." if near is None else "."
+        finding += ", too far to tell from it what a sound file would say." if far else "."
         within = radius is not None and (average.moved_mev or 0.0) < radius
         beside = within and not inquiry.is_largest_error("symmetry")
         answer = "no" if beside and flag.severity == "warning" else "yes"
-    if near is not None and near.z2 is not None:
-        evidence["z2_if_symmetrised"] = near.z2
-        finding = f"{finding[:-1]} and gives Z2 = {z2_text(near.z2)}."
-    yield Cause(code, answer, test, finding, evidence, flag.advice, near)
+    if average is not None and average.z2 is not None and not far:
+        evidence["z2_if_symmetrised"] = average.z2
+        finding = f"{finding[:-1]} and gives Z2 = {z2_text(average.z2)}."
+    yield Cause(code, answer, test, finding, evidence, flag.advice, average, far=far)
 
 
 def _gap(inquiry: Inquiry) -> Cause:

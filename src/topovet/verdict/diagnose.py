@@ -114,7 +114,7 @@ def _entry(item: _Tested, all_tested: Sequence[_Tested], flags: Sequence[Flag]) 
         finding=cause.finding,
         evidence=dict(cause.evidence),
         advice=cause.advice if cause.answer != "no" else "",
-        if_mended=item.mended,
+        if_mended=None if cause.far else item.mended,
         consequence_of=upstream,
     )
 

@@ -36,6 +36,9 @@ class Cause:
     explains
         Flags that it can bring about, where that depends on its numbers; None where it depends on
         the cause alone.
+    far
+        Whether the reading is too far from the Hamiltonian for its indices to be shown. Which flags
+        are gone on it still tells causes from consequences.
     """
 
     cause: str
@@ -46,6 +49,7 @@ class Cause:
     advice: str = ""
     reading: Rereading | None = None
     explains: frozenset[str] | None = None
+    far: bool = False
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -392,3 +392,13 @@ def test_misread_shifts_put_hoppings_on_the_rim(cut: bool) -> None:
     first, then = ("range-truncated", "interpolation-poor")[:: 1 if cut else -1]
     assert named(found)[0] == first
     assert causes(found)[then].consequence_of == first
+
+
+@pytest.mark.parametrize(("moved_mev", "shown"), [(100.0, True), (3 * GAP_MEV, False)])
+def test_an_average_too_far_away_shows_no_indices(moved_mev: float, shown: bool) -> None:
+    """Beyond half of either gap another phase may lie between; the weight stays what it was."""
+    average = reading("symmetrised", moved_mev=moved_mev)
+    cause = causes(diagnosis(changed(inversion=BROKEN), average))["symmetry-broken"]
+    assert (cause.if_mended is not None) is shown
+    assert ("too far" in cause.finding) is not shown
+    assert cause.answer == "yes"
