@@ -16,13 +16,10 @@ from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.assemble import LatticeHamiltonian
 from topovet.model.crystal import Crystal
 from topovet.spectrum.eigen import mesh_eigenvalues, mesh_solves
-from topovet.spectrum.gap import choose_mesh, sample_gap
+from topovet.spectrum.gap import EVEN_BANDS_MEV, choose_mesh, sample_gap
 from topovet.symmetry.inversion import measure_inversion
 from topovet.symmetry.results import InversionOperator, InversionTest, TimeReversalTest
 from topovet.symmetry.time_reversal import measure_time_reversal
-
-EVEN_BANDS_MEV = 0.1
-"""E(-k) = E(k) halves the mesh only where time reversal holds this well."""
 
 BRIEF = SheetCriteria(max_solves=1_000)
 """Wilson loops of a reading that may be nonsense must not cost more than those of the case."""

@@ -20,16 +20,13 @@ from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import mesh_eigenvalues, mesh_solves
 from topovet.spectrum.electrons import Statement, choose_statement, count_electrons
-from topovet.spectrum.gap import choose_mesh, sample_gap
+from topovet.spectrum.gap import EVEN_BANDS_MEV, choose_mesh, sample_gap
 from topovet.spectrum.interpolation import compare_with_files
 from topovet.spectrum.path import compute_bands
 from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.inference import InferredInversion
 from topovet.symmetry.inversion import build_inversion, measure_inversion, no_inversion
 from topovet.symmetry.results import InversionTest, SpaceGroup, TimeReversalTest
-
-EVEN_BANDS_MEV = 0.1
-"""E(-k) = E(k) is used to halve the mesh only where time reversal holds this well."""
 
 
 def check_inversion(

@@ -206,7 +206,7 @@ def _operators(
         based.basis, declared.crystal, space_group.rotations, space_group.translations
     )
     if len(built.operators) < len(space_group.rotations):
-        missing = next(reason for reason in built.reasons if reason)
+        missing = next(iter(built.reasons.values()))
         raise NotApplicable(f"the declared orbitals are not closed under the group: {missing}")
     return list(built.operators)
 

@@ -21,6 +21,9 @@ from topovet.spectrum.results import GapSample
 MESH_SPACING = {"quick": 0.2, "standard": 0.1, "thorough": 0.05}
 """Largest distance of mesh points along a reciprocal vector, 1/angstrom, by effort."""
 
+EVEN_BANDS_MEV = 0.1
+"""E(-k) = E(k) halves a mesh only where time reversal holds this well."""
+
 GAPLESS_EV = 1e-4
 """Attained direct gaps below this count as closed: refinement of a true node goes far below."""
 
