@@ -58,6 +58,8 @@ class LowerGroup:
         Chern number or vector, where there is no Z2; else None.
     n_solves
         Eigenvalue problems solved for it.
+    proved_min_ev
+        Bound that the direct gap exceeds at every k; None where it was not proved.
     """
 
     filling: int
@@ -71,6 +73,7 @@ class LowerGroup:
     wilson_z2: tuple[int, ...] | None
     chern: tuple[int, ...] | None
     n_solves: int
+    proved_min_ev: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

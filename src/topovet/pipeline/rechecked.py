@@ -1,4 +1,4 @@
-"""The certificate of a proved gap, checked again against the files of its case."""
+"""The certificates of proved gaps, checked again against the files of their case."""
 
 from __future__ import annotations
 
@@ -11,7 +11,7 @@ from topovet.notation import ev, mev
 from topovet.pipeline.dossier import start_run
 from topovet.pipeline.runner import Observer
 from topovet.spectrum.proof.recheck import Recheck, recheck
-from topovet.spectrum.proof.results import ProvedGap
+from topovet.spectrum.proof.results import Certificate, ProvedGap, ProvedIndirectGap
 
 
 class CertificateError(UndefinedError):
@@ -25,7 +25,7 @@ def recheck_gap(
     settings: Mapping[str, Any] | None = None,
     observe: Observer = lambda event, text: None,
 ) -> str:
-    """Read the Hamiltonian again, and the certificate from the dossier; check one by the other.
+    """Read the Hamiltonian again, and the certificates from the dossier; check each by the other.
 
     Parameters
     ----------
@@ -51,13 +51,34 @@ def recheck_gap(
     if proved is None:
         reason = run.states["gap-proof"].reason or "it was not computed"
         raise UndefinedError(f"there is no proved gap to check again: {reason}")
-    made = recheck(run.result("hamiltonian-with-basis").lattice.model, proved.certificate)
-    if not made.holds:
-        raise CertificateError(
-            f"the certificate of the gap does not hold: {'; '.join(made.problems)}; delete "
-            f"{out / 'tasks'} and vet the case again"
-        )
-    return _sentence(made)
+    indirect: ProvedIndirectGap | None = run.result("indirect-gap-proof")
+    model = run.result("hamiltonian-with-basis").lattice.model
+
+    def checked(certificate: Certificate, name: str) -> Recheck:
+        made = recheck(model, certificate)
+        if not made.holds:
+            raise CertificateError(
+                f"the certificate of the {name} does not hold: {'; '.join(made.problems)}; delete "
+                f"{out / 'tasks'} and vet the case again"
+            )
+        return made
+
+    sentence = _sentence(checked(proved.certificate, "gap"))
+    if indirect is None:
+        return sentence
+    valence = checked(indirect.valence, "valence edge")
+    conduction = checked(indirect.conduction, "conduction edge")
+    return f"{sentence} {_edges_sentence(valence, conduction)}"
+
+
+def _edges_sentence(valence: Recheck, conduction: Recheck) -> str:
+    bound = sum(m.lowest_ev - m.cost_ev for m in (valence, conduction))
+    n_open = valence.n_open + conduction.n_open
+    where = f" outside the {n_open} that were left open" if n_open else ""
+    return (
+        f"{valence.n_boxes + conduction.n_boxes} boxes bound the band edges; the indirect gap "
+        f"exceeds {ev(bound)}{where}."
+    )
 
 
 def _sentence(made: Recheck) -> str:

@@ -2,21 +2,29 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from topovet.errors import InputError
-from topovet.invariants.lower_groups import Ground, LowerGroups, compute_lower_groups
+from topovet.invariants.lower_groups import Ground, LowerGroup, LowerGroups, compute_lower_groups
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.steps_physics import MeshEnergies
+from topovet.pipeline.steps_proof import TOLERANCE, budget, proven_hamiltonian
 from topovet.pipeline.task import NotApplicable, Task
+from topovet.spectrum.eigen import one_blas_thread
+from topovet.spectrum.proof.prove import ProvenHamiltonian, prove_direct_gap
 from topovet.spectrum.results import Electrons
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.inversion import build_inversion
 from topovet.symmetry.results import InversionTest, TimeReversalTest
 
 ALL = "all"
+
+SHARES = 4
+"""Each lower gap has this part of the budget that the main gap has."""
 
 
 def look_below_lower_gaps(
@@ -53,9 +61,29 @@ def look_below_lower_gaps(
         inversion=operator,
         group=group,
     )
-    return compute_lower_groups(
+    found = compute_lower_groups(
         ground, mesh.energies_ev, electrons.filling, None if asked == ALL else asked
     )
+    effort = context.settings["effort"]
+    if effort not in TOLERANCE:
+        return found
+    proven = proven_hamiltonian(hamiltonian_with_basis, declarations.crystal, time_reversal, group)
+    return replace(found, groups=tuple(_with_proof(g, proven, effort) for g in found.groups))
+
+
+def _with_proof(group: LowerGroup, proven: ProvenHamiltonian, effort: str) -> LowerGroup:
+    """The group with a bound of its gap; a share of the budget of the main gap each."""
+    if group.status == "closed":
+        return group
+    with one_blas_thread():
+        proof, _ = prove_direct_gap(
+            proven,
+            group.filling,
+            attained_k=np.array(group.direct_k),
+            tolerance=TOLERANCE[effort],
+            max_solves=budget(effort, proven.model.n_orb) // SHARES,
+        )
+    return replace(group, proved_min_ev=proof.proved_min_ev if proof.proved_min_ev > 0 else None)
 
 
 TASKS = (
@@ -72,6 +100,7 @@ TASKS = (
             "mesh",
         ),
         wants=("group",),
-        settings=("lower_gaps",),
+        settings=("lower_gaps", "effort"),
+        version=2,
     ),
 )

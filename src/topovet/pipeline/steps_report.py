@@ -19,8 +19,8 @@ from topovet.pipeline.runner import Context
 from topovet.pipeline.task import Task
 from topovet.report.material import ReportMaterial
 from topovet.spectrum.gap import gap_status
-from topovet.spectrum.proof.results import ProvedGap
-from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.spectrum.proof.results import ProvedGap, ProvedIndirectGap
+from topovet.spectrum.results import BandPath, Electrons, GapMap, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
 from topovet.symmetry.declaration_results import DeclarationCheck
 from topovet.symmetry.group_results import GroupTest
@@ -54,6 +54,7 @@ def collect_findings(
     electrons: Electrons,
     gap: GapSample | None,
     gap_proof: ProvedGap | None,
+    indirect_gap_proof: ProvedIndirectGap | None,
     parity: ParityWitness | None,
     inferred_parity: ParityWitness | None,
     group: GroupTest | None,
@@ -83,6 +84,7 @@ def collect_findings(
         electrons=electrons,
         gap=_with_attained(gap, gap_proof),
         gap_proof=None if gap_proof is None else gap_proof.proof,
+        indirect_proof=None if indirect_gap_proof is None else indirect_gap_proof.proof,
         parity=parity,
         inferred_parity=inferred_parity,
         group=group,
@@ -133,6 +135,7 @@ def gather(
     bands: BandPath | None,
     irreps: tuple[PointIrreps, ...] | None,
     surface_map: tuple[SurfaceMap, ...] | None,
+    gap_map: GapMap | None,
 ) -> ReportMaterial:
     """All that the report shows; the graph of tasks is added by the dossier."""
     assert findings.electrons is not None
@@ -142,6 +145,7 @@ def gather(
         bands=bands,
         irreps=irreps or (),
         surface_maps=surface_map or (),
+        gap_map=gap_map,
         tasks=(),
         **{name: getattr(findings, name) for name in SHOWN},
     )
@@ -155,6 +159,8 @@ SHOWN = (
     "inversion",
     "electrons",
     "gap",
+    "gap_proof",
+    "indirect_proof",
     "parity",
     "group",
     "wilson",
@@ -188,6 +194,7 @@ IF_THERE = (
     "symmetry-class",
     "gap",
     "gap-proof",
+    "indirect-gap-proof",
     "parity",
     "wilson",
     "chern",
@@ -225,7 +232,7 @@ TASKS = (
         "gather what the report shows",
         gather,
         needs=("verdict", "findings"),
-        wants=("irreps", "bands", "surface-map"),
+        wants=("irreps", "bands", "surface-map", "gap-map"),
         stored=False,
         essential=True,
     ),

@@ -16,6 +16,8 @@ from topovet.report.classes import class_words, words_of_class
 from topovet.report.diagnosis_words import AGREEMENT, ANSWERS, cause_name, sort_causes
 from topovet.report.figures import palette
 from topovet.report.figures.canvas import FONTS
+from topovet.report.figures.gap_map import middle_text
+from topovet.report.gap_words import certificate_lines, error_rows
 from topovet.report.handling import handling_cautions
 from topovet.report.indicator_words import (
     direction,
@@ -28,6 +30,7 @@ from topovet.report.svg import inline_svg
 from topovet.verdict.advice import advice_sections
 from topovet.verdict.document import Verdict
 from topovet.verdict.flags import SEVERITIES, Flag
+from topovet.verdict.grade import RULES
 
 _UNITS = {"mev": "meV", "ev": "eV", "ang": "Å", "s": "s", "seconds": "s", "bytes": "bytes"}
 _MANY_ATOMS = 12
@@ -60,6 +63,9 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         grounds=words.grounds(material),
         untested=words.untested(material),
         radius_note=words.radius_note(material.verdict),
+        certificate=certificate_lines(material),
+        error_rows=error_rows(material.verdict),
+        grade_rules=RULES,
         causes=sort_causes(material.verdict.diagnosis.causes),
         answer_words=ANSWERS,
         agreement_words=AGREEMENT,
@@ -105,6 +111,7 @@ def _environment() -> jinja2.Environment:
         "open_z2": open_z2,
         "direction": direction,
         "cause_name": cause_name,
+        "map_middle": middle_text,
     }
     environment.globals["advice"] = advice_sections
     return environment

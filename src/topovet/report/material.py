@@ -14,7 +14,14 @@ from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitnes
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
-from topovet.spectrum.results import BandPath, Electrons, GapSample, InterpolationCheck
+from topovet.spectrum.proof.results import GapProof, IndirectGapProof
+from topovet.spectrum.results import (
+    BandPath,
+    Electrons,
+    GapMap,
+    GapSample,
+    InterpolationCheck,
+)
 from topovet.symmetry.az_class import AzClass
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.inference import InferredInversion
@@ -112,6 +119,10 @@ class ReportMaterial:
         Crossings of surface levels; None where no surface was followed.
     surface_maps
         Spectral density of both terminations; empty where none was made.
+    gap_proof, indirect_proof
+        Proofs of the gaps; None where none was made.
+    gap_map
+        Direct gap over a plane through its minimum.
     """
 
     verdict: Verdict
@@ -141,3 +152,6 @@ class ReportMaterial:
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     surface_maps: tuple[SurfaceMap, ...] = ()
+    gap_proof: GapProof | None = None
+    indirect_proof: IndirectGapProof | None = None
+    gap_map: GapMap | None = None

@@ -134,7 +134,9 @@ def _gap(verdict: Verdict) -> str:
     if gap.direct_eV is None:
         return f"not computed; {gap.status}"
     proved = gap.direct_proved_min_eV
-    bound = f", proved > {ev(proved)}" if proved is not None else ", sampled, not proved"
+    bound = f"; direct proved > {ev(proved)}" if proved is not None else ", sampled, not proved"
+    if gap.indirect_proved_min_eV is not None:
+        bound += f", indirect > {ev(gap.indirect_proved_min_eV)}"
     where = k_text(gap.direct_k, plain=True)
     return (
         f"direct <= {ev(gap.direct_eV)} at k = {where}, indirect {ev(gap.indirect_eV)}; "

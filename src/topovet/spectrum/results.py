@@ -72,6 +72,31 @@ class GapSample:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class GapMap:
+    """Direct gap over one reciprocal cell of a plane of k.
+
+    Attributes
+    ----------
+    axis, fixed_frac
+        Component of k (0, 1, 2) that is the same all over the plane, and its value, fractional.
+    u_frac, v_frac
+        (n_u,), (n_v,) the two other components, in their order, over one period about the
+        half-integer next to the minimum.
+    gap_ev
+        (n_u, n_v) eV.
+    minimum_frac
+        Where the smallest direct gap was met; in the plane.
+    """
+
+    axis: int
+    fixed_frac: float
+    u_frac: FloatArray
+    v_frac: FloatArray
+    gap_ev: FloatArray
+    minimum_frac: tuple[float, float, float]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class BandPath:
     """Bands along the lattice's special-point path (ASE's special points).
 

@@ -6,6 +6,11 @@ which a sampled gap counts as closed) live beside that measurement.
 
 from __future__ import annotations
 
+LOOSEST_BOUND = 0.5
+"""A proved bound of the direct gap stands for the gap from this part of the gap attained on. A
+search that ended early leaves a bound that holds, but below this it says more of the search than of
+the compound."""
+
 HERMITICITY_MEV = 0.1
 """Violations of H(-R) = H(R)† above this are flagged; rounding to six decimals gives 0.001 meV for
 each element."""

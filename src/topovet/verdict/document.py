@@ -54,6 +54,7 @@ class GapEntry:
     indirect_eV: float | None  # noqa: N815
     status: str
     method: str = "sampled"
+    indirect_proved_min_eV: float | None = None  # noqa: N815
 
 
 @dataclass(frozen=True, slots=True)
@@ -159,6 +160,7 @@ class LowerGapEntry:
     z4: int | None
     wilson_z2: tuple[int, ...] | None
     chern: int | tuple[int, ...] | None
+    direct_proved_min_eV: float | None = None  # noqa: N815
 
 
 @dataclass(frozen=True, slots=True)

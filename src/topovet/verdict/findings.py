@@ -14,7 +14,7 @@ from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitnes
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
-from topovet.spectrum.proof.results import GapProof
+from topovet.spectrum.proof.results import GapProof, IndirectGapProof
 from topovet.spectrum.results import Electrons, GapSample, InterpolationCheck
 from topovet.symmetry.az_class import AzClass
 from topovet.symmetry.declaration_results import DeclarationCheck
@@ -27,6 +27,7 @@ from topovet.symmetry.results import (
     SpinOrder,
     TimeReversalTest,
 )
+from topovet.verdict import criteria
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -56,6 +57,7 @@ class Findings:
     electrons: Electrons | None = None
     gap: GapSample | None = None
     gap_proof: GapProof | None = None
+    indirect_proof: IndirectGapProof | None = None
     group: GroupTest | None = None
     parity: ParityWitness | None = None
     inferred_parity: ParityWitness | None = None
@@ -79,11 +81,24 @@ class Findings:
         return None if self.gap is None else 1000.0 * self.gap.direct_ev
 
     @property
-    def proved_gap_mev(self) -> float | None:
-        """Bound that the direct gap exceeds at every k; None where none was proved."""
+    def gap_bound_mev(self) -> float | None:
+        """Bound that the direct gap exceeds at every k, however loose; None where there is none."""
         proof = self.gap_proof
-        proved = proof is not None and proof.status == "proved" and proof.proved_min_ev > 0
-        return 1000.0 * proof.proved_min_ev if proved and proof is not None else None
+        return None if proof is None or proof.proved_min_ev <= 0 else 1000.0 * proof.proved_min_ev
+
+    @property
+    def proved_gap_mev(self) -> float | None:
+        """The same where it is close enough to the gap attained to stand for the gap."""
+        proof, bound = self.gap_proof, self.gap_bound_mev
+        if proof is None or proof.proved_min_ev < criteria.LOOSEST_BOUND * proof.attained_ev:
+            return None
+        return bound
+
+    @property
+    def proved_indirect_ev(self) -> float | None:
+        """Bound that the indirect gap exceeds, where it says that the bands do not overlap."""
+        proof = self.indirect_proof
+        return None if proof is None or proof.proved_min_ev <= 0 else proof.proved_min_ev
 
     @property
     def inversion_beyond_gap(self) -> bool:

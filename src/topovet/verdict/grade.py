@@ -1,23 +1,26 @@
-"""The confidence grade: the same rules for every case.
-
-A   two independent witnesses agree, the gap is proved, the error budget is below half of the
-    robustness radius, and no flag touches the verdict;
-B   as A, but with one witness or with a gap that was only sampled;
-C   a verdict that stands, with a warning that touches it or an error budget above half of the
-    radius;
-D   undetermined.
-"""
+"""The confidence grade: the same rules for every case, shown in the report as they stand here."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 
-from topovet.notation import mev
+from topovet.notation import ev, mev
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
 from topovet.verdict.conclude import Conclusion
 from topovet.verdict.document import ConfidenceEntry
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+
+RULES = {
+    "A": "Two independent witnesses agree; the gap is proved, to at least half of the gap that was "
+    "met; known errors sum to less than half of the robustness radius; no warning touches the "
+    "verdict.",
+    "B": "As A, but one witness speaks alone, or the gap is sampled.",
+    "C": "The verdict stands, but a warning touches it, or known errors sum to half of the "
+    "robustness radius or more.",
+    "D": "Undetermined.",
+}
+"""What each grade means, from the best down."""
 
 BESIDE_THE_VERDICT = frozenset({"fermi-outside-gap", "centres-off", "spin-order-mismatch"})
 """Warnings that do not lower the grade: they concern the sample, or were mended and re-tested."""
@@ -53,9 +56,12 @@ def grade(findings: Findings, conclusion: Conclusion, flags: Sequence[Flag]) -> 
 
 
 def _gap(findings: Findings) -> str:
-    proved, proof = findings.proved_gap_mev, findings.gap_proof
-    if proved is not None:
-        return f"the gap is proved to exceed {mev(proved)} at every k"
+    bound, proof = findings.gap_bound_mev, findings.gap_proof
+    if bound is not None and proof is not None:
+        proved = f"the gap is proved to exceed {mev(bound)} at every k"
+        if findings.proved_gap_mev is None:
+            return f"{proved}, too far below the {ev(proof.attained_ev)} attained ({proof.reason})"
+        return proved if not proof.reason else f"{proved} ({proof.reason})"
     if proof is not None and proof.reason:
         return f"the gap is sampled, not proved ({proof.reason})"
     return "the gap is sampled, not proved"

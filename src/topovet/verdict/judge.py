@@ -142,16 +142,20 @@ def _case(findings: Findings) -> CaseEntry:
 
 
 def _gap(findings: Findings) -> GapEntry:
-    gap, proved = findings.gap, findings.proved_gap_mev
+    gap, bound = findings.gap, findings.gap_bound_mev
     if gap is None:
         return GapEntry(None, None, None, None, "unresolved")
+    method = "sampled" if bound is None else "bounded"
+    if findings.proved_gap_mev is not None:
+        method = "proved"
     return GapEntry(
         direct_eV=gap.direct_ev,
-        direct_proved_min_eV=None if proved is None else proved / 1000.0,
+        direct_proved_min_eV=None if bound is None else bound / 1000.0,
         direct_k=gap.direct_k,
         indirect_eV=gap.indirect_ev,
         status=gap.status,
-        method="sampled" if proved is None else "proved",
+        method=method,
+        indirect_proved_min_eV=findings.proved_indirect_ev,
     )
 
 
@@ -196,6 +200,7 @@ def _lower_gaps(findings: Findings) -> tuple[LowerGapEntry, ...] | None:
             z4=g.z4,
             wilson_z2=g.wilson_z2,
             chern=g.chern[0] if g.chern is not None and len(g.chern) == 1 else g.chern,
+            direct_proved_min_eV=g.proved_min_ev,
         )
         for g in findings.lower.groups
     )

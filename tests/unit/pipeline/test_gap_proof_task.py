@@ -13,7 +13,7 @@ from topovet.pipeline.dossier import start_run, vet_case
 from topovet.pipeline.steps_proof import budget
 from topovet.pipeline.steps_report import _with_attained
 from topovet.spectrum.proof.recheck import recheck
-from topovet.spectrum.proof.results import ProvedGap
+from topovet.spectrum.proof.results import ProvedGap, ProvedIndirectGap
 
 
 @pytest.fixture(scope="module")
@@ -34,6 +34,19 @@ def test_certificate_is_kept_and_holds_when_read_again(case: Path, tmp_path: Pat
     found = recheck(model, kept.certificate)
     assert found.problems == ()
     assert found.lowest_ev - found.cost_ev >= kept.proof.proved_min_ev - 1e-9
+
+
+def test_the_indirect_gap_is_proved_too(case: Path, tmp_path: Path) -> None:
+    """Bands of the model are even in energy: its indirect gap is its direct one, 2 eV."""
+    verdict = vet_case(case, out=tmp_path / "dossier").verdict
+    assert verdict.gap.indirect_proved_min_eV is not None
+    assert 1.8 - 1e-9 <= verdict.gap.indirect_proved_min_eV <= 2.0 + 1e-9
+    again = start_run(case, out=tmp_path / "dossier")
+    kept: ProvedIndirectGap = again.result("indirect-gap-proof")
+    assert again.states["indirect-gap-proof"].state == "cached"
+    model = again.result("hamiltonian-with-basis").lattice.model
+    for certificate in (kept.valence, kept.conduction):
+        assert recheck(model, certificate).problems == ()
 
 
 def test_quick_effort_proves_nothing_and_says_so(case: Path, tmp_path: Path) -> None:

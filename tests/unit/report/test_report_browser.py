@@ -96,7 +96,7 @@ def test_nothing_sticks_out(build: Callable[[], ReportMaterial], tmp_path: Path)
         assert measured["width"] == width
         assert measured["scroll"] <= width
         assert measured["out"] == []
-        assert measured["sections"] == 11
+        assert measured["sections"] == 12
         assert measured["loaded"] == 0
 
 

@@ -154,7 +154,7 @@ def test_tables_have_headers_and_figures_have_words(build: Callable[[], ReportMa
 def test_sections_of_a_whole_report() -> None:
     sections = [a["id"] for a in _page(invented.strong).all("section")]
     assert sections == [
-        *("grounds", "numbers", "flags", "structure", "parity", "witnesses", "bands"),
+        *("grounds", "numbers", "gap", "flags", "structure", "parity", "witnesses", "bands"),
         *("audit", "tasks", "provenance", "handling"),
     ]
     links = [a["href"] for a in _page(invented.strong).all("a")]

@@ -8,7 +8,7 @@ import pytest
 
 from invented_findings import SOUND, changed
 from topovet.invariants.results import WilsonWitness
-from topovet.spectrum.proof.results import GapProof
+from topovet.spectrum.proof.results import GapProof, IndirectGapProof
 from topovet.verdict.document import Verdict
 from topovet.verdict.findings import Findings
 from topovet.verdict.judge import judge
@@ -63,7 +63,7 @@ def test_one_witness_stays_below_it() -> None:
     assert _judged(replace(SOUND, gap_proof=PROOF)).confidence.grade == "B"
 
 
-@pytest.mark.parametrize("proof", [None, ENDED, replace(PROOF, proved_min_ev=0.0)])
+@pytest.mark.parametrize("proof", [None, replace(ENDED, proved_min_ev=0.0)])
 def test_what_is_not_proved_is_called_sampled(proof: GapProof | None) -> None:
     verdict = _judged(_two_witnesses(proof))
     assert verdict.confidence.grade == "B"
@@ -73,8 +73,35 @@ def test_what_is_not_proved_is_called_sampled(proof: GapProof | None) -> None:
     assert verdict.robustness.radius_meV == pytest.approx(500.0 * SOUND.gap.direct_ev)
     said = " ".join(verdict.confidence.reasons)
     assert "sampled, not proved" in said
-    if proof is ENDED:
+    if proof is not None:
         assert "40 boxes were left" in said
+
+
+def test_a_loose_bound_is_stated_but_does_not_stand_for_the_gap() -> None:
+    verdict = _judged(_two_witnesses(ENDED))
+    assert (verdict.gap.method, verdict.gap.direct_proved_min_eV) == ("bounded", 0.2)
+    assert (verdict.confidence.grade, verdict.robustness.proved) == ("B", False)
+    assert SOUND.gap is not None
+    assert verdict.robustness.radius_meV == pytest.approx(500.0 * SOUND.gap.direct_ev)
+    said = " ".join(verdict.confidence.reasons)
+    assert "proved to exceed 200 meV at every k, too far below the 0.700 eV attained" in said
+    assert "40 boxes were left" in said
+
+
+def test_the_bound_of_an_early_end_counts_where_it_is_near() -> None:
+    verdict = _judged(_two_witnesses(replace(ENDED, proved_min_ev=0.4)))
+    assert (verdict.gap.method, verdict.confidence.grade) == ("proved", "A")
+    assert verdict.robustness.radius_meV == pytest.approx(200.0)
+
+
+def test_an_indirect_gap_is_stated_where_its_bound_is_positive() -> None:
+    edge = replace(PROOF, quantity="valence", proved_min_ev=-1.0, attained_ev=-0.99)
+    other = replace(PROOF, quantity="conduction", proved_min_ev=1.4, attained_ev=1.41)
+    proof = IndirectGapProof(0.4, 0.42, edge, other, "proved")
+    found = replace(_two_witnesses(PROOF), indirect_proof=proof)
+    assert _judged(found).gap.indirect_proved_min_eV == 0.4
+    overlap = replace(found, indirect_proof=replace(proof, proved_min_ev=-0.1))
+    assert _judged(overlap).gap.indirect_proved_min_eV is None
 
 
 def test_errors_above_half_of_the_proved_radius_lower_the_grade() -> None:

@@ -8,6 +8,7 @@ from functools import partial
 from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
 from topovet.report.figures.flow import flow_figure
+from topovet.report.figures.gap_map import gap_map_figure
 from topovet.report.figures.operations import operations_figure
 from topovet.report.figures.surface import surface_figure
 from topovet.report.figures.tasks import tasks_figure
@@ -20,6 +21,7 @@ __all__ = [
     "decay_figure",
     "figure_makers",
     "flow_figure",
+    "gap_map_figure",
     "operations_figure",
     "surface_figure",
     "tasks_figure",
@@ -33,8 +35,8 @@ _WORTH_A_CLOSER_LOOK_EV = 1.2
 def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     """A maker of SVG text for every figure that the material allows, by name.
 
-    The names are "zone", "bands", "bands-near-gap", "operations", "flow", "surface", "decay" and
-    "tasks"; `render_report` places them, and each also stands alone as a file.
+    The names are "zone", "bands", "bands-near-gap", "gap-map", "operations", "flow", "surface",
+    "decay" and "tasks"; `render_report` places them, and each also stands alone as a file.
     """
     m = material
     trim = m.parity.trim if m.parity is not None else ()
@@ -48,6 +50,9 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
         makers["operations"] = lambda: operations_figure(group)
     if wilson is not None and wilson.planes:
         makers["flow"] = lambda: flow_figure(wilson.planes)
+    if m.gap_map is not None:
+        gap_map = m.gap_map
+        makers["gap-map"] = lambda: gap_map_figure(gap_map, m.crystal)
     if m.surface_maps:
         makers["surface"] = lambda: _surface(m)
     if m.tasks:

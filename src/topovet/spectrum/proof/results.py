@@ -143,3 +143,12 @@ class ProvedGap:
 
     proof: GapProof
     certificate: Certificate
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ProvedIndirectGap:
+    """A proof of the indirect gap with the certificates of both edges."""
+
+    proof: IndirectGapProof
+    valence: Certificate
+    conduction: Certificate
