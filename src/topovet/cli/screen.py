@@ -56,6 +56,13 @@ class ShardType(click.ParamType):  # type: ignore[type-arg,unused-ignore]
     metavar="I/N",
     help="Only every N-th case, beginning with the I-th: one job of an array of N.",
 )
+@click.option(
+    "--time-limit",
+    "minutes",
+    type=click.FloatRange(min=0, min_open=True),
+    metavar="MINUTES",
+    help="Give up a case that takes longer; the others go on.",
+)
 @click.option("--fresh", is_flag=True, help="Compute everything anew.")
 @click.option(
     "--effort",
@@ -70,6 +77,7 @@ def command(
     workers: int | None,
     dask: str | None,
     shard: Shard | None,
+    minutes: float | None,
     fresh: bool,
     effort: str,
 ) -> None:
@@ -80,7 +88,16 @@ def command(
     """
     if workers is not None and dask is not None:
         raise click.UsageError("give --workers or --dask, not both")
-    plan = Plan(root, out, effort=effort, workers=workers, dask=dask, shard=shard, fresh=fresh)
+    plan = Plan(
+        root,
+        out,
+        effort=effort,
+        workers=workers,
+        dask=dask,
+        shard=shard,
+        fresh=fresh,
+        limit_s=None if minutes is None else 60 * minutes,
+    )
     try:
         with stop_signals(), screen_progress() as observe:
             result = screen(plan, observe=observe)

@@ -129,5 +129,5 @@ def _finished(slug: str, future: Any) -> Finished:
         raise ScreenError(f"a Dask worker cannot run topovet: {error!r}") from error
     answer = json.loads(future.result())
     if "lost" in answer:
-        return Finished(slug, None, answer["lost"])
+        return Finished(slug, None, answer["lost"], for_good=answer.get("for_good", False))
     return Finished(slug, Outcome.from_json(future.result()))

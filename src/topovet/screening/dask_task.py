@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import os
+import selectors
 import threading
 
 from topovet.screening.records import Job, Outcome
@@ -16,7 +17,7 @@ _local = threading.local()
 
 
 def vet_on_dask(job: str) -> str:
-    """Outcome of a job as JSON, or {"lost": "how"} where its process was lost.
+    """Outcome of a job as JSON, or {"lost": "how", "for_good": …} where its process was lost.
 
     The process, one to a thread of the Dask worker, keeps apart what Dask would run in threads of
     one process, and a crash takes neither the Dask worker nor its other cases with it.
@@ -24,6 +25,8 @@ def vet_on_dask(job: str) -> str:
     worker = _worker()
     try:
         return _outcome(worker, job).to_json()
+    except TimeoutError as error:
+        return json.dumps({"lost": str(error), "for_good": True})
     except EOFError as error:
         if worker.exit_code != 0:
             return json.dumps({"lost": f"the process {error}"})
@@ -45,7 +48,14 @@ def _worker() -> WorkerProcess:
 
 
 def _outcome(worker: WorkerProcess, job: str) -> Outcome:
+    """As the process tells it; TimeoutError where the time for it is up."""
     worker.send(Job.from_json(job))
-    while True:
-        for outcome in worker.receive():
-            return outcome
+    with selectors.DefaultSelector() as selector:
+        selector.register(worker.answers, selectors.EVENT_READ)
+        while True:
+            if not selector.select(worker.left_s):
+                worker.abandon()
+                _local.worker = None
+                raise TimeoutError(worker.overdue)
+            for outcome in worker.receive():
+                return outcome

@@ -44,7 +44,8 @@ def run_cases(
 
     Large cases go first, so that none is left to run alone at the end. A case starts when a worker
     is free and its memory fits beside that of those that run; one that fits nowhere runs alone.
-    Where a worker is lost, its case is tried once more, after all others and alone. A case that
+    Where a worker is lost, its case is tried once more, after all others and alone; one that takes
+    longer than it may is given up. A case that
     another process is at is put off to the end, and then vetted all the same.
 
     Parameters
@@ -102,7 +103,9 @@ def _fits(case: ScreenCase, taken: int, pool: Pool) -> bool:
 def _again(turn: _Turn, finished: Finished) -> _Turn | None:
     """The same case once more, where that makes sense."""
     if finished.outcome is None:
-        return None if turn.alone else _Turn(turn.case, alone=True, heed_claims=False)
+        if turn.alone or finished.for_good:
+            return None
+        return _Turn(turn.case, alone=True, heed_claims=False)
     if finished.outcome.status == "claimed":
         return _Turn(turn.case, turn.alone, heed_claims=False)
     return None
@@ -110,6 +113,14 @@ def _again(turn: _Turn, finished: Finished) -> _Turn | None:
 
 def _outcome(turn: _Turn, finished: Finished) -> Outcome:
     outcome = finished.outcome
+    if outcome is None and finished.for_good:
+        return Outcome(
+            turn.case.slug,
+            "failed",
+            message=f"the case was given up: {finished.lost}; its finished tasks are kept, run it "
+            "again with more time or less effort.",
+            file=turn.case.path,
+        )
     if outcome is None:
         gib = turn.case.memory_bytes / 2**30
         return Outcome(

@@ -47,10 +47,24 @@ class LocalPool:
     def wait(self) -> list[Finished]:
         finished: list[Finished] = []
         while not finished:
-            for key, _ in self._selector.select():
+            for key, _ in self._selector.select(self._patience()):
                 slug, worker = key.data
                 finished += self._collect(slug, worker)
+            finished += self._give_up()
         return finished
+
+    def _patience(self) -> float | None:
+        """Seconds until the first case is overdue."""
+        left = [w.left_s for w in self._busy.values() if w.left_s is not None]
+        return min(left, default=None)
+
+    def _give_up(self) -> list[Finished]:
+        """Cases whose time is up; a new process takes the next one."""
+        late = [(slug, worker) for slug, worker in self._busy.items() if worker.left_s == 0.0]
+        for slug, worker in late:
+            self._release(slug, worker)
+            worker.abandon()
+        return [Finished(slug, None, worker.overdue, for_good=True) for slug, worker in late]
 
     def _collect(self, slug: str, worker: WorkerProcess) -> list[Finished]:
         try:

@@ -20,11 +20,14 @@ class Finished:
         None where the worker was lost.
     lost
         How it was lost, in words; "" where it was not.
+    for_good
+        Whether there is no use in trying again: the case took longer than it may.
     """
 
     slug: str
     outcome: Outcome | None
     lost: str = ""
+    for_good: bool = False
 
 
 class Pool(Protocol):

@@ -55,6 +55,8 @@ class Job:
         Whether a case that another process is at is left for later.
     code
         `code_digest` of the process that asks, where the worker may have other code; else "".
+    limit_s
+        Wall time after which the case is given up; None for never.
     """
 
     slug: str
@@ -65,6 +67,7 @@ class Job:
     fresh: bool
     heed_claims: bool
     code: str
+    limit_s: float | None = None
 
     def to_json(self) -> str:
         """One line of JSON; undecodable bytes of paths travel as lone surrogates."""

@@ -52,6 +52,8 @@ class Plan:
         The part of the cases to do; None for all.
     fresh
         Whether to compute everything anew.
+    limit_s
+        Wall time in seconds after which a case is given up; None for never.
     """
 
     root: Path
@@ -61,6 +63,7 @@ class Plan:
     dask: str | None = None
     shard: Shard | None = None
     fresh: bool = False
+    limit_s: float | None = None
 
 
 def screen(plan: Plan, *, observe: Observer = lambda step: None) -> ScreenResult:
@@ -140,6 +143,7 @@ def _run(
             fresh=plan.fresh,
             heed_claims=heed_claims,
             code="" if plan.dask is None else code_digest(),
+            limit_s=plan.limit_s,
         )
 
     with closing(_pool(plan, len(todo))) as pool:

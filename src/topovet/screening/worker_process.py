@@ -8,6 +8,7 @@ import signal
 import subprocess
 import sys
 import tempfile
+import time
 from collections.abc import Iterator
 
 from topovet.screening.records import Job, Outcome
@@ -21,6 +22,9 @@ _ONE_THREAD = (
     "NUMEXPR_NUM_THREADS",
 )
 _WORDS = 300
+
+ABANDONED_S = 2.0
+"""What a killed process gets to be gone in before it is left to itself."""
 
 
 class WorkerProcess:
@@ -51,6 +55,8 @@ class WorkerProcess:
         assert self._process.stdout is not None
         self.answers = self._process.stdout
         self._pending = b""
+        self._deadline: float | None = None
+        self._limit_s: float | None = None
 
     @property
     def pid(self) -> int:
@@ -61,9 +67,22 @@ class WorkerProcess:
         """None while it lives."""
         return self._process.poll()
 
+    @property
+    def left_s(self) -> float | None:
+        """Time that the case at hand may still take, 0 when it is up; None without a limit."""
+        return None if self._deadline is None else max(0.0, self._deadline - time.monotonic())
+
+    @property
+    def overdue(self) -> str:
+        """What to say of a case whose time is up."""
+        minutes = (self._limit_s or 0.0) / 60
+        return f"it took longer than the limit of {minutes:g} minute{'s' * (minutes != 1)}"
+
     def send(self, job: Job) -> None:
         """Hand over a job; a process that is gone is noticed by `receive`."""
         assert self._process.stdin is not None
+        self._deadline = None if job.limit_s is None else time.monotonic() + job.limit_s
+        self._limit_s = job.limit_s
         with contextlib.suppress(BrokenPipeError):
             self._process.stdin.write(job.to_json().encode() + b"\n")
 
@@ -91,6 +110,15 @@ class WorkerProcess:
         except subprocess.TimeoutExpired:
             self._process.kill()
             self._process.wait()
+        self.answers.close()
+        self._stderr.close()
+
+    def abandon(self) -> None:
+        """Kill the process and wait no longer than a moment: it may hang in a file system."""
+        self._process.kill()
+        with contextlib.suppress(subprocess.TimeoutExpired):
+            self._process.wait(ABANDONED_S)
+        self.ask_to_end()
         self.answers.close()
         self._stderr.close()
 
