@@ -21,6 +21,7 @@ from topovet.report.figures import figure_makers
 from topovet.report.html import render_report
 from topovet.report.json_document import verdict_json
 from topovet.report.material import ReportMaterial, TaskEntry
+from topovet.report.plain_page import plain_page
 from topovet.spectrum.eigen import one_blas_thread
 from topovet.verdict.document import Verdict
 
@@ -127,7 +128,7 @@ def vet_case(
         check_unchanged(run.files, run.inputs)
         material = replace(material, tasks=task_entries(run))
         figures = _draw(material, log)
-        html = render_report(material, figures)
+        html = _page(material, figures, log)
         if out is not None:
             for name, svg in figures.items():
                 write_atomically(out / "figures" / f"{name}.svg", svg.encode())
@@ -141,6 +142,15 @@ def vet_case(
         if out is not None:
             log.append_to(out / "log.txt")
     return Dossier(out, material.verdict, html, run.inputs)
+
+
+def _page(material: ReportMaterial, figures: Mapping[str, str], log: Observer) -> str:
+    """The report; a plain page where it cannot be made, never at the verdict's cost."""
+    try:
+        return render_report(material, figures)
+    except Exception:
+        log("log", f"the report could not be made:\n{traceback.format_exc()}")
+        return plain_page(material.verdict)
 
 
 def _draw(material: ReportMaterial, log: Observer) -> dict[str, str]:
