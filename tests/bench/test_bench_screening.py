@@ -28,7 +28,7 @@ from topovet.screening.memory import AT_REST, estimate
 
 pytestmark = pytest.mark.bench
 
-CASES = 8
+CASES = 24
 
 
 @pytest.fixture(scope="module")

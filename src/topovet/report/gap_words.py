@@ -18,7 +18,7 @@ ERRORS = {
     "time_reversal": "Time reversal, half of the residual",
     "symmetry": "Inversion, half of the residual",
     "range": "What the finite mesh cuts off (estimate)",
-    "interpolation": "Filled energies against .eig, on the mesh",
+    "interpolation": "Filled energies against .eig and _band.dat",
 }
 """What each entry of the error budget is."""
 

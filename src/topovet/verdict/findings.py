@@ -101,6 +101,12 @@ class Findings:
         return None if proof is None or proof.proved_min_ev <= 0 else proof.proved_min_ev
 
     @property
+    def same_shifts_as_bands(self) -> bool:
+        """Whether H(k) is meant to interpolate as the `_band.dat` that came with it does."""
+        mended = self.shift_test is not None and self.shift_test.adopted == "mended"
+        return not mended and self.audit.shift_source != "rebuilt from declared sites"
+
+    @property
     def inversion_beyond_gap(self) -> bool:
         """Whether H may lie beyond a gap closing from its inversion-symmetric average.
 

@@ -9,6 +9,7 @@ import pytest
 from invented_findings import SOUND, changed
 from topovet.invariants.results import WilsonWitness
 from topovet.spectrum.proof.results import GapProof, IndirectGapProof
+from topovet.spectrum.results import InterpolationCheck
 from topovet.verdict.document import Verdict
 from topovet.verdict.findings import Findings
 from topovet.verdict.judge import judge
@@ -109,3 +110,15 @@ def test_errors_above_half_of_the_proved_radius_lower_the_grade() -> None:
     findings = _two_witnesses(PROOF)
     decay = replace(findings.decay, rim_mev=173.5, largest_hopping_mev=1e6)
     assert _judged(replace(findings, decay=decay)).confidence.grade == "C"
+
+
+@pytest.mark.parametrize(
+    ("source", "expected"), [("wsvec file", 7.0), ("rebuilt from declared sites", 3.0)]
+)
+def test_differences_between_mesh_points_count_with_the_same_shifts(
+    source: str, expected: float
+) -> None:
+    check = InterpolationCheck(3.0, None, 64, 7.0, 9.0, 100, 0)
+    audit = replace(SOUND.audit, shift_source=source)
+    verdict = _judged(replace(SOUND, interpolation=check, audit=audit))
+    assert verdict.robustness.errors_meV["interpolation"] == expected
