@@ -97,6 +97,25 @@ def compute_parity(
     )
 
 
+def indices_of_counts(
+    k_trim: FloatArray, n_odd: IntArray, filling: int, periodic: tuple[bool, bool, bool]
+) -> tuple[tuple[int, ...], int | None]:
+    """Z2 indices, and Z4 in 3D, of a Kramers-paired insulator from its odd filled states.
+
+    Parameters
+    ----------
+    k_trim
+        (n_k, 3) the TRIM, all of them.
+    n_odd
+        (n_k,) odd filled states, spin counted; even numbers.
+    filling, periodic
+        As in `compute_parity`.
+    """
+    delta = np.where(np.asarray(n_odd) // 2 % 2, -1, 1)
+    z4 = int((filling - 2 * np.asarray(n_odd)).sum()) // 4 % 4 if all(periodic) else None
+    return _fu_kane(k_trim, delta, periodic), z4
+
+
 def _trim_parity(
     k: FloatArray, h: ComplexArray, p: ComplexArray, filling: int, kramers: bool
 ) -> TrimParity:

@@ -12,6 +12,7 @@ complex sum over all R.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -151,6 +152,41 @@ def build_bloch_sum(model: TightBindingModel) -> BlochSum:
         table[row] = _pack(weight * (h + h.conj().T))
         table[len(half) + row] = _pack(1j * weight * (h - h.conj().T))
     return BlochSum(model.r_cells[half].astype(float), table, n_orb)
+
+
+def mapped_sum(
+    bloch: BlochSum,
+    on_cos: Callable[[ComplexArray], ComplexArray],
+    on_sin: Callable[[ComplexArray], ComplexArray],
+) -> BlochSum:
+    """The sum with a linear map of Hermitian matrices (n_orb, n_orb) applied to every S(R), D(R).
+
+    Parameters
+    ----------
+    bloch
+        The sum; it is left alone.
+    on_cos, on_sin
+        What S(R) and D(R) turn into.
+    """
+    n_half = len(bloch.r_half)
+    table = np.empty_like(bloch.table)
+    for row, packed in enumerate(bloch.table):
+        turn = on_cos if row < n_half else on_sin
+        table[row] = _pack(turn(_unpack(packed, bloch.n_orb)[0]))
+    return BlochSum(bloch.r_half, table, bloch.n_orb)
+
+
+def added_sum(bloch: BlochSum, other: BlochSum, factor: float) -> BlochSum:
+    """H(k) + factor V(k) as one sum, for V on any R vectors."""
+    if np.array_equal(bloch.r_half, other.r_half):
+        return BlochSum(bloch.r_half, bloch.table + factor * other.table, bloch.n_orb)
+    n, m = len(bloch.r_half), len(other.r_half)
+    if m == 1 and not other.r_half.any() and not bloch.r_half[0].any():  # V at R = 0 only
+        table = bloch.table.copy()
+        table[0] += factor * other.table[0]
+        return BlochSum(bloch.r_half, table, bloch.n_orb)
+    rows = (bloch.table[:n], factor * other.table[:m], bloch.table[n:], factor * other.table[m:])
+    return BlochSum(np.concatenate([bloch.r_half, other.r_half]), np.concatenate(rows), bloch.n_orb)
 
 
 def _pack(hermitian: ComplexArray) -> FloatArray:

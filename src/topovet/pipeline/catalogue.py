@@ -11,6 +11,7 @@ from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
 from topovet.invariants import rotation_indicators as rotations
 from topovet.invariants.rotation_eigenvalues import EigenvalueCount
+from topovet.invariants.tipping_results import TippingPoint, TippingSearch
 from topovet.model.cell_relation import CellRelation
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
@@ -26,6 +27,7 @@ from topovet.pipeline import (
     steps_report,
     steps_shifts,
     steps_symmetry,
+    steps_tipping,
     steps_witnesses,
 )
 from topovet.pipeline.codec import Codec
@@ -108,6 +110,8 @@ STORED_TYPES = (
     boundary.SurfaceLine,
     boundary.SurfaceWitness,
     boundary.SurfaceMap,
+    TippingPoint,
+    TippingSearch,
 )
 """Dataclasses that results on disk are made of."""
 
@@ -128,6 +132,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_witnesses.TASKS,
         *steps_lower.TASKS,
         *steps_boundary.TASKS,
+        *steps_tipping.TASKS,
         *steps_report.TASKS,
         *steps_diagnosis.TASKS,
     )

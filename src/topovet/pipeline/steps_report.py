@@ -13,6 +13,7 @@ from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
+from topovet.invariants.tipping_results import TippingSearch
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
@@ -65,6 +66,7 @@ def collect_findings(
     mirror_indicators: tuple[MirrorIndicator, ...] | None,
     lower_gaps: LowerGroups | None,
     surface: SurfaceWitness | None,
+    tipping: TippingSearch | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
     """What all steps found, and why a step found nothing."""
@@ -95,6 +97,7 @@ def collect_findings(
         mirror_indicators=mirror_indicators or (),
         lower=lower_gaps,
         surface=surface,
+        tipping=tipping,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -170,6 +173,7 @@ SHOWN = (
     "mirror_indicators",
     "lower",
     "surface",
+    "tipping",
     "interpolation",
     "audit",
     "decay",
@@ -203,6 +207,7 @@ IF_THERE = (
     "mirror-indicators",
     "lower-gaps",
     "surface",
+    "tipping",
     "group",
     "interpolation",
 )

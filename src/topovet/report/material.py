@@ -12,6 +12,7 @@ from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
+from topovet.invariants.tipping_results import TippingSearch
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile
 from topovet.spectrum.proof.results import GapProof, IndirectGapProof
@@ -123,6 +124,8 @@ class ReportMaterial:
         Proofs of the gaps; None where none was made.
     gap_map
         Direct gap over a plane through its minimum.
+    tipping
+        How far H may move before its indices change; None where it was not asked.
     """
 
     verdict: Verdict
@@ -155,3 +158,4 @@ class ReportMaterial:
     gap_proof: GapProof | None = None
     indirect_proof: IndirectGapProof | None = None
     gap_map: GapMap | None = None
+    tipping: TippingSearch | None = None

@@ -8,6 +8,7 @@ from collections.abc import Iterable, Sequence
 from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, z2_text
 from topovet.report.classes import class_words
 from topovet.report.diagnosis_words import diagnosis_line
+from topovet.report.tipping_words import tipping_line
 from topovet.report.words import radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 
@@ -39,6 +40,7 @@ def verdict_lines(verdict: Verdict) -> str:
         ("gap", _gap(verdict)),
         ("residuals", _residuals(verdict)),
         ("radius", f"{mev(verdict.robustness.radius_meV)}, {radius_note(verdict)}"),
+        *((("tipping", tipping),) if (tipping := tipping_line(verdict)) else ()),
         ("grade", "; ".join([verdict.confidence.grade, *verdict.confidence.reasons])),
     ]
     lines = [_title(verdict)]

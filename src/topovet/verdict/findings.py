@@ -12,6 +12,7 @@ from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
+from topovet.invariants.tipping_results import TippingSearch
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.proof.results import GapProof, IndirectGapProof
@@ -68,6 +69,7 @@ class Findings:
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
+    tipping: TippingSearch | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)
 

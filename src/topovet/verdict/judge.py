@@ -38,6 +38,7 @@ from topovet.verdict.flags import Flag
 from topovet.verdict.grade import grade
 from topovet.verdict.inquiry import Inquiry
 from topovet.verdict.raised import raise_flags
+from topovet.verdict.tipping import tipping_entries
 
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
 """Libraries whose versions can change a number or a figure."""
@@ -105,6 +106,7 @@ def judge(
         robustness=RobustnessEntry(
             radius_meV=radius,
             errors_meV=error_budget(findings),
+            tipping=tipping_entries(findings, conclusion),
             proved=findings.proved_gap_mev is not None,
         ),
         flags=flags,

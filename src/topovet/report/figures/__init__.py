@@ -12,6 +12,7 @@ from topovet.report.figures.gap_map import gap_map_figure
 from topovet.report.figures.operations import operations_figure
 from topovet.report.figures.surface import surface_figure
 from topovet.report.figures.tasks import tasks_figure
+from topovet.report.figures.tipping import tipping_figure
 from topovet.report.figures.zone import zone_figure
 from topovet.report.material import ReportMaterial
 
@@ -25,6 +26,7 @@ __all__ = [
     "operations_figure",
     "surface_figure",
     "tasks_figure",
+    "tipping_figure",
     "zone_figure",
 ]
 
@@ -36,7 +38,8 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     """A maker of SVG text for every figure that the material allows, by name.
 
     The names are "zone", "bands", "bands-near-gap", "gap-map", "operations", "flow", "surface",
-    "decay" and "tasks"; `render_report` places them, and each also stands alone as a file.
+    "decay", "tipping" and "tasks"; `render_report` places them, and each also stands alone as a
+    file.
     """
     m = material
     trim = m.parity.trim if m.parity is not None else ()
@@ -55,6 +58,8 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
         makers["gap-map"] = lambda: gap_map_figure(gap_map, m.crystal)
     if m.surface_maps:
         makers["surface"] = lambda: _surface(m)
+    if m.verdict.robustness.tipping:
+        makers["tipping"] = lambda: tipping_figure(m.verdict.robustness.tipping)
     if m.tasks:
         makers["tasks"] = lambda: tasks_figure(m.tasks)
     return makers
