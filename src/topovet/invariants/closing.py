@@ -17,7 +17,6 @@ from topovet.arrays import FloatArray
 from topovet.model.fourier import BlochSum, added_sum
 from topovet.spectrum.descent import Objective, descend
 from topovet.spectrum.eigen import eigenvalues, mesh_points
-from topovet.symmetry.trim import sample_points, trim_points
 
 CLOSED_EV = 2e-3
 """Direct gaps below this count as closed; where exactly is extrapolated from the last two steps."""
@@ -67,11 +66,18 @@ class GapMinima:
     n_solves: int
 
 
-def closing_rate(change: BlochSum, periodic: tuple[bool, bool, bool]) -> float:
-    """Largest minus smallest eigenvalue of V over the TRIM and some generic k, eV; sampled."""
-    points = np.concatenate([trim_points(periodic), sample_points(periodic, 8)])
-    energies = eigenvalues(change, points)
-    return float(energies.max() - energies.min())
+def closing_rate(change: BlochSum) -> float:
+    """A bound on the largest minus the smallest eigenvalue of V(k) at any k, eV.
+
+    V(k) is V(0) and, for each pair R, -R, e^{i phi} V(R) + h.c., whose eigenvalues lie within
+    +-2 |V(R)|; V(R) = (S - i D) / 2 in the rows of the sum.
+    """
+    even, odd = change.rows()
+    pairs = 0.5 * (even - 1j * odd)
+    home = ~change.r_half.any(axis=1)
+    onsite = np.linalg.eigvalsh(even[home].sum(axis=0))
+    hopping = float(np.linalg.norm(pairs[~home], ord=2, axis=(1, 2)).sum())
+    return float(onsite[-1] - onsite[0]) + 4 * hopping
 
 
 def gap_minima(

@@ -41,7 +41,7 @@ SCALE_REACH = 1.0
 """The scale is turned from 1 down to 0 and up to 2."""
 
 NO_COUPLING_EV = 1e-4
-"""A spin-dependent on-site part below this is no spin-orbit coupling to scale."""
+"""A spin-dependent part without larger elements is no spin-orbit coupling to scale."""
 
 MIXED_SPINS = 0.25
 """Spin-dependent over spin-independent hopping above which the functions are no products of an
@@ -128,8 +128,8 @@ def choose_parameters(
 def _no_scale(purity: SpinPurity | None) -> str:
     if purity is None:
         return "spin-orbit coupling was not separated from the rest"
-    if purity.onsite_ev < NO_COUPLING_EV:
-        return "H has no spin-dependent part within the sites that could be scaled"
+    if purity.largest_ev < NO_COUPLING_EV:
+        return "H has no spin-dependent part that could be scaled"
     if purity.hopping_ratio > MIXED_SPINS:
         return (
             "spin-orbit coupling cannot be separated: the Wannier functions mix the spins "

@@ -91,7 +91,7 @@ def tip_by_gap(
     TippingPoint, int
         And the eigenvalue problems that it took.
     """
-    rate = closing_rate(change, ground.periodic)
+    rate = closing_rate(change)
     closing = first_closing(
         ground.bloch,
         change,

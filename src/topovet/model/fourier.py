@@ -100,6 +100,11 @@ class BlochSum:
         packed = weights.reshape(n_k * len(i), -1) @ self.table
         return _unpack(packed, self.n_orb).reshape(n_k, len(i), self.n_orb, self.n_orb)
 
+    def rows(self) -> tuple[ComplexArray, ComplexArray]:
+        """S(R) and D(R) as matrices, (n_half, n_orb, n_orb) each."""
+        matrices = _unpack(self.table, self.n_orb)
+        return matrices[: len(self.r_half)], matrices[len(self.r_half) :]
+
     def partial(self, axes: tuple[int, ...], k_fixed: FloatArray) -> BlochSum:
         """The sum over the given axes done at k_fixed; what is left depends on the others only.
 

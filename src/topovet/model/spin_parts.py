@@ -92,6 +92,8 @@ class SpinPurity:
     onsite_ev
         Spectral norm of the spin-dependent part within the sites of a cell, eV: the atomic
         spin-orbit coupling.
+    largest_ev
+        Largest element of the spin-dependent part, on or between sites, eV.
     hopping_ratio
         Spin-dependent over spin-independent hopping, root mean square over all R and pairs of
         sites. Spin-orbit coupling is nearly all on the atoms; functions that mix the spins have
@@ -99,6 +101,7 @@ class SpinPurity:
     """
 
     onsite_ev: float
+    largest_ev: float
     hopping_ratio: float
 
 
@@ -114,15 +117,16 @@ def spin_purity(model: TightBindingModel, same_site: BoolArray, frame: Frame = N
     frame
         From `spin_frame`.
     """
-    dependent = whole = onsite = 0.0
+    dependent = whole = onsite = largest = 0.0
     for r_cell, h in zip(model.r_cells, model.h_r, strict=True):
         part = spin_dependent(h, frame)
         hops = np.ones_like(same_site)
         if not r_cell.any():
             hops = ~same_site
             onsite = float(np.linalg.norm(np.where(same_site, part, 0.0), ord=2))
+        largest = max(largest, float(np.abs(part).max()))
         dependent += float((np.abs(part) ** 2)[hops].sum())
         whole += float((np.abs(h) ** 2)[hops].sum())
     independent = whole - dependent  # the two parts are orthogonal, also over the pairs of a site
     ratio = np.sqrt(dependent / independent) if independent > 0 else np.inf
-    return SpinPurity(onsite, float(ratio))
+    return SpinPurity(onsite, largest, float(ratio))

@@ -70,6 +70,8 @@ def _panel(axes: Axes, rows: Mapping[str, list[Entry]], *, is_scale: bool) -> No
         for entry in entries:
             _bar(axes, float(height), entry, begin, reach)
     axes.axvline(begin, color=palette.INK, linewidth=1.1, zorder=3)
+    if is_scale:
+        axes.set_xticks([0, 0.5, 1, 1.5, 2], ["0", "½", "1", "1½", "2"])
     axes.set_xlabel(
         "scale of spin–orbit coupling" if is_scale else "shift of on-site energies (eV)"
     )
@@ -77,14 +79,11 @@ def _panel(axes: Axes, rows: Mapping[str, list[Entry]], *, is_scale: bool) -> No
 
 def _reach(rows: Mapping[str, list[Entry]]) -> float:
     """Half-width of the axis: what happens fills it; where nothing does, the range searched."""
-    ends: list[float] = [
-        abs(e["critical_eV"])
-        for entries in rows.values()
-        for e in entries
-        if e["critical_eV"] is not None
-    ]
+    together = [e for entries in rows.values() for e in entries]
+    ends = [abs(float(e["critical_eV"])) for e in together if e["critical_eV"] is not None]
+    ends += [abs(float(e["searched_to"])) for e in together if _is_counted_beyond(e)]
     if not ends:
-        return max(abs(float(e["searched_to"])) for entries in rows.values() for e in entries)
+        return max(abs(float(e["searched_to"])) for e in together)
     return max(LEAST_REACH_EV, 1.25 * max(ends))
 
 
@@ -95,6 +94,11 @@ def _bar(axes: Axes, height: float, entry: Entry, begin: float, reach: float) ->
     shown = begin + float(np.clip(end - begin, -reach, reach))
     axes.barh(height, shown - begin, left=begin, height=0.34, color=palette.FILLED_TINT,
               edgecolor=palette.FILLED, linewidth=0.8, zorder=1)  # fmt: skip
+    label_at = shown
+    if _is_counted_beyond(entry):
+        label_at = entry["searched_to"]
+        axes.barh(height, label_at - shown, left=shown, height=0.34, color=palette.GAP_TINT,
+                  edgecolor=palette.ODD, linewidth=0.6, zorder=1)  # fmt: skip
     if entry["outcome"] not in ENDED:
         axes.plot(shown, height, ">" if sign > 0 else "<", color=palette.FILLED, markersize=6,
                   clip_on=False, zorder=4)  # fmt: skip
@@ -104,9 +108,14 @@ def _bar(axes: Axes, height: float, entry: Entry, begin: float, reach: float) ->
         markerfacecolor=palette.ODD if entry["outcome"] == "flips" else palette.WHITE,
     )  # fmt: skip
     axes.annotate(
-        _end_label(entry), (shown, height), xytext=(8 * sign, 0), textcoords="offset points",
+        _end_label(entry), (label_at, height), xytext=(8 * sign, 0), textcoords="offset points",
         ha="left" if sign > 0 else "right", va="center", fontsize=8.5, color=palette.ODD,
     )  # fmt: skip
+
+
+def _is_counted_beyond(entry: Entry) -> bool:
+    """Whether indices were counted beyond a closing, at a value that is not the critical one."""
+    return "k" in entry and entry["z2_after"] is not None
 
 
 def _end_label(entry: Entry) -> str:

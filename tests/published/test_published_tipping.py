@@ -1,0 +1,84 @@
+"""Tipping points of lattice models against the transitions that their papers give in closed form.
+
+Sources are in the docstrings of `lattice_models`; each test names the equation it stands on.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+
+from lattice_models import LatticeModel, bhz, fu_kane_mele, kane_mele, wilson_dirac
+from tipping_searches import by_gap, by_parity
+from topovet.invariants.tipping_parity import trim_stars
+from topovet.symmetry.trim import trim_points
+
+GAMMA = ((0.0, 0.0, 0.0),)
+CORNER = (1 / 3, 1 / 3, 0.0)
+
+
+@pytest.mark.parametrize("mass", [0.5, 0.8])
+def test_bhz_tips_where_the_levels_at_gamma_cross(mass: float) -> None:
+    """E1 is at m and H1 at -m at Gamma: they meet if s moves by -2m (Science 314, 1757 (2006))."""
+    points = by_parity(bhz(m=mass))
+    down, up = points["Hg s", "down"], points["Hg s", "up"]
+    assert down.critical == pytest.approx(-2 * mass, abs=2e-6)
+    assert (down.k, down.z2_before, down.z2_after) == (GAMMA, (1,), (0,))
+    assert up.outcome == "holds"  # the levels at X are 2 (4b - m) = 7 eV apart
+    assert up.searched_to == 2.0
+
+
+@pytest.mark.parametrize(
+    ("m", "direction", "critical", "after"),
+    [(-2.6, "down", -0.8, (0, 0, 0, 0)), (-1.6, "up", 1.2, (0, 1, 1, 1))],
+)
+def test_wilson_dirac_tips_where_a_mass_vanishes(
+    m: float, direction: str, critical: float, after: tuple[int, ...]
+) -> None:
+    """Masses m + (3 - 2n) c: s and p meet at Gamma for x = -2 (m + 3c), at X for -2 (m + c)."""
+    point = by_parity(wilson_dirac(m=m))["Bi s", direction]
+    assert point.critical == pytest.approx(critical, abs=2e-6)
+    assert (point.outcome, point.z2_before, point.z2_after) == ("flips", (1, 0, 0, 0), after)
+
+
+def test_stars_of_the_trim_under_a_threefold_axis() -> None:
+    """Gamma, three X, three M and R of the simple cubic zone."""
+    cyclic = np.array([np.eye(3), [[0, 1, 0], [0, 0, 1], [1, 0, 0]]], dtype=int)
+    star = trim_stars(trim_points((True, True, True)), cyclic)
+    sets = [np.flatnonzero(star == s).tolist() for s in dict.fromkeys(star.tolist())]
+    assert sets == [[0], [1, 2, 4], [3, 5, 6], [7]]
+
+
+def named(model: LatticeModel, *elements: str) -> LatticeModel:
+    """The model with other elements on its sites."""
+    labels = tuple(
+        f"{elements[i // (model.n_orb // len(elements))]}1 {label.partition(' ')[2]}"
+        for i, label in enumerate(model.basis.labels)
+    )
+    crystal = replace(model.crystal, symbols=elements)
+    return replace(model, crystal=crystal, basis=replace(model.basis, labels=labels))
+
+
+def test_kane_mele_tips_at_three_root_three() -> None:
+    """nu = 1 for |lambda_v| < 3 sqrt(3) lambda_so (PRL 95, 146802 (2005)); a sublattice that moves
+    by x has lambda_v = x/2, and a scale s of lambda_so tips at lambda_v = 3 sqrt(3) s lambda_so."""
+    edge, lambda_v = 3 * np.sqrt(3) * 0.06, 0.1
+    points = by_gap(named(kane_mele(lambda_v=lambda_v), "B", "N"), (1,), CORNER)
+    up, down = points["B pz"[:3], "up"], points["B pz"[:3], "down"]
+    assert up.critical == pytest.approx(2 * (edge - lambda_v), abs=1e-4)
+    assert down.critical == pytest.approx(-2 * (edge + lambda_v), abs=1e-4)
+    assert [p.z2_after for p in (up, down)] == [(0,), (0,)]
+    scaled = points["", "down"]
+    assert scaled.critical == pytest.approx(lambda_v / edge, abs=1e-4)
+    assert scaled.z2_after == (0,)
+    assert points["", "up"].outcome == "holds"
+
+
+def test_spin_orbit_coupling_leaves_the_parities_of_diamond_alone() -> None:
+    """In the Fu-Kane-Mele model it vanishes at the TRIM (PRL 98, 106803 (2007), Eq. 3)."""
+    points = by_parity(fu_kane_mele(lambda_so=0.05, dt=(0.4, 0, 0, 0)))
+    assert set(points) == {("", "down"), ("", "up")}
+    assert {p.outcome for p in points.values()} == {"holds"}
+    assert {p.z2_before for p in points.values()} == {(1, 1, 1, 1)}
