@@ -153,6 +153,40 @@ def first_closing(
         t = reach if step == abs(reach - t) else t + float(np.sign(reach)) * step
 
 
+WAY = (0.25, 0.5, 0.75)
+"""Parts of the way to an exchange at which the gap is sampled."""
+
+
+def gap_on_the_way(
+    bloch: BlochSum,
+    change: BlochSum,
+    filling: int,
+    periodic: tuple[bool, bool, bool],
+    end: float,
+    known: FloatArray,
+) -> GapMinima:
+    """Smallest direct gaps at some points between t = 0 and t = end, one for each: sampled.
+
+    Parameters
+    ----------
+    bloch, change
+        H and V.
+    filling, periodic
+        Occupied bands and periodic directions.
+    end
+        t of an exchange, where the gap is 0 in any case.
+    known
+        (n, 3) k at which the gap is known to be small.
+    """
+    lowest, values, solves = [], [], 0
+    for part in WAY:
+        minima = gap_minima(added_sum(bloch, change, part * end), filling, periodic, known)
+        known, solves = minima.k_frac, solves + minima.n_solves
+        lowest.append(minima.k_frac[0])
+        values.append(minima.values[0])
+    return GapMinima(np.array(lowest), np.array(values), solves)
+
+
 def _root(before: tuple[float, float] | None, last: tuple[float, float]) -> float:
     """Where the line through the last two gaps is 0."""
     if before is None or before[1] <= last[1]:

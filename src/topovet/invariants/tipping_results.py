@@ -7,6 +7,11 @@ from dataclasses import dataclass
 SHIFT, SCALE = "on-site shift", "spin-orbit scale"
 BY_PARITY, BY_GAP = "parity at the TRIM", "gap closing and Wilson loops"
 
+DOUBTFUL_EV = 1e-3
+"""Sampled gaps below this are too small to be called open."""
+
+SAME_K = 1e-3
+
 OUTCOMES = ("flips", "exchange", "reopens", "closes", "holds", "open")
 
 
@@ -43,6 +48,9 @@ class TippingPoint:
     mirror_before, mirror_after
         (plane, mirror Chern number) on the two sides, counted only where Z2 and Z4 stay; None
         where they were not counted.
+    gap_on_the_way_ev, gap_on_the_way_k
+        Smallest direct gap sampled at a quarter, half and three quarters of the way to an exchange
+        at the TRIM, and where; None where it was not sampled.
     spread
         How far apart the k of one star change, in the unit of `critical`: they would at once if H
         had all of the crystal's symmetry.
@@ -66,6 +74,8 @@ class TippingPoint:
     z4_after: int | None = None
     mirror_before: tuple[tuple[str, int], ...] | None = None
     mirror_after: tuple[tuple[str, int], ...] | None = None
+    gap_on_the_way_ev: float | None = None
+    gap_on_the_way_k: tuple[float, float, float] | None = None
     spread: float | None = None
     note: str = ""
 
@@ -74,11 +84,24 @@ class TippingPoint:
             raise ValueError(f"unknown outcome {self.outcome!r}")
 
     @property
+    def may_close_before(self) -> bool:
+        """Whether a gap on the way is too small to be told from none, off the TRIM exchanged."""
+        at, gap = self.gap_on_the_way_k, self.gap_on_the_way_ev
+        if at is None or gap is None or gap >= DOUBTFUL_EV:
+            return False
+        return all(_apart(at, k) for k in self.k)
+
+    @property
     def distance_mev(self) -> float | None:
         """Size of a critical shift, meV; None for the scale and where nothing happens."""
         if self.parameter != SHIFT or self.critical is None:
             return None
         return 1000.0 * abs(self.critical)
+
+
+def _apart(one: tuple[float, ...], other: tuple[float, ...]) -> bool:
+    """Whether two k differ by more than a reciprocal lattice vector."""
+    return any(abs((a - b + 0.5) % 1.0 - 0.5) > SAME_K for a, b in zip(one, other, strict=True))
 
 
 @dataclass(frozen=True, slots=True)

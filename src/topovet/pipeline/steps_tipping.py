@@ -28,7 +28,7 @@ from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.steps_shifts import sites_in_use
 from topovet.pipeline.steps_witnesses import count_mirror_chern_numbers
 from topovet.pipeline.task import NotApplicable, Task
-from topovet.pipeline.tipping_mirrors import FarSide
+from topovet.pipeline.tipping_way import FarSide, Way
 from topovet.spectrum.eigen import one_blas_thread
 from topovet.spectrum.results import Electrons, GapSample
 from topovet.symmetry.group_results import GroupTest
@@ -102,18 +102,20 @@ def look_for_tipping_points(
             trims = _trim_ground(based, declarations, operator, electrons, space_group)
             found = search_by_parity(trims, parameters, orbitals.frame)
     points, left_out, n_solves = found
-    if gap and space_group and group and mirror_chern:
-        count = partial(
-            count_mirror_chern_numbers,
-            context=context,
-            declarations=declarations,
-            space_group=space_group,
-            group=group,
-            time_reversal=time_reversal,
-            electrons=electrons,
-        )
-        beyond = FarSide(based, declarations, electrons, gap, parameters, orbitals.frame, count)
-        points = [beyond.counted(point, mirror_chern) for point in points]
+    if gap is not None and z2 is not None:
+        way = Way(based, declarations, electrons, gap, parameters, orbitals.frame)
+        points = [way.sampled(point) for point in points]
+        if space_group and group and mirror_chern:
+            count = partial(
+                count_mirror_chern_numbers,
+                context=context,
+                declarations=declarations,
+                space_group=space_group,
+                group=group,
+                time_reversal=time_reversal,
+                electrons=electrons,
+            )
+            points = [FarSide(way, count).counted(point, mirror_chern) for point in points]
     return conclude_search(points, (*not_asked, *left_out), purity, n_solves)
 
 
