@@ -12,7 +12,13 @@ import pytest
 
 from lattice_models import LatticeModel, bhz, fu_kane_mele, kane_mele, wilson_dirac
 from tipping_searches import by_gap, by_parity
+from topovet.invariants.closing import Closing
+from topovet.invariants.tipping import Parameter, projector_sum
+from topovet.invariants.tipping_gap import BRACKET, GapGround, _at_the_end
 from topovet.invariants.tipping_parity import trim_stars
+from topovet.invariants.tipping_results import BY_GAP, SHIFT
+from topovet.model.fourier import build_bloch_sum
+from topovet.model.orbital_groups import OrbitalGroup
 from topovet.symmetry.trim import trim_points
 
 GAMMA = ((0.0, 0.0, 0.0),)
@@ -74,6 +80,20 @@ def test_kane_mele_tips_at_three_root_three() -> None:
     assert scaled.critical == pytest.approx(lambda_v / edge, abs=1e-4)
     assert scaled.z2_after == (0,)
     assert points["", "up"].outcome == "holds"
+
+
+def test_a_missed_closing_is_enclosed_by_the_indices() -> None:
+    """As if the gap had never been met closed on the way to a shift of 1 eV."""
+    model = named(kane_mele(lambda_v=0.1), "B", "N")
+    bloch = build_bloch_sum(model.tight_binding())
+    ground = GapGround(bloch, 2, model.crystal.periodic, (1,), np.array([CORNER]))
+    change = projector_sum(np.array([1.0, 1.0, 0.0, 0.0]))
+    start = Parameter(SHIFT, OrbitalGroup("B pz", (0, 1)), "N pz").start("up", BY_GAP)
+    missed = Closing(None, CORNER, 1.0, True, 0.02, 0)
+    point, _ = _at_the_end(ground, change, missed, 0.0, replace(start, z2_before=(1,)))
+    assert point.critical == pytest.approx(2 * (3 * np.sqrt(3) * 0.06 - 0.1), abs=BRACKET)
+    assert (point.outcome, point.z2_after) == ("flips", (0,))
+    assert "enclosed by indices alone" in point.note
 
 
 def test_spin_orbit_coupling_leaves_the_parities_of_diamond_alone() -> None:

@@ -113,7 +113,7 @@ def choose_parameters(
             f"all orbitals are one group ({groups[0].name}): its shift only moves the zero of "
             "energy"
         )
-    if any(group.name.endswith("all orbitals") for group in groups):
+    if any(group.name.endswith("(all l)") for group in groups):
         not_asked.append(
             "orbitals without a declared l, hybrids among them, are moved as a whole per element"
         )

@@ -2,7 +2,8 @@
 
 Without inversion a gapless phase may lie between two insulators (Murakami, New J. Phys. 9, 356
 (2007), doi:10.1088/1367-2630/9/9/356), so indices are asked for at the first points beyond the
-closing at which the sampled gap is open again.
+closing at which the sampled gap is open again. Where no closing was met they are asked for at the
+end of the range: other ones there mean that a closing was missed, and they bracket it themselves.
 """
 
 from __future__ import annotations
@@ -28,6 +29,9 @@ from topovet.units import MEV_PER_EV
 
 BEYOND = (0.02, 0.05, 0.1, 0.2)
 """Distances beyond a closing, in eV or as a factor, at which the gap is looked at again."""
+
+BRACKET = 0.05
+"""Length, in eV or as a factor, of the interval in which indices alone enclose a missed closing."""
 
 SAME_LEVEL_EV = 1e-3
 """Levels closer than this to a band edge are one multiplet."""
@@ -112,9 +116,11 @@ def tip_by_gap(
         outcome="holds" if closing.finished else "open",
         note=f"smallest sampled direct gap {mev(MEV_PER_EV * closing.smallest_ev)}",
     )
+    if closing.at is None and not closing.finished:
+        note = f"the budget of eigenvalue problems ended; {point.note}"
+        return replace(point, note=note), closing.n_solves
     if closing.at is None:
-        budget = "" if closing.finished else "the budget of eigenvalue problems ended; "
-        return replace(point, note=budget + point.note), closing.n_solves
+        return _at_the_end(ground, change, closing, offset, point)
     point = replace(point, critical=offset + closing.at, outcome="closes")
     return _beyond(ground, change, closing, offset, point, float(np.sign(reach)))
 
@@ -138,19 +144,12 @@ def _beyond(
         gap = float(minima.values[0])
         if gap < REOPENED_EV:
             continue
-        wilson = compute_wilson(
-            there,
-            ground.filling,
-            ground.periodic,
-            time_reversal=True,
-            spinful=True,
-            criteria=CRITERIA["quick"],
-        )
-        n_solves += wilson.n_solves
-        if wilson.z2 is None:
+        z2, spent = _indices(ground, there)
+        n_solves += spent
+        if z2 is None:
             continue
         where = f"at {significant(offset + t)} the sampled gap is {mev(MEV_PER_EV * gap)}"
-        return _judged(point, wilson.z2, offset + t, where), n_solves
+        return _judged(point, z2, offset + t, where), n_solves
     least, unit = MEV_PER_EV * REOPENED_EV, "" if point.parameter == SCALE else " eV"
     note = f"no sampled gap of {least:g} meV with indices again within {BEYOND[-1]:g}{unit} of it"
     return replace(point, note=note), n_solves
@@ -161,3 +160,50 @@ def _judged(
 ) -> TippingPoint:
     outcome = "flips" if z2 != point.z2_before else "reopens"
     return replace(point, outcome=outcome, z2_after=z2, searched_to=searched_to, note=where)
+
+
+def _at_the_end(
+    ground: GapGround, change: BlochSum, closing: Closing, offset: float, point: TippingPoint
+) -> tuple[TippingPoint, int]:
+    """The gap was never met closed: the same indices at the end of the range confirm it."""
+
+    def at(t: float) -> tuple[tuple[int, ...] | None, int]:
+        return _indices(ground, added_sum(ground.bloch, change, t))
+
+    z2, n_solves = at(closing.reached)
+    n_solves += closing.n_solves
+    if z2 == ground.z2:
+        return point, n_solves
+    if z2 is None:
+        note = f"Wilson loops at the end of the range are not resolved; {point.note}"
+        return replace(point, outcome="open", note=note), n_solves
+    before, after = 0.0, closing.reached
+    while abs(after - before) > BRACKET:
+        middle = 0.5 * (before + after)
+        found, spent = at(middle)
+        n_solves += spent
+        if found is None:
+            break
+        if found == ground.z2:
+            before = middle
+        else:
+            after, z2 = middle, found
+    note = (
+        f"enclosed by indices alone, between {significant(offset + before)} and "
+        f"{significant(offset + after)}; {point.note}"
+    )
+    critical = offset + 0.5 * (before + after)
+    return _judged(replace(point, critical=critical), z2, offset + after, note), n_solves
+
+
+def _indices(ground: GapGround, bloch: BlochSum) -> tuple[tuple[int, ...] | None, int]:
+    """Z2 by Wilson loops, None where they are not resolved, and the solves."""
+    wilson = compute_wilson(
+        bloch,
+        ground.filling,
+        ground.periodic,
+        time_reversal=True,
+        spinful=True,
+        criteria=CRITERIA["quick"],
+    )
+    return wilson.z2 if wilson.status == "ok" else None, wilson.n_solves

@@ -28,7 +28,7 @@ class OrbitalGroup:
     Attributes
     ----------
     name
-        "Se p"; "C, all orbitals" where an element is not split by l.
+        "Se p"; "C (all l)" where an element is not split by l.
     members
         Their numbers, from 0, ascending.
     """
@@ -53,7 +53,7 @@ def declared_groups(basis: OrbitalBasis) -> tuple[OrbitalGroup, ...]:
     letters = [_letter(l) for l in angular_momenta(basis)]
     mixed = {e for e, letter in zip(elements, letters, strict=True) if not letter}
     names = [
-        f"{element}, all orbitals" if element in mixed else f"{element} {letter}{_radial(shell)}"
+        f"{element} (all l)" if element in mixed else f"{element} {letter}{_radial(shell)}"
         for element, letter, shell in zip(elements, letters, basis.shells.tolist(), strict=True)
     ]
     return _gathered(names)
@@ -61,7 +61,7 @@ def declared_groups(basis: OrbitalBasis) -> tuple[OrbitalGroup, ...]:
 
 def element_groups(elements: Sequence[str]) -> tuple[OrbitalGroup, ...]:
     """One group for each element, from the element at the site of each function ("" off atoms)."""
-    return _gathered([f"{element or OFF_ATOM}, all orbitals" for element in elements])
+    return _gathered([f"{element or OFF_ATOM} (all l)" for element in elements])
 
 
 def angular_momenta(basis: OrbitalBasis) -> IntArray:

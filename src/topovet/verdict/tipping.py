@@ -102,8 +102,10 @@ def _flip(point: TippingPoint) -> str:
 def _nothing(point: TippingPoint) -> str:
     end = _moved(point, point.searched_to)
     if point.outcome == "holds":
-        what = "the gap stays open" if point.method == BY_GAP else "no flip"
-        return f"{what} until {end}"
+        if point.method == BY_GAP:
+            still = z2_text(point.z2_before)
+            return f"the sampled gap stays open until {end}, and Z₂ is still {still} there"
+        return f"no flip until {end}"
     return f"no flip until {end}; beyond this it is not settled"
 
 

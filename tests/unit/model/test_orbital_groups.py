@@ -26,7 +26,7 @@ def test_a_hybrid_makes_one_group_of_its_element() -> None:
     mixed[0:2, 1] = 1.0  # s + pz
     groups = declared_groups(replace(basis, harmonics=mixed))
     assert [(g.name, g.members) for g in groups] == [
-        ("C, all orbitals", (0, 1, 2, 3)),
+        ("C (all l)", (0, 1, 2, 3)),
         ("off-atom s", (4, 5)),
     ]
 
@@ -40,8 +40,8 @@ def test_radial_functions_are_apart() -> None:
 def test_elements_alone() -> None:
     groups = element_groups(["Bi", "Bi", "", "Se"])
     assert [(g.name, g.members) for g in groups] == [
-        ("Bi, all orbitals", (0, 1)),
-        ("off-atom, all orbitals", (2,)),
-        ("Se, all orbitals", (3,)),
+        ("Bi (all l)", (0, 1)),
+        ("off-atom (all l)", (2,)),
+        ("Se (all l)", (3,)),
     ]
     assert groups[0].projector(4).tolist() == [1, 1, 0, 0]

@@ -62,6 +62,8 @@ CASES = {
     "−0.400 eV": replace(FLIP, method=BY_GAP, searched_to=-0.4),
     "the direct gap closes if spin–orbit coupling is scaled by 0.431; what follows has no gap "
     "again nearby": replace(SCALED, method=BY_GAP, outcome="closes", z2_after=None),
+    "the sampled gap stays open until Se p moves by +2.000 eV against Bi p, and Z₂ is still "
+    "1;(000) there": replace(HOLDS, method=BY_GAP),
     "no flip until Se p moves by +1.100 eV against Bi p; beyond this it is not settled": replace(
         HOLDS, outcome="open", searched_to=1.1
     ),
@@ -71,6 +73,15 @@ CASES = {
 @pytest.mark.parametrize(("said", "point"), list(CASES.items()))
 def test_sentences(said: str, point: TippingPoint) -> None:
     assert sentence(point) == said
+
+
+def test_a_narrow_gap_at_the_trim_itself_is_no_closing_elsewhere() -> None:
+    at_l = replace(FLIP, k=L, gap_on_the_way_ev=2e-4, gap_on_the_way_k=(-0.5, 0.0, 0.0))
+    assert not at_l.may_close_before
+    assert replace(at_l, gap_on_the_way_k=(-0.5, 0.02, 0.0)).may_close_before
+    assert not replace(
+        at_l, gap_on_the_way_k=(0.1, 0.0, 0.0), gap_on_the_way_ev=0.02
+    ).may_close_before
 
 
 def judged(*points: TippingPoint) -> Verdict:
