@@ -24,7 +24,7 @@ from topovet.invariants.tipping_results import BY_GAP, SCALE, TippingPoint
 from topovet.invariants.wilson_sheet import CRITERIA
 from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.fourier import BlochSum, added_sum
-from topovet.notation import mev, significant
+from topovet.notation import mev
 from topovet.units import MEV_PER_EV
 
 BEYOND = (0.02, 0.05, 0.1, 0.2)
@@ -148,10 +148,10 @@ def _beyond(
         n_solves += spent
         if z2 is None:
             continue
-        where = f"at {significant(offset + t)} the sampled gap is {mev(MEV_PER_EV * gap)}"
+        where = f"at {point.value_text(offset + t)} the sampled gap is {mev(MEV_PER_EV * gap)}"
         return _judged(point, z2, offset + t, where), n_solves
-    least, unit = MEV_PER_EV * REOPENED_EV, "" if point.parameter == SCALE else " eV"
-    note = f"no sampled gap of {least:g} meV with indices again within {BEYOND[-1]:g}{unit} of it"
+    least, reach = mev(MEV_PER_EV * REOPENED_EV), point.value_text(BEYOND[-1])
+    note = f"no sampled gap of {least} with indices again within {reach} of it"
     return replace(point, note=note), n_solves
 
 
@@ -189,8 +189,8 @@ def _at_the_end(
         else:
             after, z2 = middle, found
     note = (
-        f"enclosed by indices alone, between {significant(offset + before)} and "
-        f"{significant(offset + after)}; {point.note}"
+        f"enclosed by indices alone, between {point.value_text(offset + before)} and "
+        f"{point.value_text(offset + after)}; {point.note}"
     )
     critical = offset + 0.5 * (before + after)
     return _judged(replace(point, critical=critical), z2, offset + after, note), n_solves

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from topovet.notation import significant
+
 SHIFT, SCALE = "on-site shift", "spin-orbit scale"
 BY_PARITY, BY_GAP = "parity at the TRIM", "gap closing and Wilson loops"
 
@@ -82,6 +84,11 @@ class TippingPoint:
     def __post_init__(self) -> None:
         if self.outcome not in OUTCOMES:
             raise ValueError(f"unknown outcome {self.outcome!r}")
+
+    def value_text(self, value: float) -> str:
+        """A value of the parameter with its unit, for notes."""
+        unit = "" if self.parameter == SCALE else " eV"
+        return f"{significant(value)}{unit}"
 
     @property
     def may_close_before(self) -> bool:

@@ -15,7 +15,6 @@ from topovet.invariants.tipping_results import TippingPoint
 from topovet.model.declarations import Declarations
 from topovet.model.fourier import BlochSum, added_sum
 from topovet.model.spin_parts import Frame
-from topovet.notation import significant
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.task import NotApplicable
 from topovet.spectrum.results import Electrons, GapSample
@@ -85,7 +84,7 @@ class FarSide:
                     mirror_before=tuple(before.numbers.items()),
                     mirror_after=tuple(after.items()),
                     searched_to=value,
-                    note=f"mirror Chern numbers counted at {significant(value)}",
+                    note=f"mirror Chern numbers counted at {point.value_text(value)}",
                 )
         return point
 

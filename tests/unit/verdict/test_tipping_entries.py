@@ -23,6 +23,8 @@ from topovet.report.figures import figure_makers, tipping_figure
 from topovet.report.html import render_report
 from topovet.report.json_document import verdict_json
 from topovet.report.text import verdict_lines
+from topovet.screening.shortlist_fields import Fields
+from topovet.screening.shortlist_reading import _tipping
 from topovet.verdict.conclude import conclude
 from topovet.verdict.document import Verdict
 from topovet.verdict.judge import judge
@@ -102,6 +104,8 @@ def test_entries_fit_the_schema_and_the_nearest_shift_comes_first() -> None:
     assert entries[0]["critical_eV"] == pytest.approx(0.06612)
     assert all(e["distance_meV"] is None for e in entries if e["parameter"] == SCALE)
     assert {e["class_after"] for e in entries} == {None, "strong-ti"}
+    read = _tipping(Fields("verdict.json", document["robustness"], "robustness"))
+    assert read == pytest.approx(66.12)  # what the shortlist makes of it
 
 
 def test_a_class_that_parities_settle_is_named_and_no_other() -> None:

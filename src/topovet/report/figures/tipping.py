@@ -104,7 +104,7 @@ def _bar(axes: Axes, height: float, entry: Entry, begin: float, reach: float) ->
                   clip_on=False, zorder=4)  # fmt: skip
         if end != shown:  # the bar goes on beyond the axis
             axes.annotate(
-                f"on to {end:g}".replace("-", "−"), (shown, height), xytext=(-8 * sign, 0),
+                f"on to {end:+g} eV".replace("-", "−"), (shown, height), xytext=(-8 * sign, 0),
                 textcoords="offset points", ha="right" if sign > 0 else "left", va="center",
                 fontsize=8.5, color=palette.FILLED,
             )  # fmt: skip
