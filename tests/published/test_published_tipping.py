@@ -19,6 +19,8 @@ from topovet.invariants.tipping_parity import trim_stars
 from topovet.invariants.tipping_results import BY_GAP, SHIFT
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.orbital_groups import OrbitalGroup
+from topovet.spectrum.eigen import mesh_eigenvalues
+from topovet.spectrum.gap import sample_gap
 from topovet.symmetry.trim import trim_points
 
 GAMMA = ((0.0, 0.0, 0.0),)
@@ -97,8 +99,14 @@ def test_a_missed_closing_is_enclosed_by_the_indices() -> None:
 
 
 def test_spin_orbit_coupling_leaves_the_parities_of_diamond_alone() -> None:
-    """In the Fu-Kane-Mele model it vanishes at the TRIM (PRL 98, 106803 (2007), Eq. 3)."""
+    """In the Fu-Kane-Mele model it vanishes at the TRIM (PRL 98, 106803 (2007), Eq. 3); without it
+    these parities have nodes (PRL 115, 036806 (2015)), which the plain sum over R meets."""
     points = by_parity(fu_kane_mele(lambda_so=0.05, dt=(0.4, 0, 0, 0)))
     assert set(points) == {("", "down"), ("", "up")}
-    assert {p.outcome for p in points.values()} == {"holds"}
+    assert points["", "up"].outcome == "holds"
+    down = points["", "down"]
+    assert (down.outcome, down.critical, down.z2_after) == ("closes", 0.0, None)
+    without = build_bloch_sum(fu_kane_mele(lambda_so=0.0, dt=(0.4, 0, 0, 0)).tight_binding())
+    gap = sample_gap(without, mesh_eigenvalues(without, (8, 8, 8), even=True), 2)
+    assert gap.direct_ev < 1e-4
     assert {p.z2_before for p in points.values()} == {(1, 1, 1, 1)}

@@ -4,6 +4,11 @@ With inversion and time reversal the Fu-Kane indices change only where states of
 change places at a TRIM (Fu and Kane, Phys. Rev. B 76, 045302 (2007),
 doi:10.1103/PhysRevB.76.045302): a gap that closes elsewhere leaves the parities alone. Whether the
 gap stays open elsewhere is another question, which is not asked here.
+
+Without spin-orbit coupling the bands are two copies of spinless ones, and parities whose product
+over a plane of TRIM is -1 belong to spinless bands with nodes (Kim, Wieder, Kane, Rappe, Phys. Rev.
+Lett. 115, 036806 (2015), doi:10.1103/PhysRevLett.115.036806): indices that last until the scale is
+0 end there, with the gap.
 """
 
 from __future__ import annotations
@@ -105,8 +110,18 @@ def tip_by_parity(
         searched = offset + np.sign(reach) * free
         note = "" if settled else "levels of opposite parity stay together at a TRIM"
         outcome = "holds" if settled else "open"
-        return replace(point, outcome=outcome, searched_to=searched, note=note), n_solves
+        point = replace(point, outcome=outcome, searched_to=searched, note=note)
+        return _without_coupling(point), n_solves
     return _describe(ground, found, leader, offset, point), n_solves
+
+
+def _without_coupling(point: TippingPoint) -> TippingPoint:
+    """A scale that was turned down to 0 under indices that need spin-orbit coupling."""
+    at_zero = point.parameter == SCALE and point.outcome == "holds" and point.searched_to == 0.0
+    if not (at_zero and any(point.z2_before or ())):
+        return point
+    note = "bands without spin-orbit coupling have nodes where their parities are such"
+    return replace(point, outcome="closes", critical=0.0, note=note)
 
 
 def _leader(found: list[FirstExchange]) -> int | None:

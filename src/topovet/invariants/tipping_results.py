@@ -35,8 +35,8 @@ class TippingPoint:
         "flips": Z2, Z4 or mirror Chern numbers are others beyond `critical`; "exchange": states of
         opposite parity change places there, Z2 and Z4 stay, and nothing else is known; "reopens":
         the gap closes there, or states are exchanged, and what was counted beyond is as before;
-        "closes": the direct gap closes there and no index beyond is known; "holds": nothing of the
-        kind up to `searched_to`; "open": not settled beyond `searched_to`.
+        "closes": the direct gap closes there, somewhere, and no index beyond is known; "holds":
+        nothing of the kind up to `searched_to`; "open": not settled beyond `searched_to`.
     critical
         Shift in eV, or factor, at which it happens; None for "holds" and "open".
     searched_to

@@ -76,6 +76,8 @@ def sentence(point: TippingPoint) -> str:
         return _nothing(point)
     when = f"if {_moved(point, point.critical)}"
     z2 = z2_text(point.z2_after)
+    if point.outcome == "closes" and point.method != BY_GAP:
+        return f"{z2_text(point.z2_before)} lasts until {_moved(point, 0.0)}, where the gap closes"
     if point.outcome == "closes":
         return f"the direct gap closes {when}; what follows has no gap again nearby"
     if point.method == BY_GAP:

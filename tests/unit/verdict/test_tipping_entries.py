@@ -46,6 +46,9 @@ CASES = {
     "flips to 0;(000) if Se p moves by −0.350 eV against Bi p": FLIP,
     "no flip until Se p moves by +2.000 eV against Bi p": HOLDS,
     "flips to 0;(000) if spin–orbit coupling is scaled by 0.431": SCALED,
+    "1;(000) lasts until spin–orbit coupling is scaled by 0, where the gap closes": replace(
+        SCALED, outcome="closes", critical=0.0, searched_to=0.0, k=(), z2_after=None
+    ),
     "no flip until spin–orbit coupling is scaled by 0": replace(
         SCALED, outcome="holds", critical=None, searched_to=0.0
     ),
