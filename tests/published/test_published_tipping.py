@@ -10,7 +10,14 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from lattice_models import LatticeModel, bhz, fu_kane_mele, kane_mele, wilson_dirac
+from lattice_models import (
+    LatticeModel,
+    atomic_insulator,
+    bhz,
+    fu_kane_mele,
+    kane_mele,
+    wilson_dirac,
+)
 from tipping_searches import by_gap, by_parity
 from topovet.invariants.closing import Closing
 from topovet.invariants.tipping import Parameter, projector_sum
@@ -57,6 +64,17 @@ def test_stars_of_the_trim_under_a_threefold_axis() -> None:
     star = trim_stars(trim_points((True, True, True)), cyclic)
     sets = [np.flatnonzero(star == s).tolist() for s in dict.fromkeys(star.tolist())]
     assert sets == [[0], [1, 2, 4], [3, 5, 6], [7]]
+
+
+def test_stars_that_exchange_states_at_one_value_are_told_together() -> None:
+    """Flat bands of CsCl: the cation's s meets the anion's p at Gamma and at all M at once, by
+    exp(2 pi i k.(1,1,1)) odd where s is even (Fu and Kane 2007, their argument for an origin)."""
+    model = atomic_insulator(gap_ev=2.0, hop=0.05)
+    point = by_parity(model)["Cs s", "down"]
+    m_points = {(0.0, 0.5, 0.5), (0.5, 0.0, 0.5), (0.5, 0.5, 0.0)}
+    assert set(point.k) == {*GAMMA, *m_points}
+    assert (point.outcome, point.z2_after, point.z4_after) == ("exchange", (0, 0, 0, 0), 0)
+    assert point.n_exchanged == -2
 
 
 def named(model: LatticeModel, *elements: str) -> LatticeModel:

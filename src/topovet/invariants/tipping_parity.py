@@ -18,7 +18,12 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray, IntArray
-from topovet.invariants.exchange import FirstExchange, first_exchange, parity_blocks
+from topovet.invariants.exchange import (
+    RESOLUTION,
+    FirstExchange,
+    first_exchange,
+    parity_blocks,
+)
 from topovet.invariants.parity import indices_of_counts
 from topovet.invariants.tipping_results import BY_PARITY, SCALE, TippingPoint
 
@@ -107,7 +112,7 @@ def tip_by_parity(
     leader = _leader(found)
     if leader is None or abs(found[leader].free_up_to) > free:
         settled = leader is None and free >= abs(reach)
-        searched = offset + np.sign(reach) * free
+        searched = offset + float(np.sign(reach)) * free
         note = "" if settled else "levels of opposite parity stay together at a TRIM"
         outcome = "holds" if settled else "open"
         point = replace(point, outcome=outcome, searched_to=searched, note=note)
@@ -140,10 +145,12 @@ def _describe(
 ) -> TippingPoint:
     at = found[leader].at
     assert at is not None
-    members = _together(ground, found, leader)
-    sizes = [abs(found[i].at or 0.0) for i in members]
-    passed = [f.at is not None and abs(f.at) <= max(sizes) for f in found]
+    last = max(abs(found[i].at or 0.0) for i in _together(ground, found, leader))
+    # other stars may exchange states at the same value: their order cannot be told
+    passed = [f.at is not None and abs(f.at) <= last + 2 * RESOLUTION for f in found]
     after = [f.n_odd_after if gone else f.n_odd for f, gone in zip(found, passed, strict=True)]
+    sizes = [abs(f.at or 0.0) for f, gone in zip(found, passed, strict=True) if gone]
+    gained = {f.n_odd_after - f.n_odd for f, gone in zip(found, passed, strict=True) if gone}
     z2, z4 = _indices(ground, after)
     changed = (z2, z4) != (point.z2_before, point.z4_before)
     return replace(
@@ -151,8 +158,8 @@ def _describe(
         outcome="flips" if changed else "exchange",
         critical=offset + at,
         searched_to=offset + at,
-        k=tuple((float(x), float(y), float(z)) for x, y, z in ground.k_trim[members]),
-        n_exchanged=2 * (found[leader].n_odd_after - found[leader].n_odd),
+        k=tuple((float(x), float(y), float(z)) for x, y, z in ground.k_trim[passed]),
+        n_exchanged=2 * gained.pop() if len(gained) == 1 else None,
         z2_after=z2,
         z4_after=z4,
         spread=max(sizes) - min(sizes),

@@ -44,7 +44,8 @@ class TippingPoint:
     k
         Where: the TRIM of the exchange, or the k at which the gap closes.
     n_exchanged
-        Odd filled states gained at each of these k; None where parity does not speak.
+        Odd filled states gained at each of these k; None where they differ or parity does not
+        speak.
     z2_before, z2_after, z4_before, z4_after
         Indices on the two sides; None where they are not known.
     mirror_before, mirror_after
@@ -54,8 +55,8 @@ class TippingPoint:
         Smallest direct gap sampled at a quarter, half and three quarters of the way to an exchange
         at the TRIM, and where; None where it was not sampled.
     spread
-        How far apart the k of one star change, in the unit of `critical`: they would at once if H
-        had all of the crystal's symmetry.
+        How far apart these k change, in the unit of `critical`: those of one star would at once
+        if H had all of the crystal's symmetry.
     note
         What else is to be said, one clause, or "".
     """
