@@ -113,9 +113,11 @@ def _bar(axes: Axes, height: float, entry: Entry, begin: float, reach: float) ->
         shown, height, "D", color=palette.ODD, markersize=6, zorder=4,
         markerfacecolor=palette.ODD if entry["outcome"] == "flips" else palette.WHITE,
     )  # fmt: skip
+    # a label at the end of the axis stands inside the bar, clear of the name of the row
+    side = -sign if abs(label_at - begin) > 0.9 * reach else sign
     axes.annotate(
-        _end_label(entry), (label_at, height), xytext=(8 * sign, 0), textcoords="offset points",
-        ha="left" if sign > 0 else "right", va="center", fontsize=8.5, color=palette.ODD,
+        _end_label(entry), (label_at, height), xytext=(8 * side, 0), textcoords="offset points",
+        ha="left" if side > 0 else "right", va="center", fontsize=8.5, color=palette.ODD,
     )  # fmt: skip
 
 
