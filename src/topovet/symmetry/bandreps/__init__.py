@@ -1,0 +1,1 @@
+"""Any space group in any cell enters; its band representations and indicator group leave."""

@@ -1,0 +1,219 @@
+"""Band representations of a space group, and the group that indicates what they cannot make.
+
+Rows of E are the band representations, columns the corepresentations at the maximal k strata. With
+U E V = D, the vector of multiplicities v of any set of bands becomes y = v V: entries beyond the
+rank must vanish for bands that are gapped everywhere, and the others modulo the divisors d_j tell
+v apart from all sums and differences of atomic limits. The generators that a Smith form picks are
+not canonical; published formulas name the classes.
+
+References
+----------
+Po, Vishwanath, Watanabe, Nat. Commun. 8, 50 (2017), doi:10.1038/s41467-017-00133-2.
+Bradlyn et al., Nature 547, 298 (2017), doi:10.1038/nature23268.
+"""
+
+from __future__ import annotations
+
+import functools
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from topovet.arrays import FloatArray, IntArray, frozen
+from topovet.symmetry.bandreps.compatibility import Relation, find_relations
+from topovet.symmetry.bandreps.corepresentations import CorepTable, find_coreps
+from topovet.symmetry.bandreps.double_group import (
+    DoubleGroup,
+    build_double_group,
+    little_group_at,
+)
+from topovet.symmetry.bandreps.induction import SiteOrbit, place_on_orbit
+from topovet.symmetry.bandreps.smith import SmithForm, smith_normal_form
+from topovet.symmetry.bandreps.strata import Stratum, cell_torus, find_strata, zone_torus
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class BandRepresentation:
+    """One band representation, induced from a maximal Wyckoff position.
+
+    Attributes
+    ----------
+    orbit
+        Position of its Wyckoff position in `BandRepresentations.orbits`.
+    corep
+        Position of its corepresentation in that orbit's table.
+    multiplicities
+        (n_column,) its row of E.
+    n_bands
+        Number of bands.
+    """
+
+    orbit: int
+    corep: int
+    multiplicities: IntArray
+    n_bands: int
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class BandRepresentations:
+    """All band representations of one group in one cell.
+
+    Attributes
+    ----------
+    group
+        Its table.
+    strata, tables
+        The maximal k strata, one of each star, and the corepresentations there.
+    orbits
+        The maximal Wyckoff positions.
+    rows
+        The band representations.
+    starts
+        (n_strata + 1,) first column of each stratum.
+    smith
+        Of the matrix E.
+    relations
+        Compatibility relations, found without E.
+    """
+
+    group: DoubleGroup
+    strata: tuple[Stratum, ...]
+    tables: tuple[CorepTable, ...]
+    orbits: tuple[SiteOrbit, ...]
+    rows: tuple[BandRepresentation, ...]
+    starts: IntArray
+    smith: SmithForm
+    relations: tuple[Relation, ...]
+
+    @property
+    def matrix(self) -> IntArray:
+        """(n_row, n_column) E."""
+        return np.array([row.multiplicities for row in self.rows])
+
+    @property
+    def indicator_group(self) -> tuple[int, ...]:
+        """Orders of the cyclic factors, each a divisor of the next; () for the trivial group."""
+        return tuple(d for d in self.smith.divisors if d > 1)
+
+    @property
+    def column_dimensions(self) -> IntArray:
+        """(n_column,) bands in one level of each corepresentation."""
+        return np.array([c.dimension for t in self.tables for c in t.coreps])
+
+    def indicator(self, multiplicities: IntArray) -> tuple[int, ...] | None:
+        """Class in the indicator group; None for bands that cannot be gapped everywhere.
+
+        Parameters
+        ----------
+        multiplicities
+            (n_column,) of a set of bands.
+        """
+        # python integers: the transformation may hold large ones
+        y = np.array(multiplicities.tolist(), dtype=object) @ self.smith.right
+        if any(y[self.smith.rank :]):
+            return None
+        return tuple(
+            int(value) % d for value, d in zip(y, self.smith.divisors, strict=False) if d > 1
+        )
+
+    def violated(self, multiplicities: IntArray) -> tuple[Relation, ...]:
+        """Compatibility relations that a set of bands breaks."""
+        return tuple(r for r in self.relations if r.violation(multiplicities) > 1e-3)
+
+
+def compute_band_representations(
+    cell: FloatArray,
+    rotations: IntArray,
+    translations: FloatArray,
+    *,
+    spinful: bool,
+    time_reversal: bool = True,
+) -> BandRepresentations:
+    """Band representations of a space group with time reversal, for the cell as it is.
+
+    Results are remembered within a process.
+
+    Parameters
+    ----------
+    cell
+        (3, 3) angstrom, lattice vectors as rows; primitive, conventional or skewed.
+    rotations, translations
+        (n, 3, 3) integer and (n, 3) fractional: a group modulo the translations of this cell.
+    spinful
+        Electrons with spin-orbit coupling.
+    time_reversal
+        Whether it holds.
+
+    Raises
+    ------
+    NotAGroupError
+        The operations are no group.
+    """
+    return _computed(
+        np.asarray(cell, dtype=float).tobytes(),
+        np.asarray(rotations, dtype=np.int64).tobytes(),
+        np.asarray(translations, dtype=float).tobytes(),
+        spinful,
+        time_reversal,
+    )
+
+
+@functools.lru_cache(maxsize=8)
+def _computed(
+    cell: bytes, rotations: bytes, translations: bytes, spinful: bool, time_reversal: bool
+) -> BandRepresentations:
+    group = build_double_group(
+        np.frombuffer(cell).reshape(3, 3),
+        np.frombuffer(rotations, dtype=np.int64).reshape(-1, 3, 3),
+        np.frombuffer(translations).reshape(-1, 3),
+        spinful=spinful,
+        time_reversal=time_reversal,
+    )
+    zone = zone_torus(group.k_actions)
+    strata = find_strata(zone)
+    maximal = tuple(s for s in strata if s.maximal)
+    tables = tuple(find_coreps(little_group_at(group, s.point_frac, s.stabiliser)) for s in maximal)
+    orbits = _maximal_orbits(group)
+    rows = tuple(row for i, orbit in enumerate(orbits) for row in _induce(i, orbit, tables))
+    return BandRepresentations(
+        group=group,
+        strata=maximal,
+        tables=tables,
+        orbits=orbits,
+        rows=rows,
+        starts=frozen(np.cumsum([0, *(len(t.coreps) for t in tables)])),
+        smith=smith_normal_form(_distinct([row.multiplicities for row in rows])),
+        relations=find_relations(group, zone, strata, tables),
+    )
+
+
+def _maximal_orbits(group: DoubleGroup) -> tuple[SiteOrbit, ...]:
+    """Maximal Wyckoff positions, those with the fewest sites first."""
+    torus = cell_torus(group.rotations, group.numerators)
+    orbits = [place_on_orbit(group, torus, s) for s in find_strata(torus) if s.maximal]
+    return tuple(sorted(orbits, key=lambda o: o.multiplicity))
+
+
+def _induce(
+    position: int, orbit: SiteOrbit, tables: Sequence[CorepTable]
+) -> tuple[BandRepresentation, ...]:
+    """Band representations of all corepresentations on one Wyckoff position."""
+    counts = [
+        table.count(orbit.characters(table.group.members, table.group.k_frac)) for table in tables
+    ]
+    return tuple(
+        BandRepresentation(
+            orbit=position,
+            corep=i,
+            multiplicities=frozen(row),
+            n_bands=orbit.multiplicity * corep.dimension,
+        )
+        for i, (corep, row) in enumerate(
+            zip(orbit.table.coreps, np.concatenate(counts, axis=1), strict=True)
+        )
+    )
+
+
+def _distinct(rows: Sequence[IntArray]) -> IntArray:
+    return np.unique(np.array(rows), axis=0)
