@@ -6,6 +6,7 @@ from topovet.boundary import results as boundary
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants import band_rep_results as band_reps
 from topovet.invariants import irrep_results as irreps
 from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
@@ -18,6 +19,7 @@ from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.model.plane import KPlane
 from topovet.pipeline import (
+    steps_bandreps,
     steps_boundary,
     steps_diagnosis,
     steps_intake,
@@ -103,6 +105,10 @@ STORED_TYPES = (
     irreps.IrrepContent,
     irreps.LevelIrreps,
     irreps.PointIrreps,
+    band_reps.AtomicLimit,
+    band_reps.PointColumns,
+    band_reps.BandSet,
+    band_reps.BandRepWitness,
     EigenvalueCount,
     rotations.S4Axis,
     rotations.S4Indicator,
@@ -130,6 +136,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_proof.TASKS,
         *steps_symmetry.TASKS,
         *steps_witnesses.TASKS,
+        *steps_bandreps.TASKS,
         *steps_lower.TASKS,
         *steps_boundary.TASKS,
         *steps_tipping.TASKS,

@@ -209,3 +209,9 @@ def name_magnetic_group(
         )
     )
     return "" if found is None else str(found.bns_number)
+
+
+def name_point_group(rotations: IntArray) -> str:
+    """Symbol of a point group of rotations (n, 3, 3) in fractional coordinates, e.g. "-43m"."""
+    found = _answer(lambda: spglib.get_pointgroup(np.asarray(rotations, dtype=np.intc)))
+    return "unknown" if found is None else str(found[0]).strip()

@@ -62,9 +62,18 @@ class Relation:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _Arm:
-    """One image of a maximal stratum: its point (integers), and coreps' traces of all operations
-    that fix it (0 elsewhere), (n, n_corep)."""
+class Arm:
+    """One image of a maximal stratum.
+
+    Attributes
+    ----------
+    position
+        Of the stratum.
+    point
+        (3,) integers over the denominator of the zone.
+    traces
+        (n, n_corep) of the operations that fix it, 0 elsewhere.
+    """
 
     position: int
     point: IntArray
@@ -85,11 +94,7 @@ def find_relations(
     """
     maximal = [s for s in strata if s.maximal]
     starts = np.cumsum([0, *(len(t.coreps) for t in tables)])
-    arms = [
-        arm
-        for i, (s, t) in enumerate(zip(maximal, tables, strict=True))
-        for arm in _arms(group, torus, i, s, t)
-    ]
+    arms = [arm for _, arm in arms_of(group, torus, maximal, tables)]
     return tuple(
         relation
         for flat in strata
@@ -106,13 +111,22 @@ def relation_rank(relations: Sequence[Relation]) -> int:
     return int((values > RANK_TOLERANCE).sum())
 
 
+def arms_of(
+    group: DoubleGroup, torus: Torus, maximal: Sequence[Stratum], tables: Sequence[CorepTable]
+) -> Iterator[tuple[int, Arm]]:
+    """All images of the maximal strata, with the position of each in their order."""
+    for i, (stratum, table) in enumerate(zip(maximal, tables, strict=True)):
+        for arm in _arms(group, torus, i, stratum, table):
+            yield i, arm
+
+
 def _arms(
     group: DoubleGroup, torus: Torus, position: int, stratum: Stratum, table: CorepTable
-) -> Iterator[_Arm]:
+) -> Iterator[Arm]:
     images = torus.images(stratum.point) % torus.denominator
     _, first = np.unique(images, axis=0, return_index=True)
     for g in np.sort(first):
-        yield _Arm(position, images[g], _traces_at_image(group, int(g), images[g], stratum, table))
+        yield Arm(position, images[g], _traces_at_image(group, int(g), images[g], stratum, table))
 
 
 def _traces_at_image(
@@ -139,14 +153,14 @@ def _traces_at_image(
 
 
 def _relations_on(
-    group: DoubleGroup, flat: Stratum, arms: Sequence[_Arm], starts: IntArray
+    group: DoubleGroup, flat: Stratum, arms: Sequence[Arm], starts: IntArray
 ) -> Iterator[Relation]:
     """Relations of one flat: every arm on it against the first, and the first against itself."""
     operations = flat.stabiliser[flat.stabiliser < group.n]
     on_flat = [(arm, lift) for arm in arms if (lift := flat.lift(arm.point)) is not None]
     shifts = group.translations[operations]
 
-    def value(arm: _Arm, k: FloatArray) -> ComplexArray:
+    def value(arm: Arm, k: FloatArray) -> ComplexArray:
         row = np.zeros((len(operations), int(starts[-1])), dtype=np.complex128)
         columns = slice(starts[arm.position], starts[arm.position + 1])
         row[:, columns] = arm.traces[operations] * np.exp(2j * np.pi * (shifts @ k))[:, None]

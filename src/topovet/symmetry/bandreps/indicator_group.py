@@ -30,7 +30,7 @@ from topovet.symmetry.bandreps.double_group import (
 )
 from topovet.symmetry.bandreps.induction import SiteOrbit, place_on_orbit
 from topovet.symmetry.bandreps.smith import SmithForm, smith_normal_form
-from topovet.symmetry.bandreps.strata import Stratum, cell_torus, find_strata, zone_torus
+from topovet.symmetry.bandreps.strata import Stratum, Torus, cell_torus, find_strata, zone_torus
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -75,6 +75,10 @@ class BandRepresentations:
         Of the matrix E.
     relations
         Compatibility relations, found without E.
+    zone, cell
+        What the group does to k and to places in the cell.
+    cell_strata
+        All strata of the cell, maximal or not.
     """
 
     group: DoubleGroup
@@ -85,6 +89,9 @@ class BandRepresentations:
     starts: IntArray
     smith: SmithForm
     relations: tuple[Relation, ...]
+    zone: Torus
+    cell: Torus
+    cell_strata: tuple[Stratum, ...]
 
     @property
     def matrix(self) -> IntArray:
@@ -161,10 +168,10 @@ def compute_band_representations(
 
 @functools.lru_cache(maxsize=8)
 def _computed(
-    cell: bytes, rotations: bytes, translations: bytes, spinful: bool, time_reversal: bool
+    lattice: bytes, rotations: bytes, translations: bytes, spinful: bool, time_reversal: bool
 ) -> BandRepresentations:
     group = build_double_group(
-        np.frombuffer(cell).reshape(3, 3),
+        np.frombuffer(lattice).reshape(3, 3),
         np.frombuffer(rotations, dtype=np.int64).reshape(-1, 3, 3),
         np.frombuffer(translations).reshape(-1, 3),
         spinful=spinful,
@@ -174,31 +181,40 @@ def _computed(
     strata = find_strata(zone)
     maximal = tuple(s for s in strata if s.maximal)
     tables = tuple(find_coreps(little_group_at(group, s.point_frac, s.stabiliser)) for s in maximal)
-    orbits = _maximal_orbits(group)
-    rows = tuple(row for i, orbit in enumerate(orbits) for row in _induce(i, orbit, tables))
+    cell = cell_torus(group.rotations, group.numerators)
+    cell_strata = find_strata(cell)
+    orbits = [place_on_orbit(group, cell, s) for s in cell_strata if s.maximal]
+    orbits.sort(key=lambda orbit: orbit.multiplicity)
+    rows = tuple(row for i, orbit in enumerate(orbits) for row in induce(i, orbit, tables))
     return BandRepresentations(
         group=group,
         strata=maximal,
         tables=tables,
-        orbits=orbits,
+        orbits=tuple(orbits),
         rows=rows,
         starts=frozen(np.cumsum([0, *(len(t.coreps) for t in tables)])),
         smith=smith_normal_form(_distinct([row.multiplicities for row in rows])),
         relations=find_relations(group, zone, strata, tables),
+        zone=zone,
+        cell=cell,
+        cell_strata=cell_strata,
     )
 
 
-def _maximal_orbits(group: DoubleGroup) -> tuple[SiteOrbit, ...]:
-    """Maximal Wyckoff positions, those with the fewest sites first."""
-    torus = cell_torus(group.rotations, group.numerators)
-    orbits = [place_on_orbit(group, torus, s) for s in find_strata(torus) if s.maximal]
-    return tuple(sorted(orbits, key=lambda o: o.multiplicity))
-
-
-def _induce(
+def induce(
     position: int, orbit: SiteOrbit, tables: Sequence[CorepTable]
 ) -> tuple[BandRepresentation, ...]:
-    """Band representations of all corepresentations on one Wyckoff position."""
+    """Band representations of all corepresentations on one Wyckoff position.
+
+    Parameters
+    ----------
+    position
+        What `BandRepresentation.orbit` is to say.
+    orbit
+        The Wyckoff position.
+    tables
+        Corepresentations at the k strata.
+    """
     counts = [
         table.count(orbit.characters(table.group.members, table.group.k_frac)) for table in tables
     ]

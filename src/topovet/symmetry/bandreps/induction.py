@@ -25,7 +25,7 @@ import numpy as np
 from topovet.arrays import ComplexArray, FloatArray, IntArray, frozen
 from topovet.symmetry.bandreps.corepresentations import CorepTable, find_coreps
 from topovet.symmetry.bandreps.double_group import DoubleGroup, site_group_of
-from topovet.symmetry.bandreps.strata import Stratum, Torus
+from topovet.symmetry.bandreps.strata import Stratum, Torus, generic_point
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -73,13 +73,14 @@ def place_on_orbit(group: DoubleGroup, torus: Torus, stratum: Stratum) -> SiteOr
     stratum
         One of its strata.
     """
+    torus, point = generic_point(torus, stratum)
     q = torus.denominator
-    images = torus.images(stratum.point)
+    images = torus.images(point)
     _, first = np.unique(images % q, axis=0, return_index=True)
     first = np.sort(first)
     sites = images[first]
     moved = torus.images(sites) - sites
-    stays = ~(moved % q).any(axis=2)
+    stays = np.all(moved % q == 0, axis=2)
     table = find_coreps(site_group_of(group, stratum.stabiliser))
     inner, signs = _inner_elements(group, first)
     of_element = np.zeros((len(table.coreps), group.n), dtype=np.complex128)

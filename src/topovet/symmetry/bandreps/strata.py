@@ -26,6 +26,12 @@ SPLITS = 12**3
 elementary divisors of W - 1 are for crystallographic rotations."""
 
 
+REFINEMENT = 10**9 + 7
+GENERIC_STEPS = np.array([1, 10007, 100140049])
+"""A point off all special points of a stratum lies so many of these finer steps along it: their
+integer combinations with coefficients as small as those of W - 1 do not vanish."""
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Torus:
     """A group acting on R^3/Z^3: x' = W x + w.
@@ -104,6 +110,15 @@ class _Flat:
 
     point: IntArray
     directions: IntArray
+
+
+def generic_point(torus: Torus, stratum: Stratum) -> tuple[Torus, IntArray]:
+    """A point of a stratum that no more than its stabiliser fixes, on a finer denominator."""
+    if stratum.maximal:
+        return torus, stratum.point
+    finer = Torus(torus.actions, torus.shifts * REFINEMENT, torus.denominator * REFINEMENT)
+    steps = GENERIC_STEPS[: stratum.dimension]
+    return finer, stratum.point * REFINEMENT + stratum.directions @ steps
 
 
 def cell_torus(rotations: IntArray, numerators: IntArray) -> Torus:

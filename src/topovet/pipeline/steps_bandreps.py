@@ -1,0 +1,116 @@
+"""The task on band representations of the occupied bands and of other isolated sets."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from topovet.invariants.band_rep_results import BandRepWitness
+from topovet.invariants.band_rep_witness import GroupInUse, compute_band_rep_witness
+from topovet.model.declarations import Declarations
+from topovet.pipeline.runner import Context
+from topovet.pipeline.steps_intake import BasedHamiltonian
+from topovet.pipeline.steps_physics import MeshEnergies
+from topovet.pipeline.task import NotApplicable, Task
+from topovet.spectrum.gap import UNRESOLVED_EV
+from topovet.spectrum.results import Electrons, GapSample
+from topovet.symmetry.equivalent_planes import held_within
+from topovet.symmetry.group_results import GroupTest
+from topovet.symmetry.operations import largest_closed_subset, multiplication_table
+from topovet.symmetry.operator_set import build_operators
+from topovet.symmetry.operators import WannierOperator
+from topovet.symmetry.results import SpaceGroup, TimeReversalTest
+from topovet.symmetry.spacegroup import name_group
+from topovet.units import MEV_PER_EV
+
+HELD_SHARE = 0.25
+"""Operations that hold to within this share of the smallest direct gap are used: the average over
+them moves H by half of the violation, which cannot close the gap."""
+
+
+def sort_by_band_representations(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    space_group: SpaceGroup,
+    group: GroupTest,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+    mesh: MeshEnergies,
+    gap: GapSample | None,
+) -> BandRepWitness:
+    """What the irreps of the bands say against all atomic limits of the group."""
+    based = hamiltonian_with_basis
+    if declarations.crystal.dimension != 3:
+        raise NotApplicable("layer groups are not treated")
+    if gap is None:
+        raise NotApplicable("the gap is not known")
+    limit = HELD_SHARE * MEV_PER_EV * max(gap.direct_ev, UNRESOLVED_EV)
+    if not time_reversal.present:
+        raise NotApplicable("time reversal is broken; magnetic groups are not treated")
+    operators = _operators_in_use(based, declarations, space_group, group, limit)
+    rotations = np.array([o.rotation for o in operators])
+    translations = np.array([o.translation for o in operators])
+    number, symbol = name_group(rotations, translations, declarations.crystal.cell)
+    in_use = GroupInUse(
+        operators=operators,
+        name=f"{number} ({symbol})",
+        n_structure=len(space_group.rotations),
+        time_reversal=True,
+        spinful=based.lattice.model.spinful,
+    )
+    return compute_band_rep_witness(
+        based.lattice.bloch,
+        in_use,
+        declarations.crystal,
+        electrons.filling,
+        _open_gaps(mesh, kramers=in_use.spinful),
+    )
+
+
+def _operators_in_use(
+    based: BasedHamiltonian,
+    declared: Declarations,
+    space_group: SpaceGroup,
+    group: GroupTest,
+    limit_mev: float,
+) -> tuple[WannierOperator, ...]:
+    """Operators of the largest group of operations that H has to within a limit."""
+    if based.basis is None:
+        raise NotApplicable(f"no operators can be built: {based.reason}")
+    rotations, translations = space_group.rotations, space_group.translations
+    built = build_operators(based.basis, declared.crystal, rotations, translations)
+    by_position = dict(zip(built.indices.tolist(), built.operators, strict=True))
+    held = [i for i in held_within(group, limit_mev) if i in by_position]
+    among = np.isin(np.arange(len(rotations)), held)
+    table, _ = multiplication_table(rotations, translations, np.zeros(len(rotations), dtype=bool))
+    among[np.flatnonzero(np.all(table == np.arange(len(table)), axis=1))] = True
+    badness = np.array([test.judged_mev or 0.0 for test in group.operations])
+    return tuple(by_position[i] for i in largest_closed_subset(table, among, badness).tolist())
+
+
+def _open_gaps(mesh: MeshEnergies, *, kramers: bool) -> list[int]:
+    """Numbers of lowest bands whose direct gap stays open on the mesh."""
+    energies = mesh.energies_ev.reshape(-1, mesh.energies_ev.shape[-1])
+    gaps = (energies[:, 1:] - energies[:, :-1]).min(axis=0)
+    fillings = np.flatnonzero(gaps > UNRESOLVED_EV) + 1
+    return [int(n) for n in fillings if not (kramers and n % 2)]
+
+
+TASKS = (
+    Task(
+        "band-representations",
+        "hold the bands against all atomic limits of the group",
+        sort_by_band_representations,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "space-group",
+            "group",
+            "time-reversal",
+            "electrons",
+            "mesh",
+        ),
+        wants=("gap",),
+    ),
+)
