@@ -13,7 +13,6 @@ from topovet.pipeline.steps_physics import MeshEnergies
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.gap import UNRESOLVED_EV
 from topovet.spectrum.results import Electrons, GapSample
-from topovet.symmetry.equivalent_planes import held_within
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.operations import largest_closed_subset, multiplication_table
 from topovet.symmetry.operator_set import build_operators
@@ -81,11 +80,13 @@ def _operators_in_use(
     rotations, translations = space_group.rotations, space_group.translations
     built = build_operators(based.basis, declared.crystal, rotations, translations)
     by_position = dict(zip(built.indices.tolist(), built.operators, strict=True))
-    held = [i for i in held_within(group, limit_mev) if i in by_position]
-    among = np.isin(np.arange(len(rotations)), held)
+    # at every sampled k, not on the mesh alone: maximal strata need not be mesh points
+    violations = [test.violation_mev for test in group.operations]
+    held = [v is not None and v <= limit_mev for v in violations]
+    among = np.array([h and i in by_position for i, h in enumerate(held)])
     table, _ = multiplication_table(rotations, translations, np.zeros(len(rotations), dtype=bool))
     among[np.flatnonzero(np.all(table == np.arange(len(table)), axis=1))] = True
-    badness = np.array([test.judged_mev or 0.0 for test in group.operations])
+    badness = np.array([v or 0.0 for v in violations])
     return tuple(by_position[i] for i in largest_closed_subset(table, among, badness).tolist())
 
 

@@ -7,6 +7,7 @@ from dataclasses import replace
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_rep_results import BandRepWitness
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
@@ -64,6 +65,7 @@ def collect_findings(
     s4: S4Indicator | None,
     mirror_chern: MirrorWitness | None,
     mirror_indicators: tuple[MirrorIndicator, ...] | None,
+    band_representations: BandRepWitness | None,
     lower_gaps: LowerGroups | None,
     surface: SurfaceWitness | None,
     tipping: TippingSearch | None,
@@ -95,6 +97,7 @@ def collect_findings(
         s4=s4,
         mirror=mirror_chern,
         mirror_indicators=mirror_indicators or (),
+        band_reps=band_representations,
         lower=lower_gaps,
         surface=surface,
         tipping=tipping,
@@ -171,6 +174,7 @@ SHOWN = (
     "s4",
     "mirror",
     "mirror_indicators",
+    "band_reps",
     "lower",
     "surface",
     "tipping",
@@ -205,6 +209,7 @@ IF_THERE = (
     "s4",
     "mirror-chern",
     "mirror-indicators",
+    "band-representations",
     "lower-gaps",
     "surface",
     "tipping",

@@ -11,6 +11,7 @@ import numpy as np
 from markupsafe import Markup, escape
 
 from topovet import notation
+from topovet.report import band_rep_words as band_reps
 from topovet.report import words
 from topovet.report.classes import class_words, words_of_class
 from topovet.report.diagnosis_words import AGREEMENT, ANSWERS, cause_name, sort_causes
@@ -112,6 +113,11 @@ def _environment() -> jinja2.Environment:
         "indicator_name": indicator_name,
         "indicator_note": indicator_note,
         "open_z2": open_z2,
+        "indicator_group_name": band_reps.indicator_group_name,
+        "indicator_value": band_reps.indicator_value,
+        "limit_text": band_reps.limit_text,
+        "set_words": band_reps.set_words,
+        "band_rep_reading": band_reps.reading,
         "direction": direction,
         "cause_name": cause_name,
         "map_middle": middle_text,

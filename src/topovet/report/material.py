@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_rep_results import BandRepWitness
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
@@ -114,6 +115,8 @@ class ReportMaterial:
         Mirror Chern numbers; None where no mirror was tested.
     mirror_indicators
         Mirror Chern numbers modulo n from rotation eigenvalues; empty without such axes.
+    band_reps
+        Bands held against all atomic limits; None where they were not.
     lower
         Groups of bands below lower gaps; None where they were not asked for.
     surface
@@ -152,6 +155,7 @@ class ReportMaterial:
     log_note: str = ""
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
+    band_reps: BandRepWitness | None = None
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     surface_maps: tuple[SurfaceMap, ...] = ()

@@ -8,10 +8,15 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True, slots=True)
 class Statement:
-    """What one witness says: Z2 indices, None at an index it has no opinion on."""
+    """What one witness says: Z2 indices, None at an index it has no opinion on.
+
+    One that is not independent rests on what another has read: it can contradict, but two such do
+    not agree like two.
+    """
 
     witness: str
     z2: tuple[int | None, ...]
+    independent: bool = True
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,7 +55,7 @@ def weigh(statements: Sequence[Statement]) -> Agreement:
         return Agreement("disagree", None, disputed)
     complete = all(opinions)
     z2 = tuple(next(iter(values)) for values in opinions) if complete else None
-    voices = sum(statement.z2[0] is not None for statement in statements)
+    voices = sum(statement.z2[0] is not None and statement.independent for statement in statements)
     return Agreement("agree" if voices > 1 else "one-witness", z2, ())
 
 

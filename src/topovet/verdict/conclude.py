@@ -90,6 +90,8 @@ def witness_statements(findings: Findings) -> list[Statement]:
     s4 = findings.s4
     if s4 is not None and s4.status == "ok" and s4.z2 is not None:
         statements.append(Statement("S4 eigenvalues", (s4.z2, None, None, None)))
+    if (from_levels := _band_representations(findings, statements)) is not None:
+        statements.append(from_levels)
     surface = findings.surface
     if surface is not None and surface.status == "ok" and surface.z2 is not None:
         statements.append(Statement("surface states", surface.z2))
@@ -98,6 +100,18 @@ def witness_statements(findings: Findings) -> list[Statement]:
         if any(value is not None for value in z2):
             statements.append(Statement("mirror Chern numbers", z2))
     return statements
+
+
+def _band_representations(findings: Findings, said: Sequence[Statement]) -> Statement | None:
+    """What the levels at the maximal k strata fix; parities and S4 eigenvalues are among them."""
+    levels, gap = findings.band_reps, findings.gap
+    if levels is None or levels.status != "ok" or gap is None or gap.status == "gapless":
+        return None
+    z2 = levels.occupied.z2
+    if all(value is None for value in z2):
+        return None
+    related = any(s.witness in ("parity", "S4 eigenvalues") for s in said)
+    return Statement("band representations", z2, independent=not related)
 
 
 def _speaks(witness: ParityWitness | WilsonWitness | ChernWitness | None) -> bool:

@@ -130,11 +130,30 @@ class MirrorEntry:
 
 
 @dataclass(frozen=True, slots=True)
+class BandRepresentationsEntry:
+    """The occupied bands, and other isolated sets, against all atomic limits of the group."""
+
+    status: str = "not-applicable"
+    reason: str = ""
+    group: str | None = None
+    indicator_group: tuple[int, ...] | None = None
+    indicator: tuple[int, ...] | None = None
+    classification: str | None = None
+    atomic_limits: tuple[Mapping[str, Any], ...] = ()
+    obstructed: bool | None = None
+    crossings: tuple[str, ...] = ()
+    z2_partial: tuple[int | None, ...] | None = None
+    multiplicities: tuple[Mapping[str, Any], ...] = ()
+    isolated_sets: tuple[Mapping[str, Any], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
 class WitnessesEntry:
     parity: ParityEntry
     wilson: WilsonEntry
     surface: SurfaceEntry
     mirror: MirrorEntry = field(default_factory=MirrorEntry)
+    band_representations: BandRepresentationsEntry = field(default_factory=BandRepresentationsEntry)
 
 
 @dataclass(frozen=True, slots=True)

@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 
 from topovet.boundary.results import SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_rep_results import BandRepWitness
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
@@ -67,6 +68,7 @@ class Findings:
     s4: S4Indicator | None = None
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
+    band_reps: BandRepWitness | None = None
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     tipping: TippingSearch | None = None

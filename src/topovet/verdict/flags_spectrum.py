@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from topovet.invariants.band_rep_results import NOT_GAPPED
 from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
@@ -15,6 +16,7 @@ def spectrum_flags(findings: Findings) -> Iterator[Flag]:
     yield from _filling(findings)
     yield from _fermi(findings)
     yield from _gap(findings)
+    yield from _enforced_crossing(findings)
     yield from _interpolation(findings)
     yield from _rim(findings)
 
@@ -84,6 +86,25 @@ def _gap(findings: Findings) -> Iterator[Flag]:
         "no index of the occupied bands is defined, or it is too close to tell by sampling.",
         {"direct_gap_meV": 1000 * gap.direct_ev, "k": list(gap.direct_k)},
         "Check the filling; if it is right, the compound is a semimetal or lies at a transition.",
+    )
+
+
+def _enforced_crossing(findings: Findings) -> Iterator[Flag]:
+    """Levels that cannot be connected where sampling saw a gap."""
+    levels, gap = findings.band_reps, findings.gap
+    if levels is None or gap is None or gap.status in ("gapless", "unresolved"):
+        return
+    if levels.occupied.classification != NOT_GAPPED:
+        return
+    shown = "; ".join(levels.occupied.crossings[:2])
+    yield Flag(
+        "gap-closes",
+        "error",
+        f"sampling found a direct gap of {mev(1000 * gap.direct_ev)}, but the levels at the k of "
+        f"highest symmetry cannot be connected without a crossing ({shown}).",
+        {"direct_gap_meV": 1000 * gap.direct_ev, "crossings": list(levels.occupied.crossings)},
+        "Follow the gap along the lines named; if it stays open there, an operation is not what "
+        "it is taken for: check the declared orbitals.",
     )
 
 

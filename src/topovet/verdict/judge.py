@@ -10,6 +10,7 @@ import topovet
 from topovet.diagnosis.results import Experiments
 from topovet.invariants.results import ChernWitness
 from topovet.notation import mev
+from topovet.verdict.band_reps import band_representations_entry
 from topovet.verdict.budget import error_budget, robustness_radius
 from topovet.verdict.conclude import conclude
 from topovet.verdict.diagnose import diagnose
@@ -99,6 +100,7 @@ def judge(
             wilson=_wilson(findings),
             surface=_surface(findings),
             mirror=_mirror(findings),
+            band_representations=band_representations_entry(findings),
         ),
         invariants=conclusion.invariants,
         agreement=conclusion.agreement,

@@ -1,0 +1,69 @@
+"""Band representations as the verdict's document has them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from topovet.invariants.band_rep_results import AtomicLimit, BandRepWitness, BandSet
+from topovet.verdict.document import BandRepresentationsEntry
+from topovet.verdict.findings import Findings
+
+
+def band_representations_entry(findings: Findings) -> BandRepresentationsEntry:
+    """The entry among the witnesses."""
+    found = findings.band_reps
+    if found is None:
+        reason = findings.missing.get("band-representations", "not tested")
+        return BandRepresentationsEntry("not-applicable", reason)
+    occupied = found.occupied
+    return BandRepresentationsEntry(
+        status=found.status,
+        reason=found.reason,
+        group=found.group,
+        indicator_group=found.indicator_group,
+        indicator=occupied.indicator,
+        classification=occupied.classification,
+        atomic_limits=tuple(_limit(limit) for limit in occupied.atomic_limits),
+        obstructed=occupied.obstructed,
+        crossings=occupied.crossings,
+        z2_partial=occupied.z2 if any(v is not None for v in occupied.z2) else None,
+        multiplicities=_multiplicities(found, occupied),
+        isolated_sets=tuple(_band_set(entry) for entry in found.sets),
+    )
+
+
+def _limit(limit: AtomicLimit) -> Mapping[str, Any]:
+    return {
+        "site": list(limit.site),
+        "sites_per_cell": limit.n_sites,
+        "site_symmetry": limit.site_symmetry,
+        "orbital": limit.orbital,
+        "bands": limit.n_bands,
+        "copies": limit.copies,
+        "on_atoms": limit.on_atoms,
+    }
+
+
+def _multiplicities(found: BandRepWitness, bands: BandSet) -> tuple[Mapping[str, Any], ...]:
+    """Levels that occur, point by point."""
+    return tuple(
+        {
+            "point": point.name,
+            "k": list(point.k_frac),
+            "levels": {label: n for label, n in zip(point.labels, counts, strict=True) if n},
+        }
+        for point, counts in zip(found.points, bands.multiplicities, strict=False)
+    )
+
+
+def _band_set(bands: BandSet) -> Mapping[str, Any]:
+    return {
+        "first_band": bands.first_band,
+        "bands": bands.n_bands,
+        "classification": bands.classification,
+        "reason": bands.reason,
+        "indicator": bands.indicator,
+        "z2_partial": bands.z2 if any(v is not None for v in bands.z2) else None,
+        "obstructed": bands.obstructed,
+    }
