@@ -92,6 +92,6 @@ def _limits_of(found: BandRepWitness) -> str:
             "against it: Wilson loops and mirror Chern numbers decide."
         )
     return (
-        "Topology that leaves no trace in the levels at these k is not excluded by this, e.g. a "
-        "mirror Chern number of full periods."
+        "Topology that leaves no trace in the levels at these k is not excluded by this: Wilson "
+        "loops and mirror Chern numbers are counted separately."
     )

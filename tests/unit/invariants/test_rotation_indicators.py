@@ -5,7 +5,8 @@ from collections.abc import Iterator
 import numpy as np
 import pytest
 
-from lattice_models import HARMONICS, SIGMA, LatticeModel, Terms, wilson_dirac
+from d2d_models import D2D_ROTATIONS, wilson_dirac_without_inversion
+from lattice_models import LatticeModel, wilson_dirac
 from space_group_samples import FlatBloch, atomic_basis, atomic_levels, orbit, sample_group
 from topovet.errors import NotInvariantError
 from topovet.invariants.rotation_eigenvalues import (
@@ -39,45 +40,6 @@ def _one_thread() -> Iterator[None]:
         yield
 
 
-D2D_ROTATIONS = [
-    np.eye(3, dtype=np.int64),
-    np.array([[0, 1, 0], [-1, 0, 0], [0, 0, -1]]),  # S4
-    np.array([[-1, 0, 0], [0, -1, 0], [0, 0, 1]]),
-    np.array([[0, -1, 0], [1, 0, 0], [0, 0, -1]]),
-    np.array([[0, 1, 0], [1, 0, 0], [0, 0, 1]]),  # diagonal mirrors
-    np.array([[0, -1, 0], [-1, 0, 0], [0, 0, 1]]),
-    np.array([[1, 0, 0], [0, -1, 0], [0, 0, -1]]),  # twofold axes x and y
-    np.array([[-1, 0, 0], [0, 1, 0], [0, 0, -1]]),
-]
-
-
-def _wilson_dirac_without_inversion(m: float, d_wave: float) -> LatticeModel:
-    """Wilson-Dirac with s-p hopping d_wave (cos kx - cos ky), which leaves D2d and time reversal.
-
-    On s and the p state of j = 1/2, sum_i p_i sigma_i |spin>/sqrt(3), the term is i times a spin
-    scalar: even in k and odd under inversion. The spectrum is ±sqrt(m(k)² + (|d(k)| ± g(k))²), so
-    it closes no gap where m(k) is not zero, and a small one none at all that was open.
-    """
-    model = wilson_dirac(m=m)
-    terms = Terms(8)
-    s, p = slice(0, 2), slice(2, 8)
-    axes = [{"px": 0, "py": 1, "pz": 2}[name] for name in HARMONICS[1:]]
-    block = 1j * d_wave / (2 * np.sqrt(3)) * np.concatenate([SIGMA[i] for i in axes], axis=1)
-    for r_cell, sign in (((1, 0, 0), 1), ((-1, 0, 0), 1), ((0, 1, 0), -1), ((0, -1, 0), -1)):
-        terms.add(r_cell, s, p, sign * block)
-    cells, blocks = terms.arrays()
-    return LatticeModel(
-        "wilson_dirac_d2d",
-        model.crystal,
-        model.basis,
-        np.concatenate([model.r_cells, cells]),
-        np.concatenate([model.h_r, blocks]),
-        2,
-        True,
-        model.centre,
-    )
-
-
 def _operators(model: LatticeModel) -> tuple[WannierOperator, ...]:
     unitary = [build_operator(model.basis, model.crystal, w, np.zeros(3)) for w in D2D_ROTATIONS]
     return (*unitary, *(with_time_reversal(o, model.basis) for o in unitary))
@@ -97,7 +59,7 @@ def test_strong_index_without_inversion_changes_with_the_gap(m: float, nu_0: int
     rng = np.random.default_rng(5)
     k = rng.random((400, 3))
     for d_wave in (0.0, 0.1, 0.2):
-        model = _wilson_dirac_without_inversion(m, d_wave)
+        model = wilson_dirac_without_inversion(m, d_wave)
         bloch = build_bloch_sum(build_model(model.r_cells, model.h_r, spinful=True))
         energies = np.linalg.eigvalsh(bloch.at(k))
         assert (energies[:, 2] - energies[:, 1]).min() > 0.2
@@ -109,7 +71,7 @@ def test_strong_index_without_inversion_changes_with_the_gap(m: float, nu_0: int
 
 
 def test_the_model_has_d2d_and_time_reversal_and_no_inversion() -> None:
-    model = _wilson_dirac_without_inversion(-2.0, 0.2)
+    model = wilson_dirac_without_inversion(-2.0, 0.2)
     bloch = build_bloch_sum(build_model(model.r_cells, model.h_r, spinful=True))
     k = np.array([[0.13, 0.29, 0.41]])
     h = bloch.at(k)[0]
@@ -200,7 +162,7 @@ def _positions(number: int, step: int) -> list[np.ndarray]:
 
 
 def test_the_centre_changes_kappa_but_not_its_parity() -> None:
-    model = _wilson_dirac_without_inversion(-2.0, 0.2)
+    model = wilson_dirac_without_inversion(-2.0, 0.2)
     bloch = build_bloch_sum(build_model(model.r_cells, model.h_r, spinful=True))
     kappas = set()
     for cell in np.ndindex(2, 2, 2):
@@ -239,7 +201,7 @@ def test_there_are_four_momenta_with_two_trim_at_least(number: int) -> None:
 
 
 def test_where_it_does_not_apply() -> None:
-    model = _wilson_dirac_without_inversion(-2.0, 0.2)
+    model = wilson_dirac_without_inversion(-2.0, 0.2)
     bloch = build_bloch_sum(build_model(model.r_cells, model.h_r, spinful=True))
     operators = _operators(model)
     one = compute_s4_indicator(bloch, operators[:1], model.crystal, 2, kramers=True)
@@ -255,11 +217,11 @@ def test_where_it_does_not_apply() -> None:
 
 
 def test_gapless_and_impure_states_fail_with_the_reason() -> None:
-    closed = _indicator(_wilson_dirac_without_inversion(-3.0, 0.0))
+    closed = _indicator(wilson_dirac_without_inversion(-3.0, 0.0))
     assert closed.status == "failed"
     assert "the gap at k = (0, 0, 0)" in closed.reason
     assert closed.z2 is None
-    model = _wilson_dirac_without_inversion(-2.0, 0.0)
+    model = wilson_dirac_without_inversion(-2.0, 0.0)
     h_r = np.array(model.h_r)
     home = int(np.flatnonzero(np.all(model.r_cells == 0, axis=1))[0])
     h_r[home][0, 2] += 2.0  # s up with pz up: an electric field along the axis breaks S4
