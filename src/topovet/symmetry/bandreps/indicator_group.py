@@ -108,6 +108,19 @@ class BandRepresentations:
         """(n_column,) bands in one level of each corepresentation."""
         return np.array([c.dimension for t in self.tables for c in t.coreps])
 
+    @property
+    def generators(self) -> IntArray:
+        """(n_factor, n_column) multiplicities, negative ones too, that generate the classes.
+
+        Row j of V^-1 is row j of U E divided by d_j.
+        """
+        distinct = _distinct([row.multiplicities for row in self.rows]).astype(object)
+        rows = self.smith.left @ distinct
+        divisors = self.smith.divisors
+        columns = distinct.shape[1]
+        found = [rows[j] // d for j, d in enumerate(divisors) if d > 1]
+        return np.array(found, dtype=object).reshape(-1, columns)
+
     def indicator(self, multiplicities: IntArray) -> tuple[int, ...] | None:
         """Class in the indicator group; None for bands that cannot be gapped everywhere.
 

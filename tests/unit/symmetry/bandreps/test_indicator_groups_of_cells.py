@@ -37,7 +37,7 @@ def _in_cell(
     return rows @ cell, turned, translations @ inverse
 
 
-@pytest.mark.parametrize("number", [14, 82, 122, 147, 167, 199, 214, 220, 227])
+@pytest.mark.parametrize("number", [14, 82, 122, 147, 167, 199, 227])
 def test_skewed_cell_other_origin_few_digits(number: int) -> None:
     group = sample_group(number)
     plain = compute_band_representations(
@@ -51,7 +51,7 @@ def test_skewed_cell_other_origin_few_digits(number: int) -> None:
     assert _summary(skewed) == _summary(plain)
 
 
-@pytest.mark.parametrize("number", [5, 15, 43, 82, 122, 148, 160])
+@pytest.mark.parametrize("number", [5, 15, 82, 122, 148])
 def test_conventional_cell_with_centring_translations(number: int) -> None:
     """A cell of several lattice points folds the zone; rank and group stay."""
     with warnings.catch_warnings():
@@ -74,7 +74,7 @@ def test_conventional_cell_with_centring_translations(number: int) -> None:
         assert folded.smith.rank == plain.smith.rank
 
 
-@pytest.mark.parametrize("number", [3, 13, 15, 48, 50, 68, 86, 146, 148, 201])
+@pytest.mark.parametrize("number", [3, 13, 48, 86, 146, 148, 201])
 def test_all_hall_settings_of_a_group(number: int) -> None:
     """Axes, cell choices, origins and obverse or rhombohedral axes, as the database has them."""
     groups = set()

@@ -30,34 +30,36 @@ def _of_orbitals(
 
 
 @pytest.mark.parametrize("number", GROUPS)
-def test_spin_up_and_down_on_every_maximal_position(number: int) -> None:
-    """s orbitals with both spins on a site carry tr u(g) of its site-symmetry group."""
+def test_orbitals_on_maximal_positions_and_elsewhere(number: int) -> None:
+    """s orbitals with both spins on a site carry tr u(g) of its site-symmetry group; s and p
+    orbitals on a general position are a sum of atomic limits."""
     sample = sample_group(number)
     found = compute_band_representations(
         sample.cell, sample.rotations, sample.translations, spinful=True
     )
     for i, place in enumerate(found.orbits):
-        group = place.table.group
-        spin = [np.trace(spin_rotation(w)) for w in group.cartesian]
+        spin = [np.trace(spin_rotation(w)) for w in place.table.group.cartesian]
         wanted = place.table.count(np.array(spin))
         rows = [row for row in found.rows if row.orbit == i]
         induced = sum(wanted[row.corep] * row.multiplicities for row in rows)
         sites = orbit(sample, place.sites_frac[0])
         assert len(sites) == place.multiplicity
         assert np.array_equal(induced, _of_orbitals(found, sample, sites, 0))
-
-
-@pytest.mark.parametrize("number", GROUPS)
-def test_orbitals_anywhere_are_sums_of_atomic_limits(number: int) -> None:
-    """s and p orbitals on a general position."""
-    sample = sample_group(number)
-    found = compute_band_representations(
-        sample.cell, sample.rotations, sample.translations, spinful=True
-    )
     sites = orbit(sample, [0.137, 0.229, 0.411])
     vector = _of_orbitals(found, sample, sites, 1 if len(sites) < 16 else 0)
     assert found.indicator(vector) == (0,) * len(found.indicator_group)
     assert not found.violated(vector)
+
+
+@pytest.mark.parametrize("number", [2, 81, 147, 174, 216])
+def test_generators_have_unit_indicators_and_obey_compatibility(number: int) -> None:
+    sample = sample_group(number)
+    found = compute_band_representations(
+        sample.cell, sample.rotations, sample.translations, spinful=True
+    )
+    units = np.eye(len(found.indicator_group), dtype=int).tolist()
+    assert [list(found.indicator(g) or ()) for g in found.generators] == units
+    assert not any(found.violated(g.astype(float)) for g in found.generators)
 
 
 def test_bands_with_one_level_exchanged_cannot_be_gapped() -> None:

@@ -1,0 +1,74 @@
+"""Band representations in the cross-examination."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import pytest
+
+import invented_band_reps as band_reps
+from invented_findings import SOUND, changed
+from topovet.verdict.agreement import Statement, weigh
+from topovet.verdict.band_reps import band_representations_entry
+from topovet.verdict.conclude import witness_statements
+from topovet.verdict.raised import raise_flags
+
+STRONG = band_reps.STRONG
+
+
+def test_eigenvalues_counted_twice_are_one_voice() -> None:
+    strong = (1, 0, 0, 0)
+    voices = [Statement("parity", strong), Statement("levels", strong, independent=False)]
+    assert weigh(voices).word == "one-witness"
+    other = Statement("levels", (0, None, None, None), independent=False)
+    assert weigh([voices[0], other]).word == "disagree"
+
+
+def test_a_statement_beside_parities_is_not_independent_and_can_contradict() -> None:
+    (parity, levels) = witness_statements(changed(band_reps=STRONG))
+    assert (parity.independent, levels.independent) == (True, False)
+    assert levels.z2 == (1, 0, 0, 0)
+    wrong = replace(band_reps.STRONG_SET, z2=(0, None, None, None))
+    codes = [f.code for f in raise_flags(changed(band_reps=band_reps.of(wrong)))]
+    assert "witnesses-disagree" in codes
+
+
+def test_without_parities_it_speaks_for_itself() -> None:
+    (levels,) = witness_statements(changed(band_reps=STRONG, parity=None))
+    assert (levels.witness, levels.independent) == ("band representations", True)
+
+
+@pytest.mark.parametrize("bands", [band_reps.CROSSING_SET, band_reps.UNREAD_SET])
+def test_levels_that_are_not_those_of_gapped_bands_say_nothing_of_z2(
+    bands: band_reps.BandSet,
+) -> None:
+    statements = witness_statements(changed(band_reps=band_reps.of(bands)))
+    assert [s.witness for s in statements] == ["parity"]
+
+
+def test_where_the_gap_closes_nothing_is_stated() -> None:
+    findings = changed(band_reps=STRONG, gap={"status": "gapless"})
+    assert "band representations" not in [s.witness for s in witness_statements(findings)]
+
+
+def test_levels_that_cannot_be_connected_contradict_a_sampled_gap() -> None:
+    flags = raise_flags(changed(band_reps=band_reps.of(band_reps.CROSSING_SET)))
+    (flag,) = [f for f in flags if f.code == "gap-closes"]
+    assert flag.severity == "error"
+    assert "cannot be connected" in flag.summary
+    assert not [f for f in raise_flags(changed(band_reps=STRONG)) if f.code == "gap-closes"]
+
+
+def test_entry_of_the_document() -> None:
+    entry = band_representations_entry(changed(band_reps=band_reps.of(band_reps.OBSTRUCTED_SET)))
+    assert (entry.status, entry.classification, entry.obstructed) == (
+        "ok",
+        "sum of atomic limits",
+        True,
+    )
+    assert entry.multiplicities[0]["levels"] == {"Γ1ab+": 2, "Γ2−": 1}
+    assert entry.atomic_limits[0]["on_atoms"] is False
+    assert [s["bands"] for s in entry.isolated_sets] == [4, 2]
+    nothing = replace(SOUND, missing={"band-representations": "layer groups are not treated"})
+    entry = band_representations_entry(nothing)
+    assert (entry.status, entry.reason) == ("not-applicable", "layer groups are not treated")
