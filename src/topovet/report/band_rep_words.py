@@ -49,6 +49,17 @@ def set_words(bands: BandSet) -> str:
     return bands.classification
 
 
+def witness_note(found: BandRepWitness) -> str:
+    """What stands beside the witness in the table of all of them."""
+    if found.status != "ok":
+        return found.reason
+    if not found.indicator_group and found.occupied.classification == ATOMIC:
+        return f"{set_words(found.occupied)}; levels show no stable topology in this group"
+    shared = found.occupied.z2[0] is not None
+    rests = "; rests on the same eigenvalues as parities and S4 where these speak"
+    return set_words(found.occupied) + (rests if shared else "")
+
+
 def reading(found: BandRepWitness) -> tuple[str, ...]:
     """What the finding on the occupied bands says, and what it cannot say; one sentence each."""
     bands = found.occupied

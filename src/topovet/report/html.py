@@ -118,6 +118,7 @@ def _environment() -> jinja2.Environment:
         "limit_text": band_reps.limit_text,
         "set_words": band_reps.set_words,
         "band_rep_reading": band_reps.reading,
+        "band_rep_note": band_reps.witness_note,
         "direction": direction,
         "cause_name": cause_name,
         "map_middle": middle_text,

@@ -17,6 +17,7 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
+from topovet.invariants.band_rep_results import FRAGILE, STABLE
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorPlane
 from topovet.notation import nonzero_by_plane
@@ -118,8 +119,27 @@ def class_without_z2(
             "not tell which",
             *_tested(findings),
         )
+    if (levels := findings.band_reps) is not None and levels.occupied.classification == STABLE:
+        return "higher-order", (
+            "all Z2 indices and the named indicators are 0, but no sum or difference of atomic "
+            f"limits has the levels of the occupied bands: {_what_is_left(findings)}; levels alone "
+            "do not tell which",
+            *_tested(findings),
+        )
     seen = "all Z2 indices are 0" if not indicators else "all Z2 indices and indicators are 0"
-    return "trivial", (seen, *_tested(findings))
+    return "trivial", (seen, *_levels(findings), *_tested(findings))
+
+
+def _levels(findings: Findings) -> tuple[str, ...]:
+    """What the levels say of a trivial phase that is not plain."""
+    levels = findings.band_reps
+    if levels is None or levels.status != "ok":
+        return ()
+    if levels.occupied.classification == FRAGILE:
+        return ("the levels are those of fragile topology, which further bands can undo",)
+    if levels.occupied.obstructed:
+        return ("the levels are those of orbitals between the atoms: an obstructed atomic limit",)
+    return ()
 
 
 MIRROR_NAMES = ("z3m", "z4m", "z6m")

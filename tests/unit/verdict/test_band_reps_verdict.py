@@ -11,6 +11,7 @@ from invented_findings import SOUND, changed
 from topovet.verdict.agreement import Statement, weigh
 from topovet.verdict.band_reps import band_representations_entry
 from topovet.verdict.conclude import witness_statements
+from topovet.verdict.crystalline import class_without_z2
 from topovet.verdict.raised import raise_flags
 
 STRONG = band_reps.STRONG
@@ -72,3 +73,24 @@ def test_entry_of_the_document() -> None:
     nothing = replace(SOUND, missing={"band-representations": "layer groups are not treated"})
     entry = band_representations_entry(nothing)
     assert (entry.status, entry.reason) == ("not-applicable", "layer groups are not treated")
+
+
+def _class(bands: band_reps.BandSet) -> tuple[str, str]:
+    findings = changed(parity=None, band_reps=band_reps.of(bands))
+    class_, grounds = class_without_z2(findings, {})
+    return class_, "; ".join(grounds)
+
+
+def test_levels_of_no_atomic_limit_are_not_called_trivial() -> None:
+    """Also where no named formula shows them."""
+    class_, grounds = _class(replace(band_reps.STRONG_SET, z2=(0, 0, 0, 0)))
+    assert class_ == "higher-order"
+    assert "no sum or difference of atomic limits" in grounds
+
+
+def test_trivial_is_said_with_what_the_levels_add() -> None:
+    assert "obstructed atomic limit" in _class(band_reps.OBSTRUCTED_SET)[1]
+    assert "fragile" in _class(band_reps.FRAGILE_SET)[1]
+    class_, grounds = _class(band_reps.ATOMIC_SET)
+    assert class_ == "trivial"
+    assert "levels" not in grounds
