@@ -58,6 +58,7 @@ STRONG = BandRepWitness(
     status="ok",
     reason="",
     group="166 (R-3m)",
+    spinful=True,
     n_operations=12,
     n_structure=12,
     indicator_group=(2, 4),

@@ -42,7 +42,7 @@ from topovet.symmetry.irreps import compute_irreps
 from topovet.symmetry.operators import SITE_TOLERANCE_ANG
 from topovet.symmetry.spacegroup import name_point_group
 
-SEARCH_SECONDS = 5.0
+SEARCH_SECONDS = 1.0
 """Time for one search for non-negative combinations; they take milliseconds."""
 
 INFEASIBLE = 2

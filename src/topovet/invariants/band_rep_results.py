@@ -119,6 +119,8 @@ class BandRepWitness:
         Why it is not "ok"; empty otherwise.
     group
         Number and symbol of the group that was used, e.g. "216 (F-43m)".
+    spinful
+        Whether the levels are those of electrons with spin.
     n_operations, n_structure
         Operations in it, and in that of the structure.
     indicator_group
@@ -136,6 +138,7 @@ class BandRepWitness:
     status: str
     reason: str
     group: str
+    spinful: bool
     n_operations: int
     n_structure: int
     indicator_group: tuple[int, ...]

@@ -91,6 +91,7 @@ def compute_band_rep_witness(
         status="failed" if failed else "ok",
         reason=occupied.reason if failed else "",
         group=group.name,
+        spinful=group.spinful,
         n_operations=len(group.operators),
         n_structure=group.n_structure,
         indicator_group=found.indicator_group,

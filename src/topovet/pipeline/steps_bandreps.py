@@ -26,6 +26,11 @@ HELD_SHARE = 0.25
 them moves H by half of the violation, which cannot close the gap."""
 
 
+MOST_OPERATIONS = 192
+"""Those of a cubic group in a cell of four lattice points. A larger supercell folds the zone, and
+the time grows with the cube."""
+
+
 def sort_by_band_representations(
     *,
     context: Context,
@@ -44,6 +49,11 @@ def sort_by_band_representations(
         raise NotApplicable("layer groups are not treated")
     if gap is None:
         raise NotApplicable("the gap is not known")
+    if len(space_group.rotations) > MOST_OPERATIONS:
+        raise NotApplicable(
+            f"the cell repeats a smaller one: {len(space_group.rotations)} operations, "
+            f"{MOST_OPERATIONS} at most"
+        )
     limit = HELD_SHARE * MEV_PER_EV * max(gap.direct_ev, UNRESOLVED_EV)
     if not time_reversal.present:
         raise NotApplicable("time reversal is broken; magnetic groups are not treated")

@@ -63,6 +63,13 @@ def witness_note(found: BandRepWitness) -> str:
 def reading(found: BandRepWitness) -> tuple[str, ...]:
     """What the finding on the occupied bands says, and what it cannot say; one sentence each."""
     bands = found.occupied
+    if bands.classification == STABLE and not found.spinful:
+        return (
+            "No sum or difference of atomic limits has the levels of these bands.",
+            "Without spin and with time reversal that enforces nodes at k of low symmetry (Song, "
+            "Zhang and Fang, Phys. Rev. X 8, 031069 (2018), from memory): a gap that sampling "
+            "shows is then not to be believed.",
+        )
     if bands.classification == STABLE:
         return (
             "No sum or difference of atomic limits has the levels of the occupied bands: while "

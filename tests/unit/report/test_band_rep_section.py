@@ -60,3 +60,10 @@ def test_words() -> None:
     )
     trivial = replace(band_reps.of(band_reps.ATOMIC_SET), indicator_group=())
     assert "cannot show any stable topology" in " ".join(reading(trivial))
+
+
+def test_without_spin_an_indicator_means_nodes() -> None:
+    found = replace(band_reps.STRONG, spinful=False)
+    text = " ".join(reading(found))
+    assert "enforces nodes" in text
+    assert "localised" not in text

@@ -19,6 +19,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.arrays import FloatArray, IntArray, frozen
+from topovet.errors import TopovetError
 from topovet.symmetry.bandreps.smith import small_smith
 
 SPLITS = 12**3
@@ -30,6 +31,10 @@ REFINEMENT = 10**9 + 7
 GENERIC_STEPS = np.array([1, 10007, 100140049])
 """A point off all special points of a stratum lies so many of these finer steps along it: their
 integer combinations with coefficients as small as those of W - 1 do not vanish."""
+
+
+class StrataError(TopovetError):
+    """Special positions that do not fit the common denominator: no crystallographic group."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -190,7 +195,8 @@ def _solutions(flat: _Flat, slope: IntArray, offset: IntArray, q: int) -> Iterat
         y = np.zeros(slope.shape[1], dtype=np.int64)
         for i, (d, step) in enumerate(zip(form.divisors, steps, strict=True)):
             value = q * step - int(rest[i])
-            assert value % d == 0, "the common denominator is too small"
+            if value % d:
+                raise StrataError("the group has special positions with uncommon denominators")
             y[i] = value // d
         yield _Flat((flat.point + flat.directions @ (right @ y)) % q, free)
 
