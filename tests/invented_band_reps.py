@@ -13,6 +13,7 @@ from topovet.invariants.band_rep_results import (
     AtomicLimit,
     BandRepWitness,
     BandSet,
+    LineLevels,
     PointColumns,
 )
 
@@ -68,6 +69,10 @@ STRONG = BandRepWitness(
         PointColumns("K", (1 / 3, 1 / 3, 0.0), 1, ("K1",), (2,)),
     ),
     occupied=STRONG_SET,
+    lines=(
+        LineLevels("Γ", "K", (0.0, 0.0, 0.0), (1 / 3, 1 / 3, 0.0), "mm2", ("2",), (3,)),
+        LineLevels("Γ", "Γ", (0.0, 0.0, 0.0), (0.0, 0.0, 1.0), "-3", ("1a", "1b"), (4, 2)),
+    ),
     sets=(replace(ATOMIC_SET, n_bands=4), replace(FRAGILE_SET, first_band=4, n_bands=2)),
 )
 

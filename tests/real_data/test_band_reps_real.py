@@ -37,6 +37,11 @@ def test_silicon_is_bonds_between_atoms() -> None:
     found = _witness("Si")
     assert found.occupied.classification == ATOMIC
     assert found.occupied.obstructed is True
+    # Gamma6+, Gamma7+ and Gamma8+ run into Lambda6 three times and Lambda4,5 once (Elliott, Phys.
+    # Rev. 96, 280 (1954), from memory), and into either kind of Delta twice
+    lines = {(x.start, x.end, x.symmetry): sorted(x.counts) for x in found.lines}
+    assert lines["Γ", "L", "3m"] == [1, 3]
+    assert lines["Γ", "X", "4mm"] == [2, 2]
     (bonds,) = found.occupied.atomic_limits
     assert (bonds.n_sites, bonds.site_symmetry, bonds.n_bands) == (4, "-3m", 8)
     crystal = operated("Si").crystal

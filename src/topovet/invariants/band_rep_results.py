@@ -108,6 +108,31 @@ class BandSet:
 
 
 @dataclass(frozen=True, slots=True)
+class LineLevels:
+    """Levels of the occupied bands on a line of symmetry between two maximal strata.
+
+    Attributes
+    ----------
+    start, end
+        Names of the two.
+    k_start, k_end
+        (3,) fractional, the ends of a straight line.
+    symmetry
+        Point group of the line, e.g. "3m".
+    levels, counts
+        Labels of its levels and how often each occurs, all along the line.
+    """
+
+    start: str
+    end: str
+    k_start: Point3
+    k_end: Point3
+    symmetry: str
+    levels: tuple[str, ...]
+    counts: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
 class BandRepWitness:
     """Band representations as a witness of the occupied bands, and of the other isolated sets.
 
@@ -131,6 +156,9 @@ class BandRepWitness:
         The maximal k strata.
     occupied
         The occupied bands.
+    lines
+        Levels of the occupied bands on the lines that connect the points; empty where they cannot
+        be connected or no line has more than the identity.
     sets
         Sets of bands between gaps, lowest first; empty where only the occupied ones are isolated.
     """
@@ -145,4 +173,5 @@ class BandRepWitness:
     n_band_representations: int
     points: tuple[PointColumns, ...]
     occupied: BandSet
+    lines: tuple[LineLevels, ...] = ()
     sets: tuple[BandSet, ...] = ()

@@ -11,6 +11,7 @@ import numpy as np
 from topovet.arrays import IntArray
 from topovet.invariants.band_rep_class import Classifier
 from topovet.invariants.band_rep_levels import Levels, read_levels
+from topovet.invariants.band_rep_lines import connect_levels
 from topovet.invariants.band_rep_results import NOT_GAPPED, UNRESOLVED, BandRepWitness, BandSet
 from topovet.invariants.band_rep_z2 import NOTHING, ContradictionError, z2_from_levels
 from topovet.model.crystal import Crystal
@@ -87,6 +88,8 @@ def compute_band_rep_witness(
     kept = [n for n in edges if n == filling or judge.stays_open(n)]
     sets = [judge.band_set(a, b) for a, b in itertools.pairwise([0, *kept])]
     failed = occupied.classification == UNRESOLVED
+    vector = levels.readings[filling].vector
+    gapped = occupied.classification != NOT_GAPPED
     return BandRepWitness(
         status="failed" if failed else "ok",
         reason=occupied.reason if failed else "",
@@ -98,6 +101,7 @@ def compute_band_rep_witness(
         n_band_representations=len(found.rows),
         points=levels.points,
         occupied=occupied,
+        lines=connect_levels(found, levels.points, vector) if vector is not None and gapped else (),
         sets=tuple(sets) if len(sets) > 1 else (),
     )
 

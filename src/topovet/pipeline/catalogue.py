@@ -108,6 +108,7 @@ STORED_TYPES = (
     band_reps.AtomicLimit,
     band_reps.PointColumns,
     band_reps.BandSet,
+    band_reps.LineLevels,
     band_reps.BandRepWitness,
     EigenvalueCount,
     rotations.S4Axis,

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from topovet.invariants.band_rep_results import AtomicLimit, BandRepWitness, BandSet
+from topovet.invariants.band_rep_results import AtomicLimit, BandRepWitness, BandSet, LineLevels
 from topovet.verdict.document import BandRepresentationsEntry
 from topovet.verdict.findings import Findings
 
@@ -29,6 +29,7 @@ def band_representations_entry(findings: Findings) -> BandRepresentationsEntry:
         crossings=occupied.crossings,
         z2_partial=occupied.z2 if any(v is not None for v in occupied.z2) else None,
         multiplicities=_multiplicities(found, occupied),
+        lines=tuple(_line(line) for line in found.lines),
         isolated_sets=tuple(_band_set(entry) for entry in found.sets),
     )
 
@@ -55,6 +56,17 @@ def _multiplicities(found: BandRepWitness, bands: BandSet) -> tuple[Mapping[str,
         }
         for point, counts in zip(found.points, bands.multiplicities, strict=False)
     )
+
+
+def _line(line: LineLevels) -> Mapping[str, Any]:
+    return {
+        "from": line.start,
+        "to": line.end,
+        "k_from": list(line.k_start),
+        "k_to": list(line.k_end),
+        "symmetry": line.symmetry,
+        "levels": dict(zip(line.levels, line.counts, strict=True)),
+    }
 
 
 def _band_set(bands: BandSet) -> Mapping[str, Any]:

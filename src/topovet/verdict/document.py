@@ -144,6 +144,7 @@ class BandRepresentationsEntry:
     crossings: tuple[str, ...] = ()
     z2_partial: tuple[int | None, ...] | None = None
     multiplicities: tuple[Mapping[str, Any], ...] = ()
+    lines: tuple[Mapping[str, Any], ...] = ()
     isolated_sets: tuple[Mapping[str, Any], ...] = ()
 
 

@@ -40,7 +40,16 @@ def test_each_class_is_read_in_plain_words(bands: BandSet, said: str, not_said: 
 def test_tables_of_levels_and_of_isolated_sets() -> None:
     section = _section(band_reps.STRONG_SET)
     assert "stable" in section
-    for text in ("Z₂ × Z₄", "1 × Γ2−", "3 × K1", "and the line through it", "1–4", "5–6"):
+    for text in (
+        "Z₂ × Z₄",
+        "1 × Γ2−",
+        "3 × K1",
+        "and the line through it",
+        "Γ – K",
+        "4 × 1a",
+        "1–4",
+        "5–6",
+    ):
         assert text in section
     assert "(highest filled)" in section
 

@@ -69,6 +69,7 @@ def test_entry_of_the_document() -> None:
     )
     assert entry.multiplicities[0]["levels"] == {"Γ1ab+": 2, "Γ2−": 1}
     assert entry.atomic_limits[0]["on_atoms"] is False
+    assert entry.lines[1]["levels"] == {"1a": 4, "1b": 2}
     assert [s["bands"] for s in entry.isolated_sets] == [4, 2]
     nothing = replace(SOUND, missing={"band-representations": "layer groups are not treated"})
     entry = band_representations_entry(nothing)

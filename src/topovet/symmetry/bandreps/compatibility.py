@@ -43,8 +43,12 @@ class Relation:
         Positions of the two maximal strata; equal for a stratum and one of its own images.
     k_start, k_end
         (3,) fractional, with a straight line between them on the flat.
+    dimension
+        Of the flat: 1 for a line, 2 for a plane, 3 for all k.
+    fixing
+        All operations that fix the flat, time reversal included.
     operations
-        (n_h,) the unitary operations that fix the flat.
+        (n_h,) the unitary ones among them.
     coefficients
         (n_h, n_column) on the vector of multiplicities: trace at the end minus trace at the start.
     """
@@ -53,6 +57,8 @@ class Relation:
     end: int
     k_start: FloatArray
     k_end: FloatArray
+    dimension: int
+    fixing: IntArray
     operations: IntArray
     coefficients: ComplexArray
 
@@ -178,6 +184,8 @@ def _relations_on(
                 end=arm.position,
                 k_start=frozen(np.asarray(k_first)),
                 k_end=frozen(np.asarray(k)),
+                dimension=flat.dimension,
+                fixing=flat.stabiliser,
                 operations=operations,
                 coefficients=frozen(difference),
             )
