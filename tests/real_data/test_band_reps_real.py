@@ -49,9 +49,11 @@ def test_silicon_is_bonds_between_atoms() -> None:
     assert np.abs(halves - np.round(halves)).max() < 1e-6
 
 
-def test_cadmium_telluride_has_s_and_p_shells_of_its_atoms() -> None:
+def test_cadmium_telluride_has_the_p_shell_of_tellurium() -> None:
     """F-43m has no inversion; S4 says nu0 = 0, as an ionic semiconductor should have it."""
     found = _witness("CdTe")
     assert found.indicator_group == (2,)
     assert found.occupied.z2 == (0, None, None, None)
     assert found.occupied.obstructed is False
+    sites = {limit.site for limit in found.occupied.atomic_limits}
+    assert sites == {(0.25, 0.25, 0.25)}  # j = 1/2 and 3/2 of the p shell of tellurium

@@ -15,7 +15,7 @@ Po, Watanabe, Vishwanath, Phys. Rev. Lett. 121, 126402 (2018), doi:10.1103/PhysR
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.optimize import Bounds, LinearConstraint, milp
@@ -121,16 +121,27 @@ class Classifier:
             return Classified(NOT_GAPPED, reason, None, crossings=crossings[:MOST_CROSSINGS])
         if any(indicator):
             return Classified(STABLE, "", indicator)
-        on_atoms = self._search(self._atoms, vector) if self._atoms.rows else None
+        on_atoms = self._search_simply(self._atoms, vector) if self._atoms.rows else None
         if isinstance(on_atoms, tuple):
             return Classified(ATOMIC, "", indicator, on_atoms, obstructed=False)
-        anywhere = self._search(self._all, vector)
+        anywhere = self._search_simply(self._all, vector)
         if anywhere is None:
             return Classified(FRAGILE, "", indicator)
         if isinstance(anywhere, str):
             return Classified(UNRESOLVED, anywhere, indicator)
         settled = bool(self._atoms.rows) and on_atoms is None
         return Classified(ATOMIC, "", indicator, anywhere, obstructed=True if settled else None)
+
+    def _search_simply(
+        self, limits: Limits, vector: IntArray
+    ) -> tuple[AtomicLimit, ...] | str | None:
+        """As `_search`, with orbitals of a single position where those of one will do."""
+        for position in range(len(limits.orbits)):
+            rows = tuple(row for row in limits.rows if row.orbit == position)
+            found = self._search(replace(limits, rows=rows), vector)
+            if isinstance(found, tuple):
+                return found
+        return self._search(limits, vector)
 
     def _search(self, limits: Limits, vector: IntArray) -> tuple[AtomicLimit, ...] | str | None:
         """A sum of band representations; None if there is none; a sentence if not settled."""
