@@ -21,7 +21,7 @@ import numpy as np
 from scipy.optimize import Bounds, LinearConstraint, milp
 
 from topovet.arrays import FloatArray, IntArray
-from topovet.invariants.band_rep_levels import corep_labels
+from topovet.invariants.band_rep_levels import corep_labels, names_at
 from topovet.invariants.band_rep_results import (
     ATOMIC,
     FRAGILE,
@@ -171,7 +171,7 @@ class Classifier:
 
 def _describe(limits: Limits, row: BandRepresentation, copies: int) -> AtomicLimit:
     orbit = limits.orbits[row.orbit]
-    names = name_irreps(orbit.table.group, orbit.table.irreps, "")
+    names = names_at(orbit.table, "")
     x, y, z = (float(c) for c in limits.places[row.orbit])
     return AtomicLimit(
         site=(x, y, z),

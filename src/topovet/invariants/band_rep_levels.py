@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -80,7 +81,7 @@ def read_levels(
     for stratum, table in zip(found.strata, found.tables, strict=True):
         k = table.group.k_frac
         name = _name_of(special, k.tolist())
-        names = name_irreps(table.group, table.irreps, name)
+        names = names_at(table, name)
         points.append(_columns(table, names, name, stratum.dimension))
         parts.append(_read_point(table, names, name, bloch, operators, fillings))
     readings = {n: _join([part[n] for part in parts]) for n in fillings}
@@ -90,6 +91,12 @@ def read_levels(
 def _name_of(special: Sequence[SpecialPoint], k: Sequence[float]) -> str:
     named = (s.name for s in special if any(same_point(np.array(k), arm) for arm in s.star))
     return next(named, k_text(k))
+
+
+@functools.lru_cache(maxsize=128)
+def names_at(table: CorepTable, point: str) -> tuple[IrrepName, ...]:
+    """Names of the irreps of a group; remembered, since a group is met again and again."""
+    return name_irreps(table.group, table.irreps, point)
 
 
 def corep_labels(table: CorepTable, names: Sequence[IrrepName]) -> tuple[str, ...]:

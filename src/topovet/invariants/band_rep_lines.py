@@ -2,18 +2,18 @@
 
 from __future__ import annotations
 
+import functools
 from collections.abc import Sequence
 
 import numpy as np
 
 from topovet.arrays import IntArray
-from topovet.invariants.band_rep_levels import corep_labels
+from topovet.invariants.band_rep_levels import corep_labels, names_at
 from topovet.invariants.band_rep_results import LineLevels, PointColumns
 from topovet.symmetry.bandreps.compatibility import Relation
-from topovet.symmetry.bandreps.corepresentations import find_coreps
+from topovet.symmetry.bandreps.corepresentations import CorepTable, find_coreps
 from topovet.symmetry.bandreps.double_group import little_group_at
 from topovet.symmetry.bandreps.indicator_group import BandRepresentations
-from topovet.symmetry.irrep_names import name_irreps
 from topovet.symmetry.spacegroup import name_point_group
 
 
@@ -41,6 +41,13 @@ def connect_levels(
     return tuple(sorted(kinds.values(), key=lambda c: (c.start != "Γ", c.start, c.end)))
 
 
+@functools.lru_cache(maxsize=64)
+def _table_on(found: BandRepresentations, relation: Relation) -> CorepTable:
+    """Corepresentations in the middle of a line."""
+    k = (relation.k_start + relation.k_end) / 2
+    return find_coreps(little_group_at(found.group, k, relation.fixing))
+
+
 def _levels_on(
     found: BandRepresentations,
     points: Sequence[PointColumns],
@@ -48,14 +55,13 @@ def _levels_on(
     multiplicities: IntArray,
 ) -> LineLevels:
     """The traces at the start, moved to the middle of the line, say what runs along it."""
-    k = (relation.k_start + relation.k_end) / 2
-    group = little_group_at(found.group, k, relation.fixing)
-    table = find_coreps(group)
+    table = _table_on(found, relation)
+    group = table.group
     columns = slice(found.starts[relation.start], found.starts[relation.start + 1])
     at_start = -relation.coefficients[:, columns] @ multiplicities[columns]
-    phases = np.exp(-2j * np.pi * (found.group.translations[group.members] @ k))
+    phases = np.exp(-2j * np.pi * (found.group.translations[group.members] @ group.k_frac))
     counts = table.count(at_start * phases)
-    labels = corep_labels(table, name_irreps(group, table.irreps, ""))
+    labels = corep_labels(table, names_at(table, ""))
     occurring = np.flatnonzero(counts)
     (x, y, z), (u, v, w) = relation.k_start.tolist(), relation.k_end.tolist()
     return LineLevels(

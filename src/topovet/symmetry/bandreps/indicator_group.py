@@ -179,7 +179,7 @@ def compute_band_representations(
     )
 
 
-@functools.lru_cache(maxsize=8)
+@functools.lru_cache(maxsize=16)
 def _computed(
     lattice: bytes, rotations: bytes, translations: bytes, spinful: bool, time_reversal: bool
 ) -> BandRepresentations:

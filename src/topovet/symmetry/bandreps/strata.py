@@ -12,6 +12,7 @@ A fixed set A z + b in Z^3 is solved by the Smith normal form U A V = D, z = V (
 
 from __future__ import annotations
 
+import functools
 import itertools
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -141,7 +142,21 @@ def zone_torus(k_actions: IntArray) -> Torus:
 
 
 def find_strata(torus: Torus) -> tuple[Stratum, ...]:
-    """All strata, one of each orbit, those of the largest dimension first."""
+    """All strata, one of each orbit, those of the largest dimension first.
+
+    Remembered within a process: they do not depend on lengths and angles of the cell.
+    """
+    actions, shifts = (np.asarray(a, dtype=np.int64) for a in (torus.actions, torus.shifts))
+    return _found_strata(actions.tobytes(), shifts.tobytes(), torus.denominator)
+
+
+@functools.lru_cache(maxsize=64)
+def _found_strata(actions: bytes, shifts: bytes, denominator: int) -> tuple[Stratum, ...]:
+    torus = Torus(
+        np.frombuffer(actions, dtype=np.int64).reshape(-1, 3, 3),
+        np.frombuffer(shifts, dtype=np.int64).reshape(-1, 3),
+        denominator,
+    )
     whole = _Flat(np.zeros(3, dtype=np.int64), np.eye(3, dtype=np.int64))
     waiting, seen, found = [whole], {_key(whole, torus.denominator)}, []
     while waiting:
