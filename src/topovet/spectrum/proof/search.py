@@ -66,6 +66,7 @@ def search(
     smallest_frac: Callable[[float], float],
     improve: Improve,
     max_solves: int,
+    start: Boxes | None = None,
 ) -> Found:
     """Bound an objective over a region.
 
@@ -88,10 +89,13 @@ def search(
         Called when a centre has a lower value than any before.
     max_solves
         Eigenvalue problems; the last batch may exceed it.
+    start
+        Boxes to begin with, such as those that an earlier search left open; the whole region if
+        None.
     """
     value, k_frac = attained
-    waiting = whole(expansion.n_axes)
-    settled, left = [waiting.only(np.zeros(1, dtype=bool))], list[Boxes]()
+    waiting = whole(expansion.n_axes) if start is None else start
+    settled, left = [waiting.only(np.zeros(len(waiting), dtype=bool))], list[Boxes]()
     remainders = _Remainders(expansion)
     n_solves = 0
     while len(waiting) and n_solves < max_solves and worth_while(value):
