@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -73,19 +72,16 @@ def double_weyl(kz: float) -> TightBindingModel:
     )
 
 
-def on_axis_dirac(
-    *, node: float = 0.2, bz: float = 0.5, m: float = 1.0, order: int = 4
-) -> LatticeModel:
+def on_axis_dirac(*, node: float = 0.2, bz: float = 0.5) -> LatticeModel:
     """Dirac points at (0, 0, ±node) on a fourfold axis; s and p states, filling 2.
 
-    Planes of `bhz` with d3 = m_plane(k_x, k_y) + 2 bz (cos a_3 - cos 2 pi node) - m: on the axis
+    Planes of `bhz` with m = 2 bz (cos a_3 - cos 2 pi node), zero at the nodes: on the axis
     the s doublet (j_z = ±1/2) and the p doublet (j_z = ±3/2) cross at a_3 = ±2 pi node, with
     different C4 eigenvalues. Velocities a (in-plane hopping times its lattice constant) and
     2 bz sin(2 pi node) c. This is the four-band model of Wang, Weng, Wu, Dai, Fang, PRB 88, 125427
     (2013), doi:10.1103/PhysRevB.88.125427 (Cd3As2), the tetragonal twin of Na3Bi's, Wang et al.,
     PRB 85, 195320 (2012), doi:10.1103/PhysRevB.85.195320.
     """
-    del order
     plane = bhz(m=0.0, a=1.0, b=1.0)
     s, p = slice(0, 2), slice(2, 6)
     l_z = np.array([[0, -1j], [1j, 0]])
@@ -93,7 +89,7 @@ def on_axis_dirac(
     h_r = plane.h_r.copy()
     level = -2 * bz * np.cos(2 * np.pi * node)
     home = ~plane.r_cells.any(axis=1)
-    h_r[np.ix_(home, range(0, 2), range(0, 2))] += level * np.eye(2)
+    h_r[np.ix_(home, range(2), range(2))] += level * np.eye(2)
     h_r[np.ix_(home, range(2, 6), range(2, 6))] -= level * near
     hop = np.zeros((6, 6), dtype=complex)
     hop[s, s], hop[p, p] = bz * np.eye(2), -bz * near
@@ -111,13 +107,12 @@ def on_axis_dirac(
 def nodal_ring(*, radius_cos: float = 0.5, hybridise: float = 0.0) -> LatticeModel:
     """A ring of closings in the mirror plane k_z = 0 of spinless s and p_z states, filling 1.
 
-    H = (m - cos a_1 - cos a_2 - cos a_3) sigma_z + sin a_3 sigma_y, m = 1 + 2 cos-like: the ring
-    is cos a_1 + cos a_2 = 2 radius_cos + ... in the plane a_3 = 0, where s is even and p_z odd
-    under the mirror. hybridise sigma_x breaks inversion times time reversal and the mirror, and
-    opens a gap. Model of Kim, Wieder, Kane, Rappe, PRL 115, 036806 (2015) and Yu, Weng, Fang, Dai,
+    H = (1 + 2 radius_cos - cos a_1 - cos a_2 - cos a_3) sigma_z + sin a_3 sigma_y: the ring is
+    cos a_1 + cos a_2 = 2 radius_cos in the plane a_3 = 0, where s is even and p_z odd under the
+    mirror. hybridise sigma_x breaks inversion and the mirror, and opens a gap.
+    Model of Kim, Wieder, Kane, Rappe, PRL 115, 036806 (2015) and Yu, Weng, Fang, Dai,
     Hu, PRL 115, 036807 (2015).
     """
-    m = 2 * radius_cos + 1 + 1  # ring where cos a_1 + cos a_2 = m - 1
     m = 1 + 2 * radius_cos
     x, y, z = SIGMA
     terms, both = Terms(2), slice(0, 2)
@@ -132,6 +127,26 @@ def nodal_ring(*, radius_cos: float = 0.5, hybridise: float = 0.0) -> LatticeMod
     return LatticeModel("nodal_ring", crystal, basis, r_cells, h_r, 1, False, ORIGIN)
 
 
-def murakami_transition(axis: Sequence[float] = ORIGIN) -> None:
-    """See `lattice_models.wilson_dirac` at m = -3: the closing at which an insulator with time
-    reversal and inversion turns over, Murakami, New J. Phys. 9, 356 (2007)."""
+def magnetic_ring(*, radius_cos: float = 0.5, field: float = 3.0) -> LatticeModel:
+    """The ring of `nodal_ring` in the lower one of two spin species split by a field along z.
+
+    Spin-up functions lie `field` above the spin-down ones and are coupled to them by spin-orbit
+    terms that the mirror k_z -> -k_z allows: s and p_z of opposite spin have the same mirror
+    eigenvalue. Time reversal is broken; the mirror alone holds the ring. Filling 1.
+    """
+    ring = nodal_ring(radius_cos=radius_cos)
+    terms, both = Terms(4), slice(0, 4)
+    order = [0, 2, 1, 3]  # (species, spin) from (spin, species)
+    for r_cell, block in zip(ring.r_cells, ring.h_r, strict=True):
+        if tuple(r_cell) >= HOME:
+            whole = np.kron(np.eye(2), block)[np.ix_(order, order)]
+            terms.add(r_cell, both, both, whole if r_cell.any() else whole / 2)
+    terms.add_onsite(both, np.kron(np.eye(2), np.diag([field, -field])))
+    # sin a_1 x (s up, p_z down): even under the mirror, which acts as -i sigma_z (x) parity
+    spin_orbit = np.zeros((4, 4), dtype=complex)
+    spin_orbit[0, 3] = spin_orbit[3, 0] = 0.2
+    spin_orbit[1, 2] = spin_orbit[2, 1] = 0.2
+    terms.add((1, 0, 0), both, both, spin_orbit / 2j)
+    r_cells, h_r = terms.arrays()
+    basis = build_basis([("X1", ORIGIN, "s"), ("X1", ORIGIN, "pz")])
+    return LatticeModel("magnetic_ring", ring.crystal, basis, r_cells, h_r, 1, True, ORIGIN)

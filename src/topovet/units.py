@@ -7,6 +7,10 @@ BOHR_ANGSTROM = 0.529177210903
 
 MEV_PER_EV = 1000.0
 
+METRE_PER_SECOND = 1e-10 / 6.582119569e-16
+"""Velocity in m/s of a slope of 1 eV angstrom: 1/hbar, hbar = 6.582119569e-16 eV s (exact in the SI
+of 2019 to the digits given)."""
+
 BOLTZMANN_EV_PER_K = 8.617333262e-5
 """Boltzmann constant in eV/K, exact in the SI of 2019 to the digits given."""
 

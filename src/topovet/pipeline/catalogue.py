@@ -11,6 +11,7 @@ from topovet.invariants import irrep_results as irreps
 from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
 from topovet.invariants import rotation_indicators as rotations
+from topovet.invariants.nodes import results as nodes
 from topovet.invariants.rotation_eigenvalues import EigenvalueCount
 from topovet.invariants.tipping_results import TippingPoint, TippingSearch
 from topovet.model.cell_relation import CellRelation
@@ -24,6 +25,7 @@ from topovet.pipeline import (
     steps_diagnosis,
     steps_intake,
     steps_lower,
+    steps_nodes,
     steps_physics,
     steps_proof,
     steps_report,
@@ -113,6 +115,11 @@ STORED_TYPES = (
     EigenvalueCount,
     rotations.S4Axis,
     rotations.S4Indicator,
+    nodes.PointNode,
+    nodes.NodalLine,
+    nodes.Pocket,
+    nodes.Reference,
+    nodes.NodeSearch,
     boundary.Crossing,
     boundary.SurfaceLine,
     boundary.SurfaceWitness,
@@ -135,6 +142,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_shifts.TASKS,
         *steps_physics.TASKS,
         *steps_proof.TASKS,
+        *steps_nodes.TASKS,
         *steps_symmetry.TASKS,
         *steps_witnesses.TASKS,
         *steps_bandreps.TASKS,

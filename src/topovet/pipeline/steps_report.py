@@ -12,6 +12,7 @@ from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
+from topovet.invariants.nodes.results import NodeSearch
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.invariants.tipping_results import TippingSearch
@@ -57,6 +58,7 @@ def collect_findings(
     gap: GapSample | None,
     gap_proof: ProvedGap | None,
     indirect_gap_proof: ProvedIndirectGap | None,
+    nodes: NodeSearch | None,
     parity: ParityWitness | None,
     inferred_parity: ParityWitness | None,
     group: GroupTest | None,
@@ -86,9 +88,10 @@ def collect_findings(
         time_reversal=time_reversal,
         inversion=inversion,
         electrons=electrons,
-        gap=_with_attained(gap, gap_proof),
+        gap=_with_nodes(_with_attained(gap, gap_proof), nodes),
         gap_proof=None if gap_proof is None else gap_proof.proof,
         indirect_proof=None if indirect_gap_proof is None else indirect_gap_proof.proof,
+        nodes=nodes,
         parity=parity,
         inferred_parity=inferred_parity,
         group=group,
@@ -116,6 +119,20 @@ def _with_attained(gap: GapSample | None, proved: ProvedGap | None) -> GapSample
         direct_ev=attained,
         direct_k=proved.proof.k_frac,
         status=gap_status(attained, gap.indirect_ev),
+    )
+
+
+def _with_nodes(gap: GapSample | None, nodes: NodeSearch | None) -> GapSample | None:
+    """The gap, or the smaller one that the search for nodes met."""
+    if gap is None or nodes is None or nodes.attained_ev is None or nodes.attained_k is None:
+        return gap
+    if nodes.attained_ev >= gap.direct_ev:
+        return gap
+    return replace(
+        gap,
+        direct_ev=nodes.attained_ev,
+        direct_k=nodes.attained_k,
+        status=gap_status(nodes.attained_ev, gap.indirect_ev),
     )
 
 
@@ -167,6 +184,7 @@ SHOWN = (
     "gap",
     "gap_proof",
     "indirect_proof",
+    "nodes",
     "parity",
     "group",
     "wilson",
@@ -203,6 +221,7 @@ IF_THERE = (
     "gap",
     "gap-proof",
     "indirect-gap-proof",
+    "nodes",
     "parity",
     "wilson",
     "chern",

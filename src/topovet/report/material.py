@@ -11,6 +11,7 @@ from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
+from topovet.invariants.nodes.results import NodeSearch
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.invariants.tipping_results import TippingSearch
@@ -129,6 +130,8 @@ class ReportMaterial:
         Direct gap over a plane through its minimum.
     tipping
         How far H may move before its indices change; None where it was not asked.
+    nodes
+        Closings of the gap; None where none were looked for.
     """
 
     verdict: Verdict
@@ -163,3 +166,4 @@ class ReportMaterial:
     indirect_proof: IndirectGapProof | None = None
     gap_map: GapMap | None = None
     tipping: TippingSearch | None = None
+    nodes: NodeSearch | None = None

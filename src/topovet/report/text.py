@@ -9,7 +9,7 @@ from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, z2_tex
 from topovet.report.classes import class_words
 from topovet.report.diagnosis_words import diagnosis_line
 from topovet.report.tipping_words import tipping_line
-from topovet.report.words import radius_note
+from topovet.report.words import node_count, radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 
 _HEADINGS = (
@@ -38,6 +38,7 @@ def verdict_lines(verdict: Verdict) -> str:
         ("witnesses", f"{_witnesses(verdict)}; agreement: {verdict.agreement}"),
         ("filling", f"{verdict.electrons.filling} bands, from {verdict.electrons.source}"),
         ("gap", _gap(verdict)),
+        *_nodes(verdict),
         ("residuals", _residuals(verdict)),
         ("radius", f"{mev(verdict.robustness.radius_meV)}, {radius_note(verdict)}"),
         *((("tipping", tipping),) if (tipping := tipping_line(verdict)) else ()),
@@ -144,6 +145,24 @@ def _gap(verdict: Verdict) -> str:
         f"direct <= {ev(gap.direct_eV)} at k = {where}, indirect {ev(gap.indirect_eV)}; "
         f"{gap.status}{bound}"
     )
+
+
+def _nodes(verdict: Verdict) -> list[tuple[str, str]]:
+    """A line on the nodes, where any were looked for."""
+    search = verdict.node_search
+    if verdict.nodes is None or search is None:
+        return []
+    text = node_count(verdict)
+    points = [n for n in verdict.nodes if n.kind != "line"]
+    if points:
+        nearest = min(points, key=lambda n: abs(n.from_fermi_eV))
+        text += f", nearest at k = {k_text(nearest.k, plain=True)}, {ev(nearest.from_fermi_eV)}"
+        text += " from the Fermi energy" if search.fermi == "given" else " from the Fermi level"
+    if search.complete:
+        return [
+            ("nodes", f"{text}; elsewhere the gap is > {mev(search.gap_elsewhere_meV)}, proved")
+        ]
+    return [("nodes", f"{text}; maybe more: {search.reason}")]
 
 
 def _residuals(verdict: Verdict) -> str:

@@ -6,6 +6,7 @@ from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, signif
 from topovet.report.classes import class_words
 from topovet.report.material import ReportMaterial
 from topovet.verdict.document import Verdict
+from topovet.verdict.semimetal import SEMIMETALS
 
 
 def subject(verdict: Verdict) -> str:
@@ -28,12 +29,49 @@ def predicate(verdict: Verdict) -> str:
         return f"stays undetermined: {_obstacle(verdict)}."
     judged = f"is judged to be {class_words(verdict).noun}"
     clauses = [judged, _index_clause(verdict), _gap_clause(verdict)]
+    if verdict.class_ in SEMIMETALS:
+        clauses = [judged, node_clause(verdict)]
     sentence = ", ".join(c for c in clauses if c)
     errors = sum(flag.severity == "error" for flag in verdict.flags)
     if errors:
         plural = "s" if errors > 1 else ""
         sentence += f"; {errors} error-level flag{plural} speak{'' if plural else 's'} against it"
     return sentence + "."
+
+
+def node_clause(verdict: Verdict) -> str:
+    """How many points and lines, at which filling, and what is proved beside them."""
+    if verdict.nodes is None or verdict.node_search is None:
+        return ""
+    count = f"with {node_count(verdict)} at filling {verdict.electrons.filling}"
+    if not verdict.node_search.complete:
+        return f"{count}, maybe more"
+    elsewhere = mev(verdict.node_search.gap_elsewhere_meV)
+    return f"{count} and a direct gap proved to exceed {elsewhere} everywhere else"
+
+
+def node_count(verdict: Verdict) -> str:
+    """E.g. "2 Weyl points (chiralities ±1) and 1 nodal line"."""
+    entries = verdict.nodes or ()
+    parts = []
+    for kind, name in NODE_NAMES.items():
+        chosen = [n for n in entries if n.kind == kind]
+        number = sum(n.images for n in chosen) if kind == "line" else len(chosen)
+        if number:
+            sizes = sorted({abs(n.chirality) for n in chosen if n.chirality})
+            charges = f" (chiralities {', '.join(f'±{c}' for c in sizes)})" if sizes else ""
+            parts.append(f"{number} {name}{'s' if number > 1 else ''}{charges}")
+    return " and ".join(parts) or "no closing"
+
+
+NODE_NAMES = {
+    "weyl": "Weyl point",
+    "dirac": "Dirac point",
+    "multifold": "multifold point",
+    "accidental": "accidental touching",
+    "uncharacterised": "uncharacterised point",
+    "line": "nodal line",
+}
 
 
 def _index_clause(verdict: Verdict) -> str:
@@ -213,6 +251,8 @@ def radius_note(verdict: Verdict) -> str:
     """What the robustness radius is, against the largest known error of the input."""
     known = {k: v for k, v in verdict.robustness.errors_meV.items() if v is not None}
     kind = "of the proved gap" if verdict.robustness.proved else "of the sampled gap"
+    if verdict.class_ in SEMIMETALS:
+        kind = "of the smallest gap on the surfaces around the nodes"
     if verdict.robustness.radius_meV is None:
         return "no gap to take the half of"
     if not known:

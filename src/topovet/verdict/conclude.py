@@ -11,6 +11,7 @@ from topovet.verdict.crystalline import class_without_z2, indicator_values, mirr
 from topovet.verdict.document import InvariantsEntry
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+from topovet.verdict.semimetal import conclude_nodes
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,6 +53,10 @@ def conclude(findings: Findings, flags: Sequence[Flag]) -> Conclusion:
     if findings.gap is None:
         why = f"the gap is not known ({findings.missing.get('gap', '')})"
         return _undetermined(agreement.word, why)
+    if findings.gap.status == "gapless":
+        found = conclude_nodes(findings)
+        word = "one-witness" if found.class_ else "undetermined"
+        return Conclusion(InvariantsEntry(), word, found.class_ or "undetermined", found.grounds)
     if not findings.kramers:
         return _without_kramers(findings)
     if agreement.z2 is None:

@@ -184,6 +184,49 @@ class LowerGapEntry:
 
 
 @dataclass(frozen=True, slots=True)
+class NodeEntry:
+    """One point, or one line with its images, at which the filled bands touch the rest.
+
+    A point has charge, tilt, type and velocities; a line has length, winding and path. What does
+    not apply is None or empty.
+    """
+
+    kind: str
+    k: tuple[float, float, float]
+    k_cart: tuple[float, float, float]
+    energy_eV: float  # noqa: N815
+    from_fermi_eV: float  # noqa: N815
+    multiplicity: int
+    chirality: int | None
+    berry_phase_pi: float | None
+    velocities_eV_ang: tuple[float, ...]  # noqa: N815
+    velocities_m_s: tuple[float, ...]
+    type: str
+    tilt: float | None
+    protection: str
+    gap_around_meV: float  # noqa: N815
+    orbit: int
+    images: int
+    length: float | None = None
+    winding: tuple[int, int, int] | None = None
+    energy_range_eV: tuple[float, float] | None = None  # noqa: N815
+    path: tuple[tuple[float, float, float], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class NodeSearchEntry:
+    """How complete the list of nodes is; fermi says what energies are measured from."""
+
+    complete: bool
+    reason: str
+    gap_elsewhere_meV: float  # noqa: N815
+    chirality_sum: int | None
+    fermi_eV: float  # noqa: N815
+    fermi: str
+    unexplained: tuple[tuple[float, float, float], ...]
+
+
+@dataclass(frozen=True, slots=True)
 class RobustnessEntry:
     """radius_meV is half of the direct gap; `proved` says whether that gap is a proved bound."""
 
@@ -266,6 +309,8 @@ class Verdict:
     provenance: ProvenanceEntry
     diagnosis: DiagnosisEntry = DiagnosisEntry()
     lower_gaps: tuple[LowerGapEntry, ...] | None = None
+    nodes: tuple[NodeEntry, ...] | None = None
+    node_search: NodeSearchEntry | None = None
     schema: str = SCHEMA
 
     def as_dict(self) -> dict[str, Any]:

@@ -11,6 +11,7 @@ from topovet.invariants.band_rep_results import BandRepWitness
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
+from topovet.invariants.nodes.results import NodeSearch
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
 from topovet.invariants.tipping_results import TippingSearch
@@ -60,6 +61,7 @@ class Findings:
     gap: GapSample | None = None
     gap_proof: GapProof | None = None
     indirect_proof: IndirectGapProof | None = None
+    nodes: NodeSearch | None = None
     group: GroupTest | None = None
     parity: ParityWitness | None = None
     inferred_parity: ParityWitness | None = None

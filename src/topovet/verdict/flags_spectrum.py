@@ -9,6 +9,7 @@ from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+from topovet.verdict.semimetal import conclude_nodes, describe
 
 
 def spectrum_flags(findings: Findings) -> Iterator[Flag]:
@@ -78,13 +79,39 @@ def _gap(findings: Findings) -> Iterator[Flag]:
     gap, electrons = findings.gap, findings.electrons
     if gap is None or electrons is None or gap.status not in ("gapless", "unresolved"):
         return
+    at_filling = (
+        f"the direct gap at filling {electrons.filling} comes down to "
+        f"{1000 * gap.direct_ev:.2g} meV at k = ({', '.join(f'{c:.4f}' for c in gap.direct_k)})"
+    )
+    evidence: dict[str, float | int | str | bool | list[float] | None] = {
+        "direct_gap_meV": 1000 * gap.direct_ev,
+        "k": list(gap.direct_k),
+    }
+    found, nodes = conclude_nodes(findings), findings.nodes
+    if nodes is not None:
+        evidence |= {
+            "points": len(nodes.points),
+            "lines": sum(line.n_images for line in nodes.lines),
+            "complete": nodes.complete,
+            "chirality_sum": nodes.charge_sum,
+            "gap_elsewhere_meV": 1000 * nodes.elsewhere_ev,
+        }
+    if found.class_ and nodes is not None:
+        yield Flag(
+            "gap-closes",
+            "warning",
+            f"{at_filling}: {describe(nodes)}. No index of the filled bands is defined.",
+            evidence,
+            "Check the filling and the energies of the nodes: the class is that of this filling.",
+        )
+        return
+    located = "" if nodes is None else f" ({describe(nodes)}; {found.grounds[0]})"
     yield Flag(
         "gap-closes",
         "error",
-        f"the direct gap at filling {electrons.filling} comes down to "
-        f"{1000 * gap.direct_ev:.2g} meV at k = ({', '.join(f'{c:.4f}' for c in gap.direct_k)}): "
-        "no index of the occupied bands is defined, or it is too close to tell by sampling.",
-        {"direct_gap_meV": 1000 * gap.direct_ev, "k": list(gap.direct_k)},
+        f"{at_filling}: no index of the occupied bands is defined, or it is too close to tell by "
+        f"sampling{located}.",
+        evidence,
         "Check the filling; if it is right, the compound is a semimetal or lies at a transition.",
     )
 

@@ -11,6 +11,7 @@ from topovet.verdict import criteria
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 from topovet.verdict.flags_declaration import declaration_flags
+from topovet.verdict.semimetal import conclude_nodes
 
 
 def symmetry_flags(findings: Findings) -> Iterator[Flag]:
@@ -75,7 +76,7 @@ def _time_reversal(findings: Findings) -> Iterator[Flag]:
     if not test.present:
         yield Flag(
             "time-reversal-broken",
-            _worse_without_gap(findings),
+            "warning" if conclude_nodes(findings).class_ else _worse_without_gap(findings),
             f"the Hamiltonian breaks time reversal by {mev(test.violation_mev)} in either spin "
             "order; Z2 indices do not exist for it.",
             evidence,

@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 from topovet.invariants.parity import MIN_PURITY
 from topovet.notation import mev
+from topovet.spectrum.gap import UNRESOLVED_EV
 from topovet.verdict import criteria
 from topovet.verdict.agreement import weigh
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
@@ -13,14 +14,16 @@ from topovet.verdict.conclude import witness_statements
 from topovet.verdict.crystalline import indicator_conflicts
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+from topovet.verdict.semimetal import conclude_nodes
 
 
 def witness_flags(findings: Findings) -> Iterator[Flag]:
     """Each witness, the witnesses side by side, and the error bar."""
     yield from _parity(findings)
     yield from _wilson(findings)
-    yield from _disagreement(findings)
-    yield from _mirrors(findings)
+    if not conclude_nodes(findings).class_:  # without a gap indices need not agree
+        yield from _disagreement(findings)
+        yield from _mirrors(findings)
     yield from _error_bar(findings)
 
 
@@ -28,7 +31,13 @@ def _parity(findings: Findings) -> Iterator[Flag]:
     parity = findings.parity
     if parity is None or not parity.trim:
         return
-    worst = min(parity.trim, key=lambda t: t.purity)
+    trim = parity.trim
+    if conclude_nodes(findings).class_:
+        # at a node the filled states are half of a level, of no parity
+        trim = tuple(t for t in trim if t.gap_ev >= UNRESOLVED_EV)
+    worst = min(trim, key=lambda t: t.purity, default=None)
+    if worst is None:
+        return
     if worst.purity >= criteria.PURITY_WARNING:
         return
     unreadable = worst.purity < MIN_PURITY

@@ -38,7 +38,9 @@ from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 from topovet.verdict.grade import grade
 from topovet.verdict.inquiry import Inquiry
+from topovet.verdict.node_entries import node_entries, search_entry
 from topovet.verdict.raised import raise_flags
+from topovet.verdict.semimetal import SEMIMETALS, conclude_nodes
 from topovet.verdict.tipping import tipping_entries
 
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
@@ -79,6 +81,9 @@ def judge(
     flags = raise_flags(findings)
     conclusion = conclude(findings, flags)
     radius = robustness_radius(findings)
+    around = conclude_nodes(findings).barrier_ev if conclusion.class_ in SEMIMETALS else None
+    if around is not None:  # what holds the nodes survives half of the gap around them
+        radius = 500.0 * around
     return Verdict(
         case=_case(findings),
         inputs=tuple(inputs),
@@ -122,6 +127,8 @@ def judge(
         ),
         diagnosis=_diagnosis(findings, flags, experiments),
         lower_gaps=_lower_gaps(findings),
+        nodes=node_entries(findings.nodes),
+        node_search=search_entry(findings.nodes),
     )
 
 

@@ -76,7 +76,7 @@ def test_schema_knows_every_flag_code(schema: dict[str, Any]) -> None:
     assert tuple(flag["severity"]["enum"]) == SEVERITIES
 
 
-LATER = {"diagnosis", "mirror", "lower_gaps", "band_representations"} | {
+LATER = {"diagnosis", "mirror", "lower_gaps", "nodes", "node_search", "band_representations"} | {
     *("z2_partial", "edge_chern", "miller", "chosen_by", "terminations"),
 }
 """Keys that older dossiers lack and that a reader must not ask for."""

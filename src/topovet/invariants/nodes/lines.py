@@ -6,7 +6,7 @@ import numpy as np
 
 from topovet.arrays import FloatArray, IntArray
 from topovet.invariants.nodes.flux import loop_berry_phase, nearest_quantised
-from topovet.invariants.nodes.points import Case
+from topovet.invariants.nodes.points import Case, as_vector
 from topovet.invariants.nodes.protection import (
     enforced_level,
     mirror_protection,
@@ -59,6 +59,7 @@ def describe_line(case: Case, line: TracedLine, images: IntArray) -> NodalLine:
     return NodalLine(
         k_frac=line.k_frac,
         n_images=_count_images(line, images, reciprocal),
+        first_cart=as_vector(line.k_frac[0] @ reciprocal),
         closed=line.closed,
         winding=(g_1, g_2, g_3),
         length=line.length(reciprocal),

@@ -86,6 +86,8 @@ class NodalLine:
         (n, 3) points in order, fractional, not folded.
     n_images
         Lines that symmetry makes of it, itself counted.
+    first_cart
+        Its first point, 1/angstrom.
     closed
         Whether it comes back to its beginning modulo a reciprocal vector.
     winding
@@ -111,6 +113,7 @@ class NodalLine:
 
     k_frac: FloatArray
     n_images: int
+    first_cart: Vector
     closed: bool
     winding: tuple[int, int, int]
     length: float

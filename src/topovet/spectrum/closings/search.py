@@ -30,8 +30,8 @@ TARGET_EV = ELSEWHERE_EV
 
 COARSE_FRAC, FINE_FRAC, FINEST_FRAC = 1 / 64, 2e-3, 5e-4
 """Reach in fractional k at which boxes are left open: at first, in small clusters, and in those
-whose gap is wide enough for a bound at every centre. Boxes along a line are as many as it is long, and
-finer ones would not say more about it."""
+whose gap is wide enough for a bound at every centre. Boxes along a line are as many as it is long,
+and finer ones would not say more about it."""
 
 FEW_BOXES = 600
 """Clusters of more boxes than this stay coarse."""
