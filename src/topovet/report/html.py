@@ -68,6 +68,8 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         certificate=certificate_lines(material),
         error_rows=error_rows(material.verdict),
         grade_rules=RULES,
+        node_count=words.node_count(material.verdict),
+        node_names=words.NODE_NAMES,
         causes=sort_causes(material.verdict.diagnosis.causes),
         answer_words=ANSWERS,
         agreement_words=AGREEMENT,

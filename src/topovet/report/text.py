@@ -159,9 +159,8 @@ def _nodes(verdict: Verdict) -> list[tuple[str, str]]:
         text += f", nearest at k = {k_text(nearest.k, plain=True)}, {ev(nearest.from_fermi_eV)}"
         text += " from the Fermi energy" if search.fermi == "given" else " from the Fermi level"
     if search.complete:
-        return [
-            ("nodes", f"{text}; elsewhere the gap is > {mev(search.gap_elsewhere_meV)}, proved")
-        ]
+        elsewhere = mev(search.gap_elsewhere_meV)
+        return [("nodes", f"{text}; elsewhere the gap is proved > {elsewhere}")]
     return [("nodes", f"{text}; maybe more: {search.reason}")]
 
 

@@ -166,9 +166,16 @@ def _second_grounds(verdict: Verdict) -> tuple[str, ...]:
 
 
 def _gap_ground(verdict: Verdict) -> str:
-    gap = verdict.gap
+    gap, search = verdict.gap, verdict.node_search
     if gap.direct_eV is None:
         return ""
+    if search is not None and search.complete and verdict.nodes:
+        was = "was" if node_count(verdict).startswith("1 ") else "were"
+        found = f"The direct gap closes: {node_count(verdict)} {was} located. "
+        beyond = f"Everywhere else it is proved to exceed {mev(search.gap_elsewhere_meV)}"
+        if search.chirality_sum is None or all(n.kind == "line" for n in verdict.nodes):
+            return f"{found}{beyond}."
+        return f"{found}{beyond}, and the chiralities add up to {search.chirality_sum}."
     met = (
         f"The smallest direct gap that was met is {ev(gap.direct_eV)} at k = {k_text(gap.direct_k)}"
     )
@@ -207,7 +214,9 @@ def untested(material: ReportMaterial) -> tuple[str, ...]:
         lines.append(_open_witness("Wilson loops", verdict.witnesses.wilson.reason))
     if verdict.witnesses.surface.status != "ok":
         lines.append(_open_witness("Surface and edge states", verdict.witnesses.surface.reason))
-    if verdict.gap.direct_proved_min_eV is None:
+    if verdict.class_ in SEMIMETALS:
+        lines.append("Whether the filling is the compound's own: the class holds at this filling.")
+    elif verdict.gap.direct_proved_min_eV is None:
         lines.append(
             "The gap between the sampled k-points: a closing there would void every index."
         )

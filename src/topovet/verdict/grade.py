@@ -16,8 +16,8 @@ RULES = {
     "A": "Two independent witnesses agree; the gap is proved, to at least half of the gap that was "
     "met; known errors sum to less than half of the robustness radius; no warning touches the "
     "verdict.",
-    "B": "As A, but one witness speaks alone, or the gap is sampled. Nodes of a semimetal reach B at "
-    "most: one invariant holds each; the gap around them stands for the gap.",
+    "B": "As A, but one witness speaks alone, or the gap is sampled. Nodes of a semimetal reach B "
+    "at most: one invariant holds each, and the gap around them stands for the gap.",
     "C": "The verdict stands, but a warning touches it, or known errors sum to half of the "
     "robustness radius or more.",
     "D": "Undetermined.",

@@ -108,7 +108,7 @@ def _all_images(lines: list[TracedLine], images: IntArray) -> FloatArray:
     if not lines:
         return np.zeros((0, 3))
     points = np.concatenate([line.k_frac for line in lines])
-    return folded((points @ images).reshape(-1, 3))
+    return folded(np.asarray(points @ images, dtype=float).reshape(-1, 3))
 
 
 def _pockets(
@@ -202,6 +202,7 @@ def _result(
         attained_ev=None if lowest is None else lowest.lowest_ev,
         attained_k=None if lowest is None else as_vector(folded(lowest.lowest_k)),
         degenerate=found.degenerate,
+        images=found.images,
         n_open=sum(len(c.k_frac) for c in found.clusters),
         n_solves=found.n_solves,
     )

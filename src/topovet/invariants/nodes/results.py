@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from topovet.arrays import FloatArray
+from topovet.arrays import FloatArray, IntArray
 
 POINT_KINDS = ("weyl", "dirac", "multifold", "accidental", "uncharacterised")
 """weyl: charge not zero. dirac: fourfold (twofold in a layer), charge zero, held by symmetry.
@@ -197,6 +197,8 @@ class NodeSearch:
         Smallest gap met, eV, and where; None if nothing was followed.
     degenerate
         The two bands touch everywhere: the search was not made.
+    images
+        (g, 3, 3) integers, k' = k @ image: symmetries that take the lines to the rest of them.
     n_open, n_solves
         Open boxes, eigenvalue problems.
     """
@@ -213,5 +215,6 @@ class NodeSearch:
     attained_ev: float | None
     attained_k: Vector | None
     degenerate: bool
+    images: IntArray
     n_open: int
     n_solves: int

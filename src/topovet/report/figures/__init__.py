@@ -9,6 +9,7 @@ from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
 from topovet.report.figures.flow import flow_figure
 from topovet.report.figures.gap_map import gap_map_figure
+from topovet.report.figures.nodes import nodes_figure
 from topovet.report.figures.operations import operations_figure
 from topovet.report.figures.surface import surface_figure
 from topovet.report.figures.tasks import tasks_figure
@@ -23,6 +24,7 @@ __all__ = [
     "figure_makers",
     "flow_figure",
     "gap_map_figure",
+    "nodes_figure",
     "operations_figure",
     "surface_figure",
     "tasks_figure",
@@ -37,9 +39,9 @@ _WORTH_A_CLOSER_LOOK_EV = 1.2
 def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     """A maker of SVG text for every figure that the material allows, by name.
 
-    The names are "zone", "bands", "bands-near-gap", "gap-map", "operations", "flow", "surface",
-    "decay", "tipping" and "tasks"; `render_report` places them, and each also stands alone as a
-    file.
+    The names are "zone", "bands", "bands-near-gap", "gap-map", "operations", "flow", "nodes",
+    "surface", "decay", "tipping" and "tasks"; `render_report` places them, and each also stands
+    alone as a file.
     """
     m = material
     trim = m.parity.trim if m.parity is not None else ()
@@ -56,6 +58,9 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     if m.gap_map is not None:
         gap_map = m.gap_map
         makers["gap-map"] = lambda: gap_map_figure(gap_map, m.crystal)
+    nodes = m.nodes
+    if nodes is not None and (nodes.points or nodes.lines):
+        makers["nodes"] = lambda: nodes_figure(m.crystal, nodes)
     if m.surface_maps:
         makers["surface"] = lambda: _surface(m)
     if m.verdict.robustness.tipping:

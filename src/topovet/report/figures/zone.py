@@ -59,16 +59,16 @@ def zone_figure(crystal: Crystal, trim: Sequence[TrimParity] = (), *, name: str 
         axes.set_xlim(low[0] / POINTS_PER_RADIUS, high[0] / POINTS_PER_RADIUS)
         axes.set_ylim(low[1] / POINTS_PER_RADIUS, high[1] / POINTS_PER_RADIUS)
         if zone.faces:
-            _draw_solid(axes, zone, scene.turn)
+            draw_solid(axes, zone, scene.turn)
         else:
-            _draw_polygon(axes, zone)
+            draw_polygon(axes, zone)
         _draw_axes(axes, scene, axis_names)
         _drawmomenta_of(axes, scene, momenta)
         words = _words(zone, momenta)
         return to_svg(figure, name, title="Brillouin zone", description=words)
 
 
-def _draw_solid(axes: Axes, zone: Zone, turn: FloatArray) -> None:
+def draw_solid(axes: Axes, zone: Zone, turn: FloatArray) -> None:
     flat = zone.vertices @ turn[:2].T / zone.radius
     facing = zone.normals @ turn[2] > 1e-9
     for face, front in zip(zone.faces, facing, strict=True):
@@ -85,7 +85,7 @@ def _draw_solid(axes: Axes, zone: Zone, turn: FloatArray) -> None:
         )
 
 
-def _draw_polygon(axes: Axes, zone: Zone) -> None:
+def draw_polygon(axes: Axes, zone: Zone) -> None:
     axes.fill(
         *zone.vertices.T / zone.radius,
         facecolor=palette.FACE_TINT,

@@ -112,7 +112,7 @@ def best_scene(zone: Zone, reciprocal: FloatArray, momenta: Sequence[Momentum]) 
     """The scene, of a fixed set of views, with the least overlap and the best-separated marks."""
     if not zone.faces:
         return _scene(zone, reciprocal, momenta, np.eye(2))
-    views = [_view(a, e) for e in (14, 20, 26, 32) for a in range(0, 360, 12)]
+    views = [view(a, e) for e in (14, 20, 26, 32) for a in range(0, 360, 12)]
     scenes = [_scene(zone, reciprocal, momenta, turn) for turn in views]
     return min(scenes, key=lambda scene: _badness(scene, zone))
 
@@ -131,7 +131,7 @@ def _badness(scene: Scene, zone: Zone) -> float:
     return float(round(scene.labels.overlap - merit, 3))
 
 
-def _view(azimuth: float, elevation: float) -> FloatArray:
+def view(azimuth: float, elevation: float) -> FloatArray:
     ca, sa = np.cos(np.radians(azimuth)), np.sin(np.radians(azimuth))
     ce, se = np.cos(np.radians(elevation)), np.sin(np.radians(elevation))
     return np.array([[-sa, ca, 0.0], [-se * ca, -se * sa, ce], [ce * ca, ce * sa, se]])

@@ -149,8 +149,8 @@ class _Follower:
                 return points, False
             point, tangent = found
             points.append(point)
-            home = point - self.start.k_frac
-            home = np.linalg.norm((home - np.round(home)) @ self.reciprocal)
+            away = point - self.start.k_frac
+            home = float(np.linalg.norm((away - np.round(away)) @ self.reciprocal))
             if len(points) > 3 and home < 0.75 * step and self._is_home(points):
                 return points, True
         return points, False
