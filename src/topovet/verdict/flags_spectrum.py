@@ -105,7 +105,10 @@ def _gap(findings: Findings) -> Iterator[Flag]:
             "Check the filling and the energies of the nodes: the class is that of this filling.",
         )
         return
-    located = "" if nodes is None else f" ({describe(nodes)}; {found.grounds[0]})"
+    located = ""
+    if nodes is not None:
+        listed = f"{describe(nodes)}; " if nodes.points or nodes.lines else ""
+        located = f" ({listed}{found.grounds[0]})"
     yield Flag(
         "gap-closes",
         "error",

@@ -121,6 +121,8 @@ def _charges(points: list[PointNode]) -> str:
 
 def _objections(findings: Findings, nodes: NodeSearch) -> Iterator[str]:
     """Why no class is given, the weightiest first."""
+    if nodes.degenerate:
+        yield nodes.reason
     if not nodes.complete:
         yield f"the list of nodes may be incomplete: {nodes.reason}"
     if not nodes.points and not nodes.lines:

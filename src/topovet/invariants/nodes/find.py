@@ -9,6 +9,7 @@ doi:10.1016/0550-3213(81)90361-8).
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -16,6 +17,7 @@ from topovet.arrays import BoolArray, FloatArray, IntArray
 from topovet.invariants.nodes.lines import describe_line
 from topovet.invariants.nodes.points import Case, as_vector, describe_points
 from topovet.invariants.nodes.results import NodalLine, NodeSearch, Pocket, PointNode
+from topovet.notation import k_text
 from topovet.spectrum.closings.distinct import (
     distances_to,
     distinct_points,
@@ -25,13 +27,14 @@ from topovet.spectrum.closings.distinct import (
 )
 from topovet.spectrum.closings.local import describe_touching
 from topovet.spectrum.closings.search import ClosingSearch, Cluster, search_closings
-from topovet.spectrum.closings.trace import STEP, TracedLine, is_on_line, trace_line
+from topovet.spectrum.closings.trace import STEP, TracedLine, is_on_line, is_on_surface, trace_line
 from topovet.spectrum.proof.prove import ProvenHamiltonian
 
 MOST_ORBITS = 24
 """Points and lines, one of each orbit, that are looked at; more are no list of nodes."""
 
-MOST_LINES = 12
+MOST_LINES, MOST_TRACED = 12, 2500
+"""Lines, one of each orbit, and their points: at 30 orbitals a point costs some 20 ms."""
 
 NEAR_LINE = 3.0
 """A box belongs to a line that passes within so many times its own size."""
@@ -61,11 +64,15 @@ def find_nodes(
         reason = f"the budget ended with {n} boxes left to be looked at"
         return _result(case, found, (), (), (), reason)
     touching = snapped(case.bloch, found.touching_k, case.filling)
-    lines, rest, cut = _lines(case, touching, found.images)
-    on_lines = _all_images(lines, found.images)
-    seeds = distinct_points(case.bloch, rest, case.filling, case.crystal.reciprocal, found.images)
-    if cut or len(seeds) + len(lines) > MOST_ORBITS:
+    traced = _lines(case, touching, found.images)
+    lines, on_lines = traced.lines, _all_images(traced.lines, found.images)
+    seeds = distinct_points(
+        case.bloch, traced.rest, case.filling, case.crystal.reciprocal, found.images
+    )
+    reason = traced.reason
+    if not reason and len(seeds) + len(lines) > MOST_ORBITS:
         reason = f"closings in more than {MOST_ORBITS} places that symmetry does not relate"
+    if reason:
         return _result(case, found, (), (), (), reason)
     orbits = [unfolded(k, found.images) for k in seeds]
     points = describe_points(case, orbits, on_lines)
@@ -75,32 +82,40 @@ def find_nodes(
     return _result(case, found, points, described, pockets, reason)
 
 
-def _lines(
-    case: Case, touching_k: FloatArray, images: IntArray
-) -> tuple[list[TracedLine], FloatArray, bool]:
-    """Lines, the points that are on none, and whether there were too many lines."""
+@dataclass(frozen=True, slots=True, eq=False)
+class _Traced:
+    """Lines, the points (n, 3) that are on none, and why tracing was given up, if it was."""
+
+    lines: list[TracedLine]
+    rest: FloatArray
+    reason: str
+
+
+def _lines(case: Case, touching_k: FloatArray, images: IntArray) -> _Traced:
     reciprocal = case.crystal.reciprocal
     lines: list[TracedLine] = []
     rest: list[FloatArray] = []
+    left = np.unique(np.round(folded(touching_k), 9), axis=0).reshape(-1, 3)
     if case.crystal.dimension < 3:
-        return lines, touching_k, False
-    for k in touching_k:
-        known = _all_images(lines, images)
-        if len(known) and distances_to(known, k[None])[0] < STEP:
-            continue
-        if any(np.abs(k - other).max() < 1e-9 for other in rest):
-            continue
+        return _Traced(lines, left, "")
+    while len(left):
+        k, left = left[0], left[1:]
         touching = describe_touching(case.bloch, k, case.filling, reciprocal)
         if not is_on_line(case.bloch, touching, case.filling, reciprocal):
             rest.append(k)
             continue
-        if len(lines) == MOST_LINES:
-            return lines, np.array(rest).reshape(-1, 3), True
+        if is_on_surface(case.bloch, touching, case.filling, reciprocal):
+            return _Traced([], left, f"the gap closes on a surface through k = {k_text(k)}")
+        if len(lines) == MOST_LINES or sum(len(x.k_frac) for x in lines) > MOST_TRACED:
+            return _Traced([], left, f"{len(lines)} nodal lines were followed, and more are there")
         lines.append(trace_line(case.bloch, touching, case.filling, reciprocal))
+        away = distances_to(_all_images(lines[-1:], images), left) if len(left) else np.zeros(0)
+        left = left[away > STEP]
     # a crossing of lines is no node of its own
-    known = _all_images(lines, images)
-    off = [k for k in rest if not len(known) or distances_to(known, k[None])[0] > STEP / 2]
-    return lines, np.array(off).reshape(-1, 3), False
+    off, known = np.array(rest).reshape(-1, 3), _all_images(lines, images)
+    if len(known) and len(off):
+        off = off[distances_to(known, off) > STEP / 2]
+    return _Traced(lines, off, "")
 
 
 def _all_images(lines: list[TracedLine], images: IntArray) -> FloatArray:

@@ -13,7 +13,8 @@ import numpy as np
 
 from topovet.arrays import FloatArray, IntArray
 from topovet.model.fourier import BlochSum
-from topovet.spectrum.closings.local import Touching, describe_touching, step_onto
+from topovet.spectrum.closings.local import Touching, step_onto
+from topovet.spectrum.eigen import eigenvalues
 from topovet.spectrum.gap import GAPLESS_EV
 
 STEP = 0.01
@@ -23,7 +24,7 @@ ON_LINE_EV = 1e-5
 """Gap that may be left after a step onto the line, beside what the closing itself has: symmetry to
 six decimals of a file leaves less."""
 
-MOST_STEPS = 1500
+MOST_STEPS = 1000
 
 SHORTENINGS = 4
 """Times that a step is halved where the line turns too quickly for it."""
@@ -76,15 +77,35 @@ def step_length(reciprocal: FloatArray) -> float:
 
 def is_on_line(bloch: BlochSum, touching: Touching, filling: int, reciprocal: FloatArray) -> bool:
     """Whether the gap stays closed along the direction in which the bands part most slowly."""
-    tangent = touching.tangent
-    allowed = _allowed(touching)
-    for sign in (1.0, -1.0):
-        for part in (0.5, 1.0):
-            away = sign * part * step_length(reciprocal) * tangent
-            start = touching.k_frac + away @ np.linalg.inv(reciprocal)
-            _, gap = step_onto(bloch, start, filling, touching, tangent, reciprocal)
-            if gap > allowed:
-                return False
+    return _closed_along(bloch, touching, filling, reciprocal, touching.tangent)
+
+
+def is_on_surface(
+    bloch: BlochSum, touching: Touching, filling: int, reciprocal: FloatArray
+) -> bool:
+    """Whether it stays closed along the two slowest directions and between them.
+
+    Where lines cross it does so along the lines only.
+    """
+    _, axes = np.linalg.eigh(touching.metric)
+    first, second = axes[:, 0], axes[:, 1]
+    ways = (first, second, (first + second) / np.sqrt(2), (first - second) / np.sqrt(2))
+    return all(_closed_along(bloch, touching, filling, reciprocal, way) for way in ways)
+
+
+def _closed_along(
+    bloch: BlochSum,
+    touching: Touching,
+    filling: int,
+    reciprocal: FloatArray,
+    tangent: FloatArray,
+) -> bool:
+    for part in (0.5, -0.5, 1.0, -1.0):
+        away = part * step_length(reciprocal) * tangent
+        start = touching.k_frac + away @ np.linalg.inv(reciprocal)
+        _, gap = step_onto(bloch, start, filling, touching, tangent, reciprocal)
+        if gap > _allowed(touching):
+            return False
     return True
 
 
@@ -118,11 +139,12 @@ def trace_line(
         back, _ = follow.run(-touching.tangent)
         points, winding = [*back[:0:-1], *forth], np.zeros(3, dtype=np.int64)
     k_frac = np.array(points)
-    found = [describe_touching(bloch, k, filling, reciprocal) for k in k_frac]
+    energies = eigenvalues(bloch, k_frac)
+    bands = slice(filling - touching.n_below, filling + touching.n_above)
     return TracedLine(
         k_frac=k_frac,
-        energies_ev=np.array([t.energy_ev for t in found]),
-        gaps_ev=np.array([t.gap_ev for t in found]),
+        energies_ev=energies[:, bands].mean(axis=1),
+        gaps_ev=energies[:, filling] - energies[:, filling - 1],
         closed=closed,
         winding=winding,
     )
