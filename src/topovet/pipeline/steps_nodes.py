@@ -24,6 +24,9 @@ from topovet.symmetry.operator_set import build_operators
 from topovet.symmetry.operators import NotClosedError, WannierOperator, with_time_reversal
 from topovet.symmetry.results import TimeReversalTest
 
+MOST_SOLVES = {"standard": 60_000, "thorough": 400_000}
+"""Cap of the budget for few orbitals: where bands cross on a whole surface it is always spent."""
+
 OTHER_FILLINGS = 2
 """Fillings up to so many bands away are looked at for an insulator."""
 
@@ -64,7 +67,7 @@ def look_for_nodes(
                 reference=find_reference(lattice.bloch, crystal, electrons),
             ),
             np.array(known_k),
-            max_solves=budget(effort, lattice.model.n_orb),
+            max_solves=min(MOST_SOLVES[effort], budget(effort, lattice.model.n_orb)),
         )
 
 

@@ -19,14 +19,21 @@ from topovet.invariants.nodes.points import Case, as_vector, describe_points
 from topovet.invariants.nodes.results import NodalLine, NodeSearch, Pocket, PointNode
 from topovet.notation import k_text
 from topovet.spectrum.closings.distinct import (
+    NEIGHBOURHOOD,
+    between,
     distances_to,
-    distinct_points,
+    first_of_each,
     folded,
     snapped,
     unfolded,
 )
 from topovet.spectrum.closings.local import describe_touching
-from topovet.spectrum.closings.search import ClosingSearch, Cluster, search_closings
+from topovet.spectrum.closings.search import (
+    ClosingSearch,
+    Cluster,
+    follow_down,
+    search_closings,
+)
 from topovet.spectrum.closings.trace import STEP, TracedLine, is_on_line, is_on_surface, trace_line
 from topovet.spectrum.proof.prove import ProvenHamiltonian
 
@@ -66,20 +73,49 @@ def find_nodes(
     touching = snapped(case.bloch, found.touching_k, case.filling)
     traced = _lines(case, touching, found.images)
     lines, on_lines = traced.lines, _all_images(traced.lines, found.images)
-    seeds = distinct_points(
-        case.bloch, traced.rest, case.filling, case.crystal.reciprocal, found.images
-    )
+    reciprocal = case.crystal.reciprocal
+    seeds = traced.rest[
+        first_of_each(case.bloch, traced.rest, case.filling, reciprocal, found.images)
+    ]
     reason = traced.reason
     if not reason and len(seeds) + len(lines) > MOST_ORBITS:
         reason = f"closings in more than {MOST_ORBITS} places that symmetry does not relate"
     if reason:
         return _result(case, found, (), (), (), reason)
-    orbits = [unfolded(k, found.images) for k in seeds]
+    orbits = _orbits(hamiltonian, case, seeds, found.images)
     points = describe_points(case, orbits, on_lines)
     described = tuple(describe_line(case, line, found.images) for line in lines)
     pockets = _pockets(found.clusters, orbits, on_lines, found.images)
     reason = _incomplete(points, described, pockets, case.crystal.dimension)
     return _result(case, found, points, described, pockets, reason)
+
+
+def _orbits(
+    hamiltonian: ProvenHamiltonian, case: Case, seeds: FloatArray, images: IntArray
+) -> list[FloatArray]:
+    """(n, 3) nodes of each orbit in the whole zone, each brought to rest where it really is.
+
+    A symmetry that H breaks a little takes a node beside a node; and a seed may turn out to be an
+    image of another.
+    """
+    unit = float(np.linalg.norm(case.crystal.reciprocal, axis=1).min())
+    identity = np.eye(3, dtype=np.int64)[None]
+    taken, orbits = np.zeros((0, 3)), []
+    for seed in seeds:
+        there = unfolded(seed, images)
+        rest, _, _ = follow_down(hamiltonian, case.filling, there)
+        moved = np.linalg.norm(between(there, rest) @ case.crystal.reciprocal, axis=1)
+        near = (moved < NEIGHBOURHOOD * unit)[:, None]
+        nodes = snapped(case.bloch, folded(np.where(near, rest, there)), case.filling)
+        all_k = np.concatenate([taken, nodes])
+        kept = first_of_each(
+            case.bloch, all_k, case.filling, case.crystal.reciprocal, identity, in_order=True
+        )
+        new = all_k[kept[kept >= len(taken)]]
+        if len(new):
+            orbits.append(folded(new))
+            taken = np.concatenate([taken, folded(new)])
+    return orbits
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -53,14 +53,16 @@ def snapped(bloch: BlochSum, k_frac: FloatArray, filling: int) -> FloatArray:
     return np.where(better[:, None], near, k_frac)
 
 
-def distinct_points(
+def first_of_each(
     bloch: BlochSum,
     k_frac: FloatArray,
     filling: int,
     reciprocal: FloatArray,
     images: IntArray,
-) -> FloatArray:
-    """(m, 3) one of each set of points that are one closing or images of each other.
+    *,
+    in_order: bool = False,
+) -> IntArray:
+    """(m,) one of each set of points that are one closing or images of each other.
 
     Parameters
     ----------
@@ -72,20 +74,30 @@ def distinct_points(
         (3, 3), 1/angstrom.
     images
         (g, 3, 3) integers, k' = k @ image.
+    in_order
+        Whether the first of a set is taken, and not the one with the least gap.
     """
     gaps = direct_gaps(bloch, k_frac, filling) if len(k_frac) else np.zeros(0)
     unit = float(np.linalg.norm(reciprocal, axis=1).min())
-    kept: list[FloatArray] = []
-    kept_gaps: list[float] = []
-    for i in np.argsort(gaps, kind="stable"):
-        k, gap = k_frac[i], float(gaps[i])
+    kept: list[int] = []
+    order = np.arange(len(gaps)) if in_order else np.argsort(gaps, kind="stable")
+    for i in order.tolist():
         if not any(
-            _is_one(bloch, k, gap, other, other_gap, filling, reciprocal, images, unit)
-            for other, other_gap in zip(kept, kept_gaps, strict=True)
+            _is_one(
+                bloch,
+                k_frac[i],
+                float(gaps[i]),
+                k_frac[j],
+                float(gaps[j]),
+                filling,
+                reciprocal,
+                images,
+                unit,
+            )
+            for j in kept
         ):
-            kept.append(k)
-            kept_gaps.append(gap)
-    return np.array(kept).reshape(-1, 3)
+            kept.append(i)
+    return np.array(kept, dtype=np.int64)
 
 
 def _is_one(
