@@ -11,7 +11,7 @@ import pytest
 
 from invented_nodes import INCOMPLETE, WEYL, line, material_with, point, search
 from topovet.model.crystal import Crystal
-from topovet.report.figures import build_figures
+from topovet.report.figures import figure_makers
 from topovet.report.figures.nodes import nodes_figure
 from topovet.report.html import render_report
 from topovet.report.json_document import load_schema, verdict_json
@@ -37,10 +37,10 @@ def test_document_meets_the_schema_and_the_page_holds_the_nodes(nodes) -> None:
     document = json.loads(verdict_json(material.verdict))
     jsonschema.Draft202012Validator(load_schema()).validate(document)
     assert len(document["nodes"]) == len(nodes.points) + len(nodes.lines)
-    figures = build_figures(replace(material, bands=None))
+    figures = {"nodes": figure_makers(material)["nodes"]()}
     page = render_report(material, figures)
     assert 'id="nodes"' in page
-    assert ("may be incomplete" in page) == (not nodes.complete)
+    assert ("<b>The list may be incomplete" in page) == (not nodes.complete)
     assert figures["nodes"].count("<svg") == 1
 
 
