@@ -142,7 +142,7 @@ def _gap(verdict: Verdict) -> str:
         bound += f", indirect > {ev(gap.indirect_proved_min_eV)}"
     where = k_text(gap.direct_k, plain=True)
     return (
-        f"direct <= {ev(gap.direct_eV)} at k = {where}, indirect {ev(gap.indirect_eV)}; "
+        f"direct {_at_most(gap.direct_eV)} at k = {where}, indirect {ev(gap.indirect_eV)}; "
         f"{gap.status}{bound}"
     )
 
@@ -162,6 +162,11 @@ def _nodes(verdict: Verdict) -> list[tuple[str, str]]:
         elsewhere = mev(search.gap_elsewhere_meV)
         return [("nodes", f"{text}; elsewhere the gap is proved > {elsewhere}")]
     return [("nodes", f"{text}; maybe more: {search.reason}")]
+
+
+def _at_most(value: float) -> str:
+    words = ev(value)
+    return words if words.startswith("<") else f"<= {words}"
 
 
 def _residuals(verdict: Verdict) -> str:
