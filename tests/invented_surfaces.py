@@ -6,7 +6,14 @@ from dataclasses import replace
 
 import numpy as np
 
-from topovet.boundary.results import Crossing, SurfaceLine, SurfaceMap, SurfaceWitness
+from topovet.boundary.cone_results import Cone, Contour, EnergyMap, KramersPair, SurfaceStates
+from topovet.boundary.results import (
+    Crossing,
+    SurfaceLine,
+    SurfaceMap,
+    SurfaceWitness,
+    ThicknessSeries,
+)
 
 
 def crossing(net: int | None, *, termination: str = "upper", fraction: float = 0.41) -> Crossing:
@@ -85,3 +92,51 @@ def cone(termination: str = "upper half, Te outermost", *, spinful: bool = True)
         top_ev=5.4 - edge,
         bottom_ev=5.4 + edge,
     )
+
+
+def states(termination: str = "upper half, Te outermost") -> SurfaceStates:
+    """A straight cone of 3 eV angstrom at 5.2 eV, the same on both faces, with films."""
+    pairs = tuple(KramersPair(side, (0.0, 0.0), 5.2, 0.0, 5.0, 5.6) for side in (0, 1))
+    k, slope = np.linspace(0.01, 0.1, 10), 3.0
+    spin = np.tile([0.0, -0.6, 0.0], (12, 1))
+    contours = tuple(
+        Contour(
+            energy_ev=5.2 + e,
+            k_ang=np.full(12, abs(e) / slope),
+            velocity_ev_ang=np.full(12, np.sign(e) * slope),
+            area_ang2=float(np.pi * (e / slope) ** 2),
+            mass_m_e=7.62 * e / slope**2,
+            spin=np.sign(e) * spin,
+        )
+        for e in (-0.1, -0.03, 0.03, 0.1, 0.2)
+    )
+    cone = Cone(
+        pair=pairs[0],
+        azimuth_rad=np.pi * np.arange(6) / 6,
+        k_ang=k,
+        upper_ev=np.tile(5.2 + slope * k, (6, 1)),
+        lower_ev=np.tile(5.2 - slope * k, (6, 1)),
+        velocity_ev_ang=np.full(6, slope),
+        curvature_ev_ang2=np.zeros(6),
+        velocity_spread_ev_ang=0.02,
+        warping_ev_ang3=None,
+        decay_ang=12.0,
+        contours=contours,
+    )
+    films = ThicknessSeries((11.3, 22.6, 33.9, 45.2), (0.4, 0.05, 6e-3, 8e-4), (0.0, 0.0))
+    names = (termination, "lower half, Te outermost")
+    return SurfaceStates(names, pairs, (), (cone,), films, "up to 4 planes", (), _energy_map(cone))
+
+
+def _energy_map(cone: Cone) -> EnergyMap:
+    """The density of the straight cone at its Dirac point and 0.2 eV above, with its spin."""
+    azimuth, k = np.pi * np.arange(24) / 12, np.linspace(0.0, 0.09, 19)
+    energies, eta = (5.2, 5.4), 0.02
+    branches = [
+        eta / np.pi / ((np.array(energies)[:, None] - 5.2 - s * 3.0 * k) ** 2 + eta**2)
+        for s in (1, -1)
+    ]
+    density = np.repeat((branches[0] + branches[1])[:, None], 24, axis=1)
+    spin = np.zeros((2, 24, 19, 3))
+    spin[..., 1] = -0.6 * (branches[0] - branches[1])[:, None]
+    return EnergyMap(cone.pair.side, energies, azimuth, k, density, spin, eta)

@@ -79,16 +79,44 @@ def face_densities(
     at_a, at_b = states.conj().T @ a, states.conj().T @ b
     propagator = 1 / (energy[:, None] - levels)
     ends = _Ends(*(_between(x, propagator, y) for x, y in _pairs(at_a, at_b)))
-    joined = ends
-    scale = np.abs(ends.ab).max(initial=0.0)
-    for _ in range(MAX_DOUBLINGS):
-        if np.abs(joined.ab).max(initial=0.0) <= CONVERGED * scale:
-            break
-        joined = joined.doubled()
+    joined = _deep(ends)
     size = len(inside)
     upper = _face(states[:n_orb], propagator, at_a, joined.bb, ends.aa)
     lower = _face(states[size - n_orb :], propagator, at_b, joined.aa, ends.bb)
     return upper, lower
+
+
+class HalfCrystals:
+    """Both half-crystals at one k_par, ready for energies: the layer is diagonalised once.
+
+    Parameters
+    ----------
+    inside, across, negligible_ev
+        As in `face_densities`.
+    """
+
+    def __init__(self, inside: ComplexArray, across: ComplexArray, *, negligible_ev: float) -> None:
+        self._whole = inside, across
+        a, b = factors(across, negligible_ev)
+        self._plain = a.shape[1] > PLAIN_FROM * len(inside)
+        if not self._plain:
+            self._levels, states = np.linalg.eigh(inside)
+            at_a, at_b = states.conj().T @ a, states.conj().T @ b
+            self._pairs = _pairs(at_a, at_b)
+
+    def end_functions(self, energy: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+        """Green's functions (n_e, r, r), as much of them as shows every level there is.
+
+        Of the upper and of the lower half-crystal, on their outermost layer projected on the bonds
+        that would lead on; on the whole layer where these are many.
+        """
+        if self._plain:
+            many = [np.broadcast_to(m, (len(energy), *m.shape)) for m in self._whole]
+            found = decimate(many[0], many[1], energy)
+            return greens_functions(energy, found.upper), greens_functions(energy, found.lower)
+        propagator = 1 / (energy[:, None] - self._levels)
+        joined = _deep(_Ends(*(_between(x, propagator, y) for x, y in self._pairs)))
+        return joined.bb, joined.aa
 
 
 def _by_decimation(
@@ -135,6 +163,16 @@ class _Ends:
         solved = np.linalg.solve(np.eye(rank) - aa @ bb, np.concatenate([ab, aa @ ba], axis=2))
         p, q = solved[:, :, :rank], solved[:, :, rank:]
         return _Ends(aa + ab @ q, ab @ p, ba @ (ba + bb @ q), bb + ba @ (bb @ p))
+
+
+def _deep(ends: _Ends) -> _Ends:
+    """The stretch doubled until its two ends do not see each other."""
+    scale = np.abs(ends.ab).max(initial=0.0)
+    for _ in range(MAX_DOUBLINGS):
+        if np.abs(ends.ab).max(initial=0.0) <= CONVERGED * scale:
+            break
+        ends = ends.doubled()
+    return ends
 
 
 def _pairs(a: ComplexArray, b: ComplexArray) -> tuple[tuple[ComplexArray, ComplexArray], ...]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from topovet.boundary import cone_results as cones
 from topovet.boundary import results as boundary
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
@@ -126,6 +127,13 @@ STORED_TYPES = (
     boundary.SurfaceMap,
     TippingPoint,
     TippingSearch,
+    boundary.ThicknessSeries,
+    cones.KramersPair,
+    cones.Contour,
+    cones.Cone,
+    cones.EnergyMap,
+    cones.EdgeCrossing,
+    cones.SurfaceStates,
 )
 """Dataclasses that results on disk are made of."""
 

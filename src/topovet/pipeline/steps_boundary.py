@@ -2,7 +2,8 @@
 
 What they cost at standard effort, in CPU time of one core: the count 100 to 400 half-crystals, 0.2
 to 4 s for principal layers of 36 to 96 orbitals and as the cube of that beyond; the map as much
-work whatever the crystal, 1 to 3 s. Both are left out at quick effort.
+work whatever the crystal, 1 to 3 s; the bands of the surface 1 to 2 s, 10 s with principal layers
+of 96 orbitals. All are left out at quick effort.
 """
 
 from __future__ import annotations
@@ -10,10 +11,12 @@ from __future__ import annotations
 import numpy as np
 
 from topovet.boundary.cleavage import natural_surface
+from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.recut import Miller
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.boundary.spectral import adapted_path, compute_surface_maps
+from topovet.boundary.surface_states import Bulk, survey_states
 from topovet.boundary.witness import CRITERIA, DROPPED_SHARE, compute_surface, prepare_surface
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
@@ -103,6 +106,41 @@ def map_surface(
     )
 
 
+def follow_surface_states(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+    gap: GapSample,
+    surface: SurfaceWitness,
+) -> SurfaceStates:
+    """Dirac point, velocity, contours and films, where the surface must carry something."""
+    _check(context, gap)
+    if surface.status != "ok":
+        raise NotApplicable("the crossings of surface levels are not settled")
+    if not surface.chern and all(line.parity != 1 for line in surface.lines):
+        raise NotApplicable("no line between surface TRIM is crossed an odd number of times")
+    basis = hamiltonian_with_basis.basis
+    cut, _, stack = prepare_surface(
+        hamiltonian_with_basis.lattice.model,
+        declarations.crystal,
+        None if basis is None else basis.positions_frac,
+        surface.miller,
+        most_dropped_mev=MEV_PER_EV * DROPPED_SHARE * gap.direct_ev,
+    )
+    upper, lower = surface.terminations
+    return survey_states(
+        stack,
+        cut,
+        Bulk(electrons.filling, gap.vbm_ev, gap.cbm_ev, electrons.fermi_ev),
+        (upper, lower),
+        surface.lines,
+        kramers=time_reversal.present and bool(declarations.spinful),
+    )
+
+
 def _check(context: Context, gap: GapSample) -> None:
     if context.settings["effort"] == "quick":
         raise NotApplicable("left out at --effort quick")
@@ -144,6 +182,13 @@ TASKS = (
         "count crossings of surface levels",
         count_surface_crossings,
         needs=(*NEEDS, "time-reversal"),
+        settings=("surface", "effort"),
+    ),
+    Task(
+        "surface-states",
+        "follow the surface bands, find what can be measured of them",
+        follow_surface_states,
+        needs=(*NEEDS, "time-reversal", "surface"),
         settings=("surface", "effort"),
     ),
     Task(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
@@ -71,6 +72,7 @@ def collect_findings(
     lower_gaps: LowerGroups | None,
     surface: SurfaceWitness | None,
     tipping: TippingSearch | None,
+    surface_states: SurfaceStates | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
     """What all steps found, and why a step found nothing."""
@@ -104,6 +106,7 @@ def collect_findings(
         lower=lower_gaps,
         surface=surface,
         tipping=tipping,
+        surface_states=surface_states,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -196,6 +199,7 @@ SHOWN = (
     "lower",
     "surface",
     "tipping",
+    "surface_states",
     "interpolation",
     "audit",
     "decay",
@@ -232,6 +236,7 @@ IF_THERE = (
     "lower-gaps",
     "surface",
     "tipping",
+    "surface-states",
     "group",
     "interpolation",
 )

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.band_rep_results import BandRepWitness
@@ -122,6 +123,8 @@ class ReportMaterial:
         Groups of bands below lower gaps; None where they were not asked for.
     surface
         Crossings of surface levels; None where no surface was followed.
+    surface_states
+        Bands of the surface and what can be measured of them; None where they were not followed.
     surface_maps
         Spectral density of both terminations; empty where none was made.
     gap_proof, indirect_proof
@@ -161,6 +164,7 @@ class ReportMaterial:
     band_reps: BandRepWitness | None = None
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
+    surface_states: SurfaceStates | None = None
     surface_maps: tuple[SurfaceMap, ...] = ()
     gap_proof: GapProof | None = None
     indirect_proof: IndirectGapProof | None = None

@@ -42,6 +42,7 @@ def verdict_lines(verdict: Verdict) -> str:
         ("residuals", _residuals(verdict)),
         ("radius", f"{mev(verdict.robustness.radius_meV)}, {radius_note(verdict)}"),
         *((("tipping", tipping),) if (tipping := tipping_line(verdict)) else ()),
+        *([("measure", measure)] if (measure := _measurable(verdict)) else []),
         ("grade", "; ".join([verdict.confidence.grade, *verdict.confidence.reasons])),
     ]
     lines = [_title(verdict)]
@@ -167,6 +168,26 @@ def _nodes(verdict: Verdict) -> list[tuple[str, str]]:
 def _at_most(value: float) -> str:
     words = ev(value)
     return words if words.startswith("<") else f"<= {words}"
+
+
+def _measurable(verdict: Verdict) -> str:
+    """What an experiment could look for, in one line; empty where nothing is computed."""
+    numbers = verdict.measurable
+    edge, point = numbers.get("edge"), numbers.get("dirac_point")
+    if edge and edge["conductance_e2_h"] is not None:
+        speeds = [abs(c["velocity_m_s"]) for c in edge["crossings"]]
+        found = f", edge velocity {max(speeds):.2g} m/s" if speeds else ""
+        return f"{edge['kind']} edges, {edge['conductance_e2_h']} e2/h{found} (estimates)"
+    if not point or point["exposure_meV"] is None:
+        return ""
+    if "energy_eV" not in point or "surface_band" not in numbers:
+        return "Dirac point buried among bulk states"
+    where = f"{mev(point['exposure_meV'])} from the bulk bands ({point['status']})"
+    speed = numbers["surface_band"]["velocity_m_s"]
+    return (
+        f"Dirac point at {ev(point['energy_eV'])}, {where}, velocity {speed:.2g} m/s on the "
+        f"{point['termination']} (estimates)"
+    )
 
 
 def _residuals(verdict: Verdict) -> str:

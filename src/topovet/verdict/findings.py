@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
+from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.band_rep_results import BandRepWitness
@@ -74,6 +75,7 @@ class Findings:
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     tipping: TippingSearch | None = None
+    surface_states: SurfaceStates | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)
 

@@ -38,6 +38,7 @@ from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
 from topovet.verdict.grade import grade
 from topovet.verdict.inquiry import Inquiry
+from topovet.verdict.measurable import measurable
 from topovet.verdict.node_entries import node_entries, search_entry
 from topovet.verdict.raised import raise_flags
 from topovet.verdict.semimetal import SEMIMETALS, conclude_nodes
@@ -118,7 +119,7 @@ def judge(
         ),
         flags=flags,
         confidence=grade(findings, conclusion, flags),
-        measurable={},
+        measurable=measurable(findings, conclusion),
         provenance=ProvenanceEntry(
             version=topovet.__version__,
             packages={name: importlib.metadata.version(name) for name in PACKAGES},

@@ -27,7 +27,12 @@ def test_a_case_hears_its_surface(strong: Path, tmp_path: Path) -> None:
     surface = verdict.witnesses.surface
     assert (surface.status, surface.z2_strong) == ("ok", 1)
     assert verdict.agreement == "agree"
-    assert (tmp_path / "out" / "figures" / "surface.svg").is_file()
+    # E = sqrt(sin^2 k_1 + sin^2 k_2) with a cell of 3.8 angstrom: 3.8 eV angstrom
+    numbers = verdict.measurable
+    assert numbers["surface_band"]["velocity_eV_ang"] == pytest.approx(3.8, rel=0.01)
+    assert numbers["dirac_point"]["status"] == "exposed"
+    for name in ("surface", "energy-map", "contours", "landau", "films"):
+        assert (tmp_path / "out" / "figures" / f"{name}.svg").is_file()
 
 
 def test_the_surface_that_is_asked_for_is_followed(strong: Path) -> None:
@@ -71,3 +76,10 @@ def test_surfaces_without_kramers_pairs_are_mapped_only(tmp_path: Path) -> None:
     assert run.result("surface") is None
     assert run.states["surface"].state == "not-applicable"
     assert len(run.result("surface-map")) == 2
+
+
+def test_a_trivial_surface_is_not_followed(tmp_path: Path) -> None:
+    run = _run(write_case(wilson_dirac(m=-3.5), tmp_path / "case"))
+    assert run.result("surface-states") is None
+    assert run.states["surface-states"].state == "not-applicable"
+    assert "odd" in run.states["surface-states"].reason

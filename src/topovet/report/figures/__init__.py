@@ -9,6 +9,12 @@ from topovet.report.figures.bands import bands_figure, near_gap_window
 from topovet.report.figures.decay import decay_figure
 from topovet.report.figures.flow import flow_figure
 from topovet.report.figures.gap_map import gap_map_figure
+from topovet.report.figures.measurable import (
+    contours_figure,
+    energy_map_figure,
+    films_figure,
+    landau_figure,
+)
 from topovet.report.figures.nodes import nodes_figure
 from topovet.report.figures.operations import operations_figure
 from topovet.report.figures.surface import surface_figure
@@ -40,8 +46,8 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
     """A maker of SVG text for every figure that the material allows, by name.
 
     The names are "zone", "bands", "bands-near-gap", "gap-map", "operations", "flow", "nodes",
-    "surface", "decay", "tipping" and "tasks"; `render_report` places them, and each also stands
-    alone as a file.
+    "surface", "energy-map", "contours", "landau", "films", "decay", "tipping" and "tasks";
+    `render_report` places them, and each also stands alone as a file.
     """
     m = material
     trim = m.parity.trim if m.parity is not None else ()
@@ -65,6 +71,7 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
         makers["surface"] = lambda: _surface(m)
     if m.verdict.robustness.tipping:
         makers["tipping"] = lambda: tipping_figure(m.verdict.robustness.tipping)
+    makers |= _measurable_makers(m)
     if m.tasks:
         makers["tasks"] = lambda: tasks_figure(m.tasks)
     return makers
@@ -73,6 +80,26 @@ def figure_makers(material: ReportMaterial) -> dict[str, Callable[[], str]]:
 def build_figures(material: ReportMaterial) -> dict[str, str]:
     """Every figure that the material allows, by name: the SVG text of each."""
     return {name: make() for name, make in figure_makers(material).items()}
+
+
+def _measurable_makers(m: ReportMaterial) -> dict[str, Callable[[], str]]:
+    makers: dict[str, Callable[[], str]] = {}
+    states, numbers = m.surface_states, m.verdict.measurable
+    if not numbers.get("surface_band"):
+        return makers  # the verdict does not stand behind the surface's numbers
+    if states is not None and states.cones and states.cones[0].contours:
+        cone = states.cones[0]
+        name = states.terminations[cone.pair.side]
+        makers["contours"] = lambda: contours_figure(cone, name)
+        found = states.energy_map
+        if found is not None:
+            makers["energy-map"] = lambda: energy_map_figure(found, name, cone.pair.energy_ev)
+    if numbers.get("landau_levels"):
+        makers["landau"] = lambda: landau_figure(numbers["landau_levels"])
+    films = numbers.get("films") or {}
+    if "gap_meV" in films:
+        makers["films"] = lambda: films_figure(films)
+    return makers
 
 
 def _surface(m: ReportMaterial) -> str:
