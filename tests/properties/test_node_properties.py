@@ -24,7 +24,7 @@ def _perturbed(model: TightBindingModel, seed: int, size: float) -> TightBinding
     return build_model(model.r_cells, model.h_r + noise, spinful=False)
 
 
-@settings(max_examples=5, deadline=None)
+@settings(max_examples=3, deadline=None)
 @given(seed=st.integers(0, 10_000), size=st.sampled_from([0.02, 0.08]))
 def test_charges_add_up_to_zero_whatever_is_added(seed: int, size: float) -> None:
     found = bare_search(_perturbed(weyl_two_band(0.15), seed, size), 1, ORTHOGONAL)
