@@ -24,7 +24,7 @@ from topovet.symmetry.operator_set import build_operators
 from topovet.symmetry.operators import NotClosedError, WannierOperator, with_time_reversal
 from topovet.symmetry.results import TimeReversalTest
 
-MOST_SOLVES = {"standard": 60_000, "thorough": 400_000}
+MOST_SOLVES = {"standard": 40_000, "thorough": 400_000}
 """Cap of the budget for few orbitals: where bands cross on a whole surface it is always spent."""
 
 OTHER_FILLINGS = 2
