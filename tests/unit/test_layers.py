@@ -21,6 +21,7 @@ LAYERS = (
     "spectrum",
     "invariants",
     "boundary",
+    "deformation",
     "diagnosis",
     "verdict",
     "report",

@@ -18,11 +18,11 @@ A step is taken only if the exact objective falls; the derivatives need not be t
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray
-from topovet.model.fourier import BlochSum
 from topovet.spectrum.eigen import map_threads
 
 MULTIPLET, FINE_MULTIPLET = 0.02, 1e-4
@@ -38,6 +38,16 @@ SETTLED_STEP = 1e-9
 
 K_AT_A_TIME = 32
 """The matrices of a k fill some 100 n_orb^2 numbers: this many stay near the processor."""
+
+
+class SmoothHamiltonian(Protocol):
+    """A Hermitian matrix with two derivatives: a `BlochSum`, or one that depends on more than k."""
+
+    def lower_at(self, k_frac: FloatArray) -> ComplexArray: ...
+
+    def gradient(self, k_frac: FloatArray) -> ComplexArray: ...
+
+    def hessian(self, k_frac: FloatArray) -> ComplexArray: ...
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,7 +80,7 @@ class Objective:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class LocalMinima:
-    """Where the starting points came to rest, (n, 3), f there (n,) eV, and the solves it took."""
+    """Where the starting points came to rest, (n, d), f there (n,) eV, and the solves it took."""
 
     k_frac: FloatArray
     values: FloatArray
@@ -78,7 +88,7 @@ class LocalMinima:
 
 
 def descend(
-    bloch: BlochSum,
+    bloch: SmoothHamiltonian,
     objective: Objective,
     start: FloatArray,
     *,
@@ -97,7 +107,7 @@ def descend(
     objective
         What is minimised.
     start
-        (n, 3) fractional k.
+        (n, d) fractional k, d = 3 for a `BlochSum`.
     max_rounds
         Most steps for each start.
     multiplet
@@ -138,7 +148,7 @@ _Models = tuple[FloatArray, FloatArray, FloatArray]
 
 
 def _local_models(
-    bloch: BlochSum, objective: Objective, k_frac: FloatArray, multiplet: float
+    bloch: SmoothHamiltonian, objective: Objective, k_frac: FloatArray, multiplet: float
 ) -> _Models:
     """f (n,), and slope (n, 3) and second derivatives (n, 3, 3) of f or f squared."""
     parts = map_threads(
@@ -150,7 +160,7 @@ def _local_models(
 
 
 def _local_model(
-    bloch: BlochSum, objective: Objective, k_frac: FloatArray, multiplet: float
+    bloch: SmoothHamiltonian, objective: Objective, k_frac: FloatArray, multiplet: float
 ) -> _Models:
     energies, states = np.linalg.eigh(bloch.lower_at(k_frac))
     value = objective.of(energies)

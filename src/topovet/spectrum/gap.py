@@ -92,6 +92,25 @@ def sample_gap(
     )
 
 
+def lowest_direct_gaps(
+    bloch: BlochSum, mesh_energies: FloatArray, filling: int
+) -> tuple[FloatArray, FloatArray]:
+    """Local minima of the direct gap below the lowest mesh points: (n,) eV ascending, (n, 3) k.
+
+    Parameters
+    ----------
+    bloch, mesh_energies, filling
+        As for `sample_gap`.
+    """
+    objective = Objective(filling, 1, -1)
+    start = _starting_points(objective.of(mesh_energies))
+    first = descend(bloch, objective, start, max_rounds=FIRST_ROUNDS)
+    kept = np.argsort(first.values, kind="stable")[:N_FOLLOWED]
+    rest = descend(bloch, objective, first.k_frac[kept], max_rounds=LAST_ROUNDS)
+    order = np.argsort(rest.values, kind="stable")
+    return rest.values[order], _wrapped(rest.k_frac[order])
+
+
 def gap_status(direct_ev: float, indirect_ev: float) -> str:
     """ "gapless", "unresolved", "semimetal-direct-gap" or "insulator" from attained gaps in eV."""
     if direct_ev < GAPLESS_EV:

@@ -41,7 +41,7 @@ import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray
 from topovet.spectrum.descent import Objective
-from topovet.spectrum.proof.expansion import Expansion
+from topovet.spectrum.proof.expansion import SecondOrder
 
 EDGE_STATES = 2
 """States next to the gap that s is fitted to, and that say along which axis a box is loosest."""
@@ -71,7 +71,7 @@ class BoxBounds:
 
 
 def bound_boxes(
-    expansion: Expansion,
+    expansion: SecondOrder,
     objective: Objective,
     centres: FloatArray,
     half_widths: FloatArray,

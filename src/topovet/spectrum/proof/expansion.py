@@ -23,6 +23,7 @@ elements of all R are added before the norm is taken, which is far below the sum
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 
@@ -35,6 +36,27 @@ NORM_MARGIN = 1.0 + 1e-9
 """Norms of non-negative matrices are taken this much larger, for the rounding of their sums."""
 
 ROUNDING_FACTOR = 100.0
+
+
+class SecondOrder(Protocol):
+    """What a search over boxes asks of a Hamiltonian in coordinates u: an `Expansion`, or the like.
+
+    `derivatives` and `remainder_ev` refer to one unitary gauge about each u; `rounding_ev` bounds
+    the rounding error of every energy and bound.
+    """
+
+    @property
+    def n_orb(self) -> int: ...
+
+    @property
+    def n_axes(self) -> int: ...
+
+    @property
+    def rounding_ev(self) -> float: ...
+
+    def derivatives(self, u: FloatArray) -> tuple[ComplexArray, ComplexArray, ComplexArray]: ...
+
+    def remainder_ev(self, half_widths: FloatArray) -> float: ...
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -60,6 +82,10 @@ class Expansion:
     offsets: FloatArray
     reach: FloatArray
     rounding_ev: float
+
+    @property
+    def n_orb(self) -> int:
+        return self.model.n_orb
 
     @property
     def n_axes(self) -> int:
@@ -90,15 +116,23 @@ class Expansion:
 
 
 def expand(
-    model: TightBindingModel, bloch: BlochSum, origin: FloatArray, axes: FloatArray
+    model: TightBindingModel,
+    bloch: BlochSum,
+    origin: FloatArray,
+    axes: FloatArray,
+    *,
+    positions: FloatArray | None = None,
 ) -> Expansion:
-    """Set up the coordinates k = origin + u @ axes, fractional, for axes (d, 3)."""
+    """Set up the coordinates k = origin + u @ axes, fractional, for axes (d, 3).
+
+    `positions` (n_orb, 3) are those of the gauge, any will do; by default those that fit.
+    """
     phase = 2 * np.pi * (bloch.r_half @ origin)
     cos, sin = np.cos(phase)[:, None], np.sin(phase)[:, None]
     s, d = np.split(bloch.table, 2)
     # cos(x + p) S + sin(x + p) D, sorted by cos x and sin x
     table = np.concatenate([cos * s + sin * d, cos * d - sin * s])
-    along = fit_positions(model) @ axes.T
+    along = (fit_positions(model) if positions is None else positions) @ axes.T
     offsets = (along[None, :, :] - along[:, None, :]).transpose(2, 0, 1)
     return Expansion(
         model=model,

@@ -12,7 +12,7 @@ from topovet.spectrum.descent import Objective
 from topovet.spectrum.eigen import map_threads
 from topovet.spectrum.proof.block_bound import BoxBounds, bound_boxes
 from topovet.spectrum.proof.boxes import Boxes, joined, split, whole
-from topovet.spectrum.proof.expansion import Expansion
+from topovet.spectrum.proof.expansion import SecondOrder
 from topovet.spectrum.proof.zone import Region
 
 BATCH = 256
@@ -56,7 +56,7 @@ Improve = Callable[[FloatArray], tuple[float, FloatArray, int]]
 
 
 def search(
-    expansion: Expansion,
+    expansion: SecondOrder,
     region: Region,
     objective: Objective,
     *,
@@ -96,12 +96,12 @@ def search(
     value, k_frac = attained
     waiting = whole(expansion.n_axes) if start is None else start
     settled, left = [waiting.only(np.zeros(len(waiting), dtype=bool))], list[Boxes]()
-    remainders = _Remainders(expansion)
+    remainders = Remainders(expansion)
     n_solves = 0
     while len(waiting) and n_solves < max_solves and worth_while(value):
         order = np.argsort(waiting.lower, kind="stable")
         batch, waiting = waiting.only(order[:BATCH]), waiting.only(order[BATCH:])
-        bounds = _bound(expansion, objective, batch, remainders)
+        bounds = bound_batch(expansion, objective, batch, remainders)
         n_solves += len(batch)
         best = int(bounds.values.argmin())
         if bounds.values[best] < value:
@@ -127,10 +127,10 @@ def search(
     )
 
 
-class _Remainders:
+class Remainders:
     """`Expansion.remainder_ev` for each shape of box, computed once."""
 
-    def __init__(self, expansion: Expansion) -> None:
+    def __init__(self, expansion: SecondOrder) -> None:
         self._expansion, self._known = expansion, dict[bytes, float]()
 
     def of(self, levels: IntArray) -> FloatArray:
@@ -147,12 +147,13 @@ class _Remainders:
         return self._known[key]
 
 
-def _bound(
-    expansion: Expansion, objective: Objective, boxes: Boxes, remainders: _Remainders
+def bound_batch(
+    expansion: SecondOrder, objective: Objective, boxes: Boxes, remainders: Remainders
 ) -> BoxBounds:
+    """`bound_boxes` for many boxes, over threads."""
     rho = remainders.of(boxes.levels)
     centres, half_widths = boxes.centres, boxes.half_widths
-    n_orb = expansion.model.n_orb
+    n_orb = expansion.n_orb
     step = int(np.clip(CHUNK_BYTES // (16 * n_orb**2 * 40), 1, 64))
     parts = map_threads(
         lambda part: bound_boxes(expansion, objective, centres[part], half_widths[part], rho[part]),
