@@ -19,6 +19,7 @@ COMMANDS = {
     "screen": "Vet all cases below a folder, or those of a list.",
     "shortlist": "Rank what has been vetted: table, page, JSON, CSV.",
     "inspect": "Audit the files of a case, without topology.",
+    "deform": "Walk H from one case to another: closings, and what changes.",
     "tasks": "Show the task graph, with its state for a case.",
     "explain": "What a flag means, how it is tested, what to do.",
     "demo": "Write an invented screening campaign and run it.",

@@ -1,1 +1,1 @@
-"""Two comparable Hamiltonians go in; closings of the gap between them, and what changes, come out."""
+"""Two comparable Hamiltonians go in; closings of the gap between them, and what changes, leave."""

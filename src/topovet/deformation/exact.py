@@ -2,9 +2,10 @@
 
 Files carry few digits, Wigner-Seitz shifts that miss a tie by a hair break by some meV what holds
 on the mesh, and Wannier functions may break operations that the occupied bands have. Where a gap
-closes such a residual matters: it opens a crossing that symmetry protects, or smears it over a range
-of lambda; a proof can use a symmetry only at the price of its residual. The way is therefore walked
-between Hamiltonians that have the symmetries in question exactly, and what that moves is measured.
+closes such a residual matters: it opens a crossing that symmetry protects, or smears it over a
+range of lambda; a proof can use a symmetry only at the price of its residual. The way is therefore
+walked between Hamiltonians that have the symmetries in question exactly, and what that moves is
+measured.
 """
 
 from __future__ import annotations

@@ -50,8 +50,8 @@ MOST_FACTOR = 8.0
 MOST_RESTARTS = 3
 
 POINT_FACTOR = 4.0
-"""A range in which the attained gap stays below `GAPLESS_EV` is a point where it is no wider than so
-many times what the slope of the gap outside makes of that threshold."""
+"""A range in which the attained gap stays below `GAPLESS_EV` is a point where it is no wider than
+so many times what the slope of the gap outside makes of that threshold."""
 
 SLOPE_STEP = 1e-2
 
@@ -167,7 +167,8 @@ def _common_inversion(pair: ComparedPair) -> tuple[InversionOperator | None, str
     for end, operator in ((pair.a, one), (pair.b, two)):
         if operator is None:
             return None, f"{end.name} has no inversion"
-    assert one is not None and two is not None
+    assert one is not None
+    assert two is not None
     same = (
         np.allclose(one.centre_frac, two.centre_frac, atol=1e-6)
         and np.allclose(one.matrix, two.matrix, atol=1e-6)
@@ -269,14 +270,13 @@ def _pieces(closings: tuple[Closing, ...], resolution: float) -> list[tuple[floa
     at_closing = {edge for c in closings for edge in (c.lo, c.hi)}
     pieces = []
     for lo, hi in _open_ranges(closings):
-        middle = (lo + hi) / 2 if lo in at_closing and hi in at_closing else None
-        left = (
-            _towards(lo, hi if middle is None else middle, resolution) if lo in at_closing else []
-        )
-        right = (
-            _towards(hi, lo if middle is None else middle, resolution) if hi in at_closing else []
-        )
-        pieces += sorted([*left, *right] or [(lo, hi)])
+        both = lo in at_closing and hi in at_closing
+        made = []
+        if lo in at_closing:
+            made += _towards(lo, (lo + hi) / 2 if both else hi, resolution)
+        if hi in at_closing:
+            made += _towards(hi, (lo + hi) / 2 if both else lo, resolution)
+        pieces += sorted(made or [(lo, hi)])
     return pieces
 
 

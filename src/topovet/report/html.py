@@ -54,7 +54,7 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
     topovet.report.svg.UnsafeSvgError
         A figure holds something other than plain drawing.
     """
-    environment = _environment()
+    environment = page_environment()
     template = environment.get_template("report.html.j2")
     return template.render(
         m=material,
@@ -81,12 +81,13 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         slowest=_slowest(material.tasks),
         nearest_tipping_mev=nearest_mev(material.verdict),
         near_mev=NEAR_MEV,
-        colours=_colours(),
+        colours=page_colours(),
         fonts=FONTS,
     )
 
 
-def _environment() -> jinja2.Environment:
+def page_environment() -> jinja2.Environment:
+    """Templates with everything escaped, and the filters that pages share."""
     environment = jinja2.Environment(
         loader=jinja2.PackageLoader("topovet.report"),
         autoescape=True,
@@ -230,7 +231,7 @@ def _slowest(tasks: tuple[TaskEntry, ...]) -> float:
     return max((t.seconds for t in tasks if t.seconds is not None), default=0.0) or 1.0
 
 
-def _colours() -> dict[str, str]:
+def page_colours() -> dict[str, str]:
     """The palette as CSS variables, so that pages and figures share one list."""
     return {
         name.lower().replace("_", "-"): value

@@ -30,7 +30,7 @@ def verdict_json(verdict: Verdict) -> str:
     TypeError
         A value has no JSON form; the message names its place in the document.
     """
-    document = _plain(verdict.as_dict(), "verdict")
+    document = plain_document(verdict.as_dict(), "verdict")
     return json.dumps(document, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
 
 
@@ -41,14 +41,14 @@ def load_schema() -> dict[str, Any]:
     return schema
 
 
-def _plain(value: Any, where: str) -> Any:
+def plain_document(value: Any, where: str) -> Any:
     """Numpy scalars and arrays as plain Python, lone surrogates escaped, numbers checked."""
     if isinstance(value, np.generic | np.ndarray):
         value = value.tolist()
     if isinstance(value, Mapping):
-        return {_text(str(key)): _plain(v, f"{where}.{key}") for key, v in value.items()}
+        return {_text(str(key)): plain_document(v, f"{where}.{key}") for key, v in value.items()}
     if isinstance(value, list | tuple):
-        return [_plain(v, f"{where}[{i}]") for i, v in enumerate(value)]
+        return [plain_document(v, f"{where}[{i}]") for i, v in enumerate(value)]
     if isinstance(value, float) and not math.isfinite(value):
         raise NonFiniteNumberError(f"{where} is {value}; JSON has no such number")
     if isinstance(value, str):

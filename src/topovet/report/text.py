@@ -46,13 +46,13 @@ def verdict_lines(verdict: Verdict) -> str:
         ("grade", "; ".join([verdict.confidence.grade, *verdict.confidence.reasons])),
     ]
     lines = [_title(verdict)]
-    lines += [f"  {label:<10} {_plain(value)}" for label, value in rows]
+    lines += [f"  {label:<10} {plain_text(value)}" for label, value in rows]
     lines += [
-        f"  {flag.severity:<10} {flag.code}: {_plain(flag.summary)}" for flag in verdict.flags
+        f"  {flag.severity:<10} {flag.code}: {plain_text(flag.summary)}" for flag in verdict.flags
     ]
     cause = diagnosis_line(verdict)
     if cause:
-        lines.append(f"  {'cause':<10} {_plain(cause)}")
+        lines.append(f"  {'cause':<10} {plain_text(cause)}")
     return "\n".join(lines)
 
 
@@ -81,7 +81,7 @@ def _row(verdict: Verdict) -> tuple[str, ...]:
         verdict.confidence.grade,
         _flag_codes(verdict),
     )
-    return tuple(_shortened(_plain(cell)) for cell in cells)
+    return tuple(_shortened(plain_text(cell)) for cell in cells)
 
 
 def _shortened(cell: str) -> str:
@@ -101,7 +101,7 @@ def _title(verdict: Verdict) -> str:
     group = case.space_group
     place = f"space group {group.symbol} ({group.number})" if group else "space group unknown"
     spin = "with spin" if case.spinful else "without spin"
-    return _plain(
+    return plain_text(
         f"{case.name}: {case.formula}, {place}, {case.dimension}D, "
         f"{case.num_wann} Wannier functions {spin}"
     )
@@ -207,5 +207,6 @@ def _purity(parity: ParityEntry) -> float | None:
     return min((t.purity for t in parity.trim), default=None)
 
 
-def _plain(text: str) -> str:
+def plain_text(text: str) -> str:
+    """One line of characters that any terminal has."""
     return one_line(text).translate(_TYPOGRAPHY)

@@ -1,0 +1,109 @@
+"""A walk for the terminal: plain text with units."""
+
+from __future__ import annotations
+
+from topovet.deformation.conclusion import side_text
+from topovet.deformation.results import Closing, Walk
+from topovet.notation import ev, k_text, mev, one_line, z2_text
+from topovet.report.deformation.material import DeformationMaterial, EndEntry
+from topovet.report.text import plain_text
+from topovet.units import MEV_PER_EV
+
+
+def deformation_lines(material: DeformationMaterial) -> str:
+    """A summary of one walk, each number with its unit."""
+    made, conclusion = material.walk, material.conclusion
+    rows = [
+        ("A", _end(material.a)),
+        ("B", _end(material.b)),
+        ("compared", compared_text(made)),
+        ("averaged", averaged_text(made)),
+        ("outcome", conclusion.sentence),
+        *(("closing", closing_text(c)) for c in made.closings),
+        *(
+            (
+                "open",
+                f"lambda {s.lo:.4f} to {s.hi:.4f}: {side_text(s)}; "
+                f"gap proved over {100 * s.proved_share:.1f} % of it",
+            )
+            for s in made.segments
+        ),
+        ("proof", proof_text(made)),
+        *(("doubt", doubt) for doubt in conclusion.doubts),
+    ]
+    lines = [f"{one_line(material.a.name)} to {one_line(material.b.name)}"]
+    lines += [f"  {label:<10} {plain_text(value)}" for label, value in rows if value]
+    return "\n".join(lines)
+
+
+def _end(end: EndEntry) -> str:
+    errors = f"; errors: {', '.join(end.errors)}" if end.errors else ""
+    return f"{end.name}: {end.class_}, Z2 = {z2_text(end.z2)}, grade {end.grade}{errors}"
+
+
+def compared_text(made: Walk) -> str:
+    """On what grounds the two were mixed."""
+    found = made.comparison
+    strain = max(found.stretches, key=lambda s: abs(s - 1)) - 1
+    parts = [
+        f"overlap of H(R) {found.overlap:.4f}, of the worst function {found.least_overlap:.4f}",
+        f"cell strained by up to {100 * strain:+.2f} %",
+    ]
+    if found.displacement_ang is not None:
+        parts.append(f"sites moved by up to {found.displacement_ang:.3f} angstrom")
+    if found.substitutions:
+        parts.append(", ".join(found.substitutions))
+    if found.functions != "declared":
+        parts.append(found.functions)
+    if found.spin_added:
+        parts.append(f"{found.spin_added} is spinless and was taken for either spin")
+    return "; ".join(parts)
+
+
+def averaged_text(made: Walk) -> str:
+    """What was made exact, and what that moved."""
+    one, two = made.averagings
+    names = [f"{one.n_operations} operations"] if one.n_operations > 1 else []
+    names += ["inversion"] if made.inversion and one.n_operations == 1 else []
+    names += ["time reversal"] if made.time_reversal else []
+    if not names:
+        return "over nothing: no symmetry is shared"
+    return (
+        f"over {' and '.join(names)}; on the sampled k the levels beside the gap move by up to "
+        f"{mev(one.levels_moved_mev)} (A) and {mev(two.levels_moved_mev)} (B), H(k) by "
+        f"{mev(one.moved_mev)} and {mev(two.moved_mev)}"
+    )
+
+
+def closing_text(closing: Closing) -> str:
+    """Where the gap closes, and which levels change places."""
+    exchanges = "; ".join(
+        f"at {k_text(e.k)} {e.n_minus_before} odd states below the gap become {e.n_minus_after}"
+        for e in closing.exchanges
+    )
+    if closing.kind == "interval":
+        where = (
+            f"lambda {closing.lo:.4f} to {closing.hi:.4f}: gapless, at {closing.lam:.4f} for "
+            f"instance at k = {k_text(closing.k)}"
+        )
+    else:
+        where = f"lambda {closing.lam:.6f}, k = {k_text(closing.k)}: gap {_tiny(closing.gap_ev)}"
+    return f"{where}; {exchanges}" if exchanges else where
+
+
+def _tiny(gap_ev: float) -> str:
+    return "below 1e-7 eV" if gap_ev < 1e-7 else mev(MEV_PER_EV * gap_ev)
+
+
+def proof_text(made: Walk) -> str:
+    """What is proved, and at what price."""
+    if not made.stretches:
+        return made.proof_note
+    share = f"the gap is proved open over {100 * made.proved_share:.1f} % of lambda"
+    proved = [s.proved_min_ev for s in made.stretches if s.proved_min_ev > 0]
+    least = f", nowhere below {ev(min(proved))} there" if proved else ""
+    beside = (
+        f"; {made.resolution:.4f} on each side of a closing is left out" if made.closings else ""
+    )
+    note = f"; {made.proof_note}" if made.proof_note else ""
+    return f"{share}{least} ({made.n_solves} eigenvalue problems){beside}{note}"
