@@ -85,13 +85,13 @@ def _end_segment(walk: Walk, lam: float) -> Segment | None:
 def _contradictions(walk: Walk) -> tuple[str, ...]:
     found = []
     for segment in walk.segments:
-        where = f"lambda {segment.lo:.4f} to {segment.hi:.4f}"
+        where = f"λ = {segment.lo:.4f} to {segment.hi:.4f}"
         if not segment.consistent:
             found.append(
                 f"indices differ within {where} although no closing was found there: one was missed"
             )
         found += [
-            f"parities and Wilson loops disagree at lambda = {side.lam:.4f}"
+            f"parities and Wilson loops disagree at λ = {side.lam:.4f}"
             for side in segment.sides
             if side.agreement == "disagree"
         ]
@@ -100,7 +100,7 @@ def _contradictions(walk: Walk) -> tuple[str, ...]:
 
 def _open_sides(walk: Walk) -> tuple[str, ...]:
     return tuple(
-        f"at lambda = {side.lam:.4f} {note}"
+        f"at λ = {side.lam:.4f} {note}"
         for segment in walk.segments
         for side in segment.sides
         for note in side.notes
@@ -132,11 +132,11 @@ def _single(value: int | None) -> tuple[int, ...] | None:
 
 
 def index_text(name: str, value: tuple[int, ...]) -> str:
-    """Z2 = 1;(000), Z4 = 1, eta = 2, C = 1 or C = (0, 0, 1)."""
+    """Z₂ = 1;(000), Z₄ = 1, η = 2, C = 1 or C = (0, 0, 1)."""
     if name == "z2":
-        return f"Z2 = {z2_text(value)}"
+        return f"Z₂ = {z2_text(value)}"
     plain = str(value[0]) if len(value) == 1 else f"({', '.join(map(str, value))})"
-    symbol = {"z4": "Z4", "eta4": "eta", "chern": "C"}[name]
+    symbol = {"z4": "Z₄", "eta4": "η", "chern": "C"}[name]
     return f"{symbol} = {plain}"
 
 
@@ -160,7 +160,7 @@ def _sentence(walk: Walk, outcome: str, proved: bool, changes: tuple[Change, ...
         return "Undetermined: what was found contradicts itself, see the doubts."
     if outcome == "stays-open":
         how = (
-            "is proved to stay open at every k and every lambda"
+            "is proved to stay open at every k and every λ"
             if walk.proved_throughout
             else "was met open wherever it was looked at, which is no proof"
         )
@@ -177,12 +177,12 @@ def _known_index(walk: Walk) -> str:
 
 def _place(closing: Closing) -> str:
     if closing.kind == "interval":
-        return f"over the range of lambda from {closing.lo:.4f} to {closing.hi:.4f}"
+        return f"over the range of λ from {closing.lo:.4f} to {closing.hi:.4f}"
     exchanges = ", ".join(
         f"odd states below it at {k_text(e.k)} go from {e.n_minus_before} to {e.n_minus_after}"
         for e in closing.exchanges
     )
-    at = f"at lambda = {closing.lam:.4f}, k = {k_text(closing.k)}"
+    at = f"at λ = {closing.lam:.4f}, k = {k_text(closing.k)}"
     return f"{at} ({exchanges})" if exchanges else at
 
 

@@ -25,6 +25,10 @@ KEPT_PER_LAMBDA = 6
 FOLLOWED = 6
 """Of all starting points so many, those with the smallest gaps, are followed at each lambda."""
 
+ASIDE = np.array([0.0047, -0.0029, 0.0061])
+"""Each is followed from beside it as well: on a symmetry element the gap may be a saddle without a
+slope, as between two nodes that have just parted."""
+
 DIFFERENT_K = 1e-3
 """Starting points nearer than this in every component are one."""
 
@@ -165,8 +169,11 @@ class GapCurve:
         return inner
 
     def _lowest_starts(self, lam: float) -> FloatArray:
+        """(n, 3) k to start from at lambda."""
         gaps = self.objective.of(eigenvalues(self.path.bloch_at(lam), self.starts))
-        return np.asarray(self.starts[np.argsort(gaps, kind="stable")[:FOLLOWED]])
+        chosen = self.starts[np.argsort(gaps, kind="stable")[:FOLLOWED]]
+        aside = np.where(self.periodic, ASIDE, 0.0)
+        return np.concatenate([chosen, chosen + aside])
 
     def _note(self, lam: float, gap_ev: float, k_frac: FloatArray) -> None:
         known = self.found.get(lam)

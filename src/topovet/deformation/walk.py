@@ -335,6 +335,6 @@ def _proof_note(effort: str, stretches: Sequence[ProvedStretch]) -> str:
         return ""
     lo, hi, width = left[0].lo, left[-1].hi, sum(s.hi - s.lo for s in left)
     return (
-        f"the budget ended with the gap only sampled over {width:.4f} of lambda, between "
+        f"the budget ended with the gap only sampled over {width:.4f} of λ, between "
         f"{lo:.4f} and {hi:.4f}"
     )

@@ -9,6 +9,8 @@ from topovet.report.deformation.material import DeformationMaterial, EndEntry
 from topovet.report.text import plain_text
 from topovet.units import MEV_PER_EV
 
+_SYMBOLS = str.maketrans({"λ": "lambda", "₄": "4", "η": "eta", "Å": "angstrom"})
+
 
 def deformation_lines(material: DeformationMaterial) -> str:
     """A summary of one walk, each number with its unit."""
@@ -23,7 +25,7 @@ def deformation_lines(material: DeformationMaterial) -> str:
         *(
             (
                 "open",
-                f"lambda {s.lo:.4f} to {s.hi:.4f}: {side_text(s)}; "
+                f"λ = {s.lo:.4f} to {s.hi:.4f}: {side_text(s)}; "
                 f"gap proved over {100 * s.proved_share:.1f} % of it",
             )
             for s in made.segments
@@ -32,13 +34,17 @@ def deformation_lines(material: DeformationMaterial) -> str:
         *(("doubt", doubt) for doubt in conclusion.doubts),
     ]
     lines = [f"{one_line(material.a.name)} to {one_line(material.b.name)}"]
-    lines += [f"  {label:<10} {plain_text(value)}" for label, value in rows if value]
+    lines += [f"  {label:<10} {_plain(value)}" for label, value in rows if value]
     return "\n".join(lines)
+
+
+def _plain(text: str) -> str:
+    return plain_text(text.translate(_SYMBOLS))
 
 
 def _end(end: EndEntry) -> str:
     errors = f"; errors: {', '.join(end.errors)}" if end.errors else ""
-    return f"{end.name}: {end.class_}, Z2 = {z2_text(end.z2)}, grade {end.grade}{errors}"
+    return f"{end.name}: {end.class_}, Z₂ = {z2_text(end.z2)}, grade {end.grade}{errors}"
 
 
 def compared_text(made: Walk) -> str:
@@ -47,7 +53,7 @@ def compared_text(made: Walk) -> str:
     strain = max(found.stretches, key=lambda s: abs(s - 1)) - 1
     parts = [
         f"overlap of H(R) {found.overlap:.4f}, of the worst function {found.least_overlap:.4f}",
-        f"cell strained by up to {100 * strain:+.2f} %",
+        f"cell strained by up to {_percent(strain)}",
     ]
     if found.displacement_ang is not None:
         parts.append(f"sites moved by up to {found.displacement_ang:.3f} angstrom")
@@ -68,11 +74,18 @@ def averaged_text(made: Walk) -> str:
     names += ["time reversal"] if made.time_reversal else []
     if not names:
         return "over nothing: no symmetry is shared"
-    return (
+    said = (
         f"over {' and '.join(names)}; on the sampled k the levels beside the gap move by up to "
         f"{mev(one.levels_moved_mev)} (A) and {mev(two.levels_moved_mev)} (B), H(k) by "
         f"{mev(one.moved_mev)} and {mev(two.moved_mev)}"
     )
+    ends = ((one, made.samples[0]), (two, made.samples[-1]))
+    if any(a.moved_mev >= MEV_PER_EV * sample.gap_ev / 2 for a, sample in ends):
+        said += (
+            "; that is half of the gap there or more: that the average is in the phase of the "
+            "Hamiltonian itself rests on its indices"
+        )
+    return said
 
 
 def closing_text(closing: Closing) -> str:
@@ -83,12 +96,16 @@ def closing_text(closing: Closing) -> str:
     )
     if closing.kind == "interval":
         where = (
-            f"lambda {closing.lo:.4f} to {closing.hi:.4f}: gapless, at {closing.lam:.4f} for "
+            f"λ = {closing.lo:.4f} to {closing.hi:.4f}: gapless, at {closing.lam:.4f} for "
             f"instance at k = {k_text(closing.k)}"
         )
     else:
-        where = f"lambda {closing.lam:.6f}, k = {k_text(closing.k)}: gap {_tiny(closing.gap_ev)}"
+        where = f"λ = {closing.lam:.6f}, k = {k_text(closing.k)}: gap {_tiny(closing.gap_ev)}"
     return f"{where}; {exchanges}" if exchanges else where
+
+
+def _percent(part: float) -> str:
+    return f"{100 * part:+.2f} %".replace("-", "−")
 
 
 def _tiny(gap_ev: float) -> str:
@@ -99,7 +116,7 @@ def proof_text(made: Walk) -> str:
     """What is proved, and at what price."""
     if not made.stretches:
         return made.proof_note
-    share = f"the gap is proved open over {100 * made.proved_share:.1f} % of lambda"
+    share = f"the gap is proved open over {100 * made.proved_share:.1f} % of λ"
     proved = [s.proved_min_ev for s in made.stretches if s.proved_min_ev > 0]
     least = f", nowhere below {ev(min(proved))} there" if proved else ""
     beside = (

@@ -35,9 +35,9 @@ def deformation_figure(material: DeformationMaterial, *, name: str = "deform") -
     made = material.walk
     shown = _distinct(made)
     with drawing(name):
-        figure = new_figure(7.8, 5.9 if shown else 3.3)
+        figure = new_figure(7.8, 6.4 if shown else 3.3)
         if shown:
-            halves = figure.subfigures(2, 1, squeeze=False, height_ratios=(3.2, 2.7))
+            halves = figure.subfigures(2, 1, squeeze=False, height_ratios=(3.2, 3.2))
             top, bottom = halves[0, 0], halves[1, 0]
             panels = bottom.subplots(1, len(shown), squeeze=False, sharey=False)[0]
             for axes, (levels, others) in zip(panels, shown, strict=True):
@@ -199,13 +199,13 @@ def _words(material: DeformationMaterial) -> str:
     made = material.walk
     gaps = [s.gap_ev for s in made.samples]
     closed = "; ".join(
-        f"closed from lambda {c.lo:.4f} to {c.hi:.4f}"
+        f"closed from λ = {c.lo:.4f} to {c.hi:.4f}"
         if c.kind == "interval"
-        else f"closed at lambda {c.lam:.4f}"
+        else f"closed at λ = {c.lam:.4f}"
         for c in made.closings
     )
     return (
-        f"Smallest direct gap attained along lambda from {gaps[0]:.3f} eV at A to "
+        f"Smallest direct gap attained along λ from {gaps[0]:.3f} eV at A to "
         f"{gaps[-1]:.3f} eV at B; {closed or 'no closing met'}; proved open over "
         f"{100 * made.proved_share:.1f} percent. {material.conclusion.sentence}"
     )
