@@ -4,14 +4,14 @@ from __future__ import annotations
 
 import importlib.metadata
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 import topovet
-from topovet.deformation.comparison import EndMember, NotComparableError, with_spin
+from topovet.deformation.comparison import EndMember, NotComparableError, compare_ends, with_spin
 from topovet.deformation.conclusion import Conclusion, conclude
 from topovet.deformation.results import Walk
 from topovet.deformation.walk import walk
@@ -108,14 +108,19 @@ def deform_cases(
         A case cannot be vetted, or the folder cannot be written.
     """
     settings = {"filling": filling, "effort": effort}
-    runs, verdicts = [], []
-    for name, case in (("A", case_a), ("B", case_b)):
-        told = _told(name, observe)
-        verdicts.append(vet_case(case, out=out / name, settings=settings, observe=told).verdict)
-        runs.append(start_run(case, out=out / name, settings=settings))
+    cases = (("A", case_a), ("B", case_b))
+    # whether the two can be mixed is known long before they are vetted
+    compare_ends(
+        *_ends([start_run(case, out=out / name, settings=settings) for name, case in cases])
+    )
+    verdicts = [
+        vet_case(case, out=out / name, settings=settings, observe=_told(name, observe)).verdict
+        for name, case in cases
+    ]
     for verdict in verdicts:
         _check_sound(verdict)
-    ends = [_end(run, verdict) for run, verdict in zip(runs, verdicts, strict=True)]
+    runs = [start_run(case, out=out / name, settings=settings) for name, case in cases]
+    ends = _ends(runs)
     operators = _shared_operators(runs, ends) if average else ()
     with one_blas_thread():
         made = walk(
@@ -144,7 +149,15 @@ def _check_sound(verdict: Verdict) -> None:
         )
 
 
-def _end(run: Run, verdict: Verdict) -> EndMember:
+def _ends(runs: list[Run]) -> tuple[EndMember, EndMember]:
+    with one_blas_thread():
+        a, b = (_end(run) for run in runs)
+    if a.name == b.name:
+        a, b = replace(a, name=f"{a.name} (A)"), replace(b, name=f"{b.name} (B)")
+    return a, b
+
+
+def _end(run: Run) -> EndMember:
     based = run.result("hamiltonian-with-basis")
     declared, test = run.result("declarations"), run.result("inversion")
     inversion: InversionOperator | None = None
@@ -154,7 +167,7 @@ def _end(run: Run, verdict: Verdict) -> EndMember:
         except NoInversionError:
             inversion = None
     return EndMember(
-        name=verdict.case.name,
+        name=declared.name,
         crystal=declared.crystal,
         basis=based.basis,
         model=based.lattice.model,
@@ -164,14 +177,16 @@ def _end(run: Run, verdict: Verdict) -> EndMember:
     )
 
 
-def _shared_operators(runs: list[Run], ends: list[EndMember]) -> tuple[WannierOperator, ...]:
+def _shared_operators(
+    runs: list[Run], ends: tuple[EndMember, EndMember]
+) -> tuple[WannierOperator, ...]:
     """Unitary operations that the occupied bands of both have, acting alike on both; else none."""
     groups: list[GroupTest | None] = [run.result("group") for run in runs]
     if groups[0] is None or groups[1] is None:
         return ()
-    if any(end.model.spinful for end in ends):
-        ends = [end if end.model.spinful else with_spin(end) for end in ends]
     a, b = ends
+    if a.model.spinful != b.model.spinful:
+        a, b = (end if end.model.spinful else with_spin(end) for end in ends)
     if a.basis is None or b.basis is None or a.basis.n_orb != b.basis.n_orb:
         return ()
     shared = [t for t in _kept(groups[0]) if any(_same(t, u) for u in _kept(groups[1]))]
