@@ -23,16 +23,12 @@ def _assert_proved(made: Walk) -> None:
     assert made.proved_share == pytest.approx(1 - left_out, abs=2e-3)
 
 
-@pytest.fixture(scope="module")
-def there() -> Walk:
-    return walk(end_of(wilson_dirac(m=-3.6)), end_of(wilson_dirac(m=0.2)), effort="quick")
-
-
-def test_wilson_dirac_closes_at_each_critical_mass(there: Walk) -> None:
+def test_wilson_dirac_closes_at_each_critical_mass() -> None:
     """m = -3 at Gamma, m = -1 at the three X: 0;(000), 1;(000), 0;(111).
 
     Qi, Hughes, Zhang, PRB 78, 195424 (2008); Fu, Kane, PRB 76, 045302 (2007), Eqs. 3.26-27.
     """
+    there = walk(end_of(wilson_dirac(m=-3.6)), end_of(wilson_dirac(m=0.2)), effort="quick")
     assert [c.kind for c in there.closings] == ["point", "point"]
     assert there.closings[0].lam == pytest.approx(0.6 / 3.8, abs=NEAR)
     assert there.closings[0].k == (0, 0, 0)
@@ -44,15 +40,20 @@ def test_wilson_dirac_closes_at_each_critical_mass(there: Walk) -> None:
     assert conclude(there).outcome == "closes"
 
 
-def test_the_way_back_is_the_mirror_image(there: Walk) -> None:
-    back = walk(end_of(wilson_dirac(m=0.2)), end_of(wilson_dirac(m=-3.6)), effort="quick")
-    forth = [(c.lam, len(c.exchanges)) for c in there.closings]
-    assert [(1 - c.lam, len(c.exchanges)) for c in back.closings[::-1]] == pytest.approx(
-        np.array(forth), abs=NEAR
+def test_the_way_back_is_the_mirror_image() -> None:
+    one, two = end_of(bhz(m=-1.2)), end_of(bhz(m=1.5, a=0.8, d=0.2))
+    there, back = walk(one, two, effort="quick"), walk(two, one, effort="quick")
+    assert [1 - c.lam for c in back.closings] == pytest.approx(
+        [c.lam for c in there.closings], abs=NEAR
     )
     assert [s.sides[0].z2 for s in back.segments[::-1]] == [s.sides[0].z2 for s in there.segments]
-    for one, two in zip(there.exchanges, back.exchanges[::-1], strict=True):
-        assert (one.n_minus_before, one.n_minus_after) == (two.n_minus_after, two.n_minus_before)
+    for forth, home in zip(there.exchanges, back.exchanges[::-1], strict=True):
+        before, after = forth.n_minus_before, forth.n_minus_after
+        assert (before, after) == (home.n_minus_after, home.n_minus_before)
+    gaps = {round(s.lam, 9): s.gap_ev for s in there.samples}
+    for sample in back.samples:
+        if round(1 - sample.lam, 9) in gaps:
+            assert sample.gap_ev == pytest.approx(gaps[round(1 - sample.lam, 9)], abs=NEAR)
     assert back.comparison.overlap == pytest.approx(there.comparison.overlap)
 
 
@@ -71,7 +72,7 @@ def test_the_quantum_well_inverts_at_zero_mass() -> None:
 def test_chern_number_falls_to_zero_at_the_edge_of_the_phase() -> None:
     """|C| = 1 for 0 < |m| < 2, closing at m = -2 at Gamma: Qi, Wu, Zhang, PRB 74, 085308 (2006)."""
     ends = [end_of(qi_wu_zhang(m=m), time_reversal=False) for m in (-1.0, -2.6)]
-    made = walk(ends[0], ends[1])
+    made = walk(ends[0], ends[1], effort="quick")
     (closing,) = made.closings
     assert closing.lam == pytest.approx(1 / 1.6, abs=NEAR)
     assert closing.k == (0, 0, 0)
@@ -79,7 +80,6 @@ def test_chern_number_falls_to_zero_at_the_edge_of_the_phase() -> None:
     assert before is not None
     assert abs(before[0]) == 1
     assert after == (0,)
-    _assert_proved(made)
 
 
 def test_the_chern_number_of_haldane_changes_at_k() -> None:
@@ -123,7 +123,11 @@ def polar_wilson_dirac(*, m: float, field: tuple[float, float] = (1.0, 0.5)) -> 
     return with_onsite(wilson_dirac(m=m), onsite)
 
 
-@pytest.mark.parametrize("field", [(1.0, 0.5), (1.0, 0.0)], ids=["one mirror", "four mirrors"])
+@pytest.mark.parametrize(
+    "field",
+    [pytest.param((1.0, 0.5), marks=pytest.mark.endurance), (1.0, 0.0)],
+    ids=["one mirror", "four mirrors"],
+)
 def test_without_inversion_a_gapless_range_comes_between(field: tuple[float, float]) -> None:
     """Murakami, New J. Phys. 9, 356 (2007): a Weyl phase between the two insulators in 3D.
 

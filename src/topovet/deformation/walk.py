@@ -210,7 +210,8 @@ def _find_closings(curve: GapCurve, exchanges: tuple[ParityExchange, ...]) -> tu
         else:
             found = (lam, lam)  # levels change places; what breaks inversion keeps them apart
         if ranges and found[0] <= ranges[-1][1]:
-            found = (ranges.pop()[0], max(found[1], ranges[-1][1] if ranges else found[1]))
+            before = ranges.pop()
+            found = (before[0], max(before[1], found[1]))
         ranges.append(found)
     return tuple(_closing(curve, lo, hi, exchanges) for lo, hi in ranges)
 

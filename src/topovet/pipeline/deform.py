@@ -118,7 +118,7 @@ def deform_cases(
         for name, case in cases
     ]
     for verdict in verdicts:
-        _check_sound(verdict)
+        check_sound(verdict)
     runs = [start_run(case, out=out / name, settings=settings) for name, case in cases]
     ends = _ends(runs)
     operators = _shared_operators(runs, ends) if average else ()
@@ -139,7 +139,8 @@ def _told(name: str, observe: Observer) -> Observer:
     return lambda event, text: observe(event, f"{name}: {text}")
 
 
-def _check_sound(verdict: Verdict) -> None:
+def check_sound(verdict: Verdict) -> None:
+    """Raise `NotComparableError` where an end is not the Hamiltonian that it is taken for."""
     bad = [f for f in verdict.flags if f.severity == "error" and f.code in ABOUT_THE_INPUT]
     if bad:
         raise NotComparableError(
@@ -151,13 +152,14 @@ def _check_sound(verdict: Verdict) -> None:
 
 def _ends(runs: list[Run]) -> tuple[EndMember, EndMember]:
     with one_blas_thread():
-        a, b = (_end(run) for run in runs)
+        a, b = (end_of_run(run) for run in runs)
     if a.name == b.name:
         a, b = replace(a, name=f"{a.name} (A)"), replace(b, name=f"{b.name} (B)")
     return a, b
 
 
-def _end(run: Run) -> EndMember:
+def end_of_run(run: Run) -> EndMember:
+    """One end of a walk from the results of a run; asks for no more of it than it needs."""
     based = run.result("hamiltonian-with-basis")
     declared, test = run.result("declarations"), run.result("inversion")
     inversion: InversionOperator | None = None

@@ -10,12 +10,14 @@ import jsonschema
 import pytest
 from click.testing import CliRunner
 
+import invented_dossiers as invented
 from case_writer import write_case
 from lattice_models import LatticeModel, bhz
 from topovet.cli.deform import command
 from topovet.deformation.comparison import NotComparableError
-from topovet.pipeline.deform import Deformation, deform_cases
+from topovet.pipeline.deform import Deformation, check_sound, deform_cases
 from topovet.report.deformation.document import load_deformation_schema
+from topovet.verdict.flags import Flag
 
 
 def _case(model: LatticeModel, folder: Path, name: str, **options: int) -> Path:
@@ -53,6 +55,7 @@ def test_document_page_figure_and_both_dossiers_are_written(
     assert document["averaging"]["levels_moved_meV"] == pytest.approx([0, 0], abs=1e-2)
 
 
+@pytest.mark.endurance
 def test_the_same_input_gives_the_same_bytes(
     cases: tuple[Path, Path], made: tuple[Path, Deformation]
 ) -> None:
@@ -86,12 +89,20 @@ def test_what_cannot_be_mixed_is_refused_before_it_is_vetted(
     assert not list((tmp_path / "out").glob("*/verdict.json"))
 
 
-def test_an_end_with_an_error_of_its_input_is_refused(
-    cases: tuple[Path, Path], tmp_path: Path
+@pytest.mark.parametrize(
+    ("code", "severity", "refused"),
+    [
+        ("filling-off", "error", True),
+        ("filling-off", "warning", False),
+        ("gap-closes", "error", False),
+    ],
+)
+def test_an_end_is_refused_for_an_error_of_its_input_alone(
+    code: str, severity: str, refused: bool
 ) -> None:
-    """A Fermi energy that counts other electrons than the filling that is stated."""
-    folder = _case(bhz(m=1.5), tmp_path, "QW-4")
-    (folder / "case.toml").write_text("filling = 2\nfermi_eV = -30.0\ndimension = 2\n")
-    with pytest.raises(NotComparableError, match="QW-4 carries the flag filling-off"):
-        deform_cases(cases[0], folder, out=tmp_path / "out", effort="quick")
-    assert not (tmp_path / "out" / "deform.json").exists()
+    verdict = replace(invented.strong().verdict, flags=(Flag(code, severity, "It is off."),))
+    if not refused:
+        check_sound(verdict)
+        return
+    with pytest.raises(NotComparableError, match=r"carries the flag filling-off .*\(It is off\)"):
+        check_sound(verdict)
