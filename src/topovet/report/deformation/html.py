@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from topovet.deformation.conclusion import side_text
+from topovet.deformation.conclusion import index_text, side_text
+from topovet.notation import z2_text
 from topovet.report.deformation.material import DeformationMaterial
 from topovet.report.deformation.text import (
     averaged_text,
@@ -46,6 +47,7 @@ def render_deformation(material: DeformationMaterial, figure: str) -> str:
             w=material.walk,
             c=conclusion,
             title=title,
+            indices=[_index_of_end(material, letter) for letter in ("A", "B")],
             figure=inline_svg("deform", figure),
             side_text=side_text,
             closing_text=closing_text,
@@ -58,3 +60,14 @@ def render_deformation(material: DeformationMaterial, figure: str) -> str:
             fonts=FONTS,
         )
     )
+
+
+def _index_of_end(material: DeformationMaterial, letter: str) -> tuple[str, str]:
+    """Name and value of the index of an end: Z2 of its verdict, else the Chern number."""
+    end, lam = (material.a, 0.0) if letter == "A" else (material.b, 1.0)
+    if end.z2 is None:
+        for segment in material.walk.segments:
+            for side in segment.sides:
+                if side.lam == lam and side.chern is not None:
+                    return f"Chern number of {letter}", index_text("chern", side.chern)[4:]
+    return f"Z₂ of {letter}", z2_text(end.z2)

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from topovet.arrays import FloatArray
 from topovet.deformation.conclusion import side_text
-from topovet.deformation.results import Closing, TrimLevels, Walk
+from topovet.deformation.results import Closing, ProvedStretch, TrimLevels, Walk
 from topovet.notation import k_text
 from topovet.report.deformation.material import DeformationMaterial
 from topovet.report.figures import palette
@@ -62,17 +63,8 @@ def _draw_gap(axes: Axes, made: Walk) -> None:
     axes.set_ylim(0, high)
     axes.set_xlabel("λ   (0: A, 1: B)")
     axes.set_ylabel("smallest direct gap  (eV)")
-    for stretch in made.stretches:
-        if stretch.proved_min_ev > 0:
-            axes.fill_between(
-                [stretch.lo, stretch.hi],
-                0,
-                stretch.proved_min_ev,
-                facecolor=palette.FILLED,
-                alpha=0.28,
-                linewidth=0,
-                zorder=1,
-            )
+    for edges, bounds in _proved_runs(made.stretches):
+        axes.stairs(bounds, edges, fill=True, color=palette.FILLED, alpha=0.28, lw=0, zorder=1)
     axes.plot(lams, gaps, color=palette.FILLED, linewidth=1.3, zorder=3)
     apart = _apart(lams)
     axes.plot(lams[apart], gaps[apart], "o", markersize=3.4, color=palette.FILLED, zorder=3)
@@ -168,6 +160,19 @@ def _single_levels(energies: FloatArray) -> list[FloatArray]:
         if not kept or np.abs(column - kept[-1]).max() > 1e-6:
             kept.append(column)
     return kept
+
+
+def _proved_runs(stretches: Sequence[ProvedStretch]) -> list[tuple[list[float], list[float]]]:
+    """Edges (n + 1,) and bounds (n,) of runs of stretches that touch."""
+    runs: list[tuple[list[float], list[float]]] = []
+    for stretch in stretches:
+        if stretch.proved_min_ev <= 0:
+            continue
+        if not runs or abs(runs[-1][0][-1] - stretch.lo) > 1e-12:
+            runs.append(([stretch.lo], []))
+        runs[-1][0].append(stretch.hi)
+        runs[-1][1].append(stretch.proved_min_ev)
+    return runs
 
 
 def _apart(lams: FloatArray) -> list[int]:
