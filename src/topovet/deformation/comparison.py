@@ -105,7 +105,7 @@ def compare_ends(a: EndMember, b: EndMember) -> ComparedPair:
     if a.model.spinful != b.model.spinful:
         spin_added = "B" if a.model.spinful else "A"
         a, b = (end if end.model.spinful else with_spin(end) for end in (a, b))
-    _check_counts(a, b)
+    _check_counts(a, b, spin_added)
     stretches, rotation = _check_cells(a, b)
     functions, displacement = _check_functions(a, b)
     a, b = on_one_list(a, b)
@@ -161,11 +161,12 @@ def _spin_basis(basis: OrbitalBasis) -> OrbitalBasis:
     )
 
 
-def _check_counts(a: EndMember, b: EndMember) -> None:
+def _check_counts(a: EndMember, b: EndMember, spin_added: str) -> None:
+    twice = " (the spinless one counted twice)" if spin_added else ""
     if a.model.n_orb != b.model.n_orb:
         raise NotComparableError(
             f"{a.name} has {a.model.n_orb} Wannier functions and {b.name} has {b.model.n_orb}"
-            f"{_counted_with_spin(a, b)}: the two cannot be mixed; use runs with the same "
+            f"{twice}: the two cannot be mixed; use runs with the same "
             "projections and windows."
         )
     if a.crystal.periodic != b.crystal.periodic:
@@ -177,13 +178,9 @@ def _check_counts(a: EndMember, b: EndMember) -> None:
     if a.filling != b.filling:
         raise NotComparableError(
             f"{a.name} has {a.filling} filled bands and {b.name} has {b.filling}"
-            f"{_counted_with_spin(a, b)}: no gap leads from one to the other; give one --filling "
+            f"{twice}: no gap leads from one to the other; give one --filling "
             "for both, or mend the electron count of one."
         )
-
-
-def _counted_with_spin(a: EndMember, b: EndMember) -> str:
-    return " (a spinless one counted twice)" if a.model.spinful and b.model.spinful else ""
 
 
 def _check_cells(a: EndMember, b: EndMember) -> tuple[FloatArray, float]:

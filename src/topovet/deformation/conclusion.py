@@ -160,7 +160,7 @@ def _sentence(walk: Walk, outcome: str, proved: bool, changes: tuple[Change, ...
         return "Undetermined: what was found contradicts itself, see the doubts."
     if outcome == "stays-open":
         how = (
-            "is proved to stay open at every k and every λ"
+            "is proved to stay open at every k and every λ, shared symmetries made exact"
             if walk.proved_throughout
             else "was met open wherever it was looked at, which is no proof"
         )

@@ -52,7 +52,7 @@ def test_overlap_is_that_of_its_formula() -> None:
 @pytest.mark.parametrize(
     ("other", "says"),
     [
-        (end_of(bhz(m=1.0), name="layer"), "8 Wannier functions and layer has 6"),
+        (end_of(bhz(m=1.0), name="layer"), "8 Wannier functions and layer has 6: the two"),
         (replace(B, filling=4), "2 filled bands and second has 4"),
         (turned(B, [0, 1]), "signs of Wannier functions 1, 2"),
         (turned(B, [2]), "signs of Wannier function 3"),
@@ -129,6 +129,15 @@ def test_a_spinless_end_is_taken_for_either_spin() -> None:
         assert pair.a.inversion is not None
         assert pair.b.inversion is not None
         np.testing.assert_array_equal(pair.a.inversion.matrix, pair.b.inversion.matrix)
+
+
+def test_a_spinless_end_of_another_size_is_refused_with_its_spin_counted() -> None:
+    full = end_of(fu_kane_mele(lambda_so=0.0))
+    bare = without_spin(full, name="bare")
+    with pytest.raises(
+        NotComparableError, match=r"8 .* bare has 4 \(the spinless one counted twice"
+    ):
+        compare_ends(A, bare)
 
 
 def test_substituted_species_are_told() -> None:

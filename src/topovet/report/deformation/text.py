@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from topovet.deformation.conclusion import side_text
 from topovet.deformation.results import Closing, Walk
-from topovet.notation import ev, k_text, mev, one_line, z2_text
+from topovet.notation import angstrom, ev, k_text, mev, one_line, z2_text
 from topovet.report.deformation.material import DeformationMaterial, EndEntry
 from topovet.report.text import plain_text
 from topovet.units import MEV_PER_EV
@@ -53,10 +53,11 @@ def compared_text(made: Walk) -> str:
     strain = max(found.stretches, key=lambda s: abs(s - 1)) - 1
     parts = [
         f"overlap of H(R) {found.overlap:.4f}, of the worst function {found.least_overlap:.4f}",
-        f"cell strained by up to {_percent(strain)}",
+        "same cell" if abs(strain) < 1e-5 else f"cell strained by up to {_percent(strain)}",
     ]
     if found.displacement_ang is not None:
-        parts.append(f"sites moved by up to {found.displacement_ang:.3f} angstrom")
+        moved = found.displacement_ang
+        parts.append("same sites" if moved < 1e-5 else f"sites moved by up to {angstrom(moved)}")
     if found.substitutions:
         parts.append(", ".join(found.substitutions))
     if found.functions != "declared":
@@ -75,7 +76,7 @@ def averaged_text(made: Walk) -> str:
     if not names:
         return "over nothing: no symmetry is shared"
     said = (
-        f"over {' and '.join(names)}; on the sampled k the levels beside the gap move by up to "
+        f"over {' and '.join(names)}; on the sampled k the levels beside the gap move by "
         f"{mev(one.levels_moved_mev)} (A) and {mev(two.levels_moved_mev)} (B), H(k) by "
         f"{mev(one.moved_mev)} and {mev(two.moved_mev)}"
     )
