@@ -23,21 +23,36 @@ def _assert_proved(made: Walk) -> None:
     assert made.proved_share == pytest.approx(1 - left_out, abs=2e-3)
 
 
-def test_wilson_dirac_closes_at_each_critical_mass() -> None:
+@pytest.mark.parametrize(
+    ("masses", "lam", "n_pi", "indices"),
+    [
+        ((-3.6, -2.2), 3 / 7, 0, ((0, 0, 0, 0), (1, 0, 0, 0))),
+        pytest.param(
+            *((-1.6, 0.4), 0.3, 1, ((1, 0, 0, 0), (0, 1, 1, 1))), marks=pytest.mark.endurance
+        ),
+    ],
+    ids=["Gamma", "X"],
+)
+def test_wilson_dirac_closes_at_its_critical_masses(
+    masses: tuple[float, float],
+    lam: float,
+    n_pi: int,
+    indices: tuple[tuple[int, ...], tuple[int, ...]],
+) -> None:
     """m = -3 at Gamma, m = -1 at the three X: 0;(000), 1;(000), 0;(111).
 
     Qi, Hughes, Zhang, PRB 78, 195424 (2008); Fu, Kane, PRB 76, 045302 (2007), Eqs. 3.26-27.
     """
-    there = walk(end_of(wilson_dirac(m=-3.6)), end_of(wilson_dirac(m=0.2)), effort="quick")
-    assert [c.kind for c in there.closings] == ["point", "point"]
-    assert there.closings[0].lam == pytest.approx(0.6 / 3.8, abs=NEAR)
-    assert there.closings[0].k == (0, 0, 0)
-    assert there.closings[1].lam == pytest.approx(2.6 / 3.8, abs=NEAR)
-    assert sum(there.closings[1].k) == 0.5
-    assert [len(c.exchanges) for c in there.closings] == [1, 3]
-    assert [s.sides[0].z2 for s in there.segments] == [(0, 0, 0, 0), (1, 0, 0, 0), (0, 1, 1, 1)]
-    assert all(side.agreement == "agree" for s in there.segments for side in s.sides)
-    assert conclude(there).outcome == "closes"
+    made = walk(*(end_of(wilson_dirac(m=m)) for m in masses), effort="quick")
+    (closing,) = made.closings
+    assert closing.kind == "point"
+    assert closing.lam == pytest.approx(lam, abs=NEAR)
+    assert [c for c in closing.k if c] == [0.5] * n_pi
+    assert {sum(c == 0.5 for c in e.k) for e in closing.exchanges} == {n_pi}
+    assert len(closing.exchanges) == (3 if n_pi else 1)
+    assert tuple(s.sides[0].z2 for s in made.segments) == indices
+    assert all(side.agreement == "agree" for s in made.segments for side in s.sides)
+    assert conclude(made).outcome == "closes"
 
 
 @pytest.fixture(scope="module")
