@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-from topovet.invariants.band_rep_results import (
+from topovet.invariants.band_reps.results import (
     ATOMIC,
     FRAGILE,
     NOT_GAPPED,

@@ -5,15 +5,15 @@ from __future__ import annotations
 import numpy as np
 
 from lattice_models import LatticeModel
-from topovet.invariants.tipping import (
+from topovet.invariants.tipping.by_gap import GapGround
+from topovet.invariants.tipping.by_parity import TrimGround, trim_stars
+from topovet.invariants.tipping.results import TippingPoint
+from topovet.invariants.tipping.search import (
     Parameter,
     choose_parameters,
     search_by_gap,
     search_by_parity,
 )
-from topovet.invariants.tipping_gap import GapGround
-from topovet.invariants.tipping_parity import TrimGround, trim_stars
-from topovet.invariants.tipping_results import TippingPoint
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.orbital_groups import declared_groups
 from topovet.model.spin_parts import spin_frame, spin_purity

@@ -12,8 +12,8 @@ from d2d_models import D2D_ROTATIONS, wilson_dirac_without_inversion
 from mirror_groups import grouped
 from plain_wilson import plain_hwcc
 from topovet.arrays import ComplexArray, FloatArray, IntArray
-from topovet.invariants.band_rep_results import ATOMIC, FRAGILE, STABLE, BandRepWitness
-from topovet.invariants.band_rep_witness import GroupInUse, compute_band_rep_witness
+from topovet.invariants.band_reps.results import ATOMIC, FRAGILE, STABLE, BandRepWitness
+from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
 from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal

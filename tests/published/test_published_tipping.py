@@ -19,11 +19,11 @@ from lattice_models import (
     wilson_dirac,
 )
 from tipping_searches import by_gap, by_parity
-from topovet.invariants.closing import Closing
-from topovet.invariants.tipping import Parameter, projector_sum
-from topovet.invariants.tipping_gap import BRACKET, GapGround, _at_the_end
-from topovet.invariants.tipping_parity import trim_stars
-from topovet.invariants.tipping_results import BY_GAP, SHIFT
+from topovet.invariants.tipping.by_gap import BRACKET, GapGround, _at_the_end
+from topovet.invariants.tipping.by_parity import trim_stars
+from topovet.invariants.tipping.closing import Closing
+from topovet.invariants.tipping.results import BY_GAP, SHIFT
+from topovet.invariants.tipping.search import Parameter, projector_sum
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.orbital_groups import OrbitalGroup
 from topovet.spectrum.eigen import mesh_eigenvalues

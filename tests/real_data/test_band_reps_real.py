@@ -7,8 +7,8 @@ import pytest
 
 from real_cases import reference
 from real_operators import operated
-from topovet.invariants.band_rep_results import ATOMIC, STABLE, BandRepWitness
-from topovet.invariants.band_rep_witness import GroupInUse, compute_band_rep_witness
+from topovet.invariants.band_reps.results import ATOMIC, STABLE, BandRepWitness
+from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
 
 pytestmark = pytest.mark.real_data
 

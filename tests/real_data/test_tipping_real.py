@@ -18,8 +18,8 @@ import pytest
 
 from real_cases import CASES
 from topovet.invariants.parity import compute_parity
-from topovet.invariants.tipping import projector_sum
-from topovet.invariants.tipping_results import TippingPoint, TippingSearch
+from topovet.invariants.tipping.results import TippingPoint, TippingSearch
+from topovet.invariants.tipping.search import projector_sum
 from topovet.invariants.wilson_sheet import CRITERIA
 from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.fourier import BlochSum, added_sum

@@ -7,14 +7,14 @@ from topovet.boundary import results as boundary
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants import band_rep_results as band_reps
 from topovet.invariants import irrep_results as irreps
 from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
 from topovet.invariants import rotation_indicators as rotations
+from topovet.invariants.band_reps import results as band_reps
 from topovet.invariants.nodes import results as nodes
 from topovet.invariants.rotation_eigenvalues import EigenvalueCount
-from topovet.invariants.tipping_results import TippingPoint, TippingSearch
+from topovet.invariants.tipping.results import TippingPoint, TippingSearch
 from topovet.model.cell_relation import CellRelation
 from topovet.model.crystal import Crystal
 from topovet.model.decay import DecayProfile

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from topovet.invariants.band_rep_results import BandRepWitness
-from topovet.invariants.band_rep_witness import GroupInUse, compute_band_rep_witness
+from topovet.invariants.band_reps.results import BandRepWitness
+from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian

@@ -8,7 +8,7 @@ from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants.band_rep_results import BandRepWitness
+from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
@@ -16,7 +16,7 @@ from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.nodes.results import NodeSearch
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
-from topovet.invariants.tipping_results import TippingSearch
+from topovet.invariants.tipping.results import TippingSearch
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context

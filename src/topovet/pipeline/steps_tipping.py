@@ -10,15 +10,15 @@ import numpy as np
 from topovet.arrays import BoolArray
 from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ParityWitness, WilsonWitness
-from topovet.invariants.tipping import (
+from topovet.invariants.tipping.by_gap import GapGround
+from topovet.invariants.tipping.by_parity import TrimGround, trim_stars
+from topovet.invariants.tipping.results import TippingSearch
+from topovet.invariants.tipping.search import (
     choose_parameters,
     conclude_search,
     search_by_gap,
     search_by_parity,
 )
-from topovet.invariants.tipping_gap import GapGround
-from topovet.invariants.tipping_parity import TrimGround, trim_stars
-from topovet.invariants.tipping_results import TippingSearch
 from topovet.model.declarations import Declarations
 from topovet.model.orbital_groups import OrbitalGroup, declared_groups, element_groups
 from topovet.model.shift_choice import ShiftProposal

@@ -7,11 +7,11 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from topovet.invariants.closing import REOPENED_EV, gap_minima, gap_on_the_way
 from topovet.invariants.mirror_witness import MirrorWitness
-from topovet.invariants.tipping import Parameter
-from topovet.invariants.tipping_gap import BEYOND
-from topovet.invariants.tipping_results import TippingPoint
+from topovet.invariants.tipping.by_gap import BEYOND
+from topovet.invariants.tipping.closing import REOPENED_EV, gap_minima, gap_on_the_way
+from topovet.invariants.tipping.results import TippingPoint
+from topovet.invariants.tipping.search import Parameter
 from topovet.model.declarations import Declarations
 from topovet.model.fourier import BlochSum, added_sum
 from topovet.model.spin_parts import Frame

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from topovet.invariants.band_rep_results import (
+from topovet.invariants.band_reps.results import (
     ATOMIC,
     FRAGILE,
     NOT_GAPPED,

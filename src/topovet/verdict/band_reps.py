@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from topovet.invariants.band_rep_results import AtomicLimit, BandRepWitness, BandSet, LineLevels
+from topovet.invariants.band_reps.results import AtomicLimit, BandRepWitness, BandSet, LineLevels
 from topovet.verdict.document import BandRepresentationsEntry
 from topovet.verdict.findings import Findings
 

@@ -17,7 +17,7 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
-from topovet.invariants.band_rep_results import FRAGILE, STABLE
+from topovet.invariants.band_reps.results import FRAGILE, STABLE
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorPlane
 from topovet.notation import nonzero_by_plane

@@ -8,14 +8,14 @@ from dataclasses import dataclass, field
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
-from topovet.invariants.band_rep_results import BandRepWitness
+from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
 from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.nodes.results import NodeSearch
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.invariants.rotation_indicators import S4Indicator
-from topovet.invariants.tipping_results import TippingSearch
+from topovet.invariants.tipping.results import TippingSearch
 from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.spectrum.proof.results import GapProof, IndirectGapProof

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from topovet.invariants.band_rep_results import NOT_GAPPED
+from topovet.invariants.band_reps.results import NOT_GAPPED
 from topovet.notation import mev
 from topovet.verdict import criteria
 from topovet.verdict.findings import Findings

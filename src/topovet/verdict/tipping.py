@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from topovet.invariants.tipping_results import BY_GAP, SCALE, TippingPoint
+from topovet.invariants.tipping.results import BY_GAP, SCALE, TippingPoint
 from topovet.notation import nonzero_by_plane, significant, z2_text
 from topovet.verdict.conclude import Conclusion
 from topovet.verdict.findings import Findings

@@ -10,8 +10,8 @@ import pytest
 
 from case_writer import write_case
 from lattice_models import LatticeModel, bhz, kane_mele
-from topovet.invariants.tipping import choose_parameters
-from topovet.invariants.tipping_results import BY_GAP, BY_PARITY, TippingSearch
+from topovet.invariants.tipping.results import BY_GAP, BY_PARITY, TippingSearch
+from topovet.invariants.tipping.search import choose_parameters
 from topovet.model.orbital_groups import OrbitalGroup
 from topovet.model.spin_parts import SpinPurity
 from topovet.pipeline.dossier import start_run

@@ -8,7 +8,7 @@ import pytest
 
 import invented_band_reps as band_reps
 import invented_dossiers as invented
-from topovet.invariants.band_rep_results import BandSet
+from topovet.invariants.band_reps.results import BandSet
 from topovet.report.band_rep_words import indicator_group_name, indicator_value, limit_text, reading
 from topovet.report.html import render_report
 

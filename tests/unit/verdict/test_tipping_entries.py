@@ -11,7 +11,7 @@ import pytest
 
 import invented_dossiers as invented
 from invented_findings import SOUND
-from topovet.invariants.tipping_results import (
+from topovet.invariants.tipping.results import (
     BY_GAP,
     BY_PARITY,
     SCALE,

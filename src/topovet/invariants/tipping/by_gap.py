@@ -13,14 +13,14 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from topovet.arrays import FloatArray
-from topovet.invariants.closing import (
+from topovet.invariants.tipping.closing import (
     REOPENED_EV,
     Closing,
     closing_rate,
     first_closing,
     gap_minima,
 )
-from topovet.invariants.tipping_results import BY_GAP, SCALE, TippingPoint
+from topovet.invariants.tipping.results import BY_GAP, SCALE, TippingPoint
 from topovet.invariants.wilson_sheet import CRITERIA
 from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.fourier import BlochSum, added_sum

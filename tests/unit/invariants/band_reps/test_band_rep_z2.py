@@ -7,7 +7,7 @@ import itertools
 import pytest
 
 from space_group_samples import sample_group
-from topovet.invariants.band_rep_z2 import NOTHING, z2_from_levels
+from topovet.invariants.band_reps.z2 import NOTHING, z2_from_levels
 from topovet.symmetry.bandreps.indicator_group import (
     BandRepresentations,
     compute_band_representations,

@@ -10,7 +10,7 @@ import numpy as np
 
 from topovet.arrays import IntArray
 from topovet.invariants.band_irreps import MIN_PURITY, measure_content
-from topovet.invariants.band_rep_results import PointColumns
+from topovet.invariants.band_reps.results import PointColumns
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.notation import k_text, mev

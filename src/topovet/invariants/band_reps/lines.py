@@ -8,8 +8,8 @@ from collections.abc import Sequence
 import numpy as np
 
 from topovet.arrays import IntArray
-from topovet.invariants.band_rep_levels import corep_labels, names_at
-from topovet.invariants.band_rep_results import LineLevels, PointColumns
+from topovet.invariants.band_reps.levels import corep_labels, names_at
+from topovet.invariants.band_reps.results import LineLevels, PointColumns
 from topovet.symmetry.bandreps.compatibility import Relation
 from topovet.symmetry.bandreps.corepresentations import CorepTable, find_coreps
 from topovet.symmetry.bandreps.double_group import little_group_at

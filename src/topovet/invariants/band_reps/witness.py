@@ -9,11 +9,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.arrays import IntArray
-from topovet.invariants.band_rep_class import Classifier
-from topovet.invariants.band_rep_levels import Levels, read_levels
-from topovet.invariants.band_rep_lines import connect_levels
-from topovet.invariants.band_rep_results import NOT_GAPPED, UNRESOLVED, BandRepWitness, BandSet
-from topovet.invariants.band_rep_z2 import NOTHING, ContradictionError, z2_from_levels
+from topovet.invariants.band_reps.classify import Classifier
+from topovet.invariants.band_reps.levels import Levels, read_levels
+from topovet.invariants.band_reps.lines import connect_levels
+from topovet.invariants.band_reps.results import NOT_GAPPED, UNRESOLVED, BandRepWitness, BandSet
+from topovet.invariants.band_reps.z2 import NOTHING, ContradictionError, z2_from_levels
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.spectrum.eigen import one_blas_thread

@@ -21,8 +21,8 @@ import numpy as np
 from scipy.optimize import Bounds, LinearConstraint, milp
 
 from topovet.arrays import FloatArray, IntArray
-from topovet.invariants.band_rep_levels import corep_labels, names_at
-from topovet.invariants.band_rep_results import (
+from topovet.invariants.band_reps.levels import corep_labels, names_at
+from topovet.invariants.band_reps.results import (
     ATOMIC,
     FRAGILE,
     NOT_GAPPED,

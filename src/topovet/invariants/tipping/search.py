@@ -14,9 +14,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray
-from topovet.invariants.tipping_gap import GapGround, gap_slope, tip_by_gap
-from topovet.invariants.tipping_parity import TrimGround, keeps_inversion, tip_by_parity
-from topovet.invariants.tipping_results import (
+from topovet.invariants.tipping.by_gap import GapGround, gap_slope, tip_by_gap
+from topovet.invariants.tipping.by_parity import TrimGround, keeps_inversion, tip_by_parity
+from topovet.invariants.tipping.results import (
     BY_GAP,
     BY_PARITY,
     SCALE,
