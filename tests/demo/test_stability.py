@@ -67,7 +67,8 @@ def _lay(name: str, folder: Path) -> Path:
     [
         pytest.param("GX-06", marks=pytest.mark.endurance),  # 16 bands, triclinic
         pytest.param("GX-19", marks=pytest.mark.endurance),  # the longest diagnosis
-        pytest.param("CdTe", marks=pytest.mark.real_data),
+        pytest.param("CdTe", marks=[pytest.mark.real_data, pytest.mark.endurance]),
+        "GX-12",
     ],
 )
 def test_folder_process_hash_seed_and_threads_do_not_matter(name: str, tmp_path: Path) -> None:

@@ -12,6 +12,7 @@ from topovet.report.json_document import load_schema
 pytestmark = pytest.mark.real_data
 
 
+@pytest.mark.xdist_group("Bi2Se3")
 def test_bi2se3_has_the_cone_of_the_literature() -> None:
     """One Dirac point at the zone centre, 3 to 6e5 m/s, left-handed above it, the same on both
     faces.
@@ -44,6 +45,7 @@ def test_bi2se3_has_the_cone_of_the_literature() -> None:
         assert row["k_F_max_per_ang"] < 1.05 * row["k_F_min_per_ang"]
 
 
+@pytest.mark.xdist_group("Bi2Se3")
 def test_bi2se3_films_lose_their_gap_within_some_quintuple_layers() -> None:
     """Zhang et al., Nat. Phys. 6, 584 (2010), doi:10.1038/nphys1689: a gap below six quintuple
     layers of 9.5 angstrom (from memory)."""
@@ -54,10 +56,12 @@ def test_bi2se3_films_lose_their_gap_within_some_quintuple_layers() -> None:
     assert 5 <= np.searchsorted(-gap, -1.0) + 1 <= 8
 
 
+@pytest.mark.xdist_group("Sb2Se3")
 def test_a_trivial_insulator_is_promised_nothing() -> None:
     assert list(vetted_in_full("Sb2Se3").measurable) == ["note"]
 
 
+@pytest.mark.xdist_group("Bi111_bilayer")
 def test_a_bismuth_bilayer_conducts_at_its_edges() -> None:
     """2 e^2/h, helical; Murakami, PRL 97, 236805 (2006), doi:10.1103/PhysRevLett.97.236805.
 
@@ -74,6 +78,7 @@ def test_a_bismuth_bilayer_conducts_at_its_edges() -> None:
     assert list(vetted_in_full("Sb111_bilayer").measurable) == ["note"]
 
 
+@pytest.mark.xdist_group("BiTeI_pressed")
 def test_the_two_faces_of_a_polar_crystal_differ() -> None:
     """BiTeI under pressure ends in Te or in I: their levels have no reason to agree."""
     numbers = vetted_in_full("BiTeI_pressed").measurable

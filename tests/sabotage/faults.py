@@ -16,16 +16,20 @@ SHORT_MODEL, SHORT_REAL = "kane_mele", "Bi111_bilayer"
 
 
 def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
-    """Whether a trial belongs to the short part: one model at the first and the last size, of the
-    other models every third fault in turn at the last, and one first-principles case where only
-    such a case will do."""
+    """Whether a trial belongs to the short part.
+
+    One model at the first and the last size, of the other models every fifth fault in turn at the
+    last (every third of those that the one model is spared), and one first-principles case where
+    only such a case will do.
+    """
     sizes = fault.sizes_for(case)
     if case.name == SHORT_MODEL:
         return size in (sizes[0], sizes[-1])
     if case.name == SHORT_REAL:
         return fault.only_real and size == sizes[-1]
     turn = FAULTS.index(fault) + list(CLEAN_CASES).index(case.name)
-    return not case.real and size == sizes[-1] and turn % 3 == 0
+    every = 5 if fault.sizes_for(CLEAN_CASES[SHORT_MODEL]) else 3
+    return not case.real and size == sizes[-1] and turn % every == 0
 
 
 def trials() -> list[tuple[CleanCase, Fault, float]]:

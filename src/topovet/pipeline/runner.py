@@ -112,8 +112,8 @@ class Run:
     def stored_state(self, name: str) -> str:
         """What the store holds for a task, without running anything.
 
-        "memory only" for results that are never stored, "to do" where there is none, else "done",
-        "not-applicable" as it ended.
+        "memory only" for results that are never stored, "done" or "not-applicable" as it ended,
+        "skipped" where something it needs has no result, else "to do".
         """
         task: Task = self.graph.nodes[name]["task"]
         if not task.stored:
@@ -121,7 +121,10 @@ class Run:
         outcome: Any = None
         if self.store is not None:
             _, outcome = self.store.load(name, self.key(name))
-        return "to do" if outcome is None else str(outcome["state"])
+        if outcome is not None:
+            return str(outcome["state"])
+        without = ("not-applicable", "skipped")
+        return "skipped" if any(self.stored_state(n) in without for n in task.needs) else "to do"
 
     def key(self, name: str) -> str:
         """Content key of a task (hexadecimal SHA-256)."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import re
 from collections.abc import Mapping
 from typing import Any
@@ -86,6 +87,7 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
     )
 
 
+@functools.cache  # to compile the templates takes longer than to fill them
 def page_environment() -> jinja2.Environment:
     """Templates with everything escaped, and the filters that pages share."""
     environment = jinja2.Environment(
