@@ -88,7 +88,7 @@ def test_number_of_processors_does_not_matter(tmp_path: Path) -> None:
     """Held to one processor, as in a job array, or free."""
     if not hasattr(os, "sched_setaffinity") or len(os.sched_getaffinity(0)) < 2:
         pytest.skip("needs a system that binds processes, and two processors")
-    case = _lay("GX-06", tmp_path / "case")
+    case = _lay("GX-12", tmp_path / "case")
     free = _vet(case, tmp_path / "free", seed=0, threads=2, cwd=tmp_path)
     all_of_them = os.sched_getaffinity(0)
     try:

@@ -86,11 +86,12 @@ def decimate(
         resolvent = np.asarray(energy)[active, None, None] * eye - bulk[active]
         solved = np.linalg.solve(resolvent, np.concatenate([a, b], axis=2))
         g_a, g_b = solved[:, :, :size], solved[:, :, size:]
-        down, up = a @ g_b, b @ g_a
-        upper[active] += down
-        lower[active] += up
-        bulk[active] += down + up
-        a, b = a @ g_a, b @ g_b
+        with np.errstate(over="ignore", invalid="ignore"):  # see below
+            down, up = a @ g_b, b @ g_a
+            upper[active] += down
+            lower[active] += up
+            bulk[active] += down + up
+            a, b = a @ g_a, b @ g_b
         left = np.maximum(np.abs(a).max(axis=(1, 2)), np.abs(b).max(axis=(1, 2)))
         done = left < CONVERGED * scale[active]
         converged[active[done]] = True

@@ -14,6 +14,7 @@ from click.testing import CliRunner
 
 from screening_runs import write_small_cases
 from topovet.cli.screen import command
+from topovet.screening import dask_task
 from topovet.screening.dask_task import vet_on_dask
 from topovet.screening.engine import run_cases
 from topovet.screening.local_pool import LocalPool
@@ -78,6 +79,7 @@ def test_a_dask_worker_gives_up_too_and_takes_the_next_case(tmp_path: Path) -> N
     }
     after = Outcome.from_json(vet_on_dask(replace(job, limit_s=None).to_json()))
     assert after.status == "failed"
+    dask_task._local.worker.stop()
 
 
 def test_the_screen_records_what_it_gave_up(tmp_path: Path) -> None:
