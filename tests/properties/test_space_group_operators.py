@@ -172,7 +172,7 @@ def test_characters_of_levels_are_orthogonal(i: int, recipe: Recipe) -> None:
         np.testing.assert_allclose(np.diag(overlap), 1.0, atol=1e-7)
 
 
-@settings(max_examples=6, deadline=None)
+@settings(max_examples=3, deadline=None)
 @given(
     recipe=st.sampled_from(CHEAP),
     steps=st.lists(st.tuples(st.integers(0, 2), st.integers(1, 2), st.sampled_from((-1, 1))),

@@ -18,13 +18,13 @@ SHORT_MODEL, SHORT_REAL = "kane_mele", "Bi111_bilayer"
 def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
     """Whether a trial belongs to the short part.
 
-    One model at the first and the last size, of the other models every fifth fault in turn at the
-    last (every third of those that the one model is spared), and one first-principles case where
-    only such a case will do.
+    At their last size one model in full, of the other models every fifth fault in turn (every third
+    of those that the one model is spared), and one first-principles case where only such a case
+    will do.
     """
     sizes = fault.sizes_for(case)
     if case.name == SHORT_MODEL:
-        return size in (sizes[0], sizes[-1])
+        return size == sizes[-1]
     if case.name == SHORT_REAL:
         return fault.only_real and size == sizes[-1]
     turn = FAULTS.index(fault) + list(CLEAN_CASES).index(case.name)

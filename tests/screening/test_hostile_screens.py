@@ -129,7 +129,11 @@ real, vetting.vet_case = vetting.vet_case, vet_case
 
 
 @pytest.mark.parametrize(
-    ("signum", "said"), [("SIGSEGV", "SIGSEGV"), ("SIGKILL", "when memory runs out")]
+    ("signum", "said"),
+    [
+        ("SIGSEGV", "SIGSEGV"),
+        pytest.param("SIGKILL", "when memory runs out", marks=pytest.mark.endurance),
+    ],
 )
 def test_a_case_that_takes_its_worker_down_fails_alone(
     program: Program, twelve: Path, tmp_path: Path, signum: str, said: str

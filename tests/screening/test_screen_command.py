@@ -158,6 +158,7 @@ def test_shards_together_make_the_whole(
     assert "0 cases" in empty.stdout
 
 
+@pytest.mark.endurance  # kills and shards compare the same
 def test_one_worker_gives_what_two_give(
     program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path
 ) -> None:

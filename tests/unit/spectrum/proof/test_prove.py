@@ -88,9 +88,7 @@ def test_a_chain() -> None:
     assert recheck(model, certificate).holds
 
 
-@settings(max_examples=25, deadline=None)
-@given(seed=st.integers(0, 1_000_000), filling=st.integers(1, 3), planar=st.booleans())
-def test_nothing_sampled_is_below_the_proof(seed: int, filling: int, planar: bool) -> None:
+def _nothing_sampled_is_below_the_proof(seed: int, filling: int, planar: bool) -> None:
     model = random_model(seed, 4, level_ev=3.0, planar=planar)
     crystal = Crystal(np.diag([3.0, 4.0, 9.0]), ("H",), np.zeros((1, 3)), (True, True, not planar))
     proof, _ = prove_direct_gap(
@@ -102,6 +100,26 @@ def test_nothing_sampled_is_below_the_proof(seed: int, filling: int, planar: boo
     assert proof.proved_min_ev <= proof.attained_ev
     if proof.status == "proved":
         assert proof.proved_min_ev >= 0.7 * proof.attained_ev - 1e-12
+
+
+RANDOM_MODELS = {
+    "seed": st.integers(0, 1_000_000),
+    "filling": st.integers(1, 3),
+    "planar": st.booleans(),
+}
+
+
+@settings(max_examples=25, deadline=None)
+@given(**RANDOM_MODELS)
+def test_nothing_sampled_is_below_the_proof(seed: int, filling: int, planar: bool) -> None:
+    _nothing_sampled_is_below_the_proof(seed, filling, planar)
+
+
+@pytest.mark.endurance
+@settings(max_examples=1000, deadline=None)
+@given(**RANDOM_MODELS)
+def test_nothing_sampled_is_below_a_thousand_proofs(seed: int, filling: int, planar: bool) -> None:
+    _nothing_sampled_is_below_the_proof(seed, filling, planar)
 
 
 def test_a_cone_that_no_sample_sees_is_found() -> None:
