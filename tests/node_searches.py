@@ -6,9 +6,9 @@ import numpy as np
 
 from lattice_models import LatticeModel
 from proof_models import proven
-from topovet.invariants.nodes.find import find_nodes
 from topovet.invariants.nodes.points import Case
 from topovet.invariants.nodes.results import NodeSearch, Reference
+from topovet.invariants.nodes.survey import survey_closings
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import build_bloch_sum
 from topovet.model.hamiltonian import TightBindingModel
@@ -30,7 +30,7 @@ def bare_search(
     """Without any symmetry."""
     hamiltonian = proven(model, crystal=crystal)
     case = Case(hamiltonian.bloch, crystal, filling, (), model.spinful, AT_ZERO)
-    return find_nodes(hamiltonian, case, np.zeros((1, 3)), max_solves=BUDGET)
+    return survey_closings(hamiltonian, case, np.zeros((1, 3)), max_solves=BUDGET)
 
 
 def symmetric_search(model: LatticeModel, *, time_reversal: bool = True) -> NodeSearch:
@@ -46,4 +46,4 @@ def symmetric_search(model: LatticeModel, *, time_reversal: bool = True) -> Node
     bloch = build_bloch_sum(h)
     case = Case(bloch, crystal, model.filling, operators, model.spinful, AT_ZERO)
     proven_h = ProvenHamiltonian(h, bloch, crystal, images)
-    return find_nodes(proven_h, case, np.zeros((1, 3)), max_solves=BUDGET)
+    return survey_closings(proven_h, case, np.zeros((1, 3)), max_solves=BUDGET)

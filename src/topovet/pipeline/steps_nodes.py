@@ -4,19 +4,18 @@ from __future__ import annotations
 
 import numpy as np
 
-from topovet.invariants.nodes.find import find_nodes
 from topovet.invariants.nodes.points import Case
 from topovet.invariants.nodes.results import NodeSearch, Reference
+from topovet.invariants.nodes.survey import survey_closings
 from topovet.model.crystal import Crystal
 from topovet.model.declarations import Declarations
 from topovet.model.fourier import BlochSum
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
-from topovet.pipeline.steps_proof import TOLERANCE, budget, images_on_offer
+from topovet.pipeline.steps_proof import TOLERANCE, budget, proven_hamiltonian
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.eigen import mesh_eigenvalues, one_blas_thread
 from topovet.spectrum.gap import choose_mesh
-from topovet.spectrum.proof.prove import ProvenHamiltonian
 from topovet.spectrum.proof.results import ProvedGap
 from topovet.spectrum.results import Electrons, GapSample
 from topovet.symmetry.group_results import GroupTest
@@ -54,10 +53,10 @@ def look_for_nodes(
         raise NotApplicable("no closing of the gap was met")
     lattice, crystal = hamiltonian_with_basis.lattice, declarations.crystal
     known_k = [gap.direct_k] if gap_proof is None else [gap.direct_k, gap_proof.proof.k_frac]
-    images = images_on_offer(hamiltonian_with_basis, crystal, time_reversal, group)
+    proven = proven_hamiltonian(hamiltonian_with_basis, crystal, time_reversal, group)
     with one_blas_thread():
-        return find_nodes(
-            ProvenHamiltonian(lattice.model, lattice.bloch, crystal, images),
+        return survey_closings(
+            proven,
             Case(
                 bloch=lattice.bloch,
                 crystal=crystal,

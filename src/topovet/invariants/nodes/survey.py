@@ -47,7 +47,7 @@ NEAR_LINE = 3.0
 """A box belongs to a line that passes within so many times its own size."""
 
 
-def find_nodes(
+def survey_closings(
     hamiltonian: ProvenHamiltonian, case: Case, known_k: FloatArray, *, max_solves: int
 ) -> NodeSearch:
     """Every closing of the gap, or why the list may not be complete.
