@@ -1,14 +1,29 @@
-"""Tests that share costly results stay on one process, so that those are computed once.
+"""Where tests run, and which examples the properties are tried on.
 
-With `--dist loadgroup` (pytest-xdist) the tests of a group run on one process: those of one
+Tests that share costly results stay on one process, so that those are computed once. With
+`--dist loadgroup` (pytest-xdist) the tests of a group run on one process: those of one
 first-principles case, and all whole screens, which have workers of their own.
+
+The properties are tried on the same examples in every run, so that a change of the program alone
+decides whether it passes; `HYPOTHESIS_PROFILE=search` draws others.
 """
 
 from __future__ import annotations
 
+import os
 from pathlib import Path
 
 import pytest
+from hypothesis import HealthCheck, settings
+
+for name, same in (("same", True), ("search", False)):
+    settings.register_profile(
+        name,
+        derandomize=same,
+        deadline=None,
+        suppress_health_check=[HealthCheck.too_slow],  # that is about the machine
+    )
+settings.load_profile(os.environ.get("HYPOTHESIS_PROFILE", "same"))
 
 CASES = Path(__file__).parents[1] / "fixtures" / "cases"
 
