@@ -11,20 +11,17 @@ from pathlib import Path
 import pytest
 
 from case_writer import write_case
+from command_line import Outcome, run_here
 from lattice_models import wilson_dirac
 from topovet.verdict.advice import CODES
 
 STRONG = replace(wilson_dirac(m=-2.0), name="QV-7")
 
 
-def _run(*words: str, cwd: Path) -> subprocess.CompletedProcess[str]:
+def _run(*words: str, cwd: Path) -> Outcome:
     """Run the program; a vet that says nothing of its effort is a quick one, to save time."""
     quick = ("--effort", "quick") if words[0] == "vet" and "--effort" not in words else ()
-    done = subprocess.run(
-        [sys.executable, "-m", "topovet", *words, *quick], cwd=cwd, capture_output=True, text=True
-    )
-    assert "Traceback" not in done.stderr
-    return done
+    return run_here(*words, *quick, cwd=cwd)
 
 
 @pytest.fixture(scope="module")
@@ -42,6 +39,17 @@ def test_vet_writes_a_dossier(case: Path, tmp_path: Path) -> None:
     assert verdict["invariants"]["z2"][0] == 1
     names = {p.name for p in (tmp_path / "dossier").iterdir()}
     assert names == {"verdict.json", "report.html", "figures", "tasks", "log.txt"}
+
+
+def test_the_program_as_a_process_does_the_same(case: Path, tmp_path: Path) -> None:
+    for words in (("inspect", str(case)), ("vet", "nowhere"), ("vet", str(case), "--filling", "0")):
+        done = subprocess.run(
+            [sys.executable, "-m", "topovet", *words], cwd=tmp_path, capture_output=True, text=True
+        )
+        here = run_here(*words, cwd=tmp_path)
+        assert (done.returncode, done.stdout) == (here.returncode, here.stdout)
+        if done.returncode:
+            assert done.stderr == here.stderr
 
 
 def test_json_on_stdout_is_the_verdict_and_nothing_else(case: Path, tmp_path: Path) -> None:
