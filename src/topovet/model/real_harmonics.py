@@ -92,7 +92,12 @@ def harmonic_rotation(rotation: FloatArray) -> FloatArray:
     ValueError
         R^T R differs from 1 by more than `MAX_NON_ORTHOGONALITY`.
     """
-    given = np.asarray(rotation, dtype=float)
+    return _harmonic_rotation(np.ascontiguousarray(rotation, dtype=float).tobytes())
+
+
+@lru_cache(maxsize=1024)  # every task that needs the group builds it
+def _harmonic_rotation(rotation: bytes) -> FloatArray:
+    given = np.frombuffer(rotation).reshape(3, 3)
     defect = float(np.abs(given.T @ given - np.eye(3)).max())
     if not defect <= MAX_NON_ORTHOGONALITY:
         raise ValueError(f"not a rotation: R^T R differs from 1 by {defect:.2g}")
@@ -101,7 +106,7 @@ def harmonic_rotation(rotation: FloatArray) -> FloatArray:
     # R^-1 r = R^T r for a column r, hence r R for the rows of `directions`
     turned = compute_harmonics(directions @ (left @ right))
     d = (compute_harmonics(directions) * weights[:, None]).T @ turned
-    return np.where(_SAME_L, d, 0.0)
+    return frozen(np.where(_SAME_L, d, 0.0))
 
 
 @lru_cache(maxsize=1)

@@ -18,6 +18,9 @@ from topovet.model.fourier import BlochSum, chunks_of_k
 
 Result = TypeVar("Result")
 
+SMALL_WORK = 75_000
+"""n_k (n_orb^3 + 250) below which threads cost more than they save: a millisecond or two."""
+
 FEWEST_PARTS = 8
 """Batches that a list of k is cut into where it is long enough: work for as many threads."""
 
@@ -129,6 +132,8 @@ def _parts(n_k: int, n_orb: int) -> list[slice]:
     H(k), and the same input would give other bytes on another number of processors.
     """
     slices = chunks_of_k(n_k, n_orb)
+    if n_k * (n_orb**3 + 250) < SMALL_WORK:
+        return slices
     if len(slices) < FEWEST_PARTS <= n_k // 2:
         edges = np.linspace(0, n_k, FEWEST_PARTS + 1).astype(int)
         return [slice(a, b) for a, b in itertools.pairwise(edges)]

@@ -42,18 +42,27 @@ def multiplication_table(
     rotations, n_op = np.asarray(rotations, dtype=np.int64), len(rotations)
     table = np.full((n_op, n_op), -1, dtype=np.int64)
     cells = np.zeros((n_op, n_op, 3), dtype=np.int64)
+    one_of, kinds = _kinds(rotations, antiunitary)
     for a in range(n_op):
-        rotation = rotations[a] @ rotations
-        translation = translations @ rotations[a].T + translations[a]
-        same = np.all(rotation[:, None] == rotations[None], axis=(2, 3))
-        same &= (antiunitary[a] ^ antiunitary)[:, None] == antiunitary[None]
-        rest = translation[:, None] - translations[None]
-        off = np.where(same, np.abs(rest - np.round(rest)).max(axis=2), np.inf)
-        c = off.argmin(axis=1)
-        found = off[np.arange(n_op), c] < TRANSLATION_TOLERANCE
-        table[a] = np.where(found, c, -1)
-        cells[a] = np.where(found[:, None], np.round(rest[np.arange(n_op), c]), 0)
+        b, c = np.nonzero(one_of[a][:, None] == kinds[None])  # same but for the translation
+        rest = translations[b] @ rotations[a].T + translations[a] - translations[c]
+        off = np.abs(rest - np.round(rest)).max(axis=1)
+        near = np.flatnonzero(off < TRANSLATION_TOLERANCE)
+        near = near[np.lexsort((-c[near], -off[near]))]  # the nearest, the first, is written last
+        table[a, b[near]] = c[near]
+        cells[a, b[near]] = np.round(rest[near])
     return table, cells
+
+
+def _kinds(rotations: IntArray, antiunitary: BoolArray) -> tuple[IntArray, IntArray]:
+    """Numbers that are equal where rotation and time reversal are: (n, n) of products, (n,)."""
+    products = np.einsum("aij,bjk->abik", rotations, rotations).reshape(-1, 9)
+    turned = (antiunitary[:, None] ^ antiunitary[None]).reshape(-1, 1)
+    alone = np.column_stack([rotations.reshape(-1, 9), antiunitary])
+    both = np.concatenate([np.column_stack([products, turned]), alone])
+    _, number = np.unique(both, axis=0, return_inverse=True)
+    n = len(rotations)
+    return number[: n * n].reshape(n, n), number[n * n :].ravel()
 
 
 def same_operation(

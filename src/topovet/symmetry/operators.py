@@ -19,6 +19,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import lru_cache
 
 import numpy as np
 from scipy.spatial.transform import Rotation
@@ -211,11 +212,17 @@ def cartesian_rotation(rotation: IntArray, cell: FloatArray) -> FloatArray:
 
 def spin_rotation(cartesian: FloatArray) -> ComplexArray:
     """SU(2) matrix (2, 2) of the proper part of an orthogonal matrix, in the fixed sign."""
+    return _spin_rotation(np.ascontiguousarray(cartesian, dtype=float).tobytes())
+
+
+@lru_cache(maxsize=1024)
+def _spin_rotation(orthogonal: bytes) -> ComplexArray:
+    cartesian = np.frombuffer(orthogonal).reshape(3, 3)
     proper = np.linalg.det(cartesian) * cartesian
     x, y, z, w = Rotation.from_matrix(proper).as_quat()
     leading = next((c for c in (w, x, y, z) if abs(c) > 1e-6), 1.0)
     x, y, z, w = np.sign(leading) * np.array([x, y, z, w])
-    return np.array([[w - 1j * z, -1j * x - y], [-1j * x + y, w + 1j * z]])
+    return frozen(np.array([[w - 1j * z, -1j * x - y], [-1j * x + y, w + 1j * z]]))
 
 
 def first_on_site(sites_frac: FloatArray, crystal: Crystal) -> IntArray:
