@@ -1,8 +1,8 @@
 """Where tests run, and which examples the properties are tried on.
 
-Tests that share costly results stay on one process, so that those are computed once. With
-`--dist loadgroup` (pytest-xdist) the tests of a group run on one process: those of one
-first-principles case, and all whole screens, which have workers of their own.
+With `--dist loadgroup` (pytest-xdist) tests that share costly results run on one process, so that
+those are computed once: the tests of a first-principles case, all whole screens (which have workers
+of their own), and elsewhere those of a file.
 
 The properties are tried on the same examples in every run, so that a change of the program alone
 decides whether it passes; `HYPOTHESIS_PROFILE=search` draws others.
@@ -11,7 +11,9 @@ decides whether it passes; `HYPOTHESIS_PROFILE=search` draws others.
 from __future__ import annotations
 
 import os
+import re
 from pathlib import Path
+from typing import Any
 
 import pytest
 from hypothesis import HealthCheck, settings
@@ -25,18 +27,31 @@ for name, same in (("same", True), ("search", False)):
     )
 settings.load_profile(os.environ.get("HYPOTHESIS_PROFILE", "same"))
 
-CASES = Path(__file__).parents[1] / "fixtures" / "cases"
+CASES = {p.name for p in (Path(__file__).parents[1] / "fixtures" / "cases").iterdir()}
+
+EACH_ALONE = ("tests/sabotage/", "tests/demo/test_campaign_verdicts.py")
+"""Long files whose tests share nothing."""
 
 
-@pytest.hookimpl(tryfirst=True)
-def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
-    names = {path.name for path in CASES.iterdir() if path.is_dir()}
-    for item in items:
-        if item.get_closest_marker("xdist_group") is not None:
-            continue
-        params = getattr(item, "callspec", None)
-        case = None if params is None else params.params.get("case")
-        if item.path.parent.name == "screening":
-            item.add_marker(pytest.mark.xdist_group("screening"))
-        elif isinstance(case, str) and case in names:
-            item.add_marker(pytest.mark.xdist_group(case))
+def group_of(test: str) -> str:
+    """The group of a test, from its id: its case, its folder, its file, or itself."""
+    file, _, rest = test.partition("::")
+    words = re.split(r"[-\[\]]", rest)
+    case = next((word for word in words[1:] if word in CASES), None)
+    if test.startswith(EACH_ALONE):
+        return test
+    if case is not None:
+        return case
+    return "screens" if file.startswith("tests/screening/") else file
+
+
+@pytest.hookimpl(optionalhook=True)
+def pytest_xdist_make_scheduler(config: pytest.Config, log: Any) -> Any:
+    """Groups of our own: marks alone do not reach the scheduler with every release of pytest."""
+    from xdist.scheduler import LoadScopeScheduling
+
+    class Groups(LoadScopeScheduling):  # type: ignore[misc]
+        def _split_scope(self, nodeid: str) -> str:
+            return group_of(nodeid)
+
+    return Groups(config, log) if config.getvalue("dist") == "loadgroup" else None

@@ -7,12 +7,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from real_cases import CASES
+from real_cases import run_of
 from topovet.model.basis import OrbitalBasis
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.model.hamiltonian import TightBindingModel
-from topovet.pipeline.dossier import start_run
 from topovet.symmetry.operators import WannierOperator, build_operator, with_time_reversal
 from topovet.symmetry.results import SpaceGroup
 
@@ -32,7 +31,7 @@ class OperatedCase:
 
 @functools.cache
 def operated(case: str) -> OperatedCase:
-    run = start_run(CASES / case)
+    run = run_of(case)
     based = run.result("hamiltonian-with-basis")
     declarations, group = run.result("declarations"), run.result("space-group")
     basis, crystal = based.basis, declarations.crystal

@@ -16,6 +16,8 @@ from case_writer import write_case
 from lattice_models import bhz
 
 QUICK = ("--effort", "quick")
+ALONE = (*QUICK, "--workers", "1")
+"""Where a second worker would only cost its start."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -8,8 +8,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from real_cases import run_of
 from topovet.model.decay import DecayProfile
-from topovet.pipeline.dossier import start_run
 
 CASES = Path(__file__).parents[2] / "fixtures" / "cases"
 WITH_ENERGIES = (
@@ -31,7 +31,7 @@ pytestmark = pytest.mark.real_data
 
 def _rim_and_error(name: str) -> tuple[DecayProfile, float]:
     """Decay profile, and the largest error of the occupied bands off the mesh in meV."""
-    run = start_run(CASES / name)
+    run = run_of(name)
     reference = json.loads((CASES / name / "reference.json").read_text())
     points = reference["dft_energies_off_the_wannier_mesh_eV"]
     n_occ = reference["n_electrons_in_wannier_manifold"]

@@ -5,10 +5,9 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from real_cases import CASES
+from real_cases import run_of
 from topovet.arrays import FloatArray
 from topovet.model.hamiltonian import TightBindingModel
-from topovet.pipeline.dossier import start_run
 from topovet.spectrum.results import GapSample
 
 pytestmark = pytest.mark.real_data
@@ -43,7 +42,7 @@ def _dense_scan(model: TightBindingModel, filling: int) -> tuple[float, FloatArr
 
 @pytest.mark.parametrize("case", ["Sb", "BiTeI", "PbTe"])
 def test_smallest_gap_is_found(case: str) -> None:
-    run = start_run(CASES / case)
+    run = run_of(case)
     gap: GapSample = run.result("gap")
     model = run.result("hamiltonian-with-basis").lattice.model
     scanned, _ = _dense_scan(model, run.result("electrons").filling)
@@ -54,6 +53,6 @@ def test_smallest_gap_is_found(case: str) -> None:
 
 def test_cone_of_antimony() -> None:
     """Attained far below the 69 meV at L that coarser searches report (see the case's notes)."""
-    gap: GapSample = start_run(CASES / "Sb").result("gap")
+    gap: GapSample = run_of("Sb").result("gap")
     assert gap.direct_ev < 0.0048
     assert gap.n_solves < 8000

@@ -16,13 +16,12 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from real_cases import CASES
+from real_cases import CASES, run_of
 from topovet.intake.hamiltonian.hr import read_hr
 from topovet.model.basis import OrbitalBasis
 from topovet.model.declarations import Declarations
 from topovet.model.fourier import BlochSum, build_bloch_sum
 from topovet.model.hamiltonian import TightBindingModel, build_model
-from topovet.pipeline.dossier import start_run
 from topovet.spectrum.eigen import eigenvalues, one_blas_thread
 from topovet.symmetry.az_class import find_az_class
 from topovet.symmetry.group import measure_group
@@ -70,7 +69,7 @@ class Case:
 
 @functools.cache
 def load(case: str) -> Case:
-    run = start_run(CASES / case)
+    run = run_of(case)
     based = run.result("hamiltonian-with-basis")
     return Case(
         model=based.lattice.model,

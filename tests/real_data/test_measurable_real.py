@@ -12,8 +12,8 @@ from topovet.report.json_document import load_schema
 pytestmark = pytest.mark.real_data
 
 
-@pytest.mark.xdist_group("Bi2Se3")
-def test_bi2se3_has_the_cone_of_the_literature() -> None:
+@pytest.mark.parametrize("case", ["Bi2Se3"])
+def test_bi2se3_has_the_cone_of_the_literature(case: str) -> None:
     """One Dirac point at the zone centre, 3 to 6e5 m/s, left-handed above it, the same on both
     faces.
 
@@ -22,7 +22,7 @@ def test_bi2se3_has_the_cone_of_the_literature() -> None:
     photoemission); left-handed: Hsieh et al., Nature 460, 1101 (2009), doi:10.1038/nature08234.
     All from memory: the range holds what is quoted between the Dirac point and the Fermi energy.
     """
-    numbers = vetted_in_full("Bi2Se3").measurable
+    numbers = vetted_in_full(case).measurable
     jsonschema.Draft202012Validator(
         load_schema()["properties"]["measurable"] | {"$defs": load_schema()["$defs"]}
     ).validate(numbers)
@@ -45,28 +45,24 @@ def test_bi2se3_has_the_cone_of_the_literature() -> None:
         assert row["k_F_max_per_ang"] < 1.05 * row["k_F_min_per_ang"]
 
 
-@pytest.mark.xdist_group("Bi2Se3")
-def test_bi2se3_films_lose_their_gap_within_some_quintuple_layers() -> None:
+@pytest.mark.parametrize("case", ["Bi2Se3"])
+def test_bi2se3_films_lose_their_gap_within_some_quintuple_layers(case: str) -> None:
     """Zhang et al., Nat. Phys. 6, 584 (2010), doi:10.1038/nphys1689: a gap below six quintuple
     layers of 9.5 angstrom (from memory)."""
-    films = vetted_in_full("Bi2Se3").measurable["films"]
+    films = vetted_in_full(case).measurable["films"]
     thickness, gap = np.array(films["thickness_nm"]), np.array(films["gap_meV"])
     assert np.diff(thickness) == pytest.approx(0.955, abs=0.005)
     assert gap[1] > 50
     assert 5 <= np.searchsorted(-gap, -1.0) + 1 <= 8
 
 
-@pytest.mark.xdist_group("Sb2Se3")
-def test_a_trivial_insulator_is_promised_nothing() -> None:
-    assert list(vetted_in_full("Sb2Se3").measurable) == ["note"]
-
-
-@pytest.mark.xdist_group("Bi111_bilayer")
-def test_a_bismuth_bilayer_conducts_at_its_edges() -> None:
+@pytest.mark.parametrize("case", ["Bi111_bilayer"])
+def test_a_bismuth_bilayer_conducts_at_its_edges(case: str) -> None:
     """2 e^2/h, helical; Murakami, PRL 97, 236805 (2006), doi:10.1103/PhysRevLett.97.236805.
 
-    The antimony bilayer, a trivial one, is promised nothing."""
-    edge = vetted_in_full("Bi111_bilayer").measurable["edge"]
+    The antimony bilayer, a trivial one, is promised nothing.
+    """
+    edge = vetted_in_full(case).measurable["edge"]
     assert (edge["kind"], edge["conductance_e2_h"]) == ("helical", 2)
     assert edge["gap_over_kT_300_K"] > 10
     by_edge = [c["termination"] for c in edge["crossings"]]
@@ -78,9 +74,9 @@ def test_a_bismuth_bilayer_conducts_at_its_edges() -> None:
     assert list(vetted_in_full("Sb111_bilayer").measurable) == ["note"]
 
 
-@pytest.mark.xdist_group("BiTeI_pressed")
-def test_the_two_faces_of_a_polar_crystal_differ() -> None:
+@pytest.mark.parametrize("case", ["BiTeI_pressed"])
+def test_the_two_faces_of_a_polar_crystal_differ(case: str) -> None:
     """BiTeI under pressure ends in Te or in I: their levels have no reason to agree."""
-    numbers = vetted_in_full("BiTeI_pressed").measurable
+    numbers = vetted_in_full(case).measurable
     assert not numbers["dirac_point"]["same_on_both_terminations"]
     assert "note" in numbers["films"]

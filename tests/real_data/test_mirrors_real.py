@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from real_cases import CASES
+from real_cases import CASES, run_of
 from real_operators import operated, shifted_onsite
 from topovet.invariants.mirror_witness import (
     MirrorWitness,
@@ -19,7 +19,7 @@ pytestmark = pytest.mark.real_data
 
 
 def witness_of(case: str) -> MirrorWitness:
-    witness: MirrorWitness = start_run(CASES / case).result("mirror-chern")
+    witness: MirrorWitness = run_of(case).result("mirror-chern")
     return witness
 
 
@@ -103,7 +103,7 @@ def test_lower_groups_of_bands_by_both_witnesses(case: str, fillings: tuple[int,
 @pytest.mark.parametrize("case", ["CdTe", "Bi2Se3"])
 def test_planes_made_equal_by_symmetry_cost_nothing_and_change_nothing(case: str) -> None:
     """Half of the planes or fewer are followed; the thorough effort follows all six."""
-    quick = start_run(CASES / case).result("wilson")
+    quick = run_of(case).result("wilson")
     thorough = start_run(CASES / case, settings={"effort": "thorough"}).result("wilson")
     assert quick.z2 == thorough.z2
     assert len(quick.planes) + len(quick.assumed_equal) == 6

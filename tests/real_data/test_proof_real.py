@@ -8,9 +8,8 @@ import numpy as np
 import pytest
 
 from proof_models import plain_energies
-from real_cases import CASES
+from real_cases import run_of
 from topovet.model.hamiltonian import TightBindingModel
-from topovet.pipeline.dossier import start_run
 from topovet.pipeline.steps_proof import images_on_offer
 from topovet.spectrum.proof.prove import ProvenHamiltonian, prove_direct_gap, prove_indirect_gap
 from topovet.spectrum.proof.recheck import recheck
@@ -26,7 +25,7 @@ SOLVES = {"PbTe": 600, "PbTe_a656": 600, "Bi2Se3": 3000, "BiTeI": 3000, "CdTe": 
 
 @functools.cache
 def _hamiltonian(case: str) -> tuple[ProvenHamiltonian, int, GapSample]:
-    run = start_run(CASES / case)
+    run = run_of(case)
     lattice, crystal = run.result("hamiltonian-with-basis").lattice, run.result("declarations")
     images = images_on_offer(
         run.result("hamiltonian-with-basis"),

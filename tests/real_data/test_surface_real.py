@@ -11,14 +11,13 @@ import functools
 import numpy as np
 import pytest
 
-from real_cases import CASES, CENTROSYMMETRIC, reference
+from real_cases import CENTROSYMMETRIC, reference, run_of
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.projected import projected_edges
 from topovet.boundary.recut import Recut
 from topovet.boundary.results import SurfaceWitness
 from topovet.boundary.slab import compute_slab_bands, compute_thickness_series
 from topovet.boundary.witness import prepare_surface
-from topovet.pipeline.dossier import start_run
 
 pytestmark = pytest.mark.real_data
 
@@ -34,7 +33,7 @@ EV_ANG_IN_M_PER_S = 1e-10 / 6.582119569e-16
 @functools.cache
 def _surface(case: str) -> SurfaceWitness:
     """The witness alone, without what else a verdict needs."""
-    found: SurfaceWitness = start_run(CASES / case).result("surface")
+    found: SurfaceWitness = run_of(case).result("surface")
     return found
 
 
@@ -66,7 +65,7 @@ def test_crossings_are_odd_where_the_bulk_is_strong(case: str) -> None:
 
 @functools.cache
 def _prepared(case: str, miller: tuple[int, int, int]) -> tuple[Recut, LayerStack, int]:
-    run = start_run(CASES / case)
+    run = run_of(case)
     based = run.result("hamiltonian-with-basis")
     cut, _, stack = prepare_surface(
         based.lattice.model,

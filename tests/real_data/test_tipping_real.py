@@ -16,7 +16,7 @@ from typing import Any
 import numpy as np
 import pytest
 
-from real_cases import CASES
+from real_cases import run_of
 from topovet.invariants.parity import compute_parity
 from topovet.invariants.tipping.results import TippingPoint, TippingSearch
 from topovet.invariants.tipping.search import projector_sum
@@ -25,7 +25,6 @@ from topovet.invariants.wilson_witness import compute_wilson
 from topovet.model.fourier import BlochSum, added_sum
 from topovet.model.orbital_groups import declared_groups
 from topovet.model.spin_parts import spin_orbit_sum
-from topovet.pipeline.dossier import start_run
 from topovet.pipeline.steps_tipping import TASKS, look_for_tipping_points
 from topovet.symmetry.inversion import build_inversion
 
@@ -37,7 +36,7 @@ BULK = (True, True, True)
 @functools.cache
 def results(case: str) -> dict[str, Any]:
     """What the task takes, without the witnesses that only confirm it."""
-    run = start_run(CASES / case, settings={"effort": "standard"})
+    run = run_of(case)
     task = TASKS[0]
     left_out = ("wilson",) if case == "PbTe" else ("wilson", "mirror-chern", "group", "gap")
     return {

@@ -13,13 +13,12 @@ import functools
 import numpy as np
 import pytest
 
-from real_cases import CASES, CENTROSYMMETRIC, reference
+from real_cases import CENTROSYMMETRIC, reference, run_of
 from real_operators import operated
 from topovet.invariants.mirror_chern import compute_mirror_chern, mirror_planes
 from topovet.invariants.results import WilsonWitness
 from topovet.invariants.wilson_sheet import CRITERIA
 from topovet.invariants.wilson_witness import compute_wilson
-from topovet.pipeline.dossier import start_run
 from topovet.symmetry.operators import operator_at
 
 pytestmark = pytest.mark.real_data
@@ -33,7 +32,7 @@ NO_INVERSION = {
 
 @functools.cache
 def wilson_of(case: str, effort: str = "standard") -> WilsonWitness:
-    run = start_run(CASES / case)
+    run = run_of(case)
     declarations, time_reversal = run.result("declarations"), run.result("time-reversal")
     return compute_wilson(
         run.result("hamiltonian-with-basis").lattice.bloch,

@@ -53,7 +53,7 @@ def cli() -> None:
 def main() -> None:
     """Entry point; the one place where errors become messages and exit codes."""
     try:
-        cli(standalone_mode=True)
+        cli(standalone_mode=True, prog_name="topovet")
     except TopovetError as error:
         click.echo(f"topovet: {error}", err=True)
         sys.exit(1)
