@@ -86,7 +86,7 @@ def sample_group(number: int) -> GroupSample:
     rotations = np.array(found["rotations"], dtype=np.int64)
     translations = np.array(found["translations"], dtype=float)
     identity = np.all(rotations == np.eye(3, dtype=np.int64), axis=(1, 2))
-    primitive = _primitive_vectors(translations[identity], conventional_cell(number))
+    primitive = primitive_vectors(translations[identity], conventional_cell(number))
     # rows of `primitive` are the new lattice vectors in the old ones: x_old = x_new @ primitive
     inverse = np.linalg.inv(primitive)
     new_rotations = np.round(inverse.T @ rotations @ primitive.T).astype(np.int64)
@@ -102,7 +102,7 @@ def sample_group(number: int) -> GroupSample:
     )
 
 
-def _primitive_vectors(centring: FloatArray, cell: FloatArray) -> FloatArray:
+def primitive_vectors(centring: FloatArray, cell: FloatArray) -> FloatArray:
     """(3, 3) short lattice vectors, as rows in the conventional axes, that span all of them."""
     steps = np.array(list(itertools.product((-1, 0, 1), repeat=3)))
     vectors = (centring[:, None, :] + steps[None]).reshape(-1, 3)

@@ -9,6 +9,7 @@ from real_cases import reference
 from real_operators import operated
 from topovet.invariants.band_reps.results import ATOMIC, STABLE, BandRepWitness
 from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
+from topovet.symmetry.bandreps.layers import find_layer
 
 pytestmark = pytest.mark.real_data
 
@@ -16,11 +17,14 @@ pytestmark = pytest.mark.real_data
 def _witness(case: str) -> BandRepWitness:
     of_case = operated(case)
     unitary = tuple(o for o in of_case.operators if not o.antiunitary)
-    group = GroupInUse(unitary, case, len(unitary), time_reversal=True, spinful=True)
+    layer = find_layer(of_case.crystal)
+    group = GroupInUse(unitary, case, len(unitary), time_reversal=True, spinful=True, layer=layer)
     return compute_band_rep_witness(of_case.bloch, group, of_case.crystal, of_case.filling)
 
 
-@pytest.mark.parametrize("case", ["PbTe", "Sb2Se3", "Sb2Se3_compressed", "Bi2Se3_mlwf"])
+@pytest.mark.parametrize(
+    "case", ["PbTe", "Sb2Se3", "Sb2Se3_compressed", "Bi2Se3_mlwf", "Bi111_bilayer"]
+)
 def test_indices_are_those_of_plane_wave_parities(case: str) -> None:
     """nu of the Wannier bands from <psi|P|psi> of the first-principles spinors."""
     expected = reference(case, "dft_parity.json")["indices_wannier_occupied"]
@@ -57,3 +61,15 @@ def test_cadmium_telluride_has_the_p_shell_of_tellurium() -> None:
     assert found.occupied.obstructed is False
     sites = {limit.site for limit in found.occupied.atomic_limits}
     assert sites == {(0.25, 0.25, 0.25)}  # j = 1/2 and 3/2 of the p shell of tellurium
+
+
+def test_antimony_bilayer_is_three_bonds() -> None:
+    """Free-standing Sb (111) is an ordinary insulator by the plane-wave parities; its charge is in
+    the three covalent bonds of each atom, at whose centres no atom sits."""
+    expected = reference("Sb111_bilayer", "dft_parity.json")["indices_wannier_occupied"]
+    found = _witness("Sb111_bilayer")
+    assert found.indicator_group == (2,)
+    assert list(found.occupied.z2) == expected
+    assert found.occupied.obstructed is True
+    (bonds,) = found.occupied.atomic_limits
+    assert (bonds.n_sites, bonds.site_symmetry, bonds.on_atoms) == (3, "2/m", False)

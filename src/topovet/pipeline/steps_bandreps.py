@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from topovet.arrays import BoolArray, FloatArray
 from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
 from topovet.model.declarations import Declarations
@@ -13,6 +14,7 @@ from topovet.pipeline.steps_physics import MeshEnergies
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.gap import UNRESOLVED_EV
 from topovet.spectrum.results import Electrons, GapSample
+from topovet.symmetry.bandreps.layers import Layer, find_layer, keeps_layer, leans, name_of_layer
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.operations import largest_closed_subset, multiplication_table
 from topovet.symmetry.operator_set import build_operators
@@ -45,8 +47,9 @@ def sort_by_band_representations(
 ) -> BandRepWitness:
     """What the irreps of the bands say against all atomic limits of the group."""
     based = hamiltonian_with_basis
-    if declarations.crystal.dimension != 3:
-        raise NotApplicable("layer groups are not treated")
+    layer = find_layer(declarations.crystal)
+    if declarations.crystal.dimension < 2:
+        raise NotApplicable("groups of chains are not treated")
     if gap is None:
         raise NotApplicable("the gap is not known")
     if len(space_group.rotations) > MOST_OPERATIONS:
@@ -57,16 +60,25 @@ def sort_by_band_representations(
     limit = HELD_SHARE * MEV_PER_EV * max(gap.direct_ev, UNRESOLVED_EV)
     if not time_reversal.present:
         raise NotApplicable("time reversal is broken; magnetic groups are not treated")
-    operators = _operators_in_use(based, declarations, space_group, group, limit)
+    held = [t.violation_mev is not None and t.violation_mev <= limit for t in group.operations]
+    of_layer = _of_layer(layer, declarations.crystal.cell, space_group)
+    operators = _operators_in_use(
+        based, declarations, space_group, group, np.array(held) & of_layer
+    )
     rotations = np.array([o.rotation for o in operators])
     translations = np.array([o.translation for o in operators])
-    number, symbol = name_group(rotations, translations, declarations.crystal.cell)
+    cell = declarations.crystal.cell
+    if layer is None:
+        number, symbol = name_group(rotations, translations, cell)
+    else:
+        number, symbol = name_of_layer(layer, cell, rotations, translations)
     in_use = GroupInUse(
         operators=operators,
         name=f"{number} ({symbol})",
-        n_structure=len(space_group.rotations),
+        n_structure=int(of_layer.sum()),
         time_reversal=True,
         spinful=based.lattice.model.spinful,
+        layer=layer,
     )
     return compute_band_rep_witness(
         based.lattice.bloch,
@@ -82,22 +94,33 @@ def _operators_in_use(
     declared: Declarations,
     space_group: SpaceGroup,
     group: GroupTest,
-    limit_mev: float,
+    held: BoolArray,
 ) -> tuple[WannierOperator, ...]:
-    """Operators of the largest group of operations that H has to within a limit."""
+    """Operators of the largest group among the operations that H has to within a limit."""
     if based.basis is None:
         raise NotApplicable(f"no operators can be built: {based.reason}")
     rotations, translations = space_group.rotations, space_group.translations
     built = build_operators(based.basis, declared.crystal, rotations, translations)
     by_position = dict(zip(built.indices.tolist(), built.operators, strict=True))
     # at every sampled k, not on the mesh alone: maximal strata need not be mesh points
-    violations = [test.violation_mev for test in group.operations]
-    held = [v is not None and v <= limit_mev for v in violations]
     among = np.array([h and i in by_position for i, h in enumerate(held)])
     table, _ = multiplication_table(rotations, translations, np.zeros(len(rotations), dtype=bool))
     among[np.flatnonzero(np.all(table == np.arange(len(table)), axis=1))] = True
-    badness = np.array([v or 0.0 for v in violations])
+    badness = np.array([test.violation_mev or 0.0 for test in group.operations])
     return tuple(by_position[i] for i in largest_closed_subset(table, among, badness).tolist())
+
+
+def _of_layer(layer: Layer | None, cell: FloatArray, space_group: SpaceGroup) -> BoolArray:
+    """(n,) which operations of the cell are the layer's; all of them for a crystal."""
+    rotations, translations = space_group.rotations, space_group.translations
+    if layer is None:
+        return np.ones(len(rotations), dtype=bool)
+    if leans(layer, rotations).any():
+        raise NotApplicable(
+            "symmetry takes the lattice vector that leads out of the layer to one that leans "
+            "otherwise; a cell with that vector along the normal is needed"
+        )
+    return keeps_layer(layer, rotations, translations, cell)
 
 
 def _open_gaps(mesh: MeshEnergies, *, kramers: bool) -> list[int]:
@@ -123,5 +146,6 @@ TASKS = (
             "mesh",
         ),
         wants=("gap",),
+        version=2,
     ),
 )

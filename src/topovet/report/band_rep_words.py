@@ -63,6 +63,7 @@ def witness_note(found: BandRepWitness) -> str:
 def reading(found: BandRepWitness) -> tuple[str, ...]:
     """What the finding on the occupied bands says, and what it cannot say; one sentence each."""
     bands = found.occupied
+    boundary = "edge" if found.dimension == 2 else "surface"
     if bands.classification == STABLE and not found.spinful:
         return (
             "No sum or difference of atomic limits has the levels of these bands.",
@@ -80,7 +81,8 @@ def reading(found: BandRepWitness) -> tuple[str, ...]:
     if bands.classification == FRAGILE:
         return (
             "The levels are a difference of atomic limits but no sum of them: fragile topology.",
-            "Further bands of the right kind can undo it; it brings no protected surface states.",
+            "Further bands of the right kind can undo it; it brings no protected states at the "
+            f"{boundary}.",
         )
     if bands.classification == NOT_GAPPED:
         return (

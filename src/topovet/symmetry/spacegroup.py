@@ -20,6 +20,10 @@ SYMPREC_ANG = 1e-2
 operation is afterwards tested on the Hamiltonian, which is the judge."""
 
 
+GENERAL_SYMPREC_ANG = 1e-3
+"""The same for atoms put at exact general positions of a group."""
+
+
 class SymmetrySearchError(TopovetError):
     """spglib found no space group, or one that does not map the atoms onto themselves."""
 
@@ -184,6 +188,47 @@ def name_group(
     if found is None:
         return 0, "unknown"
     return int(found.number), str(found.international_short)
+
+
+GENERAL_PLACES = ((0.113, 0.271), (0.377, 0.139))
+GENERAL_HEIGHTS_ANG = (0.61, 1.13)
+"""Places in the plane, fractional, and distances from it that no operation of a layer fixes."""
+
+
+def name_layer_group(
+    cell: FloatArray, rotations: IntArray, translations: FloatArray, axis: int
+) -> tuple[int, str]:
+    """Number and symbol of a layer group; 0 and "unknown" without one.
+
+    spglib names the layer group of a structure: it is given one of two kinds of atoms at general
+    positions of the group.
+
+    Parameters
+    ----------
+    cell
+        (3, 3) angstrom, lattice vectors as rows, with the symmetry of the rotations.
+    rotations, translations
+        (n, 3, 3) and (n, 3), exact, that keep the plane through the origin in which `axis` is not.
+    axis
+        Which lattice vector leads out of the layer.
+    """
+    name = getattr(spglib, "get_layergroup", None)
+    if name is None:  # versions that know of no layers
+        return 0, "unknown"
+    others = np.delete(np.arange(3), axis)
+    normal = np.cross(*cell[others])
+    height = abs(float(cell[axis] @ normal)) / float(np.linalg.norm(normal))
+    positions = []
+    for place, above in zip(GENERAL_PLACES, GENERAL_HEIGHTS_ANG, strict=True):
+        general = np.zeros(3)
+        general[others], general[axis] = place, above / height
+        positions.append(rotations @ general + translations)
+    kinds = np.repeat([1, 2], len(rotations))
+    structure = (cell, np.concatenate(positions) % 1.0, kinds)
+    found = _answer(lambda: name(structure, aperiodic_dir=axis, symprec=GENERAL_SYMPREC_ANG))
+    if found is None or len(found.rotations) != len(rotations):
+        return 0, "unknown"
+    return int(found.number), str(found.international)
 
 
 def name_magnetic_group(

@@ -120,6 +120,8 @@ def class_without_z2(
             *_tested(findings),
         )
     if (levels := findings.band_reps) is not None and levels.occupied.classification == STABLE:
+        if levels.dimension == 2:
+            return _stable_layer(findings)
         return "higher-order", (
             "all Z2 indices and the named indicators are 0, but no sum or difference of atomic "
             f"limits has the levels of the occupied bands: {_what_is_left(findings)}; levels alone "
@@ -128,6 +130,21 @@ def class_without_z2(
         )
     seen = "all Z2 indices are 0" if not indicators else "all Z2 indices and indicators are 0"
     return "trivial", (seen, *_levels(findings), *_tested(findings))
+
+
+def _stable_layer(findings: Findings) -> tuple[str, tuple[str, ...]]:
+    """What levels of no atomic limit mean in a layer whose Z2 index is 0.
+
+    The indicator groups of the 80 layer groups, with spin and time reversal, are Z2 with inversion
+    and Zn with an n-fold axis normal to a mirror, the mirror Chern number modulo n.
+    """
+    seen = (
+        "the Z2 index is 0, but no sum or difference of atomic limits has the levels of the "
+        "occupied bands: in a layer they are those of a mirror Chern number other than 0"
+    )
+    if findings.mirror is not None and findings.mirror.numbers:
+        return "undetermined", (f"{seen}, while the count gives 0",)
+    return "crystalline-ti", (seen, *_tested(findings))
 
 
 def _levels(findings: Findings) -> tuple[str, ...]:

@@ -76,3 +76,11 @@ def test_without_spin_an_indicator_means_nodes() -> None:
     text = " ".join(reading(found))
     assert "enforces nodes" in text
     assert "localised" not in text
+
+
+def test_a_layer_has_a_layer_group() -> None:
+    material = replace(
+        invented.strong(), band_reps=replace(band_reps.of(band_reps.STRONG_SET), dimension=2)
+    )
+    section = render_report(material, {}).split('<section id="bandreps"')[1]
+    assert "representations of layer group" in section

@@ -71,9 +71,9 @@ def test_entry_of_the_document() -> None:
     assert entry.atomic_limits[0]["on_atoms"] is False
     assert entry.lines[1]["levels"] == {"1a": 4, "1b": 2}
     assert [s["bands"] for s in entry.isolated_sets] == [4, 2]
-    nothing = replace(SOUND, missing={"band-representations": "layer groups are not treated"})
+    nothing = replace(SOUND, missing={"band-representations": "the gap is not known"})
     entry = band_representations_entry(nothing)
-    assert (entry.status, entry.reason) == ("not-applicable", "layer groups are not treated")
+    assert (entry.status, entry.reason) == ("not-applicable", "the gap is not known")
 
 
 def _class(bands: band_reps.BandSet) -> tuple[str, str]:
@@ -87,6 +87,15 @@ def test_levels_of_no_atomic_limit_are_not_called_trivial() -> None:
     class_, grounds = _class(replace(band_reps.STRONG_SET, z2=(0, 0, 0, 0)))
     assert class_ == "higher-order"
     assert "no sum or difference of atomic limits" in grounds
+
+
+def test_in_a_layer_they_are_those_of_a_mirror_chern_number() -> None:
+    """X_BS of all layer groups is Z2 or a mirror Chern number modulo n (Po et al. 2017)."""
+    bands = replace(band_reps.STRONG_SET, z2=(0,), indicator=(2,))
+    layer = replace(band_reps.of(bands), dimension=2)
+    class_, grounds = class_without_z2(changed(parity=None, band_reps=layer), {})
+    assert class_ == "crystalline-ti"
+    assert "mirror Chern number other than 0" in grounds[0]
 
 
 def test_trivial_is_said_with_what_the_levels_add() -> None:

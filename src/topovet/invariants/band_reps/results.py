@@ -143,7 +143,7 @@ class BandRepWitness:
     reason
         Why it is not "ok"; empty otherwise.
     group
-        Number and symbol of the group that was used, e.g. "216 (F-43m)".
+        Number and symbol of the group that was used, "216 (F-43m)" or, of a layer, "72 (p-3m1)".
     spinful
         Whether the levels are those of electrons with spin.
     n_operations, n_structure
@@ -161,6 +161,8 @@ class BandRepWitness:
         be connected or no line has more than the identity.
     sets
         Sets of bands between gaps, lowest first; empty where only the occupied ones are isolated.
+    dimension
+        3 with a space group, 2 with a layer group.
     """
 
     status: str
@@ -175,3 +177,4 @@ class BandRepWitness:
     occupied: BandSet
     lines: tuple[LineLevels, ...] = ()
     sets: tuple[BandSet, ...] = ()
+    dimension: int = 3

@@ -13,7 +13,12 @@ from topovet.invariants.band_reps.classify import Classifier
 from topovet.invariants.band_reps.levels import Levels, read_levels
 from topovet.invariants.band_reps.lines import connect_levels
 from topovet.invariants.band_reps.results import NOT_GAPPED, UNRESOLVED, BandRepWitness, BandSet
-from topovet.invariants.band_reps.z2 import NOTHING, ContradictionError, z2_from_levels
+from topovet.invariants.band_reps.z2 import (
+    Z2,
+    ContradictionError,
+    nothing_known,
+    z2_from_levels,
+)
 from topovet.model.crystal import Crystal
 from topovet.model.fourier import BlochSum
 from topovet.spectrum.eigen import one_blas_thread
@@ -21,6 +26,7 @@ from topovet.symmetry.bandreps.indicator_group import (
     BandRepresentations,
     compute_band_representations,
 )
+from topovet.symmetry.bandreps.layers import Layer
 from topovet.symmetry.operators import WannierOperator
 
 MOST_SETS = 40
@@ -41,6 +47,8 @@ class GroupInUse:
         Operations of the structure's group.
     time_reversal, spinful
         Whether Theta is in the group; double-valued representations.
+    layer
+        Where the layer lies whose operations these are; None for a crystal.
     """
 
     operators: tuple[WannierOperator, ...]
@@ -48,6 +56,7 @@ class GroupInUse:
     n_structure: int
     time_reversal: bool
     spinful: bool
+    layer: Layer | None = None
 
 
 def compute_band_rep_witness(
@@ -62,7 +71,7 @@ def compute_band_rep_witness(
     Parameters
     ----------
     bloch
-        The Hamiltonian of a three-dimensional crystal.
+        The Hamiltonian of a crystal or a layer.
     group
         Its group.
     crystal
@@ -79,6 +88,7 @@ def compute_band_rep_witness(
         np.array([o.translation for o in group.operators]),
         spinful=group.spinful,
         time_reversal=group.time_reversal,
+        layer=group.layer,
     )
     edges = sorted({n for n in gaps if 0 < n < bloch.n_orb} | {filling})[:MOST_SETS]
     with one_blas_thread():
@@ -103,6 +113,7 @@ def compute_band_rep_witness(
         occupied=occupied,
         lines=connect_levels(found, levels.points, vector) if vector is not None and gapped else (),
         sets=tuple(sets) if len(sets) > 1 else (),
+        dimension=3 if group.layer is None else 2,
     )
 
 
@@ -123,18 +134,18 @@ class _Judge:
         lower = self.levels.readings.get(first)
         reason = upper.reason or (lower.reason if lower is not None else "")
         if upper.vector is None or (lower is not None and lower.vector is None):
-            return _unresolved(first, last, reason)
+            return self._unresolved(first, last, reason)
         vector = upper.vector
         purity = upper.purity
         if lower is not None and lower.vector is not None:
             vector, purity = vector - lower.vector, min(purity, lower.purity)
         if (vector < 0).any():
-            return _unresolved(first, last, "the levels of two gaps do not fit together")
+            return self._unresolved(first, last, "the levels of two gaps do not fit together")
         return self._classified(first, last, vector, purity)
 
     def _classified(self, first: int, last: int, vector: IntArray, purity: float) -> BandSet:
         answer = self.classifier.classify(vector)
-        z2: tuple[int | None, ...] = NOTHING
+        z2: Z2 = nothing_known(self.found)
         classification, reason = answer.classification, answer.reason
         if classification not in (NOT_GAPPED, UNRESOLVED):
             try:
@@ -159,18 +170,17 @@ class _Judge:
         starts = self.found.starts.tolist()
         return tuple(tuple(vector[a:b].tolist()) for a, b in itertools.pairwise(starts))
 
-
-def _unresolved(first: int, last: int, reason: str) -> BandSet:
-    return BandSet(
-        first_band=first,
-        n_bands=last - first,
-        classification=UNRESOLVED,
-        reason=reason,
-        indicator=None,
-        multiplicities=(),
-        atomic_limits=(),
-        obstructed=None,
-        crossings=(),
-        z2=NOTHING,
-        purity=None,
-    )
+    def _unresolved(self, first: int, last: int, reason: str) -> BandSet:
+        return BandSet(
+            first_band=first,
+            n_bands=last - first,
+            classification=UNRESOLVED,
+            reason=reason,
+            indicator=None,
+            multiplicities=(),
+            atomic_limits=(),
+            obstructed=None,
+            crossings=(),
+            z2=nothing_known(self.found),
+            purity=None,
+        )

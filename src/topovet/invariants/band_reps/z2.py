@@ -1,9 +1,10 @@
 """Z2 indices that multiplicities at the maximal k strata fix, by the published formulas.
 
 With inversion all of them follow from the parities that the irreps hold (Fu, Kane), with S4 alone
-the strong one, kappa_4 mod 2. Other groups fix none. The formulas are those of the other witnesses;
-what is independent is where the eigenvalues come from: levels that passed the compatibility
-relations of the whole group, not each momentum by itself.
+the strong one of a crystal, kappa_4 mod 2. Other groups fix none. A layer has one index, the
+product over its four TRIM. The formulas are those of the other witnesses; what is independent is
+where the eigenvalues come from: levels that passed the compatibility relations of the whole group,
+not each momentum by itself.
 
 References
 ----------
@@ -19,20 +20,27 @@ from topovet.arrays import ComplexArray, FloatArray, IntArray
 from topovet.errors import TopovetError
 from topovet.symmetry.bandreps.compatibility import arms_of
 from topovet.symmetry.bandreps.indicator_group import BandRepresentations
+from topovet.symmetry.bandreps.layers import Layer
 from topovet.symmetry.little_group import same_point
 from topovet.symmetry.trim import trim_points
 
-NOTHING = (None, None, None, None)
+Z2 = tuple[int | None, ...]
+"""(nu0, nu1, nu2, nu3) of a crystal, one entry for a layer; None where not fixed."""
 
-Z2 = tuple[int | None, int | None, int | None, int | None]
+NOTHING: Z2 = (None, None, None, None)
 
 
 class ContradictionError(TopovetError):
     """Two formulas for the same index differ: the multiplicities are not those of gapped bands."""
 
 
+def nothing_known(found: BandRepresentations) -> Z2:
+    """As many entries as the group has indices, all None."""
+    return NOTHING if found.layer is None else (None,)
+
+
 def z2_from_levels(found: BandRepresentations, vector: IntArray) -> Z2:
-    """(nu0, nu1, nu2, nu3), None at an index that the group does not fix.
+    """(nu0, nu1, nu2, nu3), or (nu,) of a layer; None at an index that the group does not fix.
 
     Parameters
     ----------
@@ -48,10 +56,12 @@ def z2_from_levels(found: BandRepresentations, vector: IntArray) -> Z2:
     """
     group = found.group
     if not (group.spinful and group.time_reversal):
-        return NOTHING
+        return nothing_known(found)
     traces = _Traces(found, vector)
-    strong = {_strong_from_s4(traces, w, g) for g, w in enumerate(group.rotations) if _is_s4(w)}
     centres = np.flatnonzero(np.all(group.rotations == -np.eye(3, dtype=np.int64), axis=(1, 2)))
+    if found.layer is not None:
+        return _of_layer(traces, int(centres[0]), found.layer) if len(centres) else (None,)
+    strong = {_strong_from_s4(traces, w, g) for g, w in enumerate(group.rotations) if _is_s4(w)}
     z2: Z2 = NOTHING
     if len(centres):
         z2 = _from_parities(traces, int(centres[0]))
@@ -105,9 +115,20 @@ def _strong_from_s4(traces: _Traces, rotation: IntArray, operation: int) -> int:
 def _from_parities(traces: _Traces, inversion: int) -> Z2:
     """Products of parities, one of each Kramers pair, over all TRIM and over k_i = 1/2."""
     trim = trim_points((True, True, True))
+    pairs = _odd_pairs(traces, inversion, trim)
+    weak = [int(pairs[trim[:, i] > 0.25].sum()) % 2 for i in range(3)]
+    return (int(pairs.sum()) % 2, weak[0], weak[1], weak[2])
+
+
+def _of_layer(traces: _Traces, inversion: int, layer: Layer) -> Z2:
+    """Product of parities over the four TRIM of the plane."""
+    return (int(_odd_pairs(traces, inversion, trim_points(layer.periodic)).sum()) % 2,)
+
+
+def _odd_pairs(traces: _Traces, inversion: int, trim: FloatArray) -> IntArray:
+    """Odd Kramers pairs at each TRIM."""
     odd = np.array([(traces.n_bands - traces.at(k, inversion)) / 2 for k in trim])
     pairs = np.round(odd / 2).astype(np.int64)
     if np.abs(2 * pairs - odd).max() > 1e-6:
         raise ContradictionError("odd states do not come in Kramers pairs")
-    weak = [int(pairs[trim[:, i] > 0.25].sum()) % 2 for i in range(3)]
-    return (int(pairs.sum()) % 2, weak[0], weak[1], weak[2])
+    return pairs

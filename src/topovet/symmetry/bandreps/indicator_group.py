@@ -16,7 +16,7 @@ from __future__ import annotations
 
 import functools
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -29,6 +29,7 @@ from topovet.symmetry.bandreps.double_group import (
     little_group_at,
 )
 from topovet.symmetry.bandreps.induction import SiteOrbit, place_on_orbit
+from topovet.symmetry.bandreps.layers import Layer, exact_translations, strata_of_layer
 from topovet.symmetry.bandreps.smith import SmithForm, smith_normal_form
 from topovet.symmetry.bandreps.strata import Stratum, Torus, cell_torus, find_strata, zone_torus
 
@@ -79,6 +80,8 @@ class BandRepresentations:
         What the group does to k and to places in the cell.
     cell_strata
         All strata of the cell, maximal or not.
+    layer
+        Where the layer lies; None for a crystal.
     """
 
     group: DoubleGroup
@@ -92,6 +95,7 @@ class BandRepresentations:
     zone: Torus
     cell: Torus
     cell_strata: tuple[Stratum, ...]
+    layer: Layer | None = None
 
     @property
     def matrix(self) -> IntArray:
@@ -149,8 +153,9 @@ def compute_band_representations(
     *,
     spinful: bool,
     time_reversal: bool = True,
+    layer: Layer | None = None,
 ) -> BandRepresentations:
-    """Band representations of a space group with time reversal, for the cell as it is.
+    """Band representations of a space or layer group with time reversal, for the cell as it is.
 
     Results are remembered within a process.
 
@@ -164,6 +169,8 @@ def compute_band_representations(
         Electrons with spin-orbit coupling.
     time_reversal
         Whether it holds.
+    layer
+        Where the layer lies whose operations these are; None for a crystal.
 
     Raises
     ------
@@ -176,26 +183,34 @@ def compute_band_representations(
         np.asarray(translations, dtype=float).tobytes(),
         spinful,
         time_reversal,
+        layer,
     )
 
 
 @functools.lru_cache(maxsize=16)
 def _computed(
-    lattice: bytes, rotations: bytes, translations: bytes, spinful: bool, time_reversal: bool
+    lattice: bytes,
+    rotations: bytes,
+    translations: bytes,
+    spinful: bool,
+    time_reversal: bool,
+    layer: Layer | None,
 ) -> BandRepresentations:
-    group = build_double_group(
+    group = _table(
         np.frombuffer(lattice).reshape(3, 3),
         np.frombuffer(rotations, dtype=np.int64).reshape(-1, 3, 3),
         np.frombuffer(translations).reshape(-1, 3),
-        spinful=spinful,
-        time_reversal=time_reversal,
+        (spinful, time_reversal),
+        layer,
     )
     zone = zone_torus(group.k_actions)
-    strata = find_strata(zone)
+    strata = find_strata(zone, None if layer is None else layer.in_plane)
     maximal = tuple(s for s in strata if s.maximal)
     tables = tuple(find_coreps(little_group_at(group, s.point_frac, s.stabiliser)) for s in maximal)
     cell = cell_torus(group.rotations, group.numerators)
     cell_strata = find_strata(cell)
+    if layer is not None:
+        cell_strata = strata_of_layer(cell_strata, layer)
     orbits = [place_on_orbit(group, cell, s) for s in cell_strata if s.maximal]
     orbits.sort(key=lambda orbit: orbit.multiplicity)
     rows = tuple(row for i, orbit in enumerate(orbits) for row in induce(i, orbit, tables))
@@ -211,7 +226,29 @@ def _computed(
         zone=zone,
         cell=cell,
         cell_strata=cell_strata,
+        layer=layer,
     )
+
+
+def _table(
+    cell: FloatArray,
+    rotations: IntArray,
+    translations: FloatArray,
+    kind: tuple[bool, bool],
+    layer: Layer | None,
+) -> DoubleGroup:
+    """Table of the group; that of a layer is about its middle also where nothing fixes it."""
+    spinful, time_reversal = kind
+    if layer is not None:
+        translations = exact_translations(layer, rotations, translations)
+    group = build_double_group(
+        cell, rotations, translations, spinful=spinful, time_reversal=time_reversal
+    )
+    if layer is None:
+        return group
+    origin = np.array(group.origin)
+    origin[layer.axis] = layer.middle
+    return replace(group, origin=frozen(origin))
 
 
 def induce(

@@ -141,23 +141,37 @@ def zone_torus(k_actions: IntArray) -> Torus:
     return Torus(k_actions, np.zeros((len(k_actions), 3), dtype=np.int64), SPLITS)
 
 
-def find_strata(torus: Torus) -> tuple[Stratum, ...]:
+def find_strata(torus: Torus, within: IntArray | None = None) -> tuple[Stratum, ...]:
     """All strata, one of each orbit, those of the largest dimension first.
 
     Remembered within a process: they do not depend on lengths and angles of the cell.
+
+    Parameters
+    ----------
+    torus
+        The cell or the zone under the group.
+    within
+        (3, m) integer directions through the origin of a part that the group keeps, to which the
+        search is restricted; all of the torus if None.
     """
-    actions, shifts = (np.asarray(a, dtype=np.int64) for a in (torus.actions, torus.shifts))
-    return _found_strata(actions.tobytes(), shifts.tobytes(), torus.denominator)
+    whole = np.eye(3, dtype=np.int64) if within is None else within
+    actions, shifts, whole = (
+        np.ascontiguousarray(a, dtype=np.int64) for a in (torus.actions, torus.shifts, whole)
+    )
+    return _found_strata(actions.tobytes(), shifts.tobytes(), torus.denominator, whole.tobytes())
 
 
 @functools.lru_cache(maxsize=64)
-def _found_strata(actions: bytes, shifts: bytes, denominator: int) -> tuple[Stratum, ...]:
+def _found_strata(
+    actions: bytes, shifts: bytes, denominator: int, within: bytes
+) -> tuple[Stratum, ...]:
     torus = Torus(
         np.frombuffer(actions, dtype=np.int64).reshape(-1, 3, 3),
         np.frombuffer(shifts, dtype=np.int64).reshape(-1, 3),
         denominator,
     )
-    whole = _Flat(np.zeros(3, dtype=np.int64), np.eye(3, dtype=np.int64))
+    directions = np.frombuffer(within, dtype=np.int64).reshape(3, -1)
+    whole = _Flat(np.zeros(3, dtype=np.int64), directions)
     waiting, seen, found = [whole], {_key(whole, torus.denominator)}, []
     while waiting:
         flat = waiting.pop(0)
