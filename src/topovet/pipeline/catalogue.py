@@ -11,6 +11,7 @@ from topovet.invariants import irrep_results as irreps
 from topovet.invariants import lower_groups, mirror_indicators, mirror_witness
 from topovet.invariants import results as invariants
 from topovet.invariants import rotation_indicators as rotations
+from topovet.invariants.band_reps import path_results as band_path
 from topovet.invariants.band_reps import results as band_reps
 from topovet.invariants.nodes import results as nodes
 from topovet.invariants.rotation_eigenvalues import EigenvalueCount
@@ -113,6 +114,11 @@ STORED_TYPES = (
     band_reps.BandSet,
     band_reps.LineLevels,
     band_reps.BandRepWitness,
+    band_path.EndLevel,
+    band_path.LevelConnection,
+    band_path.LevelCrossing,
+    band_path.PathSegment,
+    band_path.PathConnections,
     EigenvalueCount,
     rotations.S4Axis,
     rotations.S4Indicator,

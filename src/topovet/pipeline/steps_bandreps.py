@@ -1,19 +1,23 @@
-"""The task on band representations of the occupied bands and of other isolated sets."""
+"""Tasks on band representations and on how bands connect along the path."""
 
 from __future__ import annotations
 
 import numpy as np
 
 from topovet.arrays import BoolArray, FloatArray
+from topovet.invariants.band_reps.path import connect_path
+from topovet.invariants.band_reps.path_results import PathConnections
 from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.band_reps.witness import GroupInUse, compute_band_rep_witness
+from topovet.invariants.irrep_results import PointIrreps
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.steps_physics import MeshEnergies
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.gap import UNRESOLVED_EV
-from topovet.spectrum.results import Electrons, GapSample
+from topovet.spectrum.results import BandPath, Electrons, GapSample
+from topovet.symmetry.bandreps.double_group import build_double_group
 from topovet.symmetry.bandreps.layers import Layer, find_layer, keeps_layer, leans, name_of_layer
 from topovet.symmetry.group_results import GroupTest
 from topovet.symmetry.operations import largest_closed_subset, multiplication_table
@@ -89,6 +93,40 @@ def sort_by_band_representations(
     )
 
 
+def connect_along_path(
+    *,
+    context: Context,
+    hamiltonian_with_basis: BasedHamiltonian,
+    declarations: Declarations,
+    space_group: SpaceGroup,
+    group: GroupTest,
+    time_reversal: TimeReversalTest,
+    electrons: Electrons,
+    bands: BandPath,
+    irreps: tuple[PointIrreps, ...],
+) -> PathConnections:
+    """Which level runs into which along the path, by the symmetry that the bands have."""
+    based, crystal = hamiltonian_with_basis, declarations.crystal
+    if based.basis is None:
+        raise NotApplicable(f"no operators can be built: {based.reason}")
+    if not time_reversal.present:
+        raise NotApplicable("time reversal is broken; magnetic groups are not treated")
+    if group.in_bands is None:
+        raise NotApplicable("the symmetry of the bands is not known")
+    built = build_operators(based.basis, crystal, space_group.rotations, space_group.translations)
+    at = dict(zip(built.indices.tolist(), built.operators, strict=True))
+    of_layer = _of_layer(find_layer(crystal), crystal.cell, space_group)
+    members = [i for i in group.in_bands.members if i < group.n_structure and of_layer[i]]
+    operators = [at[i] for i in members]
+    table = build_double_group(
+        crystal.cell,
+        np.array([o.rotation for o in operators]),
+        np.array([o.translation for o in operators]),
+        spinful=based.lattice.model.spinful,
+    )
+    return connect_path(table, operators, based.lattice.bloch, bands, irreps, electrons.filling)
+
+
 def _operators_in_use(
     based: BasedHamiltonian,
     declared: Declarations,
@@ -147,5 +185,20 @@ TASKS = (
         ),
         wants=("gap",),
         version=2,
+    ),
+    Task(
+        "band-connections",
+        "follow levels along the band path by their irreps",
+        connect_along_path,
+        needs=(
+            "hamiltonian-with-basis",
+            "declarations",
+            "space-group",
+            "group",
+            "time-reversal",
+            "electrons",
+            "bands",
+            "irreps",
+        ),
     ),
 )

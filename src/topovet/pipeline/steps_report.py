@@ -8,6 +8,7 @@ from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_reps.path_results import PathConnections
 from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
@@ -69,6 +70,7 @@ def collect_findings(
     mirror_chern: MirrorWitness | None,
     mirror_indicators: tuple[MirrorIndicator, ...] | None,
     band_representations: BandRepWitness | None,
+    band_connections: PathConnections | None,
     lower_gaps: LowerGroups | None,
     surface: SurfaceWitness | None,
     tipping: TippingSearch | None,
@@ -103,6 +105,7 @@ def collect_findings(
         mirror=mirror_chern,
         mirror_indicators=mirror_indicators or (),
         band_reps=band_representations,
+        connections=band_connections,
         lower=lower_gaps,
         surface=surface,
         tipping=tipping,
@@ -196,6 +199,7 @@ SHOWN = (
     "mirror",
     "mirror_indicators",
     "band_reps",
+    "connections",
     "lower",
     "surface",
     "tipping",
@@ -233,6 +237,7 @@ IF_THERE = (
     "mirror-chern",
     "mirror-indicators",
     "band-representations",
+    "band-connections",
     "lower-gaps",
     "surface",
     "tipping",

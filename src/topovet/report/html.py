@@ -12,6 +12,7 @@ import numpy as np
 from markupsafe import Markup, escape
 
 from topovet import notation
+from topovet.report import band_path_words as band_path
 from topovet.report import band_rep_words as band_reps
 from topovet.report import words
 from topovet.report.classes import class_words, words_of_class
@@ -124,6 +125,11 @@ def page_environment() -> jinja2.Environment:
         "set_words": band_reps.set_words,
         "band_rep_reading": band_reps.reading,
         "band_rep_note": band_reps.witness_note,
+        "crossing_sentences": band_path.crossing_sentences,
+        "plain_segments": band_path.plain_segments,
+        "connection_rows": band_path.connection_rows,
+        "kinds_text": band_path.kinds_text,
+        "end_level": band_path.end_text,
         "direction": direction,
         "cause_name": cause_name,
         "map_middle": middle_text,

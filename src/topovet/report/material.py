@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_reps.path_results import PathConnections
 from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.irrep_results import PointIrreps
 from topovet.invariants.lower_groups import LowerGroups
@@ -119,6 +120,8 @@ class ReportMaterial:
         Mirror Chern numbers modulo n from rotation eigenvalues; empty without such axes.
     band_reps
         Bands held against all atomic limits; None where they were not.
+    connections
+        How bands connect along the path; None where that was not asked.
     lower
         Groups of bands below lower gaps; None where they were not asked for.
     surface
@@ -162,6 +165,7 @@ class ReportMaterial:
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
     band_reps: BandRepWitness | None = None
+    connections: PathConnections | None = None
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     surface_states: SurfaceStates | None = None

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from topovet.invariants.band_reps.results import AtomicLimit, BandRepWitness, BandSet, LineLevels
+from topovet.verdict.band_path import connections_entry
 from topovet.verdict.document import BandRepresentationsEntry
 from topovet.verdict.findings import Findings
 
@@ -15,7 +16,9 @@ def band_representations_entry(findings: Findings) -> BandRepresentationsEntry:
     found = findings.band_reps
     if found is None:
         reason = findings.missing.get("band-representations", "not tested")
-        return BandRepresentationsEntry("not-applicable", reason)
+        return BandRepresentationsEntry(
+            "not-applicable", reason, connections=connections_entry(findings.connections)
+        )
     occupied = found.occupied
     return BandRepresentationsEntry(
         status=found.status,
@@ -31,6 +34,7 @@ def band_representations_entry(findings: Findings) -> BandRepresentationsEntry:
         multiplicities=_multiplicities(found, occupied),
         lines=tuple(_line(line) for line in found.lines),
         isolated_sets=tuple(_band_set(entry) for entry in found.sets),
+        connections=connections_entry(findings.connections),
     )
 
 

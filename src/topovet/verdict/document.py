@@ -146,6 +146,7 @@ class BandRepresentationsEntry:
     multiplicities: tuple[Mapping[str, Any], ...] = ()
     lines: tuple[Mapping[str, Any], ...] = ()
     isolated_sets: tuple[Mapping[str, Any], ...] = ()
+    connections: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceWitness
 from topovet.intake.audit_results import HamiltonianAudit
+from topovet.invariants.band_reps.path_results import PathConnections
 from topovet.invariants.band_reps.results import BandRepWitness
 from topovet.invariants.lower_groups import LowerGroups
 from topovet.invariants.mirror_indicators import MirrorIndicator
@@ -72,6 +73,7 @@ class Findings:
     mirror: MirrorWitness | None = None
     mirror_indicators: tuple[MirrorIndicator, ...] = ()
     band_reps: BandRepWitness | None = None
+    connections: PathConnections | None = None
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     tipping: TippingSearch | None = None

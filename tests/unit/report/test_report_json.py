@@ -79,6 +79,7 @@ def test_schema_knows_every_flag_code(schema: dict[str, Any]) -> None:
 LATER = {"diagnosis", "mirror", "lower_gaps", "nodes", "node_search", "band_representations"} | {
     *("z2_partial", "edge_chern", "miller", "chosen_by", "terminations"),
     "indirect_proved_min_eV",
+    "connections",
 }
 """Keys that older dossiers lack and that a reader must not ask for."""
 
