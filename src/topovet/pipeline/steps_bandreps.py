@@ -56,11 +56,7 @@ def sort_by_band_representations(
         raise NotApplicable("groups of chains are not treated")
     if gap is None:
         raise NotApplicable("the gap is not known")
-    if len(space_group.rotations) > MOST_OPERATIONS:
-        raise NotApplicable(
-            f"the cell repeats a smaller one: {len(space_group.rotations)} operations, "
-            f"{MOST_OPERATIONS} at most"
-        )
+    _check_cell(space_group)
     limit = HELD_SHARE * MEV_PER_EV * max(gap.direct_ev, UNRESOLVED_EV)
     if not time_reversal.present:
         raise NotApplicable("time reversal is broken; magnetic groups are not treated")
@@ -111,6 +107,7 @@ def connect_along_path(
         raise NotApplicable(f"no operators can be built: {based.reason}")
     if not time_reversal.present:
         raise NotApplicable("time reversal is broken; magnetic groups are not treated")
+    _check_cell(space_group)
     if group.in_bands is None:
         raise NotApplicable("the symmetry of the bands is not known")
     built = build_operators(based.basis, crystal, space_group.rotations, space_group.translations)
@@ -146,6 +143,14 @@ def _operators_in_use(
     among[np.flatnonzero(np.all(table == np.arange(len(table)), axis=1))] = True
     badness = np.array([test.violation_mev or 0.0 for test in group.operations])
     return tuple(by_position[i] for i in largest_closed_subset(table, among, badness).tolist())
+
+
+def _check_cell(space_group: SpaceGroup) -> None:
+    if len(space_group.rotations) > MOST_OPERATIONS:
+        raise NotApplicable(
+            f"the cell repeats a smaller one: {len(space_group.rotations)} operations, "
+            f"{MOST_OPERATIONS} at most"
+        )
 
 
 def _of_layer(layer: Layer | None, cell: FloatArray, space_group: SpaceGroup) -> BoolArray:
