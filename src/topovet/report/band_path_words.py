@@ -58,9 +58,19 @@ def crossing_sentences(found: PathConnections) -> tuple[str, ...]:
     return tuple(crossing_words(segment, crossing) for segment, crossing in listed)
 
 
+def _is_plain(segment: PathSegment) -> bool:
+    """Whether all levels are of one kind, and told apart next to the filling."""
+    return len(segment.kinds) == 1 and all(c.settled for c in segment.connections)
+
+
+def tabled_segments(found: PathConnections) -> tuple[PathSegment, ...]:
+    """Segments of which there is more to say than that levels run in order of energy."""
+    return tuple(s for s in found.segments if not _is_plain(s))
+
+
 def plain_segments(found: PathConnections) -> str:
-    """Segments on which all levels are of one kind: "Γ – L, L – B1"; empty without any."""
-    names = [f"{s.start} – {s.end}" for s in found.segments if len(s.kinds) == 1]
+    """The others: "Γ – L, L – B1"; empty without any."""
+    names = [f"{s.start} – {s.end}" for s in found.segments if _is_plain(s)]
     return ", ".join(dict.fromkeys(names))
 
 

@@ -127,6 +127,7 @@ def page_environment() -> jinja2.Environment:
         "band_rep_note": band_reps.witness_note,
         "crossing_sentences": band_path.crossing_sentences,
         "plain_segments": band_path.plain_segments,
+        "tabled_segments": band_path.tabled_segments,
         "connection_rows": band_path.connection_rows,
         "kinds_text": band_path.kinds_text,
         "end_level": band_path.end_text,

@@ -8,10 +8,15 @@ from dataclasses import replace
 import jsonschema
 
 import invented_dossiers as invented
-from invented_band_path import AXIS, CONNECTIONS
+from invented_band_path import AXIS, CONNECTIONS, PLAIN
 from invented_findings import changed
 from topovet.invariants.band_reps.path_results import PathConnections
-from topovet.report.band_path_words import connection_rows, crossing_sentences
+from topovet.report.band_path_words import (
+    connection_rows,
+    crossing_sentences,
+    plain_segments,
+    tabled_segments,
+)
 from topovet.report.html import render_report
 from topovet.report.json_document import load_schema, verdict_json
 from topovet.verdict.band_reps import band_representations_entry
@@ -42,6 +47,13 @@ def test_levels_between_the_same_ends_share_a_row() -> None:
     assert rows[0].approach_mev is None
     assert rows[2].kinds == "2b (not told apart from the next), 1ab"
     assert rows[2].approach_mev == 0.3
+
+
+def test_levels_of_one_kind_that_are_not_told_apart_have_a_table() -> None:
+    near = replace(PLAIN, connections=AXIS.connections[1:2])
+    found = PathConnections(2, (PLAIN, near))
+    assert tabled_segments(found) == (near,)
+    assert plain_segments(found) == "A – L"
 
 
 def test_section() -> None:
