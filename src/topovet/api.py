@@ -18,6 +18,7 @@ def vet(
     effort: str = "standard",
     surface: tuple[int, int, int] | None = None,
     lower_gaps: str | Sequence[int] | None = None,
+    spinless: str | PathLike[str] | None = None,
     out: str | PathLike[str] | None = None,
 ) -> Verdict:
     """Vet one case.
@@ -36,6 +37,8 @@ def vet(
         Miller indices, in the Hamiltonian's own cell, of the surface (in 2D: the edge) to follow.
     lower_gaps
         "all", or numbers of bands: indices of the lowest bands up to lower gaps, besides.
+    spinless
+        The same compound without spin-orbit coupling, for how far that may be turned down.
     out
         Dossier folder; nothing is written without it.
 
@@ -65,6 +68,7 @@ def vet(
         "effort": effort,
         "surface": None if surface is None else list(surface),
         "lower_gaps": lower_gaps if lower_gaps in (None, "all") else list(lower_gaps),
+        "spinless": None if spinless is None else str(Path(spinless).absolute()),
     }
     dossier = vet_case(Path(case), out=None if out is None else Path(out), settings=settings)
     return dossier.verdict

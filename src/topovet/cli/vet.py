@@ -46,6 +46,12 @@ from topovet.report.text import verdict_lines
     help="Also the lowest bands up to every open gap below, or up to these numbers of bands.",
 )
 @click.option(
+    "--spinless",
+    type=click.Path(path_type=Path),
+    metavar="PATH",
+    help="The same compound without spin-orbit coupling: scale 0 of its tipping point.",
+)
+@click.option(
     "--symmetrise",
     "also_symmetrised",
     is_flag=True,
@@ -67,6 +73,7 @@ def command(
     effort: str,
     surface: tuple[int, int, int] | None,
     lower_gaps: str | list[int] | None,
+    spinless: Path | None,
     also_symmetrised: bool,
     also_rechecked: bool,
     strict: bool,
@@ -82,6 +89,7 @@ def command(
         "effort": effort,
         "surface": None if surface is None else list(surface),
         "lower_gaps": lower_gaps,
+        "spinless": None if spinless is None else str(spinless.absolute()),
     }
     with progress(Path(case).name) as observe:
         dossier = vet_case(case, out=folder, settings=settings, observe=observe)

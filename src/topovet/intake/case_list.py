@@ -15,7 +15,10 @@ from topovet.intake.opening import read_lines
 
 MAX_BYTES = 1 << 24
 
-COLUMNS = ("path", "name", "filling", "fermi_eV", "dimension", "inversion_centre", "surface")
+COLUMNS = (
+    *("path", "name", "filling", "fermi_eV"),
+    *("dimension", "inversion_centre", "surface", "spinless"),
+)
 
 _TOO_LIKE = 0.7
 """An unknown column whose name is this close to a known one is taken for a slip of the pen."""
@@ -35,6 +38,8 @@ class ListedCase:
         The path as it is written in the list.
     name, filling, fermi_ev, dimension, inversion_centre, surface
         As in `case.toml`, over which they prevail.
+    spinless
+        Likewise; a relative path is taken from the folder of the list.
     """
 
     line: int
@@ -46,6 +51,7 @@ class ListedCase:
     dimension: int | None = None
     inversion_centre: tuple[float, float, float] | None = None
     surface: tuple[int, int, int] | None = None
+    spinless: Path | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -60,8 +66,9 @@ def read_case_list(path: Path) -> CaseList:
     """Read a list of cases.
 
     The first line names the columns: `path`, and any of `name`, `filling`, `fermi_eV`,
-    `dimension`, `inversion_centre` and `surface` (three numbers with blanks between them). An
-    empty cell says nothing. Other columns are named in the result and not used.
+    `dimension`, `inversion_centre` and `surface` (three numbers with blanks between them) and
+    `spinless` (another path). An empty cell says nothing. Other columns are named in the result
+    and not used.
 
     Raises
     ------
@@ -173,6 +180,7 @@ def _case(path: Path, line: int, columns: list[str], cells: list[str]) -> Listed
         dimension=values.get("dimension"),
         inversion_centre=values.get("inversion_centre"),
         surface=values.get("surface"),
+        spinless=path.parent / values["spinless"] if "spinless" in values else None,
     )
 
 
@@ -221,6 +229,7 @@ _CONVERSIONS: dict[str, Callable[[str], Any]] = {
     "dimension": _plain_integer,
     "inversion_centre": _numbers(_plain_number),
     "surface": _numbers(_plain_integer),
+    "spinless": str,
 }
 
 

@@ -18,8 +18,9 @@ MAX_BYTES = 100_000
 
 LONGEST_NAME = 200
 LARGEST_MILLER_INDEX = 20
+LONGEST_PATH = 1000
 
-KEYS = ("name", "filling", "fermi_eV", "dimension", "inversion_centre", "surface")
+KEYS = ("name", "filling", "fermi_eV", "dimension", "inversion_centre", "surface", "spinless")
 
 
 def read_settings(path: str | Path) -> CaseSettings:
@@ -58,7 +59,7 @@ def read_settings(path: str | Path) -> CaseSettings:
         if not is_valid(table[key]):
             raise InputError(
                 path,
-                line=_line_of(key, lines),
+                line=line_of_key(key, lines),
                 found=f"{key} = {quoted(_shown(table[key]))}",
                 expected=expected,
                 todo="correct it or delete the line",
@@ -73,14 +74,14 @@ def _unknown_key(path: str | Path, key: str, lines: list[str]) -> InputError:
     hint = f"write {lower[near[0]]} if that is meant, or " if near else ""
     return InputError(
         path,
-        line=_line_of(key, lines),
+        line=line_of_key(key, lines),
         found=f"the key {quoted(key)}",
         expected=f"one of {', '.join(KEYS)}",
         todo=f"{hint}delete it",
     )
 
 
-def _line_of(key: str, lines: list[str]) -> int | None:
+def line_of_key(key: str, lines: list[str]) -> int | None:
     """1-based line on which a key is set, as far as a search of the text can tell."""
     pattern = re.compile(rf"\[*\s*[\"']?{re.escape(key)}[\"']?\s*(=|\.|\])")
     return next((i for i, line in enumerate(lines, start=1) if pattern.match(line.lstrip())), None)
@@ -106,6 +107,7 @@ def _settings(values: dict[str, Any]) -> CaseSettings:
         if centre is None
         else (float(centre[0]), float(centre[1]), float(centre[2])),
         surface=None if surface is None else (surface[0], surface[1], surface[2]),
+        spinless=values.get("spinless"),
     )
 
 
@@ -123,6 +125,10 @@ def _is_triple(value: Any, of: Callable[[Any], bool]) -> bool:
 
 def _is_name(value: Any) -> bool:
     return isinstance(value, str) and value.isprintable() and 0 < len(value.strip()) <= LONGEST_NAME
+
+
+def _is_path(value: Any) -> bool:
+    return isinstance(value, str) and value.isprintable() and 0 < len(value.strip()) <= LONGEST_PATH
 
 
 def _is_filling(value: Any) -> bool:
@@ -154,6 +160,11 @@ RULES: dict[str, tuple[Callable[[Any], bool], str]] = {
     "surface": (
         _is_miller,
         f"three whole Miller indices up to {LARGEST_MILLER_INDEX}, not all 0, such as [0, 0, 1]",
+    ),
+    "spinless": (
+        _is_path,
+        "the path of the same compound without spin-orbit coupling, in quotes and printable "
+        "characters",
     ),
 }
 """Key -> (check, what is expected)."""

@@ -144,6 +144,7 @@ def _case_of(folder: Path, seedname: str, names: list[str], chosen: dict[str, st
         seedname=seedname,
         structure=_structure(folder, seedname, names),
         settings=_plain_or_gzipped(folder, _SETTINGS, names),
+        spinless=None,
         **paths,
     )
 

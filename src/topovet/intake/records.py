@@ -191,11 +191,16 @@ class CaseSettings:
     dimension: int | None = None
     inversion_centre: tuple[float, float, float] | None = None
     surface: tuple[int, int, int] | None = None
+    spinless: str | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class CaseFiles:
-    """Paths of the files found in a case folder (None where absent), not yet opened."""
+    """Paths of the files found in a case folder (None where absent), not yet opened.
+
+    `spinless` holds the files of the same compound without spin-orbit coupling, where that is
+    named.
+    """
 
     folder: str
     seedname: str
@@ -209,3 +214,4 @@ class CaseFiles:
     band_kpt: str | None = None
     structure: str | None = None
     settings: str | None = None
+    spinless: CaseFiles | None = None

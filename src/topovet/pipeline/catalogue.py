@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from topovet.boundary import cone_results as cones
 from topovet.boundary import results as boundary
+from topovet.deformation.companion import CompanionTest
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
 from topovet.intake.audit_results import HamiltonianAudit
@@ -24,6 +25,7 @@ from topovet.model.plane import KPlane
 from topovet.pipeline import (
     steps_bandreps,
     steps_boundary,
+    steps_companion,
     steps_diagnosis,
     steps_intake,
     steps_lower,
@@ -133,6 +135,7 @@ STORED_TYPES = (
     boundary.SurfaceMap,
     TippingPoint,
     TippingSearch,
+    CompanionTest,
     boundary.ThicknessSeries,
     cones.KramersPair,
     cones.Contour,
@@ -158,6 +161,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_proof.TASKS,
         *steps_nodes.TASKS,
         *steps_symmetry.TASKS,
+        *steps_companion.TASKS,
         *steps_witnesses.TASKS,
         *steps_bandreps.TASKS,
         *steps_lower.TASKS,

@@ -14,7 +14,7 @@ from typing import Any
 from topovet.intake.discovery import find_case
 from topovet.pipeline.catalogue import case_tasks, result_codec
 from topovet.pipeline.graph import build_graph, task_order
-from topovet.pipeline.inputs import CaseInput, check_unchanged, hash_inputs
+from topovet.pipeline.inputs import CaseInput, check_unchanged, find_files, hash_inputs
 from topovet.pipeline.runner import Observer, Run
 from topovet.pipeline.store import Store, write_atomically
 from topovet.report.figures import figure_makers
@@ -35,6 +35,7 @@ DEFAULT_SETTINGS: Mapping[str, Any] = {
     "dimension": None,
     "inversion_centre": None,
     "stated_in": None,
+    "spinless": None,
 }
 """Options of a run. Where they say something that case.toml also says, they prevail; `stated_in`
 names the list that they come from, None for the command line."""
@@ -79,12 +80,13 @@ def start_run(
     unknown = set(settings or {}) - set(DEFAULT_SETTINGS)
     if unknown:
         raise ValueError(f"unknown settings: {', '.join(sorted(unknown))}")
-    files = find_case(case)
+    settings = {**DEFAULT_SETTINGS, **(settings or {})}
+    files = find_files(case, settings["spinless"])
     return Run(
         graph=build_graph(case_tasks()),
         files=files,
         inputs=hash_inputs(files),
-        settings={**DEFAULT_SETTINGS, **(settings or {})},
+        settings=settings,
         store=None if out is None else Store(out / "tasks", result_codec()),
         observe=observe,
     )

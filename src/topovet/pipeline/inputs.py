@@ -4,14 +4,21 @@ from __future__ import annotations
 
 import os
 from collections.abc import Iterator
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from pathlib import Path
 
 from topovet.errors import InputError
-from topovet.intake.discovery import sha256_of
+from topovet.intake.companion import find_companion
+from topovet.intake.discovery import find_case, sha256_of
 from topovet.intake.records import CaseFiles
 
-NOT_FILES = ("folder", "seedname")
+NOT_FILES = ("folder", "seedname", "spinless")
+
+OF_COMPANION = ("hr", "tb", "win", "wsvec", "centres", "structure", "settings")
+"""Roles of the files of a spinless companion that are read."""
+
+SPINLESS = "spinless "
+"""Stands before the role of such a file."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,11 +53,40 @@ class CaseInput:
 
 
 def case_paths(files: CaseFiles) -> Iterator[tuple[str, str]]:
-    """Role and path of every file that is there, in the order of `CaseFiles`."""
+    """Role and path of every file that is there, as `CaseFiles` has them, the companion last."""
     for role in (f.name for f in fields(files) if f.name not in NOT_FILES):
         path = getattr(files, role)
         if path is not None:
             yield role, str(path)
+    for role in OF_COMPANION if files.spinless is not None else ():
+        path = getattr(files.spinless, role)
+        if path is not None:
+            yield SPINLESS + role, str(path)
+
+
+def find_files(case: str | Path, spinless: str | Path | None = None) -> CaseFiles:
+    """The files of a case and of its spinless companion.
+
+    Parameters
+    ----------
+    case
+        Case folder, or its Hamiltonian file.
+    spinless
+        Path of the companion; None for the one that `case.toml` names, if it does.
+
+    Raises
+    ------
+    InputError
+        As `find_case`, for either; or `case.toml` cannot be read.
+    """
+    files = find_case(case)
+    return replace(files, spinless=find_companion(files, spinless))
+
+
+def shown_name(role: str, path: str | Path) -> str:
+    """Name of a file for people: with its folder where it is the companion's."""
+    path = Path(path)
+    return f"{path.parent.name}/{path.name}" if role.startswith(SPINLESS) else path.name
 
 
 def stamp_of(path: str | Path) -> FileStamp | None:
@@ -68,7 +104,7 @@ def hash_inputs(files: CaseFiles) -> tuple[CaseInput, ...]:
     for role, path in case_paths(files):
         stamp = stamp_of(path)
         digest, size = sha256_of(path)
-        found.append(CaseInput(role, Path(path).name, digest, size, stamp))
+        found.append(CaseInput(role, shown_name(role, path), digest, size, stamp))
     return tuple(found)
 
 

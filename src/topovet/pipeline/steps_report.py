@@ -6,6 +6,7 @@ from dataclasses import replace
 
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
+from topovet.deformation.companion import CompanionTest
 from topovet.diagnosis.results import Experiments
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.band_reps.path_results import PathConnections
@@ -74,6 +75,7 @@ def collect_findings(
     lower_gaps: LowerGroups | None,
     surface: SurfaceWitness | None,
     tipping: TippingSearch | None,
+    spinless_companion: CompanionTest | None,
     surface_states: SurfaceStates | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
@@ -109,6 +111,7 @@ def collect_findings(
         lower=lower_gaps,
         surface=surface,
         tipping=tipping,
+        companion=spinless_companion,
         surface_states=surface_states,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
@@ -241,6 +244,7 @@ IF_THERE = (
     "lower-gaps",
     "surface",
     "tipping",
+    "spinless-companion",
     "surface-states",
     "group",
     "interpolation",

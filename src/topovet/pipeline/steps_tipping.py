@@ -12,7 +12,7 @@ from topovet.invariants.mirror_witness import MirrorWitness
 from topovet.invariants.results import ParityWitness, WilsonWitness
 from topovet.invariants.tipping.by_gap import GapGround
 from topovet.invariants.tipping.by_parity import TrimGround, trim_stars
-from topovet.invariants.tipping.results import TippingSearch
+from topovet.invariants.tipping.results import BY_COMPANION, BY_SPIN_PART, TippingSearch
 from topovet.invariants.tipping.search import (
     choose_parameters,
     conclude_search,
@@ -20,6 +20,7 @@ from topovet.invariants.tipping.search import (
     search_by_parity,
 )
 from topovet.model.declarations import Declarations
+from topovet.model.fourier import BlochSum
 from topovet.model.orbital_groups import OrbitalGroup, declared_groups, element_groups
 from topovet.model.shift_choice import ShiftProposal
 from topovet.model.spin_parts import Frame, spin_frame, spin_purity
@@ -77,6 +78,7 @@ def look_for_tipping_points(
     wilson: WilsonWitness | None,
     group: GroupTest | None,
     mirror_chern: MirrorWitness | None,
+    spinless_difference: BlochSum | None,
 ) -> TippingSearch:
     """Nearest tipping points: by parity where parities speak, else along the gap."""
     effort, based = context.settings["effort"], hamiltonian_with_basis
@@ -84,7 +86,7 @@ def look_for_tipping_points(
     _check_asked(effort, based, time_reversal, z2, _indices(wilson))
     orbitals = _orbitals(based, declarations, shifts, shift_test)
     purity = spin_purity(based.lattice.model, orbitals.same_site, orbitals.frame)
-    parameters, not_asked = choose_parameters(orbitals.groups, purity)
+    parameters, not_asked = choose_parameters(orbitals.groups, purity, spinless_difference)
     if not parameters:
         raise NotApplicable("; ".join(not_asked))
     with one_blas_thread():
@@ -98,7 +100,9 @@ def look_for_tipping_points(
                 max_solves=int(SOLVES_FOR_30[effort] * (30 / based.lattice.model.n_orb) ** 2.5),
             )
         else:
-            operator = _operator(based, declarations, inversion, inferred_inversion)
+            operator = inversion_in_use(based, declarations, inversion, inferred_inversion)
+            if operator is None:
+                raise NotApplicable("inversion is neither declared nor inferred")
             trims = _trim_ground(based, declarations, operator, electrons, space_group)
             found = search_by_parity(trims, parameters, orbitals.frame)
     points, left_out, n_solves = found
@@ -116,7 +120,8 @@ def look_for_tipping_points(
                 electrons=electrons,
             )
             points = [FarSide(way, count).counted(point, mirror_chern) for point in points]
-    return conclude_search(points, (*not_asked, *left_out), purity, n_solves)
+    scale_from = BY_SPIN_PART if spinless_difference is None else BY_COMPANION
+    return conclude_search(points, (*not_asked, *left_out), purity, n_solves, scale_from)
 
 
 def _check_asked(
@@ -166,18 +171,16 @@ def _orbitals(
     return Orbitals(element_groups(elements), same, None)
 
 
-def _operator(
+def inversion_in_use(
     based: BasedHamiltonian,
     declared: Declarations,
     inversion: InversionTest,
     inferred: InferredInversion | None,
-) -> InversionOperator:
-    """The inversion that the parity witness used."""
+) -> InversionOperator | None:
+    """The inversion that the parity witness used; None if it is neither declared nor inferred."""
     if based.basis is not None:
         return build_inversion(based.basis, declared.crystal, np.array(inversion.centre))
-    if inferred is None or inferred.operator is None:
-        raise NotApplicable("inversion is neither declared nor inferred")
-    return inferred.operator
+    return None if inferred is None else inferred.operator
 
 
 def _trim_ground(
@@ -239,6 +242,7 @@ TASKS = (
             "wilson",
             "group",
             "mirror-chern",
+            "spinless-difference",
         ),
         settings=("effort",),
     ),

@@ -64,7 +64,7 @@ def vet_symmetrised(
     made = _symmetrise(run)
     folder = _write_case(run, made, out / "case")
     _write_record(made, out / "symmetrisation.json")
-    own = {**(settings or {}), "filling": None, "fermi_ev": None}
+    own = {**(settings or {}), "filling": None, "fermi_ev": None, "spinless": _companion(run)}
     dossier = vet_case(folder, out=out, settings=own, observe=observe)
     sentence = (
         f"symmetrised over {made.n_operations} operations: H(k) moved by at most "
@@ -72,6 +72,13 @@ def vet_symmetrised(
         f"{mev(max(made.before_mev))} to {mev(max(made.after_mev))}."
     )
     return SymmetrisedDossier(dossier, made, sentence)
+
+
+def _companion(run: Run) -> str | None:
+    """The Hamiltonian of the spinless companion, which serves the symmetrised case as it is."""
+    files = run.files.spinless
+    named = None if files is None else files.hr or files.tb
+    return None if named is None else str(Path(named).absolute())
 
 
 def _symmetrise(run: Run) -> Symmetrisation:

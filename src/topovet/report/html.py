@@ -30,7 +30,7 @@ from topovet.report.indicator_words import (
 )
 from topovet.report.material import ReportMaterial, TaskEntry
 from topovet.report.svg import inline_svg
-from topovet.report.tipping_words import NEAR_MEV, nearest_mev
+from topovet.report.tipping_words import NEAR_MEV, companion_line, nearest_mev
 from topovet.verdict.advice import advice_sections
 from topovet.verdict.document import Verdict
 from topovet.verdict.flags import SEVERITIES, Flag
@@ -82,6 +82,7 @@ def render_report(material: ReportMaterial, figures: Mapping[str, str]) -> str:
         many_atoms=len(material.crystal.symbols) > _MANY_ATOMS,
         slowest=_slowest(material.tasks),
         nearest_tipping_mev=nearest_mev(material.verdict),
+        companion=companion_line(material.verdict),
         near_mev=NEAR_MEV,
         colours=page_colours(),
         fonts=FONTS,

@@ -8,7 +8,7 @@ from collections.abc import Iterable, Sequence
 from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, z2_text
 from topovet.report.classes import class_words
 from topovet.report.diagnosis_words import diagnosis_line
-from topovet.report.tipping_words import tipping_line
+from topovet.report.tipping_words import companion_line, tipping_line
 from topovet.report.words import node_count, radius_note
 from topovet.verdict.document import ParityEntry, Verdict
 
@@ -42,6 +42,7 @@ def verdict_lines(verdict: Verdict) -> str:
         ("residuals", _residuals(verdict)),
         ("radius", f"{mev(verdict.robustness.radius_meV)}, {radius_note(verdict)}"),
         *((("tipping", tipping),) if (tipping := tipping_line(verdict)) else ()),
+        *((("spinless", spinless),) if (spinless := companion_line(verdict)) else ()),
         *([("measure", measure)] if (measure := _measurable(verdict)) else []),
         ("grade", "; ".join([verdict.confidence.grade, *verdict.confidence.reasons])),
     ]

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from topovet.notation import mev
 from topovet.verdict.document import Verdict
 
 NEAR_MEV = 100.0
@@ -23,6 +24,24 @@ def tipping_line(verdict: Verdict) -> str:
     if found:
         return "; ".join(found)
     return "; ".join(str(entry["sentence"]) for entry in entries)
+
+
+def companion_line(verdict: Verdict) -> str:
+    """Whether the spinless companion was used, and how far it is from the built-in part; or ""."""
+    entry = verdict.robustness.companion
+    if entry is None:
+        return ""
+    if not entry["used"]:
+        instead = any(t["spin_orbit_from"] for t in verdict.robustness.tipping)
+        then = "; the spin-dependent part of H is scaled instead" if instead else ""
+        return f"companion not used, because {entry['reason']}{then}"
+    overlap = entry["least_overlap"]
+    alike = "" if overlap is None else f"; hoppings overlap by {overlap:.3f} or more"
+    return (
+        f"at a spin–orbit scale of 0 H is the spinless companion {entry['file']}, which differs by "
+        f"up to {mev(entry['difference_meV'])} from H without its spin-dependent part (sampled k; "
+        f"zero of energy {mev(abs(entry['offset_meV']))} apart and left out{alike})"
+    )
 
 
 def _happens(entries: Sequence[Mapping[str, Any]]) -> bool:

@@ -104,6 +104,7 @@ def _stated(case: ListedCase, list_name: str) -> dict[str, Any]:
         "dimension": case.dimension,
         "inversion_centre": None if case.inversion_centre is None else list(case.inversion_centre),
         "surface": None if case.surface is None else list(case.surface),
+        "spinless": None if case.spinless is None else str(case.spinless.absolute()),
     }
     stated = {key: value for key, value in values.items() if value is not None}
     if {"filling", "fermi_ev"} & set(stated):

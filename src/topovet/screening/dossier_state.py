@@ -11,8 +11,15 @@ from pathlib import Path
 from typing import Any
 
 from topovet.errors import InputError
-from topovet.intake.discovery import find_case, sha256_of
-from topovet.pipeline.inputs import CaseInput, FileStamp, case_paths, stamp_of
+from topovet.intake.discovery import sha256_of
+from topovet.pipeline.inputs import (
+    CaseInput,
+    FileStamp,
+    case_paths,
+    find_files,
+    shown_name,
+    stamp_of,
+)
 from topovet.pipeline.store import write_atomically
 from topovet.screening.records import Outcome
 
@@ -84,7 +91,7 @@ def recorded_outcome(
             and not (folder / "failure.json").exists()
             and state["verdict_sha256"] == _sha256(folder / "verdict.json")
             and state["report_bytes"] == (folder / "report.html").stat().st_size
-            and _same_inputs(state["inputs"], case, float(state["looked_at"]))
+            and _same_inputs(state["inputs"], case, settings, float(state["looked_at"]))
         )
         flags = tuple((str(code), str(severity)) for code, severity in state["flags"])
         recalled = Outcome(slug, "unchanged", str(state["class"]), str(state["grade"]), flags)
@@ -93,15 +100,17 @@ def recorded_outcome(
     return recalled if same else None
 
 
-def _same_inputs(recorded: list[dict[str, Any]], case: str, looked_at: float) -> bool:
-    present = dict(case_paths(find_case(case)))
+def _same_inputs(
+    recorded: list[dict[str, Any]], case: str, settings: Mapping[str, Any], looked_at: float
+) -> bool:
+    present = dict(case_paths(find_files(case, settings.get("spinless"))))
     if [entry["role"] for entry in recorded] != list(present):
         return False
     return all(_same_file(present[entry["role"]], entry, looked_at) for entry in recorded)
 
 
 def _same_file(path: str, entry: dict[str, Any], looked_at: float) -> bool:
-    if Path(path).name != entry["file"]:
+    if shown_name(entry["role"], path) != entry["file"]:
         return False
     stamp = stamp_of(path)
     if stamp is None or stamp.bytes != entry["bytes"]:

@@ -229,12 +229,16 @@ class NodeSearchEntry:
 
 @dataclass(frozen=True, slots=True)
 class RobustnessEntry:
-    """radius_meV is half of the direct gap; `proved` says whether that gap is a proved bound."""
+    """radius_meV is half of the direct gap; `proved` says whether that gap is a proved bound.
+
+    companion tells of the run without spin-orbit coupling, where one is named.
+    """
 
     radius_meV: float | None  # noqa: N815
     errors_meV: Mapping[str, float | None]  # noqa: N815
     tipping: tuple[Mapping[str, Any], ...] = ()
     proved: bool = False
+    companion: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceWitness
+from topovet.deformation.companion import CompanionTest
 from topovet.intake.audit_results import HamiltonianAudit
 from topovet.invariants.band_reps.path_results import PathConnections
 from topovet.invariants.band_reps.results import BandRepWitness
@@ -77,6 +78,7 @@ class Findings:
     lower: LowerGroups | None = None
     surface: SurfaceWitness | None = None
     tipping: TippingSearch | None = None
+    companion: CompanionTest | None = None
     surface_states: SurfaceStates | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)

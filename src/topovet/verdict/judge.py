@@ -42,7 +42,7 @@ from topovet.verdict.measurable import measurable
 from topovet.verdict.node_entries import node_entries, search_entry
 from topovet.verdict.raised import raise_flags
 from topovet.verdict.semimetal import SEMIMETALS, conclude_nodes
-from topovet.verdict.tipping import tipping_entries
+from topovet.verdict.tipping import companion_entry, tipping_entries
 
 PACKAGES = ("numpy", "scipy", "ase", "spglib", "networkx", "matplotlib")
 """Libraries whose versions can change a number or a figure."""
@@ -116,6 +116,7 @@ def judge(
             errors_meV=error_budget(findings),
             tipping=tipping_entries(findings, conclusion),
             proved=findings.proved_gap_mev is not None,
+            companion=companion_entry(findings),
         ),
         flags=flags,
         confidence=grade(findings, conclusion, flags),

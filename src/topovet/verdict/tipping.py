@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from topovet.invariants.tipping.results import BY_GAP, SCALE, TippingPoint
+from topovet.invariants.tipping.results import BY_COMPANION, BY_GAP, SCALE, TippingPoint
 from topovet.notation import nonzero_by_plane, significant, z2_text
 from topovet.verdict.conclude import Conclusion
 from topovet.verdict.findings import Findings
@@ -20,7 +20,27 @@ def tipping_entries(findings: Findings, conclusion: Conclusion) -> tuple[dict[st
     if search is None or z2 is None:
         return ()
     points = [p for p in search.points if p.z2_before == z2]
-    return tuple(_entry(p) for p in sorted(points, key=_nearest))
+    return tuple(_entry(p, search.scale_from) for p in sorted(points, key=_nearest))
+
+
+def companion_entry(findings: Findings) -> dict[str, Any] | None:
+    """`robustness.companion`: the run without spin-orbit coupling, and whether it was used."""
+    test, search = findings.companion, findings.tipping
+    if test is None:
+        return None
+    used = test.fits and search is not None and search.scale_from == BY_COMPANION
+    reason = test.reason
+    if test.fits and not used:
+        reason = "no tipping points were looked for"
+    return {
+        "file": test.name,
+        "used": used,
+        "reason": reason,
+        "least_overlap": test.least_overlap,
+        "difference_meV": test.difference_mev,
+        "offset_meV": test.offset_mev,
+        "inversion_violation_meV": test.inversion_mev,
+    }
 
 
 def _nearest(point: TippingPoint) -> tuple[bool, float]:
@@ -29,7 +49,7 @@ def _nearest(point: TippingPoint) -> tuple[bool, float]:
     return point.parameter == SCALE, far
 
 
-def _entry(point: TippingPoint) -> dict[str, Any]:
+def _entry(point: TippingPoint, scale_from: str) -> dict[str, Any]:
     scale = point.parameter == SCALE
     places: dict[str, Any] = {"trim": point.k} if point.method != BY_GAP else {"k": point.k}
     mirror = point.mirror_after
@@ -54,6 +74,7 @@ def _entry(point: TippingPoint) -> dict[str, Any]:
         "gap_on_the_way_k": point.gap_on_the_way_k,
         "may_close_before": point.may_close_before,
         "spread": point.spread,
+        "spin_orbit_from": scale_from if scale else None,
         "method": point.method,
         "sentence": sentence(point),
         "note": point.note,

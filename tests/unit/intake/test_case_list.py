@@ -20,10 +20,10 @@ def _read(tmp_path: Path, text: str, encoding: str = "utf-8") -> CaseList:
 
 def test_every_column_becomes_a_value(tmp_path: Path) -> None:
     text = (
-        "path,name,filling,fermi_eV,dimension,inversion_centre,surface\r\n"
-        "a,GX-1,28,,3,0 0 0.5,0 0 1\r\n"
+        "path,name,filling,fermi_eV,dimension,inversion_centre,surface,spinless\r\n"
+        "a,GX-1,28,,3,0 0 0.5,0 0 1,\r\n"
         "\r\n"
-        '../b,"Bi, thin",,-1.5e0,2,,"[1, -1, 0]"\r\n'
+        '../b,"Bi, thin",,-1.5e0,2,,"[1, -1, 0]",b0\r\n'
     )
     first, second = _read(tmp_path, text, "utf-8-sig").cases
     assert (first.line, first.path, first.written) == (2, tmp_path / "a", "a")
@@ -31,6 +31,7 @@ def test_every_column_becomes_a_value(tmp_path: Path) -> None:
     assert (first.dimension, first.inversion_centre, first.surface) == (3, (0, 0, 0.5), (0, 0, 1))
     assert (second.line, second.path, second.name) == (4, tmp_path / "../b", "Bi, thin")
     assert (second.filling, second.fermi_ev, second.surface) == (None, -1.5, (1, -1, 0))
+    assert (first.spinless, second.spinless) == (None, tmp_path / "b0")
 
 
 def test_absolute_paths_stay_and_foreign_columns_are_named(tmp_path: Path) -> None:

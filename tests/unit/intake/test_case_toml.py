@@ -25,6 +25,7 @@ fermi_eV = 6
 dimension = 2
 inversion_centre = [0, 0.5, -0.25]
 surface = [1, -1, 0]
+spinless = "../without"
 name = "GX-12 α"
 """
     assert settings_of(tmp_path, text) == CaseSettings(
@@ -34,6 +35,7 @@ name = "GX-12 α"
         dimension=2,
         inversion_centre=(0.0, 0.5, -0.25),
         surface=(1, -1, 0),
+        spinless="../without",
     )
 
 
@@ -41,7 +43,7 @@ def test_silence_is_none(tmp_path: Path) -> None:
     assert settings_of(tmp_path, "# nothing yet\n") == CaseSettings()
 
 
-KEYS = "one of name, filling, fermi_eV, dimension, inversion_centre, surface"
+KEYS = "one of name, filling, fermi_eV, dimension, inversion_centre, surface, spinless"
 CORRECT = "correct it or delete the line"
 
 
@@ -75,6 +77,16 @@ CORRECT = "correct it or delete the line"
         (
             "name = 'a'\nfermi_eV = nan\n",
             f'case.toml, line 2: found fermi_eV = "nan", expected a Fermi energy in eV; {CORRECT}.',
+        ),
+        (
+            'spinless = ["a"]\n',
+            "case.toml, line 1: found spinless = \"['a']\", expected the path of the same compound "
+            f"without spin-orbit coupling, in quotes and printable characters; {CORRECT}.",
+        ),
+        (
+            'spinless = "a\\u0000b"\n',
+            'case.toml, line 1: found spinless = "a\\x00b", expected the path of the same compound '
+            f"without spin-orbit coupling, in quotes and printable characters; {CORRECT}.",
         ),
         (
             "dimension = 4\n",

@@ -147,7 +147,8 @@ DAMAGES = [
     (
         replaced("case.toml", "filling", "filing"),
         'case.toml, line 1: found the key "filing", expected one of name, filling, fermi_eV, '
-        "dimension, inversion_centre, surface; write filling if that is meant, or delete it.",
+        "dimension, inversion_centre, surface, spinless; write filling if that is meant, or "
+        "delete it.",
     ),
     (
         added("GX.eig.gz"),

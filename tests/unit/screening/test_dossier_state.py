@@ -11,8 +11,7 @@ from pathlib import Path
 import pytest
 
 from topovet.intake import discovery
-from topovet.intake.discovery import find_case
-from topovet.pipeline.inputs import hash_inputs
+from topovet.pipeline.inputs import find_files, hash_inputs
 from topovet.screening import dossier_state
 from topovet.screening.dossier_state import STATE_FILE, drop_state, recorded_outcome, write_state
 from topovet.screening.records import Outcome
@@ -42,7 +41,7 @@ class Dossier:
             self.folder,
             settings=SETTINGS,
             code="c",
-            inputs=hash_inputs(find_case(self.case)),
+            inputs=hash_inputs(find_files(self.case)),
             outcome=VETTED,
             looked_at=time.time() + 10 if looked_at is None else looked_at,
         )
@@ -62,6 +61,21 @@ def test_an_untouched_case_is_recalled_with_its_conclusion(dossier: Dossier) -> 
     assert dossier.recall() == Outcome(
         "x", "unchanged", "strong-ti", "B", (("gap-closes", "error"),)
     )
+
+
+def test_a_companion_that_changed_or_is_named_anew_makes_the_case_anew(dossier: Dossier) -> None:
+    companion = dossier.case.parent / "companion"
+    companion.mkdir()
+    (companion / "Y_hr.dat").write_text("one")
+    (dossier.case / "case.toml").write_text('spinless = "../companion"\n')
+    assert dossier.recall() is None
+    dossier.write()
+    assert dossier.recall() is not None
+    (companion / "Y_hr.dat").write_text("two")
+    assert dossier.recall() is None
+    dossier.write()
+    (companion / "Y_hr.dat").unlink()
+    assert dossier.recall() is None
 
 
 def test_nothing_is_hashed_where_stamps_agree(

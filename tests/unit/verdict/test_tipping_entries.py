@@ -11,9 +11,12 @@ import pytest
 
 import invented_dossiers as invented
 from invented_findings import SOUND
+from topovet.deformation.companion import CompanionTest
 from topovet.invariants.tipping.results import (
+    BY_COMPANION,
     BY_GAP,
     BY_PARITY,
+    BY_SPIN_PART,
     SCALE,
     SHIFT,
     TippingPoint,
@@ -152,6 +155,51 @@ def test_page_shows_table_figure_and_what_was_not_asked() -> None:
     assert "tipping-title" in page
     assert 'href="#tipping"' in page
     assert 'id="tipping"' not in render_report(invented.strong(), {})
+
+
+FITS = CompanionTest("without/X_hr.dat", True, "", 0.942, 12.3, -40.0, 0.1)
+UNLIKE = CompanionTest("<b>/X_hr.dat", False, "<b>/X_hr.dat is spinful")
+
+
+@pytest.mark.parametrize(
+    ("companion", "scale_from", "says"),
+    [
+        (
+            FITS,
+            BY_COMPANION,
+            "at a spin-orbit scale of 0 H is the spinless companion without/X_hr.dat, which "
+            "differs by up to 12.3 meV from H without its spin-dependent part (sampled k; zero of "
+            "energy 40.0 meV apart and left out; hoppings overlap by 0.942 or more)",
+        ),
+        (
+            UNLIKE,
+            BY_SPIN_PART,
+            "companion not used, because <b>/X_hr.dat is spinful; the spin-dependent part of H is "
+            "scaled instead",
+        ),
+        (FITS, None, "companion not used, because no tipping points were looked for"),
+    ],
+)
+def test_companion_is_told_of_in_json_terminal_and_page(
+    companion: CompanionTest, scale_from: str | None, says: str
+) -> None:
+    search = None
+    if scale_from is not None:
+        search = TippingSearch((FLIP, SCALED), (), 1.5, 0.035, 800, scale_from)
+    findings = replace(SOUND, tipping=search, companion=companion)
+    verdict = judge(findings, inputs=(), settings={}, task_seconds={})
+    document = json.loads(verdict_json(verdict))
+    schema = resources.files("topovet").joinpath("report/verdict.schema.json").read_text("utf-8")
+    jsonschema.Draft202012Validator(json.loads(schema)).validate(document)
+    entry = document["robustness"]["companion"]
+    assert entry["used"] == (scale_from == BY_COMPANION)
+    assert entry["difference_meV"] == companion.difference_mev
+    turned = {t["parameter"]: t["spin_orbit_from"] for t in document["robustness"]["tipping"]}
+    assert turned == ({} if scale_from is None else {SHIFT: None, SCALE: scale_from})
+    assert f"spinless   {says}" in verdict_lines(verdict)
+    page = render_report(replace(invented.strong(), verdict=verdict, tipping=search), {})
+    told = says[1:].replace("<b>", "&lt;b&gt;").replace("-", "–", says.count("spin-orbit"))
+    assert told in page
 
 
 def test_figure_has_a_bar_for_every_direction_and_says_it_in_words() -> None:

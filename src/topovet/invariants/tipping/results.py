@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from topovet.notation import significant
 
 SHIFT, SCALE = "on-site shift", "spin-orbit scale"
+BY_SPIN_PART, BY_COMPANION = "spin-dependent part of H", "spinless companion"
 BY_PARITY, BY_GAP = "parity at the TRIM", "gap closing and Wilson loops"
 
 DOUBTFUL_EV = 1e-3
@@ -129,6 +130,9 @@ class TippingSearch:
         Spin-dependent over spin-independent hopping, root mean square.
     n_solves
         Eigenvalue problems.
+    scale_from
+        What the scale turns: `BY_SPIN_PART`, or `BY_COMPANION` where the part is H less a run
+        without spin-orbit coupling.
     """
 
     points: tuple[TippingPoint, ...]
@@ -136,3 +140,4 @@ class TippingSearch:
     spin_orbit_ev: float | None
     spin_hopping_ratio: float | None
     n_solves: int
+    scale_from: str = BY_SPIN_PART

@@ -1,7 +1,8 @@
 """How far until the verdict flips: on-site shifts and spin-orbit scale, each turned by itself.
 
 H + x V for one V at a time: the projector on the orbitals of one element and l (a rigid shift of
-their on-site energies), or the spin-orbit part of H (its scale). All orbitals together would only
+their on-site energies), or the spin-orbit part of H (its scale): what depends on spin, or what is
+left when a run without spin-orbit coupling is taken from H. All orbitals together would only
 move the zero of energy, so that of two groups one is moved, and what counts is the distance of the
 groups. The numbers are about the Hamiltonian as given: nothing is made self-consistent.
 """
@@ -19,6 +20,7 @@ from topovet.invariants.tipping.by_parity import TrimGround, keeps_inversion, ti
 from topovet.invariants.tipping.results import (
     BY_GAP,
     BY_PARITY,
+    BY_SPIN_PART,
     SCALE,
     SHIFT,
     TippingPoint,
@@ -51,11 +53,15 @@ random."""
 
 @dataclass(frozen=True, slots=True)
 class Parameter:
-    """One thing that can be turned; `group` is None for the spin-orbit scale."""
+    """One thing that can be turned; `group` is None for the spin-orbit scale.
+
+    `coupling` is the V(k) of the scale where it does not come from H alone.
+    """
 
     kind: str
     group: OrbitalGroup | None
     against: str
+    coupling: BlochSum | None = None
 
     @property
     def reach(self) -> float:
@@ -71,17 +77,19 @@ class Parameter:
         """Name of the group, "" for the scale."""
         return "" if self.group is None else self.group.name
 
-    def at_trim(self, h_trim: ComplexArray, frame: Frame) -> ComplexArray:
-        """V(K), (n_k, n_orb, n_orb) eV per unit, from H(K)."""
+    def at_trim(self, ground: TrimGround, frame: Frame) -> ComplexArray:
+        """V(K), (n_k, n_orb, n_orb) eV per unit."""
+        if self.group is None and self.coupling is not None:
+            return self.coupling.at(ground.k_trim)
         if self.group is None:
-            return spin_orbit_at_trim(h_trim, frame)
-        projector = np.diag(self.group.projector(h_trim.shape[1])).astype(complex)
-        return np.broadcast_to(projector, h_trim.shape)
+            return spin_orbit_at_trim(ground.h, frame)
+        projector = np.diag(self.group.projector(ground.h.shape[1])).astype(complex)
+        return np.broadcast_to(projector, ground.h.shape)
 
     def change(self, bloch: BlochSum, frame: Frame) -> BlochSum:
         """V(k) as a Fourier sum, eV per unit."""
         if self.group is None:
-            return spin_orbit_sum(bloch, frame)
+            return spin_orbit_sum(bloch, frame) if self.coupling is None else self.coupling
         return projector_sum(self.group.projector(bloch.n_orb))
 
     def start(self, direction: str, method: str) -> TippingPoint:
@@ -92,7 +100,9 @@ class Parameter:
 
 
 def choose_parameters(
-    groups: Sequence[OrbitalGroup], purity: SpinPurity | None
+    groups: Sequence[OrbitalGroup],
+    purity: SpinPurity | None,
+    coupling: BlochSum | None = None,
 ) -> tuple[list[Parameter], list[str]]:
     """What can be turned, and why the rest cannot.
 
@@ -102,6 +112,8 @@ def choose_parameters(
         All groups of orbitals; empty where they are not known.
     purity
         Of the spinor functions; None where spin was not looked at.
+    coupling
+        H less its spinless companion, where there is one that fits.
     """
     parameters, not_asked = [], []
     if len(groups) == 2:  # one up is the other down
@@ -117,11 +129,11 @@ def choose_parameters(
         not_asked.append(
             "orbitals without a declared l, hybrids among them, are moved as a whole per element"
         )
-    why_not = _no_scale(purity)
+    why_not = _no_scale(purity) if coupling is None else _no_difference(coupling)
     if why_not:
         not_asked.append(why_not)
     else:
-        parameters.append(Parameter(SCALE, None, ""))
+        parameters.append(Parameter(SCALE, None, "", coupling))
     return parameters, not_asked
 
 
@@ -138,13 +150,21 @@ def _no_scale(purity: SpinPurity | None) -> str:
     return ""
 
 
+def _no_difference(coupling: BlochSum) -> str:
+    even, odd = coupling.rows()
+    largest = 0.5 * max(np.abs(even).max(initial=0.0), np.abs(odd).max(initial=0.0))
+    if largest < NO_COUPLING_EV:
+        return "H and its spinless companion do not differ: there is no coupling to scale"
+    return ""
+
+
 def search_by_parity(
     ground: TrimGround, parameters: Sequence[Parameter], frame: Frame
 ) -> tuple[list[TippingPoint], list[str], int]:
     """Both directions of every parameter that keeps inversion; points, left out, solves."""
     points, not_asked, n_solves = [], [], 0
     for parameter in parameters:
-        v_trim = parameter.at_trim(ground.h, frame)
+        v_trim = parameter.at_trim(ground, frame)
         if parameter.group is not None and not keeps_inversion(ground, v_trim):
             not_asked.append(f"{parameter.name}: not closed under inversion")
             continue
@@ -237,6 +257,7 @@ def conclude_search(
     not_asked: Sequence[str],
     purity: SpinPurity | None,
     n_solves: int,
+    scale_from: str = BY_SPIN_PART,
 ) -> TippingSearch:
     """All that was found, with what it rests on."""
     return TippingSearch(
@@ -245,4 +266,5 @@ def conclude_search(
         spin_orbit_ev=None if purity is None else purity.onsite_ev,
         spin_hopping_ratio=None if purity is None else purity.hopping_ratio,
         n_solves=n_solves,
+        scale_from=scale_from,
     )
