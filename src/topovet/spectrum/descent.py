@@ -13,16 +13,22 @@ small it is, so the square is what is minimised. A minimum of a gap never lies w
 one side cross: there the gap is the smaller of two smooth functions.
 
 A step is taken only if the exact objective falls; the derivatives need not be trusted.
+
+Where symmetry makes the slope vanish a point may rest that is no minimum: on a saddle, along whose
+negative curvature no Newton step leads (the hard case of Moré and Sorensen, SIAM J. Sci. Stat.
+Comput. 4, 553 (1983), from memory), or on a kink, where a degenerate multiplet splits linearly (a
+TRIM of a crystal without inversion) while its mean knows nothing of it. There, and only there, a
+few steps aside are tried.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from typing import Protocol
 
 import numpy as np
 
-from topovet.arrays import BoolArray, ComplexArray, FloatArray
+from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
 from topovet.spectrum.eigen import map_threads
 
 MULTIPLET, FINE_MULTIPLET = 0.02, 1e-4
@@ -35,6 +41,22 @@ LEAST_CURVATURE = 1e-9
 FIRST_RADIUS, LARGEST_RADIUS = 0.03, 0.06
 SETTLED_STEP = 1e-9
 """Steps in fractional k below which a point is at rest."""
+
+NEAR_REST = 1e-3
+"""Newton steps below this lead to a resting point, be it a minimum or not."""
+
+LEAST_ASIDE = 1e-3
+"""Steps aside begin at `FIRST_RADIUS`, are quartered where they do not lead down, and end here."""
+
+NEGATIVE = 1e-7
+"""Curvatures below minus this part of the largest are negative, not rounding."""
+
+KINK_EV = 1e-3
+"""Multiplets that split by less, eV per unit of fractional k, do not: a step aside would win less
+than a hundredth of a meV."""
+
+CLOSED_EV = 1e-6
+"""Below gaps as small as this there is nothing to find."""
 
 K_AT_A_TIME = 32
 """The matrices of a k fill some 100 n_orb^2 numbers: this many stay near the processor."""
@@ -98,7 +120,8 @@ def descend(
     """Follow the objective downhill from each start by damped Newton steps.
 
     Steps are cut to a radius of trust, which grows where the objective falls and shrinks where it
-    does not; negative curvatures are taken by their absolute value, so that saddles are left.
+    does not; negative curvatures are taken by their absolute value, so that saddles are left, and
+    points that come to rest on a saddle or a kink step aside.
 
     Parameters
     ----------
@@ -114,49 +137,83 @@ def descend(
         Levels closer than this part of the gap are one.
     """
     k_frac = np.array(start, dtype=float)
-    value, slope, curve = _local_models(bloch, objective, k_frac, multiplet)
-    radius, moving = np.full(len(k_frac), FIRST_RADIUS), np.arange(len(k_frac))
-    n_solves = len(k_frac)
+    here = _local_models(bloch, objective, k_frac, multiplet)
+    radius, aside = np.full((2, len(k_frac)), FIRST_RADIUS)
+    moving, n_solves = np.arange(len(k_frac)), len(k_frac)
     for _ in range(max_rounds):
-        step = _newton_step(slope[moving], curve[moving], radius[moving])
+        step, leaves = _steps(here.at(moving), radius[moving], aside[moving], objective)
         length = np.abs(step).max(axis=1)
-        moving, step, length = (part[length > SETTLED_STEP] for part in (moving, step, length))
+        goes_on = length > SETTLED_STEP
+        moving, step, length, leaves = (x[goes_on] for x in (moving, step, length, leaves))
         if len(moving) == 0:
             break
         trial = k_frac[moving] + step
         new = _local_models(bloch, objective, trial, multiplet)
         n_solves += len(moving)
-        falls = new[0] < value[moving]
-        radius[moving] = np.where(falls, np.minimum(2 * radius[moving], LARGEST_RADIUS), length / 4)
-        better = moving[falls]
-        k_frac[better] = trial[falls]
-        value[better], slope[better], curve[better] = (part[falls] for part in new)
-    return LocalMinima(k_frac, value, n_solves)
+        falls = new.value < here.value[moving]
+        reach = np.where(leaves, length, radius[moving])
+        reach = np.where(falls, np.minimum(2 * reach, LARGEST_RADIUS), length / 4)
+        radius[moving[falls | ~leaves]] = reach[falls | ~leaves]
+        aside[moving[leaves]] = reach[leaves]
+        k_frac[moving[falls]] = trial[falls]
+        here.set(moving[falls], new.at(np.flatnonzero(falls)))
+    return LocalMinima(k_frac, here.value, n_solves)
 
 
-def _newton_step(slope: FloatArray, curve: FloatArray, radius: FloatArray) -> FloatArray:
-    """(n, 3): downhill, of at most the radius in each component."""
-    curvatures, axes = np.linalg.eigh(curve)
-    along = np.einsum("kij,ki->kj", axes, slope)
-    along /= np.maximum(np.abs(curvatures), LEAST_CURVATURE)
-    step = -np.einsum("kij,kj->ki", axes, along)
+@dataclass(frozen=True, slots=True, eq=False)
+class _Models:
+    """f (n,), slope (n, d) and second derivatives (n, d, d) of f or f squared; kink (n, d).
+
+    The kink is by how much f falls to first order, eV per unit of k, on either side of a point
+    where multiplets split.
+    """
+
+    value: FloatArray
+    slope: FloatArray
+    curve: FloatArray
+    kink: FloatArray
+
+    def at(self, which: IntArray) -> _Models:
+        return _Models(*(getattr(self, f.name)[which] for f in fields(self)))
+
+    def set(self, which: IntArray, new: _Models) -> None:
+        for f in fields(self):
+            getattr(self, f.name)[which] = getattr(new, f.name)
+
+
+def _steps(
+    here: _Models, radius: FloatArray, aside: FloatArray, objective: Objective
+) -> tuple[FloatArray, BoolArray]:
+    """(n, d) next steps, and (n,) which of them leave a point at rest that is no minimum."""
+    curvatures, axes = np.linalg.eigh(here.curve)
+    along = np.einsum("kij,ki->kj", axes, here.slope)
+    step = -np.einsum("kij,kj->ki", axes, along / np.maximum(np.abs(curvatures), LEAST_CURVATURE))
     length = np.abs(step).max(axis=1)
-    return np.asarray(step * np.minimum(1.0, radius / np.maximum(length, 1e-300))[:, None])
-
-
-_Models = tuple[FloatArray, FloatArray, FloatArray]
+    negative = curvatures[:, 0] < -np.maximum(NEGATIVE * curvatures[:, -1], LEAST_CURVATURE)
+    kinked = here.kink.max(axis=1) > KINK_EV
+    leaves = (length < NEAR_REST) & (aside > LEAST_ASIDE) & (negative | kinked)
+    if objective.squared:
+        leaves &= here.value > CLOSED_EV
+    off = np.where(
+        kinked[:, None],
+        np.eye(here.slope.shape[1])[here.kink.argmax(axis=1)],
+        axes[:, :, 0] * np.where(along[:, :1] > 0, -1.0, 1.0),
+    )
+    off *= (aside / np.abs(off).max(axis=1))[:, None]
+    step *= np.minimum(1.0, radius / np.maximum(length, 1e-300))[:, None]
+    return np.where(leaves[:, None], off, step), leaves
 
 
 def _local_models(
     bloch: SmoothHamiltonian, objective: Objective, k_frac: FloatArray, multiplet: float
 ) -> _Models:
-    """f (n,), and slope (n, 3) and second derivatives (n, 3, 3) of f or f squared."""
+    """The models at k (n, d)."""
     parts = map_threads(
         lambda part: _local_model(bloch, objective, part, multiplet),
         [k_frac[i : i + K_AT_A_TIME] for i in range(0, len(k_frac), K_AT_A_TIME)],
     )
-    value, slope, curve = (np.concatenate(column) for column in zip(*parts, strict=True))
-    return value, slope, curve
+    columns = ([getattr(part, f.name) for part in parts] for f in fields(_Models))
+    return _Models(*(np.concatenate(column) for column in columns))
 
 
 def _local_model(
@@ -165,18 +222,24 @@ def _local_model(
     energies, states = np.linalg.eigh(bloch.lower_at(k_frac))
     value = objective.of(energies)
     upper, lower = _multiplets(energies, objective.filling, multiplet)
-    slope = np.zeros(k_frac.shape)
+    slope, kink = np.zeros((2, *k_frac.shape))
     curve = np.zeros((*k_frac.shape, k_frac.shape[1]))
     first, second = bloch.gradient(k_frac), bloch.hessian(k_frac)
-    for weight, members in ((objective.upper, upper), (objective.lower, lower)):
+    fine = _multiplets(energies, objective.filling, FINE_MULTIPLET)
+    for weight, members, together in zip(
+        (objective.upper, objective.lower), (upper, lower), fine, strict=True
+    ):
         if weight != 0:
-            mean_slope, mean_curve = _mean_derivatives(energies, states, members, first, second)
+            mean_slope, mean_curve, split = _mean_derivatives(
+                energies, states, members, first, second, together
+            )
             slope += weight * mean_slope
             curve += weight * mean_curve
+            kink += abs(weight) * split
     if objective.squared:
         curve = 2 * (slope[:, :, None] * slope[:, None, :] + value[:, None, None] * curve)
         slope = 2 * value[:, None] * slope
-    return value, slope, curve
+    return _Models(value, slope, curve, kink)
 
 
 def _multiplets(
@@ -195,13 +258,20 @@ def _mean_derivatives(
     members: BoolArray,
     first: ComplexArray,
     second: ComplexArray,
-) -> tuple[FloatArray, FloatArray]:
-    """First (n, d) and second (n, d, d) derivatives of the mean energy of a multiplet."""
+    together: BoolArray,
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """First (n, d) and second (n, d, d) derivatives of the mean energy of a multiplet.
+
+    And the linear splitting (n, d) of those members that lie `together`: the root mean square of
+    the first-order energies about their mean.
+    """
     columns = np.flatnonzero(members.any(axis=0))  # neighbours; few
     weights = members[:, columns] / members.sum(axis=1)[:, None]
     kets = states[:, None, :, columns]
     coupling = states.conj().transpose(0, 2, 1)[:, None] @ (first @ kets)  # (k, i, m, b)
-    slope = np.einsum("kibb,kb->ki", coupling[:, :, columns], weights).real
+    inside = coupling[:, :, columns]
+    slope = np.einsum("kibb,kb->ki", inside, weights).real
+    split = _splitting(inside, together[:, columns])
     gaps = energies[:, None, columns] - energies[:, :, None]  # (k, m, b)
     # at a closing the other side is as good as degenerate: a large curvature, but a finite one
     gaps = np.where(np.abs(gaps) < LEAST_SPLITTING_EV, LEAST_SPLITTING_EV, gaps)
@@ -214,4 +284,13 @@ def _mean_derivatives(
     mixing[:, i, j] += bare
     off = i != j
     mixing[:, j[off], i[off]] += bare[:, off]
-    return slope, mixing
+    return slope, mixing, split
+
+
+def _splitting(velocity: ComplexArray, members: BoolArray) -> FloatArray:
+    """(n, d) spread of the eigenvalues of velocity matrices (n, d, b, b) among the members."""
+    n = members.sum(axis=1)[:, None]
+    pairs = members[:, None, :, None] & members[:, None, None, :]
+    squares = np.where(pairs, np.abs(velocity) ** 2, 0.0).sum(axis=(2, 3)) / n
+    mean = np.where(members[:, None, :], np.einsum("kibb->kib", velocity).real, 0.0).sum(axis=2) / n
+    return np.asarray(np.sqrt(np.maximum(squares - mean**2, 0.0)))

@@ -35,7 +35,8 @@ def test_derivatives_against_differences(weights: tuple[int, int], doubled: bool
     objective = Objective(4 if doubled else 2, *weights)
     k, step = np.array([[0.13, 0.29, 0.71]]), 1e-5
     moved = np.concatenate([k, *(k + s * step * e for e in np.eye(3) for s in (1, -1))])
-    value, slope, curve = _local_model(bloch, objective, moved, MULTIPLET)
+    here = _local_model(bloch, objective, moved, MULTIPLET)
+    value, slope, curve = here.value, here.slope, here.curve
     smooth = value**2 if objective.squared else value
     for i in range(3):
         plus, minus = 2 * i + 1, 2 * i + 2
@@ -95,3 +96,61 @@ def test_closing_is_reached() -> None:
     found = descend(bloch, Objective(2, 1, -1), np.array([[0.05, 0.43, 0.2]]), max_rounds=40)
     assert found.values[0] < 1e-6
     assert found.n_solves <= 41
+
+
+def _two_levels(onsite: np.ndarray, hops: dict[tuple[int, int, int], np.ndarray]) -> BlochSum:
+    r_cells, h_r = [np.zeros(3, int)], [onsite.astype(complex)]
+    for r_cell, hop in hops.items():
+        r_cells += [np.array(r_cell), -np.array(r_cell)]
+        h_r += [hop, hop.conj().T]
+    return build_bloch_sum(build_model(np.array(r_cells), np.array(h_r), spinful=False))
+
+
+def _camel_back(depth: float) -> BlochSum:
+    """±f with f = 1 + g(a_1) + (1 - cos a_2) + 2 (1 - cos a_3) and, in u = 1 - cos a_1,
+    g = -b u + u^2: Gamma is a saddle, and f is smallest at u = b/2, where g = -b^2/4."""
+    b, one = 2 * np.sqrt(depth), SIGMA[2]
+    # u^2 = 3/2 - 2 cos a + cos(2a)/2, and a hop h gives 2 h cos a
+    hops = {
+        (1, 0, 0): (b / 2 - 1.0) * one,
+        (2, 0, 0): 0.25 * one,
+        (0, 1, 0): -0.5 * one,
+        (0, 0, 1): -1.0 * one,
+    }
+    return _two_levels((1 - b + 1.5 + 1 + 2) * one, {r: h.astype(complex) for r, h in hops.items()})
+
+
+def _rashba_chain(t: float, alpha: float) -> BlochSum:
+    """Levels 2t (1 - cos a_1) ± alpha sin a_1 + (1 - cos a_2) + (1 - cos a_3) over a flat pair at
+    -1: degenerate at Gamma, with a minimum of 2t - sqrt(4 t^2 + alpha^2) at tan a_1 = alpha/2t
+    (the lattice form of Bychkov and Rashba, J. Phys. C 17, 6039 (1984))."""
+    upper, lower = np.diag([0, 0, 1, 1]), np.diag([1, 1, 0, 0])
+    split = np.zeros((4, 4), complex)
+    split[2:, 2:] = -0.5j * alpha * SIGMA[1]  # with its partner alpha sin a sigma_y
+    hops = {(1, 0, 0): split - t * upper, (0, 1, 0): -0.5 * upper, (0, 0, 1): -0.5 * upper}
+    onsite = (2 * t + 2) * upper - lower
+    return _two_levels(onsite, {r: h.astype(complex) for r, h in hops.items()})
+
+
+@pytest.mark.parametrize("depth", [0.3, 0.01, 3e-4])
+@pytest.mark.parametrize("off", [0.0, 1e-7])
+def test_a_saddle_is_left(depth: float, off: float) -> None:
+    """Minima from 0.17 down to 0.03 of the zone beside it, from Gamma itself and from rounding."""
+    start = np.array([[off, 0.0, 0.0]])
+    found = descend(_camel_back(depth), Objective(1, 1, -1), start, max_rounds=14)
+    assert found.values[0] == pytest.approx(2 * (1 - depth), rel=1e-9)
+    assert 1 - np.cos(2 * np.pi * found.k_frac[0, 0]) == pytest.approx(depth**0.5, rel=1e-3)
+
+
+@pytest.mark.parametrize("alpha", [0.9, 0.3])
+@pytest.mark.parametrize("weights", [(1, 0), (1, -1)])
+def test_a_kink_is_left(alpha: float, weights: tuple[int, int]) -> None:
+    bloch, gamma = _rashba_chain(1.0, alpha), np.zeros((1, 3))
+    found = descend(bloch, Objective(2, *weights), gamma, max_rounds=14)
+    lowest = 2 - np.sqrt(4 + alpha**2) + (1 if weights == (1, -1) else 0)
+    assert found.values[0] == pytest.approx(lowest, rel=1e-9)
+
+
+def test_a_minimum_at_a_symmetric_point_costs_nothing_more() -> None:
+    found = descend(_rashba_chain(1.0, 0.0), Objective(2, 1, -1), np.zeros((1, 3)), max_rounds=14)
+    assert (found.values[0], found.n_solves) == (pytest.approx(1.0), 1)
