@@ -25,10 +25,6 @@ KEPT_PER_LAMBDA = 6
 FOLLOWED = 6
 """Of all starting points so many, those with the smallest gaps, are followed at each lambda."""
 
-ASIDE = np.array([0.0047, -0.0029, 0.0061])
-"""Each is followed from beside it as well: on a symmetry element the gap may be a saddle without a
-slope, as between two nodes that have just parted."""
-
 DIFFERENT_K = 1e-3
 """Starting points nearer than this in every component are one."""
 
@@ -171,9 +167,7 @@ class GapCurve:
     def _lowest_starts(self, lam: float) -> FloatArray:
         """(n, 3) k to start from at lambda."""
         gaps = self.objective.of(eigenvalues(self.path.bloch_at(lam), self.starts))
-        chosen = self.starts[np.argsort(gaps, kind="stable")[:FOLLOWED]]
-        aside = np.where(self.periodic, ASIDE, 0.0)
-        return np.concatenate([chosen, chosen + aside])
+        return self.starts[np.argsort(gaps, kind="stable")[:FOLLOWED]]
 
     def _note(self, lam: float, gap_ev: float, k_frac: FloatArray) -> None:
         known = self.found.get(lam)

@@ -45,15 +45,14 @@ SETTLED_STEP = 1e-9
 NEAR_REST = 1e-3
 """Newton steps below this lead to a resting point, be it a minimum or not."""
 
-LEAST_ASIDE = 1e-3
+LEAST_ASIDE = 1e-4
 """Steps aside begin at `FIRST_RADIUS`, are quartered where they do not lead down, and end here."""
 
 NEGATIVE = 1e-7
 """Curvatures below minus this part of the largest are negative, not rounding."""
 
-KINK_EV = 1e-3
-"""Multiplets that split by less, eV per unit of fractional k, do not: a step aside would win less
-than a hundredth of a meV."""
+LEAST_GAIN_EV = 1e-5
+"""Steps aside from a kink that would win less to first order are not tried."""
 
 CLOSED_EV = 1e-6
 """Below gaps as small as this there is nothing to find."""
@@ -190,7 +189,7 @@ def _steps(
     step = -np.einsum("kij,kj->ki", axes, along / np.maximum(np.abs(curvatures), LEAST_CURVATURE))
     length = np.abs(step).max(axis=1)
     negative = curvatures[:, 0] < -np.maximum(NEGATIVE * curvatures[:, -1], LEAST_CURVATURE)
-    kinked = here.kink.max(axis=1) > KINK_EV
+    kinked = here.kink.max(axis=1) * aside > LEAST_GAIN_EV
     leaves = (length < NEAR_REST) & (aside > LEAST_ASIDE) & (negative | kinked)
     if objective.squared:
         leaves &= here.value > CLOSED_EV
