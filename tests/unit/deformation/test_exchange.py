@@ -9,10 +9,11 @@ import pytest
 
 from deformation_ends import end_of
 from lattice_models import wilson_dirac
-from topovet.arrays import ComplexArray
+from topovet.arrays import ComplexArray, FloatArray
 from topovet.deformation.comparison import compare_ends
 from topovet.deformation.exchange import Sectors, find_exchanges, levels_along, split_by_parity
 from topovet.deformation.path import Path, build_path
+from topovet.invariants.exchange import MOST_SOLVES, ParityBlocks
 
 SEEDS = (10, 12, 16, 29, 51, 56)
 """Of the first sixty those with two exchanges."""
@@ -48,8 +49,15 @@ def _random_sectors(seed: int, size: int) -> Sectors:
         return (x + x.conj().T) / 2
 
     even, odd = ((hermitian(), hermitian() * 2) for _ in range(2))
-    moves = np.concatenate([np.linalg.eigvalsh(even[1]), np.linalg.eigvalsh(odd[1])])
-    return Sectors((0.0, 0.0, 0.0), size, even, odd, float(np.ptp(moves)), 1e-12)
+    blocks = ParityBlocks((even[0], odd[0]), (even[1], odd[1]), kramers=False)
+    return Sectors((0.0, 0.0, 0.0), size, blocks)
+
+
+def _n_odd(sectors: Sectors, lams: FloatArray) -> np.ndarray:
+    """Odd states among the lowest, counted plainly."""
+    even, odd = sectors.blocks.levels(lams)
+    order = np.argsort(np.concatenate([even, odd], axis=1), axis=1)[:, : sectors.filling]
+    return (order >= even.shape[1]).sum(axis=1)
 
 
 @pytest.mark.parametrize("seed", SEEDS)
@@ -57,7 +65,7 @@ def test_no_crossing_slips_through(seed: int) -> None:
     """Every change of the number of odd states on a fine grid lies at an exchange."""
     sectors = _random_sectors(seed, 5)
     grid = np.linspace(0, 1, 8_001)
-    _, n_minus, _ = sectors.at(grid)
+    n_minus = _n_odd(sectors, grid)
     jumps = np.flatnonzero(np.diff(n_minus))
     found = find_exchanges(sectors)
     inside = [e for e in found if np.any(np.abs(grid[jumps] + 6.25e-5 - e.lam) < 6.3e-5)]
@@ -87,5 +95,34 @@ def test_sectors_hold_all_levels() -> None:
     assert pair.a.inversion is not None
     for sectors in split_by_parity(path, replace(pair.a.inversion), 2, (True, True, True))[:3]:
         whole = np.linalg.eigvalsh(path.bloch_at(0.3).at(np.array([sectors.k])))[0]
-        parts = np.concatenate(sectors.levels(np.array([0.3])), axis=1)[0]
+        parts = np.concatenate(sectors.blocks.levels(np.array([0.3])), axis=1)[0]
         np.testing.assert_allclose(np.sort(parts), whole, atol=1e-12)
+
+
+def _diagonal(*energies: float) -> ComplexArray:
+    return np.diag(energies).astype(complex)
+
+
+def test_a_quartet_that_is_half_filled_all_the_way_ends_nothing() -> None:
+    """Its levels are of one parity: the gap is 0, and no states of opposite parity are near."""
+    h, v = (_diagonal(0, 0, 0, 0), _diagonal(5, 5)), (_diagonal(0, 0, 0, 0), _diagonal(-1, -1))
+    sectors = Sectors((0.0, 0.0, 0.0), 2, ParityBlocks(h, v, kramers=False))
+    assert sectors.at(np.array([0.5]))[0] == 0
+    assert find_exchanges(sectors) == ()
+
+
+def test_levels_of_opposite_parity_that_stay_together_are_bounded_in_cost(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Nobody can tell whether they change places."""
+    solved: list[int] = []
+    levels = ParityBlocks.levels
+
+    def counted(blocks: ParityBlocks, t: FloatArray) -> tuple[FloatArray, FloatArray]:
+        solved.append(len(t))
+        return levels(blocks, t)
+
+    monkeypatch.setattr(ParityBlocks, "levels", counted)
+    h, v = (_diagonal(0, 9), _diagonal(0, 9)), (_diagonal(0, 0), _diagonal(0, 0))
+    assert find_exchanges(Sectors((0.0, 0.0, 0.0), 1, ParityBlocks(h, v, kramers=False))) == ()
+    assert sum(solved) <= MOST_SOLVES + 2

@@ -18,13 +18,13 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from topovet.arrays import ComplexArray, FloatArray, IntArray
-from topovet.invariants.parity import indices_of_counts
-from topovet.invariants.tipping.exchange import (
+from topovet.invariants.exchange import (
     RESOLUTION,
     FirstExchange,
     first_exchange,
     parity_blocks,
 )
+from topovet.invariants.parity import indices_of_counts
 from topovet.invariants.tipping.results import BY_PARITY, SCALE, TippingPoint
 
 SAME_STAR_SHARE, SAME_STAR = 0.1, 0.005

@@ -13,9 +13,9 @@ have to move to meet. Where the number of odd filled states is the same at a and
     room(a) + room(b) > L (b - a),
 
 they cannot have met in between: this interval is settled. All others are halved until they are
-short. What is found is the first meeting, and what lies before it is proved to be free of one, up
-to the rounding of LAPACK. Levels are Kramers pairs, each at the mean of its two energies, which the
-same bounds hold for.
+short, all of them or those before the first meeting; what is settled is proved to be free of one,
+rounding included. Levels of one parity may touch as they like. Where time reversal makes Kramers
+pairs a level is a pair, at the mean of its two energies, which the same bounds hold for.
 """
 
 from __future__ import annotations
@@ -26,14 +26,18 @@ import numpy as np
 
 from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
 
-RESOLUTION = 1e-6
-"""Length of the interval (in t) that a first exchange is enclosed in."""
+RESOLUTION, FINE_RESOLUTION = 1e-6, 1e-10
+"""Lengths of the intervals (in t) that a first exchange, and each of all of them, is enclosed in.
+"""
 
 FIRST_STEPS = 8
 """Equal intervals that the range is first cut into."""
 
 MOST_SOLVES = 4000
 """Values of t at one TRIM; only levels of opposite parity that stay together need so many."""
+
+ROUNDING_FACTOR = 10.0
+"""Levels from LAPACK are off by a modest multiple of n eps ||H||."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,10 +48,13 @@ class ParityBlocks:
     ----------
     h, v
         Even block, then odd block, eV; any size, also 0.
+    kramers
+        Whether levels come in pairs and are counted as such.
     """
 
     h: tuple[ComplexArray, ComplexArray]
     v: tuple[ComplexArray, ComplexArray]
+    kramers: bool = True
 
     @property
     def closing_rate(self) -> float:
@@ -55,6 +62,20 @@ class ParityBlocks:
         spectra = [np.linalg.eigvalsh(v) if len(v) else np.zeros(1) for v in self.v]
         even, odd = spectra
         return float(max(even[-1] - odd[0], odd[-1] - even[0], 0.0))
+
+    def levels(self, t: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """(n_t, n_even) and (n_t, n_odd) levels, ascending, eV."""
+        even, odd = (
+            _energies(h + t[:, None, None] * v, 2 if self.kramers else 1)
+            for h, v in zip(self.h, self.v, strict=True)
+        )
+        return even, odd
+
+    def rounding_ev(self, reach: float) -> float:
+        """What rounding may do to a sum of two distances of levels for |t| up to `reach`."""
+        size = sum(float(np.linalg.norm(h)) for h in self.h)
+        size += abs(reach) * sum(float(np.linalg.norm(v)) for v in self.v)
+        return ROUNDING_FACTOR * float(np.finfo(float).eps) * sum(map(len, self.h)) * size
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,7 +87,7 @@ class FirstExchange:
     at
         t of the exchange, the middle of the interval that encloses it; None without one.
     n_odd, n_odd_after
-        Odd filled pairs at t = 0 and beyond the exchange (as before without one).
+        Odd filled levels at t = 0 and beyond the exchange (as before without one).
     free_up_to
         No exchange between 0 and this t. Below both `at` and the end of the range only where
         levels of opposite parity stay too near to each other to be told apart.
@@ -81,7 +102,19 @@ class FirstExchange:
     n_solves: int
 
 
-def parity_blocks(h: ComplexArray, v: ComplexArray, inversion: ComplexArray) -> ParityBlocks:
+@dataclass(frozen=True, slots=True)
+class Exchange:
+    """One change of the number of odd filled levels between t = `low` and t = `high`."""
+
+    low: float
+    high: float
+    n_odd: int
+    n_odd_after: int
+
+
+def parity_blocks(
+    h: ComplexArray, v: ComplexArray, inversion: ComplexArray, *, kramers: bool = True
+) -> ParityBlocks:
     """Blocks of H and V, each averaged over inversion first.
 
     Parameters
@@ -90,45 +123,79 @@ def parity_blocks(h: ComplexArray, v: ComplexArray, inversion: ComplexArray) -> 
         (n_orb, n_orb) at a TRIM, eV.
     inversion
         (n_orb, n_orb) D(K), unitary with D^2 = 1.
+    kramers
+        Whether levels come in pairs.
     """
     values, states = np.linalg.eigh(0.5 * (inversion + inversion.conj().T))
     sectors = [states[:, values > 0], states[:, values < 0]]  # a block leaves nothing to average
     even_h, odd_h = (s.conj().T @ h @ s for s in sectors)
     even_v, odd_v = (s.conj().T @ v @ s for s in sectors)
-    return ParityBlocks((even_h, odd_h), (even_v, odd_v))
+    return ParityBlocks((even_h, odd_h), (even_v, odd_v), kramers)
 
 
-def first_exchange(blocks: ParityBlocks, filled_pairs: int, reach: float) -> FirstExchange:
+def first_exchange(blocks: ParityBlocks, filled: int, reach: float) -> FirstExchange:
     """The first exchange on the way from t = 0 to t = reach (of either sign).
 
     Parameters
     ----------
     blocks
         At one TRIM.
-    filled_pairs
-        Filled Kramers pairs, at least one, and at least one empty.
+    filled
+        Filled levels (pairs, where levels are pairs), at least one, and at least one empty.
     reach
         End of the range; 0 is not allowed.
     """
+    t, n_odd, settled = _halved(blocks, filled, reach, RESOLUTION, first_only=True)
+    return _concluded(t, n_odd, settled | (np.abs(np.diff(t)) <= RESOLUTION))
+
+
+def all_exchanges(blocks: ParityBlocks, filled: int) -> tuple[Exchange, ...]:
+    """All exchanges from t = 0 to t = 1, ascending.
+
+    Two that are nearer to each other than `FINE_RESOLUTION` count as one, or as none if they undo
+    each other. So do those within a range, of any length, in which levels of opposite parity stay
+    too near to each other to be told apart.
+
+    Parameters
+    ----------
+    blocks, filled
+        As above.
+    """
+    t, n_odd, settled = _halved(blocks, filled, 1.0, FINE_RESOLUTION, first_only=False)
+    edges = np.diff(np.concatenate([[False], ~settled, [False]]).astype(int))
+    ranges = zip(
+        np.flatnonzero(edges > 0).tolist(), np.flatnonzero(edges < 0).tolist(), strict=True
+    )
+    return tuple(
+        Exchange(float(t[i]), float(t[j]), int(n_odd[i]), int(n_odd[j]))
+        for i, j in ranges
+        if n_odd[i] != n_odd[j]
+    )
+
+
+def _halved(
+    blocks: ParityBlocks, filled: int, reach: float, resolution: float, *, first_only: bool
+) -> tuple[FloatArray, IntArray, BoolArray]:
+    """Values t (n,) with the odd filled levels there (n,), and which steps are settled (n - 1,)."""
+    rounding = blocks.rounding_ev(reach)
     rate = max(blocks.closing_rate, np.finfo(float).tiny)
     t = np.linspace(0.0, reach, FIRST_STEPS + 1)
-    n_odd, room = _levels(blocks, filled_pairs, t)
+    n_odd, room = _room(blocks, filled, t)
     while True:
         width = np.abs(np.diff(t))
         same = n_odd[1:] == n_odd[:-1]
-        settled = same & (room[1:] + room[:-1] > rate * width)
-        last = _first(~same)  # what lies beyond the first change is of no interest
-        split = ~settled & (width > RESOLUTION)
-        split[last + 1 :] = False
+        settled = same & (room[1:] + room[:-1] > rate * width + rounding)
+        split = ~settled & (width > resolution)
+        if first_only:  # what lies beyond the first change is of no interest
+            split[_first(~same) + 1 :] = False
         if not split.any() or len(t) + int(split.sum()) > MOST_SOLVES:
-            break
+            return t, n_odd, settled
         where = np.flatnonzero(split) + 1
         middle = 0.5 * (t[where] + t[where - 1])
-        new_odd, new_room = _levels(blocks, filled_pairs, middle)
+        new_odd, new_room = _room(blocks, filled, middle)
         t = np.insert(t, where, middle)
         n_odd = np.insert(n_odd, where, new_odd)
         room = np.insert(room, where, new_room)
-    return _concluded(t, n_odd, settled | (width <= RESOLUTION))
 
 
 def _concluded(t: FloatArray, n_odd: IntArray, settled: BoolArray) -> FirstExchange:
@@ -148,24 +215,24 @@ def _first(mask: BoolArray) -> int:
     return int(mask.argmax()) if mask.any() else len(mask)
 
 
-def _levels(blocks: ParityBlocks, filled_pairs: int, t: FloatArray) -> tuple[IntArray, FloatArray]:
-    """Odd filled pairs (n_t,), and the room (n_t,) before one of them is exchanged, eV."""
-    even, odd = (_pairs(h + t[:, None, None] * v) for h, v in zip(blocks.h, blocks.v, strict=True))
+def _room(blocks: ParityBlocks, filled: int, t: FloatArray) -> tuple[IntArray, FloatArray]:
+    """Odd filled levels (n_t,), and the room (n_t,) before one of them is exchanged, eV."""
+    even, odd = blocks.levels(t)
     is_odd = np.repeat([False, True], [even.shape[1], odd.shape[1]])
-    order = np.argsort(np.concatenate([even, odd], axis=1), axis=1, kind="stable")[:, :filled_pairs]
+    order = np.argsort(np.concatenate([even, odd], axis=1), axis=1, kind="stable")[:, :filled]
     n_odd = is_odd[order].sum(axis=1)
     even, odd = _fenced(even), _fenced(odd)  # position n is the top of n filled states
-    row, n_even = np.arange(len(t)), filled_pairs - n_odd
+    row, n_even = np.arange(len(t)), filled - n_odd
     to_odd = odd[row, n_odd + 1] - even[row, n_even]
     to_even = even[row, n_even + 1] - odd[row, n_odd]
     return n_odd.astype(np.int64), np.minimum(to_odd, to_even)
 
 
-def _pairs(h: ComplexArray) -> FloatArray:
-    """(n_t, n / 2) energies of Kramers pairs of (n_t, n, n), ascending."""
+def _energies(h: ComplexArray, multiplicity: int) -> FloatArray:
+    """(n_t, n / multiplicity) levels of (n_t, n, n), ascending, so many states to each."""
     if not h.shape[1]:
         return np.empty((len(h), 0))
-    return np.asarray(np.linalg.eigvalsh(h).reshape(len(h), -1, 2).mean(axis=2))
+    return np.asarray(np.linalg.eigvalsh(h).reshape(len(h), -1, multiplicity).mean(axis=2))
 
 
 def _fenced(levels: FloatArray) -> FloatArray:

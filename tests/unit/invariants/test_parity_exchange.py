@@ -8,7 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from topovet.arrays import ComplexArray
-from topovet.invariants.tipping.exchange import (
+from topovet.invariants.exchange import (
     RESOLUTION,
     ParityBlocks,
     first_exchange,
