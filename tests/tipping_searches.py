@@ -14,7 +14,7 @@ from topovet.invariants.tipping.search import (
     search_by_gap,
     search_by_parity,
 )
-from topovet.model.fourier import build_bloch_sum
+from topovet.model.fourier import BlochSum, build_bloch_sum
 from topovet.model.orbital_groups import declared_groups
 from topovet.model.spin_parts import spin_frame, spin_purity
 from topovet.symmetry.inversion import build_inversion, inversion_at
@@ -24,15 +24,15 @@ Points = dict[tuple[str, str], TippingPoint]
 """By name of the group ("" for the scale) and direction."""
 
 
-def parameters_of(model: LatticeModel) -> list[Parameter]:
-    """Everything that can be turned in a model."""
+def parameters_of(model: LatticeModel, coupling: BlochSum | None = None) -> list[Parameter]:
+    """Everything that can be turned in a model; the scale by a coupling of its own if given."""
     apart = model.basis.positions_frac[:, None] - model.basis.positions_frac[None]
     same_site = np.abs(apart).max(axis=2) < 1e-6
     purity = spin_purity(model.tight_binding(), same_site, spin_frame(model.basis))
-    return choose_parameters(declared_groups(model.basis), purity)[0]
+    return choose_parameters(declared_groups(model.basis), purity, coupling)[0]
 
 
-def by_parity(model: LatticeModel) -> Points:
+def by_parity(model: LatticeModel, coupling: BlochSum | None = None) -> Points:
     """Both directions of every parameter, by parity about the model's centre."""
     k_trim = trim_points(model.crystal.periodic)
     operator = build_inversion(model.basis, model.crystal, np.array(model.centre))
@@ -45,7 +45,7 @@ def by_parity(model: LatticeModel) -> Points:
         model.crystal.periodic,
     )
     frame = spin_frame(model.basis)
-    points, _, _ = search_by_parity(ground, parameters_of(model), frame)
+    points, _, _ = search_by_parity(ground, parameters_of(model, coupling), frame)
     return {(p.group, p.direction): p for p in points}
 
 

@@ -10,6 +10,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from deformation_ends import end_of
 from lattice_models import (
     LatticeModel,
     atomic_insulator,
@@ -18,7 +19,9 @@ from lattice_models import (
     kane_mele,
     wilson_dirac,
 )
+from spinless_companions import without_spin
 from tipping_searches import by_gap, by_parity
+from topovet.deformation.companion import compare_companion, coupling_between
 from topovet.invariants.tipping.by_gap import BRACKET, GapGround, _at_the_end
 from topovet.invariants.tipping.by_parity import trim_stars
 from topovet.invariants.tipping.closing import Closing
@@ -128,3 +131,21 @@ def test_spin_orbit_coupling_leaves_the_parities_of_diamond_alone() -> None:
     gap = sample_gap(without, mesh_eigenvalues(without, (8, 8, 8), even=True), 2)
     assert gap.direct_ev < 1e-4
     assert {p.z2_before for p in points.values()} == {(1, 1, 1, 1)}
+
+
+@pytest.mark.parametrize(
+    ("d0", "outcome", "critical", "after"),
+    [(0.4, "closes", 0.0, None), (-0.2, "flips", 1 / 3, (0, 1, 1, 1))],
+)
+def test_diamond_beside_its_spinless_companion(
+    d0: float, outcome: str, critical: float, after: tuple[int, ...] | None
+) -> None:
+    """A longer [111] bond makes 1;(111), a shorter one 0;(111), with the three X between (PRL 98,
+    106803 (2007)): the bond of H0 x 1 + s (H - H0 x 1) is 1 + d0 + s (d - d0). By the parities of
+    the companion with d0 = d the indices last until s = 0, where they have nodes."""
+    model = fu_kane_mele(lambda_so=0.05, dt=(0.4, 0, 0, 0))
+    companion = end_of(without_spin(fu_kane_mele(lambda_so=0.0, dt=(d0, 0, 0, 0))))
+    assert compare_companion(end_of(model), companion, None, smallest_gap_ev=0.1).fits
+    down = by_parity(model, coupling_between(end_of(model), companion, None))["", "down"]
+    assert down.critical == pytest.approx(critical, abs=2e-6)
+    assert (down.outcome, down.z2_before, down.z2_after) == (outcome, (1, 1, 1, 1), after)

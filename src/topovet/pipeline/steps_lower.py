@@ -101,6 +101,6 @@ TASKS = (
         ),
         wants=("group",),
         settings=("lower_gaps", "effort"),
-        version=2,
+        version=3,
     ),
 )

@@ -258,7 +258,7 @@ TASKS = (
         "look for the smallest gaps",
         look_for_gap,
         needs=("hamiltonian-with-basis", "mesh", "electrons"),
-        version=2,
+        version=3,
     ),
     Task(
         "inferred-parity",
