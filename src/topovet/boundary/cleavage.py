@@ -71,6 +71,16 @@ def natural_surface(
 ) -> Miller:
     """Miller indices of a likely cleavage plane; in two dimensions the edge along a_1.
 
+    The first of `rank_surfaces`, which see.
+    """
+    return rank_surfaces(model, crystal, positions_frac)[0]
+
+
+def rank_surfaces(
+    model: TightBindingModel, crystal: Crystal, positions_frac: FloatArray | None
+) -> tuple[Miller, ...]:
+    """Surfaces, the likeliest cleavage plane first; in two dimensions the edge along a_1 alone.
+
     Of all planes up to `LARGEST_INDEX` the one across whose widest gap the Hamiltonian couples
     least: sum |H_mn(R)|^2 over the pairs on different sides, per area. In second order that is the
     order of the bonding energy that the cut costs, so that layered crystals are cut between their
@@ -89,7 +99,7 @@ def natural_surface(
         first = crystal.periodic.index(True)
         second = crystal.periodic.index(True, first + 1)
         h, k, l = (int(i == second) for i in range(3))
-        return h, k, l
+        return ((h, k, l),)
     if positions_frac is None:
         positions_frac = np.zeros((model.n_orb, 3))
     bonds = _site_bonds(model, positions_frac)
@@ -98,11 +108,12 @@ def natural_surface(
     cost = {n: bonds.cut_by(n, lengths[n]) for n in lengths}
     least = min(cost.values())
 
-    def rank(n: Miller) -> tuple[bool, float, int, Miller]:
+    def rank(n: Miller) -> tuple[float, float, int, Miller]:
         plain = sum(2 * abs(c) + (c < 0) for c in n)
-        return cost[n] > SAME_COST * least, round(lengths[n], 6), plain, (-n[0], -n[1], -n[2])
+        dearer = 0.0 if cost[n] <= SAME_COST * least else cost[n]
+        return dearer, round(lengths[n], 6), plain, (-n[0], -n[1], -n[2])
 
-    return min(lengths, key=rank)
+    return tuple(sorted(lengths, key=rank))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

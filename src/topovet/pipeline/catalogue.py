@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from topovet.boundary import cone_results as cones
 from topovet.boundary import results as boundary
+from topovet.boundary.arcs import results as arcs
 from topovet.deformation.companion import CompanionTest
 from topovet.diagnosis import results as diagnosis
 from topovet.intake import records
@@ -23,6 +24,7 @@ from topovet.model.decay import DecayProfile
 from topovet.model.declarations import Declarations
 from topovet.model.plane import KPlane
 from topovet.pipeline import (
+    steps_arcs,
     steps_bandreps,
     steps_boundary,
     steps_companion,
@@ -129,6 +131,10 @@ STORED_TYPES = (
     nodes.Pocket,
     nodes.Reference,
     nodes.NodeSearch,
+    arcs.Projection,
+    arcs.LoopCount,
+    arcs.Arc,
+    arcs.ArcSurvey,
     boundary.Crossing,
     boundary.SurfaceLine,
     boundary.SurfaceWitness,
@@ -166,6 +172,7 @@ def case_tasks() -> tuple[Task, ...]:
         *steps_bandreps.TASKS,
         *steps_lower.TASKS,
         *steps_boundary.TASKS,
+        *steps_arcs.TASKS,
         *steps_tipping.TASKS,
         *steps_report.TASKS,
         *steps_diagnosis.TASKS,

@@ -55,7 +55,7 @@ def count_surface_crossings(
         raise NotApplicable("an odd filling leaves a Kramers pair half filled")
     if not kramers and declarations.crystal.dimension == 3:
         raise NotApplicable("surfaces are followed only for spinors with time reversal")
-    miller, chosen_by = _surface(context, hamiltonian_with_basis, declarations)
+    miller, chosen_by = chosen_surface(context, hamiltonian_with_basis, declarations)
     basis = hamiltonian_with_basis.basis
     return compute_surface(
         hamiltonian_with_basis.lattice.model,
@@ -81,7 +81,7 @@ def map_surface(
 ) -> tuple[SurfaceMap, ...]:
     """Spectral density of both terminations along the path of the surface zone."""
     _check(context, gap)
-    miller, _ = _surface(context, hamiltonian_with_basis, declarations)
+    miller, _ = chosen_surface(context, hamiltonian_with_basis, declarations)
     basis = hamiltonian_with_basis.basis
     cut, place, stack = prepare_surface(
         hamiltonian_with_basis.lattice.model,
@@ -148,7 +148,7 @@ def _check(context: Context, gap: GapSample) -> None:
         raise NotApplicable("the occupied bands touch the others: no energy lies between them")
 
 
-def _surface(
+def chosen_surface(
     context: Context, based: BasedHamiltonian, declared: Declarations
 ) -> tuple[Miller, str]:
     """Miller indices in the Hamiltonian's own cell, and who said so."""

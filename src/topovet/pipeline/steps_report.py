@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from topovet.boundary.arcs.results import ArcSurvey
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.deformation.companion import CompanionTest
@@ -77,6 +78,7 @@ def collect_findings(
     tipping: TippingSearch | None,
     spinless_companion: CompanionTest | None,
     surface_states: SurfaceStates | None,
+    fermi_arcs: ArcSurvey | None,
     interpolation: InterpolationCheck | None,
 ) -> Findings:
     """What all steps found, and why a step found nothing."""
@@ -113,6 +115,7 @@ def collect_findings(
         tipping=tipping,
         companion=spinless_companion,
         surface_states=surface_states,
+        arcs=fermi_arcs,
         interpolation=interpolation,
         missing={state.name: state.reason for state in context.trail if state.reason},
     )
@@ -246,6 +249,7 @@ IF_THERE = (
     "tipping",
     "spinless-companion",
     "surface-states",
+    "fermi-arcs",
     "group",
     "interpolation",
 )

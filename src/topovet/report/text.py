@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
+from typing import Any
 
 from topovet.notation import ev, k_text, mev, nonzero_by_plane, one_line, z2_text
 from topovet.report.classes import class_words
@@ -175,6 +176,8 @@ def _measurable(verdict: Verdict) -> str:
     """What an experiment could look for, in one line; empty where nothing is computed."""
     numbers = verdict.measurable
     edge, point = numbers.get("edge"), numbers.get("dirac_point")
+    if arcs := numbers.get("fermi_arcs"):
+        return _arcs(arcs, numbers["surface"]["miller"])
     if edge and edge["conductance_e2_h"] is not None:
         speeds = [abs(c["velocity_m_s"]) for c in edge["crossings"]]
         found = f", edge velocity {max(speeds):.2g} m/s" if speeds else ""
@@ -189,6 +192,19 @@ def _measurable(verdict: Verdict) -> str:
         f"Dirac point at {ev(point['energy_eV'])}, {where}, velocity {speed:.2g} m/s on the "
         f"{point['termination']} (estimates)"
     )
+
+
+def _arcs(arcs: Mapping[str, Any], miller: Sequence[int]) -> str:
+    ends = [p for p in arcs["projections"] if p["chirality_sum"]]
+    counted = sum(p["chirality_counted"] is not None for p in arcs["projections"])
+    said = {
+        "agree": f"surface levels agree around {counted} of {len(arcs['projections'])}",
+        "disagree": "surface levels disagree",
+    }.get(arcs["status"], "not confirmed by surface levels")
+    where = " ".join(map(str, miller))
+    if not ends:
+        return f"chiralities cancel on the surface ({where}): no Fermi arc is demanded; {said}"
+    return f"Fermi arcs end at {len(ends)} projections on the surface ({where}); {said} (estimates)"
 
 
 def _residuals(verdict: Verdict) -> str:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
+from topovet.boundary.arcs.results import ArcSurvey
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.results import SurfaceWitness
 from topovet.deformation.companion import CompanionTest
@@ -80,6 +81,7 @@ class Findings:
     tipping: TippingSearch | None = None
     companion: CompanionTest | None = None
     surface_states: SurfaceStates | None = None
+    arcs: ArcSurvey | None = None
     interpolation: InterpolationCheck | None = None
     missing: Mapping[str, str] = field(default_factory=dict)
 

@@ -24,6 +24,7 @@ def witness_flags(findings: Findings) -> Iterator[Flag]:
     if not conclude_nodes(findings).class_:  # without a gap indices need not agree
         yield from _disagreement(findings)
         yield from _mirrors(findings)
+    yield from _arcs(findings)
     yield from _error_bar(findings)
 
 
@@ -190,6 +191,27 @@ def _surface(findings: Findings) -> Iterator[Flag]:
             {"chern": known[0], "by_edge_levels": surface.chern},
             "The other flags name what breaks the ground of one of them.",
         )
+
+
+def _arcs(findings: Findings) -> Iterator[Flag]:
+    """Chiralities of nodes against the levels of a surface around their projections."""
+    arcs = findings.arcs
+    if arcs is None or arcs.status != "disagree":
+        return
+    yield Flag(
+        "witnesses-disagree",
+        "error",
+        f"surface levels and chiralities of nodes disagree: {arcs.reason}.",
+        {
+            "miller": list(arcs.miller),
+            "by_nodes": [arcs.projections[c.projection].chirality for c in arcs.loops],
+            "by_surface_levels": [
+                "open" if c.chirality is None else str(c.chirality) for c in arcs.loops
+            ],
+        },
+        "A node may be missing from the list, or a chirality be wrong: try --effort thorough, and "
+        "another surface with --surface.",
+    )
 
 
 def _error_bar(findings: Findings) -> Iterator[Flag]:

@@ -20,11 +20,13 @@ from topovet.units import KT_ROOM_MEV, MEV_PER_EV
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
 from topovet.verdict.conclude import Conclusion
 from topovet.verdict.findings import Findings
+from topovet.verdict.measurable_arcs import arcs_block
 from topovet.verdict.measurable_transport import (
     landau_block,
     oscillation_block,
     surface_channel_block,
 )
+from topovet.verdict.semimetal import conclude_nodes
 
 IDEAL_SURFACE = (
     "an ideal cut of the bulk Hamiltonian: no relaxation, no charge, band bending or adsorbates"
@@ -37,7 +39,6 @@ NOTES = {
     "many cones on its line; their energies are not computed.",
     "higher-order": "States are expected at hinges or corners; their energies are not computed.",
     "axion-candidate": "Half-quantised surface Hall conductance; nothing is computed for it.",
-    "weyl-semimetal": "Fermi arcs join the projections of nodes; they are not computed.",
     "dirac-semimetal": "Surface states at nodes are not computed.",
     "nodal-line": "Drumhead states inside the projected line are not computed.",
 }
@@ -57,6 +58,8 @@ def measurable(findings: Findings, conclusion: Conclusion) -> dict[str, Any]:
     class_, states, gap = conclusion.class_, findings.surface_states, findings.gap
     if class_ in ("undetermined", "metal") or gap is None:
         return {}
+    if class_ == "weyl-semimetal":
+        return _arcs(findings)
     if class_ not in ("strong-ti", "weak-ti", "chern"):
         return {"note": NOTES[class_]} if class_ in NOTES else {}
     if states is None:
@@ -65,16 +68,31 @@ def measurable(findings: Findings, conclusion: Conclusion) -> dict[str, Any]:
     planar = findings.declared.crystal.dimension == 2
     return {
         "estimate": True,
-        "uncertainty": _uncertainty(findings),
+        "uncertainty": _uncertainty(findings, robustness_radius(findings)),
         **(_edge(findings, conclusion, states, gap) if planar else _surface(findings, states, gap)),
     }
 
 
-def _uncertainty(findings: Findings) -> dict[str, Any]:
+def _arcs(findings: Findings) -> dict[str, Any]:
+    """A Weyl semimetal: where its arcs end on one surface."""
+    arcs, barrier = findings.arcs, conclude_nodes(findings).barrier_ev
+    if arcs is None:
+        why = findings.missing.get("fermi-arcs", "they were not followed")
+        return {"note": f"Fermi arcs join the projections of nodes; not computed: {why}."}
+    survives = None if barrier is None else 0.5 * MEV_PER_EV * barrier
+    return {
+        "estimate": True,
+        "uncertainty": _uncertainty(findings, survives),
+        "surface": {"miller": list(arcs.miller), "terminations": list(arcs.terminations)},
+        "fermi_arcs": arcs_block(arcs),
+    }
+
+
+def _uncertainty(findings: Findings, survives_mev: float | None) -> dict[str, Any]:
     known = total_error(error_budget(findings))
     return {
         "energy_meV": known,
-        "verdict_survives_meV": robustness_radius(findings),
+        "verdict_survives_meV": survives_mev,
         "assumptions": [
             "the known errors of the input, added up: no level moves by more (Weyl), a gap by at "
             "most twice as much",

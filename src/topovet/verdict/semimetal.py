@@ -84,6 +84,13 @@ def conclude_nodes(findings: Findings) -> NodeConclusion:
     ]
     if not near:
         grounds.append(f"none comes within {mev(1000 * NEAR_FERMI_EV)} of it: a metal")
+    arcs = findings.arcs
+    if arcs is not None and arcs.status == "agree":
+        counted = sum(c.status == "ok" for c in arcs.loops)
+        grounds.append(
+            f"surface levels around {counted} of {len(arcs.projections)} projections of nodes "
+            "count the same chirality"
+        )
     return NodeConclusion(class_, tuple(grounds), barrier)
 
 

@@ -5,6 +5,9 @@ from __future__ import annotations
 import json
 from pathlib import Path
 
+import numpy as np
+import pytest
+
 from case_writer import write_case
 from lattice_models import fu_kane_mele, wilson_dirac
 from node_models import on_axis_dirac
@@ -26,12 +29,23 @@ def test_weyl_semimetal_end_to_end(tmp_path: Path) -> None:
     written = json.loads(verdict_json(verdict))
     assert written["node_search"]["complete"]
     assert written["node_search"]["chirality_sum"] == 0
+    arcs = written["measurable"]["fermi_arcs"]
+    assert (arcs["status"], arcs["chosen_by"]) == ("agree", "weakest coupling")
+    assert written["measurable"]["surface"]["miller"] == [1, 0, 0]
+    ends = np.array([p["k_surface"][1] for p in arcs["projections"]])
+    # planes between the nodes that hold the zone's centre are inverted, the others are not: the
+    # arc is the straight way through the centre
+    assert [a["length_per_ang"] for a in arcs["arcs"]] == pytest.approx(
+        [2 * np.pi * np.ptp(ends) / np.linalg.norm(model.crystal.cell[2])] * 2, rel=1e-4
+    )
     material = run.result("report-material")
     page = render_report(material, {"nodes": figure_makers(material)["nodes"]()})
     assert 'id="nodes"' in page
     again = start_run(case, out=tmp_path / "dossier")
     assert len(again.result("nodes").points) == 2
     assert again.states["nodes"].state == "cached"
+    assert again.result("fermi-arcs").loops == run.result("fermi-arcs").loops
+    assert again.states["fermi-arcs"].state == "cached"
 
 
 def test_dirac_semimetal_of_a_case_folder(tmp_path: Path) -> None:
