@@ -6,7 +6,14 @@ from dataclasses import replace
 
 import numpy as np
 
-from topovet.boundary.cone_results import Cone, Contour, EnergyMap, KramersPair, SurfaceStates
+from topovet.boundary.cone_results import (
+    Cone,
+    Contour,
+    EnergyMap,
+    KramersPair,
+    SurfaceStates,
+    Warping,
+)
 from topovet.boundary.results import (
     Crossing,
     SurfaceLine,
@@ -119,7 +126,7 @@ def states(termination: str = "upper half, Te outermost") -> SurfaceStates:
         velocity_ev_ang=np.full(6, slope),
         curvature_ev_ang2=np.zeros(6),
         velocity_spread_ev_ang=0.02,
-        warping_ev_ang3=None,
+        warping=Warping(None, None, None, None, None, "", None, "made up"),
         decay_ang=12.0,
         contours=contours,
     )

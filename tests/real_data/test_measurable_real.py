@@ -36,6 +36,10 @@ def test_bi2se3_has_the_cone_of_the_literature(case: str) -> None:
     assert point["below_conduction_edge_meV"] > 200
     assert 3e5 < band["velocity_min_m_s"] < band["velocity_max_m_s"] < 6e5
     assert band["spin_above_dirac_point"] == "clockwise"
+    # 128 eV angstrom^3 fitted to photoemission by Kuroda et al., PRL 105, 076802 (2010), with a
+    # velocity 1.7 times this one (from memory)
+    assert 64 < band["warping_range_eV_ang3"][0] <= band["warping_eV_ang3"] < 192
+    assert band["warping_misfit_meV"] < 2
     in_gap = [o for o in numbers["oscillation"] if not o["bulk_carriers_too"]]
     assert len(in_gap) >= 4
     for row in in_gap:

@@ -4,12 +4,7 @@ Along a fixed azimuth both bands are smooth in k: with time reversal E_-(k) is E
 
     E_+-(k) = E_D + b k^2 +- (v k + c k^3) + ...
 
-and b, v, c follow from linear least squares. With a threefold axis and mirrors the third order in k
-is the hexagonal warping of Fu (2009), E_+- = E_0(k) +- sqrt(v^2 k^2 + lambda^2 k^6 cos^2 3 theta).
-
-References
-----------
-Fu, PRL 103, 266801 (2009), doi:10.1103/PhysRevLett.103.266801
+and b, v, c follow from linear least squares.
 """
 
 from __future__ import annotations
@@ -19,7 +14,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from topovet.arrays import BoolArray, FloatArray
+from topovet.arrays import FloatArray
 from topovet.boundary.cone_results import KramersPair
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.levels import Levels, surface_levels
@@ -289,29 +284,3 @@ def _fitted(branches: Branches, energy_ev: float, points: int) -> FloatArray:
         terms = np.stack([sign * k, k**2, sign * k**3], axis=1)[known]
         fitted.append(np.linalg.lstsq(terms, energy[known], rcond=None)[0][:2].tolist())
     return np.array(fitted)
-
-
-def fit_warping(
-    branches: Branches, *, isotropy: float = 0.05, residual_ev: float = 4e-3
-) -> float | None:
-    """lambda of Fu's form in eV angstrom^3, None where the form does not describe the bands.
-
-    From ((E_+ - E_-) / 2)^2 = v^2 k^2 + a k^4 + k^6 (g + p cos 6 theta), linear in all, with theta
-    from b'_1, where the mirrors of a threefold surface put the extremes: lambda^2 = 2 |p|. Asked
-    for: both bands at three radii or more along all azimuths, a slope that is the same along all
-    of them, and bands met to within `residual_ev`.
-    """
-    half = 0.5 * (branches.upper_ev - branches.lower_ev)
-    known: BoolArray = np.isfinite(half)
-    if len(half) < AZIMUTHS or not known[:, :3].all():
-        return None
-    inner = half[:, 0] / branches.k_ang[0]
-    if np.ptp(inner) > isotropy * inner.mean():
-        return None
-    theta, k = np.broadcast_arrays(branches.azimuth_rad[:, None], branches.k_ang[None, :])
-    theta, k, half = theta[known], k[known], half[known]
-    terms = np.stack([k**2, k**4, k**6, k**6 * np.cos(6 * theta)], axis=1)
-    weight = 1 / half  # so that residuals are those of the energy
-    fit = np.linalg.lstsq(terms * weight[:, None], half**2 * weight, rcond=None)[0]
-    off = np.abs(np.sqrt(np.maximum(terms @ fit, 0.0)) - half).max()
-    return float(np.sqrt(2 * abs(fit[3]))) if off < residual_ev else None

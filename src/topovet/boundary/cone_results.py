@@ -64,6 +64,38 @@ class Contour:
     spin: FloatArray | None
 
 
+@dataclass(frozen=True, slots=True)
+class Warping:
+    """lambda of E_0(k) +- sqrt(v^2 k^2 + lambda^2 k^6 cos^2 3 theta), or why there is none.
+
+    Attributes
+    ----------
+    lambda_ev_ang3
+        eV angstrom^3; None where the form does not describe the bands.
+    least_ev_ang3, most_ev_ang3
+        What single radii say.
+    misfit_ev
+        By how much the fit misses the difference between the two kinds of direction, at most.
+    uneven_ev
+        By how much directions differ that the threefold axis relates.
+    band
+        "upper", "lower" or "both": what was fitted.
+    reach_ang
+        Largest radius, 1/angstrom.
+    reason
+        Why there is none; empty otherwise.
+    """
+
+    lambda_ev_ang3: float | None
+    least_ev_ang3: float | None
+    most_ev_ang3: float | None
+    misfit_ev: float | None
+    uneven_ev: float | None
+    band: str
+    reach_ang: float | None
+    reason: str
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Cone:
     """The two bands that meet in a Kramers pair, followed outwards.
@@ -85,9 +117,8 @@ class Cone:
         (n_theta,) b of the mean of the two bands, E_D + b k^2: hbar^2 / (2 m*).
     velocity_spread_ev_ang
         How far the slope moves when the fit takes one point less.
-    warping_ev_ang3
-        lambda of sqrt(v^2 k^2 + lambda^2 k^6 cos^2 3 theta); None where that form does not
-        describe the bands.
+    warping
+        Of the bands by direction.
     decay_ang
         Largest length over which the amplitude of a state at the pair can decay, angstrom.
     contours
@@ -102,7 +133,7 @@ class Cone:
     velocity_ev_ang: FloatArray
     curvature_ev_ang2: FloatArray
     velocity_spread_ev_ang: float
-    warping_ev_ang3: float | None
+    warping: Warping
     decay_ang: float
     contours: tuple[Contour, ...] = ()
 

@@ -7,9 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from topovet.arrays import FloatArray
 from topovet.boundary.cone import (
     fit_shape,
-    fit_warping,
     follow_cone,
     kramers_pairs,
     surface_trim,
@@ -32,6 +32,7 @@ from topovet.boundary.levels import surface_levels
 from topovet.boundary.recut import Recut
 from topovet.boundary.results import SurfaceLine, ThicknessSeries
 from topovet.boundary.slab import compute_thickness_series
+from topovet.boundary.warping import fit_warping, mirrors_of_surface
 
 CONTOURS_EV = (0.015, 0.03, 0.06, 0.1, 0.15, 0.2, 0.25, 0.3)
 """Energies from the Dirac point at which contours are looked for, on both sides."""
@@ -55,7 +56,7 @@ SAME_EV = 1e-3
 """Pairs of the two faces that are nearer to each other than this are one and the same."""
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Bulk:
     """What is known of the bulk.
 
@@ -67,12 +68,15 @@ class Bulk:
         Edges of the bulk bands; cbm below vbm in a semimetal.
     fermi_ev
         Fermi energy of the input; None where there is none.
+    rotations_cart
+        (n, 3, 3) point group of the structure; None where there is no structure.
     """
 
     filling: int
     vbm_ev: float
     cbm_ev: float
     fermi_ev: float | None
+    rotations_cart: FloatArray | None = None
 
     def exposure_ev(self, energy_ev: float) -> float:
         """Distance to the nearest bulk band edge; not positive inside the bands."""
@@ -224,7 +228,7 @@ def _cone(stack: LayerStack, cut: Recut, bulk: Bulk, pair: KramersPair) -> Cone 
         velocity_ev_ang=shape.velocity_ev_ang,
         curvature_ev_ang2=shape.curvature_ev_ang2,
         velocity_spread_ev_ang=shape.spread_ev_ang,
-        warping_ev_ang3=fit_warping(branches),
+        warping=fit_warping(branches, pair, *mirrors_of_surface(cut, bulk.rotations_cart)),
         decay_ang=decay_length(stack, cut, np.array([*pair.k_par, 0.0][:2]), pair.energy_ev),
         contours=with_spin(stack, cut, branches, pair, sorted(contours, key=lambda c: c.energy_ev)),
     )

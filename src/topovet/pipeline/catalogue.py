@@ -145,6 +145,7 @@ STORED_TYPES = (
     boundary.ThicknessSeries,
     cones.KramersPair,
     cones.Contour,
+    cones.Warping,
     cones.Cone,
     cones.EnergyMap,
     cones.EdgeCrossing,

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from topovet.arrays import FloatArray
 from topovet.boundary.cleavage import natural_surface
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.layers import LayerStack
@@ -18,12 +19,13 @@ from topovet.boundary.results import SurfaceMap, SurfaceWitness
 from topovet.boundary.spectral import adapted_path, compute_surface_maps
 from topovet.boundary.surface_states import Bulk, survey_states
 from topovet.boundary.witness import CRITERIA, DROPPED_SHARE, compute_surface, prepare_surface
+from topovet.model.crystal import Crystal
 from topovet.model.declarations import Declarations
 from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.task import NotApplicable, Task
 from topovet.spectrum.results import Electrons, GapSample
-from topovet.symmetry.results import TimeReversalTest
+from topovet.symmetry.results import SpaceGroup, TimeReversalTest
 from topovet.units import MEV_PER_EV
 
 MAP_WORK = {"standard": 8e8, "thorough": 1.2e10}
@@ -115,6 +117,7 @@ def follow_surface_states(
     electrons: Electrons,
     gap: GapSample,
     surface: SurfaceWitness,
+    space_group: SpaceGroup | None,
 ) -> SurfaceStates:
     """Dirac point, velocity, contours and films, where the surface must carry something."""
     _check(context, gap)
@@ -134,11 +137,23 @@ def follow_surface_states(
     return survey_states(
         stack,
         cut,
-        Bulk(electrons.filling, gap.vbm_ev, gap.cbm_ev, electrons.fermi_ev),
+        Bulk(
+            electrons.filling,
+            gap.vbm_ev,
+            gap.cbm_ev,
+            electrons.fermi_ev,
+            None if space_group is None else _cartesian(space_group, declarations.crystal),
+        ),
         (upper, lower),
         surface.lines,
         kramers=time_reversal.present and bool(declarations.spinful),
     )
+
+
+def _cartesian(group: SpaceGroup, crystal: Crystal) -> FloatArray:
+    """(n, 3, 3) point group in Cartesian axes."""
+    to_cart = np.asarray(crystal.cell).T
+    return np.asarray(to_cart @ group.rotations @ np.linalg.inv(to_cart))
 
 
 def _check(context: Context, gap: GapSample) -> None:
@@ -189,7 +204,9 @@ TASKS = (
         "follow the surface bands, find what can be measured of them",
         follow_surface_states,
         needs=(*NEEDS, "time-reversal", "surface"),
+        wants=("space-group",),
         settings=("surface", "effort"),
+        version=2,
     ),
     Task(
         "surface-map",

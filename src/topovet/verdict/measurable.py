@@ -12,7 +12,13 @@ from typing import Any
 
 import numpy as np
 
-from topovet.boundary.cone_results import Cone, EdgeCrossing, KramersPair, SurfaceStates
+from topovet.boundary.cone_results import (
+    Cone,
+    EdgeCrossing,
+    KramersPair,
+    SurfaceStates,
+    Warping,
+)
 from topovet.boundary.observables import velocity_m_s
 from topovet.boundary.surface_states import same_pair
 from topovet.spectrum.results import GapSample
@@ -32,6 +38,13 @@ IDEAL_SURFACE = (
     "an ideal cut of the bulk Hamiltonian: no relaxation, no charge, band bending or adsorbates"
 )
 ONE_PARTICLE = "one-particle levels of the Hamiltonian as given; its functional's gap is taken over"
+
+WARPED = {
+    "both": "fitted to both bands",
+    "upper": "fitted to the band above the Dirac point; the mean of the two is taken for isotropic",
+    "lower": "fitted to the band below the Dirac point; the mean of the two is taken for isotropic",
+}
+"""What was fitted for the warping."""
 
 NOTES = {
     "trivial": "No surface or edge state is demanded by these indices.",
@@ -214,7 +227,7 @@ def _band(cone: Cone, states: SurfaceStates) -> dict[str, Any]:
         ),
         "velocity_eV_ang": float(np.mean(cone.velocity_ev_ang)),
         "curvature_eV_ang2": float(np.mean(cone.curvature_ev_ang2)),
-        "warping_eV_ang3": cone.warping_ev_ang3,
+        **_warping(cone.warping),
         "decay_length_ang": cone.decay_ang,
         "spin_above_dirac_point": turn,
         "spin_along_contour": turned,
@@ -222,10 +235,26 @@ def _band(cone: Cone, states: SurfaceStates) -> dict[str, Any]:
             "velocity: slope at the Dirac point, E = E_D + b k^2 +- (v k + c k^3) fitted to both "
             "bands; the velocity at other energies stands with the oscillation frequencies",
             "velocity_of_fit_m_s: how far it moves when the fit takes one point less",
+            "warping: difference of the bands between and in the mirror planes; range: what single "
+            "radii say; unevenness: difference of directions that the threefold axis relates",
             "decay length: of the amplitude, the slowest decaying bulk wave at the Dirac point",
             "spin: of the outermost lattice plane, seen from outside, expectation of sigma from 0 "
             "to 1; Wannier functions are taken for eigenstates of spin",
         ],
+    }
+
+
+def _warping(warping: Warping) -> dict[str, Any]:
+    """lambda with the range of single radii and what the fit misses; or why there is none."""
+    known = warping.lambda_ev_ang3 is not None
+    misfit, uneven = warping.misfit_ev, warping.uneven_ev
+    return {
+        "warping_eV_ang3": warping.lambda_ev_ang3,
+        "warping_range_eV_ang3": [warping.least_ev_ang3, warping.most_ev_ang3] if known else None,
+        "warping_misfit_meV": None if misfit is None else MEV_PER_EV * misfit,
+        "warping_unevenness_meV": None if uneven is None else MEV_PER_EV * uneven,
+        "warping_reach_per_ang": warping.reach_ang,
+        "warping_note": warping.reason if not known else WARPED[warping.band],
     }
 
 

@@ -1,4 +1,4 @@
-"""Cones followed outwards: slope, contours, spin, warping, reach."""
+"""Cones followed outwards: slope, contours, spin, reach."""
 
 from __future__ import annotations
 
@@ -8,12 +8,12 @@ import pytest
 from boundary_models import prepared, ssh_chain
 from chern_models import qi_wu_zhang
 from lattice_models import bhz, wilson_dirac
-from topovet.boundary.cone import Branches, fit_warping
 from topovet.boundary.cone_results import KramersPair
 from topovet.boundary.contours import polar_frame
 from topovet.boundary.evanescent import decay_length
 from topovet.boundary.results import SurfaceLine
 from topovet.boundary.surface_states import Bulk, survey_states
+from topovet.symmetry.spacegroup import find_space_group
 
 A = 3.8
 """Lattice constant of the Wilson-Dirac model, angstrom."""
@@ -26,10 +26,12 @@ def _odd_line(start, end, *, parity: int = 1, net: int | None = 1) -> SurfaceLin
 @pytest.fixture(scope="module")
 def wilson_dirac_states():
     """m = -2: one cone at the zone centre, E = sqrt(sin^2 k_1 + sin^2 k_2); bulk gap 2 eV."""
-    cut, place, stack = prepared(wilson_dirac(m=-2.0), (0, 0, 1))
+    model = wilson_dirac(m=-2.0)
+    cut, place, stack = prepared(model, (0, 0, 1))
     names = tuple(t.name for t in place.terminations)
     lines = [_odd_line((0.0, 0.0), (0.5, 0.0))]
-    return survey_states(stack, cut, Bulk(2, -1.0, 1.0, 0.3), names, lines, kramers=True)
+    bulk = Bulk(2, -1.0, 1.0, 0.3, np.array(find_space_group(model.crystal).rotations, dtype=float))
+    return survey_states(stack, cut, bulk, names, lines, kramers=True)
 
 
 def test_one_pair_on_each_face(wilson_dirac_states) -> None:
@@ -46,7 +48,8 @@ def test_slope_and_curvature_at_the_dirac_point(wilson_dirac_states) -> None:
     assert cone.velocity_ev_ang == pytest.approx(A, rel=5e-3)
     assert np.abs(cone.curvature_ev_ang2).max() < 1e-2
     # fourfold: no hexagonal warping is made of it
-    assert cone.warping_ev_ang3 is None or cone.warping_ev_ang3 < 1.0
+    assert cone.warping.lambda_ev_ang3 is None
+    assert "threefold" in cone.warping.reason
 
 
 def test_contours_enclose_the_area_of_the_closed_form(wilson_dirac_states) -> None:
@@ -105,18 +108,6 @@ def test_the_map_holds_the_contour_and_its_spin(wilson_dirac_states) -> None:
     spin = found.spin[1, :, at] / found.density[1, :, at, None]
     assert np.sign(spin[:, 1]) == pytest.approx(np.sign(contour.spin[0, 1]))
     assert np.abs(spin[:, [0, 2]]).max() < 0.05
-
-
-def test_hexagonal_warping_is_found_again() -> None:
-    """Fu, PRL 103, 266801 (2009): made with lambda, fitted; lost where a band is lost."""
-    theta, k = np.pi * np.arange(6) / 6, np.linspace(0.02, 0.12, 6)
-    half = np.sqrt((2.5 * k) ** 2 + 128.0**2 * k**6 * np.cos(3 * theta[:, None]) ** 2)
-    mean = 0.1 + 5.0 * k**2
-    assert fit_warping(Branches(theta, k, mean + half, mean - half)) == pytest.approx(128, rel=1e-3)
-    lost = np.where(k > 0.03, np.nan, mean - half)
-    assert fit_warping(Branches(theta, k, mean + half, lost)) is None
-    squeezed = half * (1 + 0.3 * np.cos(2 * theta[:, None]))
-    assert fit_warping(Branches(theta, k, mean + squeezed, mean - squeezed)) is None
 
 
 @pytest.mark.parametrize("ratio", [0.3, 0.6, 0.9])
