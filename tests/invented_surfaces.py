@@ -61,7 +61,7 @@ def witness(z2: tuple[int | None, ...] | None, **changes: object) -> SurfaceWitn
         miller=(0, 0, 1),
         normal_cart=(0.0, 0.0, 1.0),
         spacing_ang=11.3,
-        chosen_by="weakest coupling",
+        chosen_by="weakest bonds",
         terminations=("upper half, Te outermost", "lower half, Te outermost"),
         cut_width_ang=2.61,
         matrix=((1, 0, 0), (0, 1, 0), (0, 0, 1)),

@@ -12,9 +12,10 @@ import numpy as np
 import pytest
 
 from real_cases import CENTROSYMMETRIC, reference, run_of
+from topovet.boundary.cleavage import rank_surfaces
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.projected import projected_edges
-from topovet.boundary.recut import Recut
+from topovet.boundary.recut import Miller, Recut
 from topovet.boundary.results import SurfaceWitness
 from topovet.boundary.slab import compute_slab_bands, compute_thickness_series
 from topovet.boundary.witness import prepare_surface
@@ -82,8 +83,40 @@ def test_the_natural_surface_lies_between_the_quintuple_layers(case: str) -> Non
     """(001) of the hexagonal setting, between two planes of Se; 9.5 to 10 angstrom to the next."""
     surface = _surface(case)
     assert surface.miller == (1, 1, 1)
-    assert surface.chosen_by == "weakest coupling"
+    assert surface.chosen_by == "weakest bonds"
     assert all("Se outermost" in name for name in surface.terminations)
+
+
+FCC_PLANES = {"PbTe": (1, 0, 0), "Si": (1, 1, 1), "CdTe": (1, 1, 0)}
+"""Cleavage of rock salt, diamond and zinc blende, of their cubic cells: textbook, e.g. Kelly,
+Groves, Kidd, Crystallography and Crystal Defects (Wiley, 2000), and Yu, Cardona, Fundamentals of
+Semiconductors (Springer, 2010) for the last (from memory)."""
+
+
+@pytest.mark.parametrize(
+    ("case", "plane"),
+    # antimony: (0001) of its hexagonal cell, between bilayers, perfect (Handbook of Mineralogy,
+    # from memory); BiTeI: between iodine and tellurium, Ishizaka et al., Nat. Mater. 10, 521 (2011)
+    [("Sb", (1, 1, 1)), ("BiTeI", (0, 0, 1)), ("BiTeI_pressed", (0, 0, 1)), *FCC_PLANES.items()],
+)
+def test_crystals_are_cut_where_they_cleave(case: str, plane: Miller) -> None:
+    run = run_of(case)
+    based, declared = run.result("hamiltonian-with-basis"), run.result("declarations")
+    planes = rank_surfaces(
+        based.lattice.model,
+        declared.crystal,
+        based.basis.positions_frac,
+        run.result("electrons").filling,
+        run.result("space-group").rotations,
+    )
+    miller = planes[0].miller
+    if case in FCC_PLANES:
+        # their cubic cells lie along the Cartesian axes
+        normal = np.linalg.inv(declared.crystal.cell) @ np.array(miller)
+        cubic = np.sort(np.abs(normal))[::-1] / np.abs(normal).max()
+        assert cubic == pytest.approx(plane, abs=1e-3)
+    else:
+        assert miller == plane
 
 
 def test_bi2se3_has_one_cone_in_its_gap() -> None:

@@ -110,7 +110,8 @@ class SurfaceWitness:
     spacing_ang
         Of the lattice planes.
     chosen_by
-        "options of the run", "case.toml" or "weakest coupling"; "along a1" for an edge.
+        "options of the run", "case.toml", "weakest bonds" or, where that plane settles nothing,
+        "next weakest bonds"; "along a1" for an edge.
     terminations
         Names of the upper and the lower half-crystal.
     cut_width_ang
@@ -128,6 +129,8 @@ class SurfaceWitness:
         Half-crystals solved, both terminations at once.
     n_bulk_solves
         Eigenvalue problems of the bulk solved for the projected edges.
+    instead_of, instead_reason
+        The likeliest cleavage plane, and why it settles nothing, where the next one stands in.
     """
 
     status: str
@@ -146,6 +149,8 @@ class SurfaceWitness:
     layer_size: int
     n_solves: int
     n_bulk_solves: int
+    instead_of: tuple[int, int, int] | None = None
+    instead_reason: str = ""
 
     @property
     def z2_strong(self) -> int | None:

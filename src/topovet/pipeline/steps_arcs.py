@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from topovet.boundary.arcs.results import ArcSurvey
 from topovet.boundary.arcs.survey import separating_surface, survey_arcs
-from topovet.boundary.cleavage import rank_surfaces
 from topovet.boundary.witness import CRITERIA
 from topovet.invariants.nodes.results import NodeSearch
 from topovet.model.declarations import Declarations
@@ -12,6 +11,8 @@ from topovet.pipeline.runner import Context
 from topovet.pipeline.steps_boundary import chosen_surface
 from topovet.pipeline.steps_intake import BasedHamiltonian
 from topovet.pipeline.task import NotApplicable, Task
+from topovet.spectrum.results import Electrons
+from topovet.symmetry.results import SpaceGroup
 
 
 def follow_arcs(
@@ -19,7 +20,9 @@ def follow_arcs(
     context: Context,
     hamiltonian_with_basis: BasedHamiltonian,
     declarations: Declarations,
+    electrons: Electrons,
     nodes: NodeSearch,
+    space_group: SpaceGroup | None,
 ) -> ArcSurvey:
     """Levels around the projections of the nodes, and the arcs between them.
 
@@ -30,10 +33,11 @@ def follow_arcs(
     lattice, crystal = hamiltonian_with_basis.lattice, declarations.crystal
     basis = hamiltonian_with_basis.basis
     positions = None if basis is None else basis.positions_frac
-    miller, chosen_by = chosen_surface(context, hamiltonian_with_basis, declarations)
-    if chosen_by == "weakest coupling":
-        ranked = rank_surfaces(lattice.model, crystal, positions)
-        separating = separating_surface(nodes.points, crystal, ranked)
+    choice = chosen_surface(context, hamiltonian_with_basis, declarations, electrons, space_group)
+    miller, chosen_by = choice.miller, choice.chosen_by
+    if choice.ranked:
+        candidates = [plane.miller for plane in choice.ranked]
+        separating = separating_surface(nodes.points, crystal, candidates)
         if separating is not None and separating != miller:
             miller, chosen_by = separating, "separates the chiralities"
     effort = context.settings["effort"]
@@ -67,7 +71,8 @@ TASKS = (
         "fermi-arcs",
         "count surface levels around Weyl points, follow their arcs",
         follow_arcs,
-        needs=("hamiltonian-with-basis", "declarations", "nodes"),
+        needs=("hamiltonian-with-basis", "declarations", "electrons", "nodes"),
+        wants=("space-group",),
         settings=("surface", "effort"),
     ),
 )

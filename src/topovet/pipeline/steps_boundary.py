@@ -8,10 +8,12 @@ of 96 orbitals. All are left out at quick effort.
 
 from __future__ import annotations
 
+from dataclasses import dataclass, replace
+
 import numpy as np
 
 from topovet.arrays import FloatArray
-from topovet.boundary.cleavage import natural_surface
+from topovet.boundary.cleavage import CleavagePlane, next_likeliest, rank_surfaces
 from topovet.boundary.cone_results import SurfaceStates
 from topovet.boundary.layers import LayerStack
 from topovet.boundary.recut import Miller
@@ -49,28 +51,43 @@ def count_surface_crossings(
     time_reversal: TimeReversalTest,
     electrons: Electrons,
     gap: GapSample,
+    space_group: SpaceGroup | None,
 ) -> SurfaceWitness:
-    """Crossings of surface levels between the surface TRIM; on a closed edge the Chern number."""
+    """Crossings of surface levels between the surface TRIM; on a closed edge the Chern number.
+
+    Where the likeliest cleavage plane settles nothing, on the next likeliest, and that is said.
+    """
     _check(context, gap)
     kramers = time_reversal.present and bool(declarations.spinful)
     if kramers and electrons.filling % 2:
         raise NotApplicable("an odd filling leaves a Kramers pair half filled")
     if not kramers and declarations.crystal.dimension == 3:
         raise NotApplicable("surfaces are followed only for spinors with time reversal")
-    miller, chosen_by = chosen_surface(context, hamiltonian_with_basis, declarations)
+    choice = chosen_surface(context, hamiltonian_with_basis, declarations, electrons, space_group)
     basis = hamiltonian_with_basis.basis
-    return compute_surface(
-        hamiltonian_with_basis.lattice.model,
-        declarations.crystal,
-        None if basis is None else basis.positions_frac,
-        electrons.filling,
-        miller,
-        gap.direct_ev,
-        CRITERIA[context.settings["effort"]],
-        kramers=kramers,
-        chosen_by=chosen_by,
-        symmetry_error_ev=time_reversal.violation_mev / MEV_PER_EV,
-    )
+
+    def count(miller: Miller, chosen_by: str) -> SurfaceWitness:
+        return compute_surface(
+            hamiltonian_with_basis.lattice.model,
+            declarations.crystal,
+            None if basis is None else basis.positions_frac,
+            electrons.filling,
+            miller,
+            gap.direct_ev,
+            CRITERIA[context.settings["effort"]],
+            kramers=kramers,
+            chosen_by=chosen_by,
+            symmetry_error_ev=time_reversal.violation_mev / MEV_PER_EV,
+        )
+
+    found = count(choice.miller, choice.chosen_by)
+    other = next_likeliest(choice.ranked) if choice.ranked else None
+    if other is None or found.status not in ("unresolved", "not-applicable"):
+        return found
+    second = count(other.miller, "next weakest bonds")
+    if second.status != "ok":
+        return found
+    return replace(second, instead_of=found.miller, instead_reason=found.reason)
 
 
 def map_surface(
@@ -80,16 +97,17 @@ def map_surface(
     declarations: Declarations,
     electrons: Electrons,
     gap: GapSample,
+    space_group: SpaceGroup | None,
 ) -> tuple[SurfaceMap, ...]:
     """Spectral density of both terminations along the path of the surface zone."""
     _check(context, gap)
-    miller, _ = chosen_surface(context, hamiltonian_with_basis, declarations)
+    choice = chosen_surface(context, hamiltonian_with_basis, declarations, electrons, space_group)
     basis = hamiltonian_with_basis.basis
     cut, place, stack = prepare_surface(
         hamiltonian_with_basis.lattice.model,
         declarations.crystal,
         None if basis is None else basis.positions_frac,
-        miller,
+        choice.miller,
         most_dropped_mev=MEV_PER_EV * DROPPED_SHARE * gap.direct_ev,
     )
     n_points = _map_points(stack, context.settings["effort"])
@@ -163,19 +181,46 @@ def _check(context: Context, gap: GapSample) -> None:
         raise NotApplicable("the occupied bands touch the others: no energy lies between them")
 
 
+@dataclass(frozen=True, slots=True)
+class SurfaceChoice:
+    """Miller indices in the Hamiltonian's own cell, and where they come from.
+
+    Attributes
+    ----------
+    miller, chosen_by
+        As in `SurfaceWitness`.
+    ranked
+        Likely cleavage planes, where none was asked for.
+    """
+
+    miller: Miller
+    chosen_by: str
+    ranked: tuple[CleavagePlane, ...] = ()
+
+
 def chosen_surface(
-    context: Context, based: BasedHamiltonian, declared: Declarations
-) -> tuple[Miller, str]:
-    """Miller indices in the Hamiltonian's own cell, and who said so."""
+    context: Context,
+    based: BasedHamiltonian,
+    declared: Declarations,
+    electrons: Electrons,
+    space_group: SpaceGroup | None,
+) -> SurfaceChoice:
+    """The surface that is asked for, else the likeliest cleavage plane."""
     asked = context.settings["surface"]
     if asked is not None:
         h, k, l = asked
-        return (int(h), int(k), int(l)), "options of the run"
+        return SurfaceChoice((int(h), int(k), int(l)), "options of the run")
     if declared.settings.surface is not None:
-        return declared.settings.surface, "case.toml"
-    positions = None if based.basis is None else based.basis.positions_frac
-    miller = natural_surface(based.lattice.model, declared.crystal, positions)
-    return miller, "along a1" if declared.crystal.dimension == 2 else "weakest coupling"
+        return SurfaceChoice(declared.settings.surface, "case.toml")
+    ranked = rank_surfaces(
+        based.lattice.model,
+        declared.crystal,
+        None if based.basis is None else based.basis.positions_frac,
+        electrons.filling,
+        None if space_group is None else np.asarray(space_group.rotations),
+    )
+    planar = declared.crystal.dimension == 2
+    return SurfaceChoice(ranked[0].miller, "along a1" if planar else "weakest bonds", ranked)
 
 
 def _map_points(stack: LayerStack, effort: str) -> int:
@@ -197,7 +242,9 @@ TASKS = (
         "count crossings of surface levels",
         count_surface_crossings,
         needs=(*NEEDS, "time-reversal"),
+        wants=("space-group",),
         settings=("surface", "effort"),
+        version=2,
     ),
     Task(
         "surface-states",
@@ -213,6 +260,8 @@ TASKS = (
         "map the surface spectral density",
         map_surface,
         needs=NEEDS,
+        wants=("space-group",),
         settings=("surface", "effort"),
+        version=2,
     ),
 )

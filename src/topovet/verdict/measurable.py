@@ -122,6 +122,11 @@ def _surface(findings: Findings, states: SurfaceStates, gap: GapSample) -> dict[
         "kramers_pairs": [_pair(pair, states, gap) for pair in states.pairs],
         "dirac_point": _dirac_point(states, gap, _room_mev(findings, gap)),
     }
+    if surface.instead_of is not None:
+        likeliest = " ".join(map(str, surface.instead_of))
+        entry["dirac_point"]["assumptions"].append(
+            f"not on the likeliest cleavage plane, ({likeliest}), whose levels are not settled"
+        )
     if not states.cones:
         return entry
     cone = states.cones[0]

@@ -10,13 +10,20 @@ import pytest
 from boundary_models import prepared
 from chern_models import layered_bhz
 from lattice_models import bhz, wilson_dirac
-from topovet.boundary.cleavage import layers_of, natural_surface, place_cut, widest_cut
+from topovet.boundary.cleavage import (
+    layers_of,
+    next_likeliest,
+    place_cut,
+    rank_surfaces,
+    widest_cut,
+)
 from topovet.boundary.recut import recut
 from topovet.model.crystal import Crystal
 
 
 def _natural(model):
-    return natural_surface(model.tight_binding(), model.crystal, model.basis.positions_frac)
+    sites = model.basis.positions_frac
+    return rank_surfaces(model.tight_binding(), model.crystal, sites, model.filling)[0].miller
 
 
 @pytest.mark.parametrize("c_ang", [3.0, 8.0])
@@ -30,6 +37,20 @@ def test_layers_are_cut_apart(c_ang: float) -> None:
 
 def test_a_cube_is_cut_along_its_densest_planes() -> None:
     assert _natural(wilson_dirac(m=-2.0)) in ((1, 0, 0), (0, 1, 0), (0, 0, 1))
+
+
+def test_a_cut_that_leaves_unlike_faces_is_dearer() -> None:
+    """Without an operation that turns the axis round its faces differ (a point group 4mm)."""
+    model = wilson_dirac(m=-2.0)
+    polar = np.array([np.eye(3), np.diag([-1, 1, 1]), np.diag([1, -1, 1]), np.diag([-1, -1, 1])])
+    planes = rank_surfaces(
+        model.tight_binding(), model.crystal, None, model.filling, polar.astype(np.int64)
+    )
+    found = {p.miller: p for p in planes}
+    assert (found[(0, 0, 1)].polar, found[(1, 0, 0)].polar) == (True, False)
+    assert found[(0, 0, 1)].cost > found[(1, 0, 0)].cost
+    assert planes[0].miller == (1, 0, 0)
+    assert next_likeliest(planes).cost > planes[0].cost
 
 
 def test_an_edge_runs_along_a1() -> None:

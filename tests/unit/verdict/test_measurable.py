@@ -153,3 +153,10 @@ def test_nothing_infinite_reaches_the_document() -> None:
     assert entry["surface_band"]["velocity_of_fit_m_s"] is None
     _check(entry)
     assert np.isfinite(entry["dirac_point"]["exposure_meV"])
+
+
+def test_a_surface_that_stands_in_for_the_likeliest_is_said_to() -> None:
+    stand_in = replace(witness((1, None, 0, None)), instead_of=(1, 1, -1), instead_reason="x")
+    entry = _entry("strong-ti", surface=stand_in, gap=_gap(5.0, 5.6))
+    _check(entry)
+    assert any("(1 1 -1)" in line for line in entry["dirac_point"]["assumptions"])

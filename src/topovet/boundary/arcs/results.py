@@ -121,7 +121,7 @@ class ArcSurvey:
     normal_cart
         Unit vector along them.
     chosen_by
-        "options of the run", "case.toml", "weakest coupling" or, where all sums are zero on that
+        "options of the run", "case.toml", "weakest bonds" or, where all sums are zero on that
         surface, "separates the chiralities".
     terminations
         Names of the upper and the lower half-crystal.
