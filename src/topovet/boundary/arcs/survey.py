@@ -28,6 +28,10 @@ MOST_LOOPS = {"standard": 6, "thorough": 24}
 MOST_ARCS = {"standard": 4, "thorough": 16}
 """Arcs that are followed, on each half-crystal."""
 
+FULL_SIZE = 64
+"""Orbitals of a principal layer up to which all of these are affordable: work grows as their cube,
+and loops and arcs become as many times fewer, down to two and one."""
+
 MOST_DROPPED_MEV = 1.0
 """Couplings between far planes are left out up to this, and up to `DROPPED_SHARE` of the gap around
 the nodes."""
@@ -91,20 +95,25 @@ def survey_arcs(
             f"{criteria.most_layer} of this effort"
         )
         return _result(cut, place, chosen_by, projections, (), 0, why)
-    loops, ends, n_solves = [], [], 0
-    shortest = shortest_vector(cut)
-    for i in _order(nodes.points, projections)[: MOST_LOOPS[effort]]:
-        count, found, solved = count_around(
-            stack, cut, nodes.filling, i, projections[i], criteria, shortest
-        )
-        loops.append(count)
-        ends += [(i, e) for e in found]
-        n_solves += solved
-    said = _result(cut, place, chosen_by, projections, tuple(loops), n_solves, "")
+    most_loops, most_arcs = _affordable(stack, effort)
+    counted = [
+        count_around(stack, cut, nodes.filling, i, projections[i], criteria, shortest_vector(cut))
+        for i in _order(nodes.points, projections)[:most_loops]
+    ]
+    loops = tuple(count for count, _, _ in counted)
+    n_solves = sum(solved for _, _, solved in counted)
+    said = _result(cut, place, chosen_by, projections, loops, n_solves, "")
     if said.status != "agree":
         return said
-    arcs, note = _arcs(stack, cut, nodes.filling, projections, loops, ends, MOST_ARCS[effort])
+    ends = [(count.projection, end) for count, found, _ in counted for end in found]
+    arcs, note = _arcs(stack, cut, nodes.filling, projections, loops, ends, most_arcs)
     return replace(said, arcs=arcs, arcs_note=note)
+
+
+def _affordable(stack: LayerStack, effort: str) -> tuple[int, int]:
+    """How many loops, and how many arcs of each half-crystal."""
+    share = min(1.0, (FULL_SIZE / stack.layer_size) ** 3)
+    return max(2, int(MOST_LOOPS[effort] * share)), max(1, int(MOST_ARCS[effort] * share))
 
 
 def _order(points: Sequence[PointNode], projections: Sequence[Projection]) -> list[int]:
