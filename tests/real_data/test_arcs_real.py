@@ -6,11 +6,10 @@ import numpy as np
 import pytest
 
 from node_searches import bare_search
-from real_cases import CASES
+from real_cases import run_of
 from topovet.boundary.arcs.survey import survey_arcs
 from topovet.boundary.witness import CRITERIA
 from topovet.model.hamiltonian import build_model
-from topovet.pipeline.dossier import start_run
 
 pytestmark = [pytest.mark.real_data, pytest.mark.endurance]
 
@@ -21,7 +20,7 @@ def test_bitei_half_way_to_its_strong_phase_is_a_weyl_semimetal() -> None:
     from memory). Off the mirrors of P3m1, time reversal included, an orbit has 12 points, and
     mirrors turn their charges over: 6 of each.
     """
-    runs = [start_run(CASES / name) for name in ("BiTeI", "BiTeI_pressed")]
+    runs = [run_of(name) for name in ("BiTeI", "BiTeI_pressed")]
     ends = [run.result("hamiltonian-with-basis") for run in runs]
     share = (0.42, 0.58)
     model = build_model(
