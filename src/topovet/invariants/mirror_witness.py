@@ -306,7 +306,7 @@ def _number(found: MirrorChern) -> tuple[str, str, int | None]:
 def _oriented_planes(mirror: Mirror, crystal: Crystal) -> list[_Oriented]:
     """The mirror's planes, named and turned to be counter-clockwise about the normal."""
     rotation = mirror.operator.rotation
-    normal = _spin_normal(cartesian_rotation(rotation, crystal.cell))
+    normal = mirror_normal(cartesian_rotation(rotation, crystal.cell))
     found = []
     for plane, place in zip(mirror_planes(rotation), ("k=0", "k=G/2"), strict=False):
         if place != "k=0" and not all(crystal.periodic):
@@ -319,7 +319,7 @@ def _oriented_planes(mirror: Mirror, crystal: Crystal) -> list[_Oriented]:
     return found
 
 
-def _spin_normal(cartesian: FloatArray) -> FloatArray:
+def mirror_normal(cartesian: FloatArray) -> FloatArray:
     """(3,) unit n with -i n.sigma the spin part of a mirror in the fixed sign."""
     traces = np.trace(spin_rotation(cartesian) @ PAULI, axis1=1, axis2=2)
     return np.asarray((0.5j * traces).real)

@@ -98,6 +98,8 @@ class S4Indicator:
         kappa_1 - 2 kappa_4 mod 8 where S4 shares its centre with inversion; else None.
     z8_reason
         Why there is no z8; empty otherwise.
+    z8_centre
+        That common centre, fractional, on the first of the axes; None without z8.
     purity, gap_ev
         Smallest over all momenta of all axes; None without any.
     axes
@@ -113,6 +115,7 @@ class S4Indicator:
     purity: float | None
     gap_ev: float | None
     axes: tuple[S4Axis, ...]
+    z8_centre: Point3 | None = None
 
 
 def compute_s4_indicator(
@@ -154,12 +157,12 @@ def compute_s4_indicator(
         return _nothing("the S4 indicator needs spin and time reversal")
     if not found:
         return _nothing("the group has no S4 operation")
-    z8, z8_reason = None, "the S4 indicator failed"
+    z8, z8_reason, z8_centre = None, "the S4 indicator failed", None
     with one_blas_thread():
         axes = tuple(_measure_axis(bloch, o, crystal, filling) for o in found)
         reason = _why_not(axes, filling)
         if not reason:
-            z8, z8_reason = _z8(bloch, unitary, found[0], filling)
+            z8, z8_reason, z8_centre = _z8(bloch, unitary, found[0], filling)
     points = [point for axis in axes for point in axis.points]
     kappa = axes[0].kappa
     return S4Indicator(
@@ -172,6 +175,7 @@ def compute_s4_indicator(
         purity=min(point.purity for point in points),
         gap_ev=min(point.gap_ev for point in points),
         axes=axes,
+        z8_centre=z8_centre,
     )
 
 
@@ -252,24 +256,25 @@ def _why_not(axes: Sequence[S4Axis], filling: int) -> str:
 
 def _z8(
     bloch: BlochSum, unitary: Sequence[WannierOperator], s4: WannierOperator, filling: int
-) -> tuple[int | None, str]:
-    """kappa_1 - 2 kappa_4 mod 8 about a common centre, or why not."""
+) -> tuple[int | None, str, Point3 | None]:
+    """kappa_1 - 2 kappa_4 mod 8 about a common centre, or why not; and the centre."""
     shared = _with_common_centre(unitary, s4)
     if shared is None:
-        return None, "no inversion centre lies on the centre of an S4"
+        return None, "no inversion centre lies on the centre of an S4", None
     s4_there, inversion_there = shared
     k, trim = fixed_momenta(s4_there), trim_points((True, True, True))
     kappa_4 = _whole(_kappa_4(_counts(bloch, s4_there, k, filling)))
     at_trim = _counts(bloch, inversion_there, trim, filling)
     narrow = min(at_trim, key=lambda p: p.gap_ev)
     if narrow.gap_ev < MIN_GAP_EV:
-        return None, f"the gap at {_k(narrow)} is below {MEV_PER_EV * MIN_GAP_EV:g} meV"
+        return None, f"the gap at {_k(narrow)} is below {MEV_PER_EV * MIN_GAP_EV:g} meV", None
     if min(p.purity for p in at_trim) < MIN_PURITY:
-        return None, "occupied states at a TRIM have no definite parity"
+        return None, "occupied states at a TRIM have no definite parity", None
     balance = sum(p.count_at(0.0) - p.count_at(1.0) for p in at_trim)
     if kappa_4 is None or balance % 4:
-        return None, "parities and S4 eigenvalues give no whole numbers"
-    return (balance // 4 - 2 * kappa_4) % 8, ""
+        return None, "parities and S4 eigenvalues give no whole numbers", None
+    x, y, z = (float(c) for c in fixed_point(s4_there))
+    return (balance // 4 - 2 * kappa_4) % 8, "", (x, y, z)
 
 
 def _counts(

@@ -255,6 +255,7 @@ TASKS = (
             "time-reversal",
             "electrons",
         ),
+        version=2,
     ),
     Task(
         "irreps",
