@@ -13,6 +13,7 @@ from markupsafe import Markup, escape
 
 from topovet import notation
 from topovet.report import band_path_words as band_path
+from topovet.report import allowed_words as allowed
 from topovet.report import band_rep_words as band_reps
 from topovet.report import words
 from topovet.report.classes import class_words, words_of_class
@@ -132,11 +133,16 @@ def page_environment() -> jinja2.Environment:
         "connection_rows": band_path.connection_rows,
         "kinds_text": band_path.kinds_text,
         "end_level": band_path.end_text,
+        "allowed_rows": allowed.allowed_rows,
+        "combination_table": allowed.combination_table,
+        "counted_any": allowed.counted_any,
+        "n_m": _mirror_symbol,
         "direction": direction,
         "cause_name": cause_name,
         "map_middle": middle_text,
     }
     environment.globals["advice"] = advice_sections
+    environment.globals["allowed_cannot_say"] = allowed.CANNOT_SAY
     return environment
 
 
@@ -203,6 +209,11 @@ def evidence_value(value: Any) -> str:
     if isinstance(value, list | tuple):
         return ", ".join(evidence_value(v) for v in value) or "none"
     return str(value).replace("-", "−") if isinstance(value, int) else str(value)
+
+
+def _mirror_symbol(text: str) -> Markup:
+    """n_M with its index set low."""
+    return Markup("n<sub>M</sub>").join(escape(part) for part in text.split("n_M"))
 
 
 def _capitalised(text: str) -> str:

@@ -11,6 +11,7 @@ import numpy as np
 
 from topovet.invariants.band_reps.allowed import find_allowed
 from topovet.invariants.band_reps.allowed_results import (
+    FIXED,
     LAYERS,
     MIRROR,
     STRONG,
@@ -30,6 +31,9 @@ from topovet.symmetry.textbook_names import operation_kinds
 from topovet.units import MEV_PER_EV
 from topovet.verdict.findings import Findings
 from topovet.verdict.flags import Flag
+
+MOST_OPERATIONS = 192
+"""Those of a cubic group in a cell of four lattice points."""
 
 HELD_SHARE = 0.25
 """Operations that hold to within this share of the smallest direct gap are used, as for mirrors:
@@ -74,7 +78,16 @@ def allowed_findings(findings: Findings) -> AllowedFindings | str:
         return "no gap, no invariants"
     if findings.group is None:
         return f"the group was not tested ({findings.missing.get('group', '')})"
-    operations = _operations_in_use(findings.group, findings.gap.direct_ev)
+    if len(findings.group.operations) > MOST_OPERATIONS:
+        return "the cell repeats a smaller one"
+    try:
+        return _listed(findings, findings.group, findings.gap.direct_ev)
+    except ValueError as error:  # operations known too badly to be a group, or a very skewed cell
+        return str(error)
+
+
+def _listed(findings: Findings, group: GroupTest, direct_gap_ev: float) -> AllowedFindings | str:
+    operations = _operations_in_use(group, direct_gap_ev)
     rotations = np.array([o.rotation for o in operations])
     translations = np.array([o.translation for o in operations])
     if len(np.unique(rotations.reshape(-1, 9), axis=0)) < len(rotations):
@@ -89,7 +102,7 @@ def allowed_findings(findings: Findings) -> AllowedFindings | str:
         counted = {p.name: p.number or 0 for p in numbers}
         narrowed = find_allowed(cell, rotations, translations, values, counted)
     return AllowedFindings(
-        group=_group_name(findings.group, len(operations)),
+        group=_group_name(group, len(operations)),
         by_indicators=listed,
         with_numbers=listed if narrowed.status != "ok" else narrowed,
         used=used,
@@ -261,7 +274,7 @@ def allowed_entry(findings: Findings, z2: tuple[int, ...] | None) -> dict[str, A
         "group": found.group,
         "indicators": dict(found.used),
         "invariants": [
-            _invariant(a, b, _found(a, z2, counted))
+            _invariant(a, b.values, _found(a, z2, counted))
             for a, b in zip(listed.invariants, numbers.invariants, strict=True)
         ],
         "combinations": [[_values(v) for v in combination] for combination in listed.combinations],
@@ -290,8 +303,10 @@ def _within(narrow: AllowedValues, wide: AllowedValues) -> bool:
 
 
 def _invariant(
-    listed: AllowedInvariant, narrowed: AllowedInvariant, found: int | list[int] | None
+    listed: AllowedInvariant, narrowed: AllowedValues, found: int | list[int] | None
 ) -> dict[str, Any]:
+    if isinstance(found, int) and listed.kind in (MIRROR, LAYERS):
+        narrowed = AllowedValues(FIXED, (found,))
     return {
         "invariant": listed.kind,
         "operation": listed.operation,
@@ -299,7 +314,7 @@ def _invariant(
         **_values(listed.values),
         "source": listed.source,
         "found": found,
-        "with_mirror_numbers": _values(narrowed.values),
+        "with_mirror_numbers": _values(narrowed),
     }
 
 

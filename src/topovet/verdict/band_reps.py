@@ -3,16 +3,24 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from typing import Any
 
 from topovet.invariants.band_reps.results import AtomicLimit, BandRepWitness, BandSet, LineLevels
 from topovet.verdict.band_path import connections_entry
+from topovet.verdict.allowed import allowed_entry
 from topovet.verdict.document import BandRepresentationsEntry
 from topovet.verdict.findings import Findings
 
 
-def band_representations_entry(findings: Findings) -> BandRepresentationsEntry:
-    """The entry among the witnesses."""
+def band_representations_entry(
+    findings: Findings, z2: tuple[int, ...] | None = None
+) -> BandRepresentationsEntry:
+    """The entry among the witnesses; z2 are the indices that they agree on."""
+    return replace(_against_limits(findings), allowed=allowed_entry(findings, z2))
+
+
+def _against_limits(findings: Findings) -> BandRepresentationsEntry:
     found = findings.band_reps
     if found is None:
         reason = findings.missing.get("band-representations", "not tested")

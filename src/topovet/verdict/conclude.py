@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from topovet.invariants.results import ChernWitness, ParityWitness, WilsonWitness
 from topovet.verdict.agreement import Agreement, Statement, weigh
+from topovet.verdict.allowed import outside_the_list
 from topovet.verdict.crystalline import class_without_z2, indicator_values, mirror_numbers
 from topovet.verdict.document import InvariantsEntry
 from topovet.verdict.findings import Findings
@@ -76,6 +77,8 @@ def weigh_witnesses(findings: Findings) -> Agreement:
     agreement = weigh(witness_statements(findings))
     mirror = findings.mirror
     if agreement.z2 is not None and mirror is not None and mirror.contradicts(agreement.z2):
+        return Agreement("disagree", None, ("mirror planes",))
+    if agreement.z2 is not None and outside_the_list(findings):
         return Agreement("disagree", None, ("mirror planes",))
     return agreement
 

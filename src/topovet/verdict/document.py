@@ -131,7 +131,10 @@ class MirrorEntry:
 
 @dataclass(frozen=True, slots=True)
 class BandRepresentationsEntry:
-    """The occupied bands, and other isolated sets, against all atomic limits of the group."""
+    """The occupied bands, and other isolated sets, against all atomic limits of the group.
+
+    `allowed` lists the invariants of the group and what the values of its indicators leave of each.
+    """
 
     status: str = "not-applicable"
     reason: str = ""
@@ -147,6 +150,7 @@ class BandRepresentationsEntry:
     lines: tuple[Mapping[str, Any], ...] = ()
     isolated_sets: tuple[Mapping[str, Any], ...] = ()
     connections: Mapping[str, Any] | None = None
+    allowed: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True, slots=True)

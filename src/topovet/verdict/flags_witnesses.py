@@ -9,6 +9,7 @@ from topovet.notation import mev
 from topovet.spectrum.gap import UNRESOLVED_EV
 from topovet.verdict import criteria
 from topovet.verdict.agreement import weigh
+from topovet.verdict.allowed import list_flags
 from topovet.verdict.budget import error_budget, robustness_radius, total_error
 from topovet.verdict.conclude import witness_statements
 from topovet.verdict.crystalline import indicator_conflicts
@@ -118,6 +119,8 @@ def _mirrors(findings: Findings) -> Iterator[Flag]:
             "The other flags name what breaks the ground of one of them; trust none until it is "
             "mended.",
         )
+    named = {p.name for p in wrong} | {plane.name for _, plane in indicator_conflicts(findings)}
+    yield from list_flags(findings, named)
     for indicator, plane in indicator_conflicts(findings):
         yield Flag(
             "witnesses-disagree",

@@ -106,7 +106,7 @@ def judge(
             wilson=_wilson(findings),
             surface=_surface(findings),
             mirror=_mirror(findings),
-            band_representations=band_representations_entry(findings),
+            band_representations=band_representations_entry(findings, conclusion.invariants.z2),
         ),
         invariants=conclusion.invariants,
         agreement=conclusion.agreement,

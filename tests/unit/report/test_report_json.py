@@ -80,6 +80,7 @@ LATER = {"diagnosis", "mirror", "lower_gaps", "nodes", "node_search", "band_repr
     *("z2_partial", "edge_chern", "miller", "chosen_by", "terminations"),
     "indirect_proved_min_eV",
     "connections",
+    "allowed",
 }
 """Keys that older dossiers lack and that a reader must not ask for."""
 

@@ -76,8 +76,8 @@ MOST_COMBINATIONS = 8
 """More sets of values than this say nothing that the single invariants do not."""
 
 BY_GROUP = "the group alone"
-BY_PLANE = "the Z2 index of the plane"
-BY_LAYERS = "layers add up"
+BY_PLANE = "the Z2 index of the plane (modulo 2)"
+BY_LAYERS = "crossings of layers add up"
 
 
 @dataclass(frozen=True, slots=True, eq=False)

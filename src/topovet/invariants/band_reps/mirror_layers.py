@@ -23,7 +23,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from topovet.arrays import BoolArray, FloatArray, IntArray
+from topovet.arrays import BoolArray, ComplexArray, FloatArray, IntArray
 from topovet.invariants.mirror_chern import mirror_planes
 from topovet.invariants.mirror_witness import mirror_normal
 from topovet.model.plane import Cell, KPlane
@@ -79,14 +79,19 @@ def find_group_mirrors(
     rotations, translations
         (n, 3, 3) and (n, 3), a group modulo lattice translations.
     """
-    found = []
+    found: list[GroupMirror] = []
+    turns = np.array([cartesian_rotation(w, cell) for w in rotations])
+    group = [
+        _Turned(w, t, turn, spin_rotation(turn))
+        for w, t, turn in zip(rotations, translations, turns, strict=True)
+    ]
     for i, (w, t) in enumerate(zip(rotations, translations, strict=True)):
         reflects = np.trace(w) == 1 and np.array_equal(w @ w, np.eye(3, dtype=np.int64))
         step = _without_glide(w, t) if reflects else None
         if step is None:
             continue
         proper = t + np.array(step)
-        normal = mirror_normal(cartesian_rotation(w, cell))
+        normal = mirror_normal(turns[i])
         head = mirror_planes(w)
         name = "m" + head[0].name.removesuffix(" at 0")
         planes = tuple(
@@ -96,10 +101,10 @@ def find_group_mirrors(
         row = plane_key(planes[0])[0]
         vanishes = tuple(
             any(
-                _turns_over(cell, (w, proper), normal, row, place * 0.5, (g, s))
-                for g, s in zip(rotations, translations, strict=True)
+                _turns_over(_Turned(w, proper, turns[i], group[i].spin), normal, row, half, g)
+                for g in group
             )
-            for place in range(len(planes))
+            for half in (False, True)[: len(planes)]
         )
         through = (proper - w @ proper) / 4
         found.append(GroupMirror(i, step, through, normal, row, planes, vanishes))
@@ -115,35 +120,33 @@ def _without_glide(rotation: IntArray, translation: FloatArray) -> Cell | None:
     return None
 
 
-Operation = tuple[IntArray, FloatArray]
+@dataclass(frozen=True, slots=True, eq=False)
+class _Turned:
+    """An operation {W|w} with its Cartesian matrix (3, 3) and its SU(2) matrix (2, 2)."""
+
+    rotation: IntArray
+    translation: FloatArray
+    cartesian: FloatArray
+    spin: ComplexArray
 
 
-def _turns_over(
-    cell: FloatArray,
-    mirror: Operation,
-    normal: FloatArray,
-    row: Cell,
-    offset: float,
-    g: Operation,
-) -> bool:
-    """Whether g takes the plane k.row = offset to itself and its mirror Chern number to minus it.
+def _turns_over(mirror: _Turned, normal: FloatArray, row: Cell, half: bool, g: _Turned) -> bool:
+    """Whether g takes the plane k.row = 0 or 1/2 to itself and its mirror Chern number to minus it.
 
     u_g u_m u_g^-1 = s u_m for spin and g m g^-1 = {1|L} m with L along the normal: the mirror
     eigenvalue gets the factor s exp(-2 pi i k.L). The Berry curvature turns over with the plane's
     orientation about its normal.
     """
-    (w_m, t_m), (w_g, t_g) = mirror, g
-    image = w_g @ np.array(row)
+    image = g.rotation @ np.array(row)
     if not (np.array_equal(image, row) or np.array_equal(-image, row)):
         return False
-    step = np.round(t_g + w_g @ t_m - w_m @ t_g - t_m)
-    turn = cartesian_rotation(w_g, cell)
-    u_g, u_m = spin_rotation(turn), spin_rotation(cartesian_rotation(w_m, cell))
-    of_spin = round(float(np.trace(u_g @ u_m @ u_g.conj().T @ u_m.conj().T).real) / 2)
-    steps = round(float(step @ np.array(row)) / float(np.dot(row, row)))
-    of_place = -1 if offset and steps % 2 else 1
-    orientation = round(float(np.linalg.det(turn) * (turn @ normal) @ normal))
-    return of_spin * of_place * orientation == -1
+    moved = g.translation + g.rotation @ mirror.translation - mirror.rotation @ g.translation
+    steps = round(float((moved - mirror.translation) @ np.array(row)) / float(np.dot(row, row)))
+    turned = g.spin @ mirror.spin @ g.spin.conj().T
+    of_spin = round(float(np.trace(turned @ mirror.spin.conj().T).real) / 2)
+    of_place = -1 if half and steps % 2 else 1
+    axis = float(np.linalg.det(g.cartesian) * (g.cartesian @ normal) @ normal)
+    return of_spin * of_place * round(axis) == -1
 
 
 @functools.cache
