@@ -41,6 +41,9 @@ _MEANINGS = {
     "S4 invariant": "1: helical hinge modes, unless a surface state stands in their place",
 }
 
+_BESIDE_STRONG = "two strong phases can differ in it; no zero to count from"
+"""Of an invariant modulo 2 where the strong index is not known to be 0."""
+
 CANNOT_SAY = (
     "Indicators are read at single k and know every invariant only so far: values that the list "
     "leaves open, and integers beyond their modulus, can differ between phases with the same "
@@ -63,6 +66,9 @@ class AllowedRow:
 
 def allowed_rows(entry: Mapping[str, Any]) -> tuple[AllowedRow, ...]:
     """The table from the entry of verdict.json."""
+    layered = any(
+        i["invariant"] == "strong index" and i["allowed"] == [0] for i in entry["invariants"]
+    )
     return tuple(
         AllowedRow(
             invariant=_NAMES[i["invariant"]] + _place(i),
@@ -70,8 +76,8 @@ def allowed_rows(entry: Mapping[str, Any]) -> tuple[AllowedRow, ...]:
             allowed=values_text(i, say_open=True),
             found=_found(i["found"]),
             with_numbers=values_text(i["with_mirror_numbers"], say_open=True),
-            source=i["source"].replace("kappa", "κ").replace("Z2", "Z₂"),
-            meaning=_MEANINGS[i["invariant"]],
+            source=_typographic(i["source"]),
+            meaning=_meaning(i, layered=layered),
         )
         for i in entry["invariants"]
     )
@@ -156,6 +162,17 @@ def _head(invariant: Mapping[str, Any]) -> str:
     if kind == "layers on the mirror":
         return f"half sum of {operation}"
     return f"δ of {operation}" if operation else _NAMES[kind]
+
+
+def _meaning(invariant: Mapping[str, Any], *, layered: bool) -> str:
+    counts_crossings = _NAMES[invariant["invariant"]].endswith("δ")
+    if counts_crossings and not layered and invariant["status"] == "open":
+        return _BESIDE_STRONG
+    return _MEANINGS[invariant["invariant"]]
+
+
+def _typographic(text: str) -> str:
+    return text.replace("kappa", "κ").replace("Z2", "Z₂").replace("k_i", "kᵢ").replace("1/2", "½")
 
 
 def _minus(text: str) -> str:

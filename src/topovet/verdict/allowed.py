@@ -211,21 +211,21 @@ def outside_the_list(findings: Findings) -> tuple[str, ...]:
     return tuple(p.name for p in found.outside)
 
 
-def list_flags(findings: Findings, named: set[str]) -> Iterator[Flag]:
-    """A flag for numbers outside the list, but for planes that another flag names already."""
+def list_flags(findings: Findings) -> Iterator[Flag]:
+    """A flag for numbers outside the list; where others accuse the numbers it would add nothing."""
     found = allowed_findings(findings)
     if isinstance(found, str):
         return
-    planes = [p for p in found.outside if p.name not in named]
     allowed = dict(found.by_indicators.planes)
-    if planes:
+    if found.outside:
         said = ", ".join(
-            f"{p.name}: {p.number}, allowed are {residue_text(allowed[p.name])}" for p in planes
+            f"{p.name}: {p.number}, allowed {residue_text(allowed[p.name])}" for p in found.outside
         )
         yield _flag(
-            f"mirror Chern numbers are not among those that indicators allow: {said}.", planes
+            f"mirror Chern numbers are not among those that indicators allow: {said}.",
+            found.outside,
         )
-    elif found.together and not named:
+    elif found.together:
         planes = _numbers(findings, found.by_indicators)
         said = ", ".join(f"{p.name}: {p.number}" for p in planes)
         yield _flag(

@@ -119,8 +119,8 @@ def _mirrors(findings: Findings) -> Iterator[Flag]:
             "The other flags name what breaks the ground of one of them; trust none until it is "
             "mended.",
         )
-    named = {p.name for p in wrong} | {plane.name for _, plane in indicator_conflicts(findings)}
-    yield from list_flags(findings, named)
+    if not wrong and not indicator_conflicts(findings):
+        yield from list_flags(findings)
     for indicator, plane in indicator_conflicts(findings):
         yield Flag(
             "witnesses-disagree",

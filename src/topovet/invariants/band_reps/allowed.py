@@ -396,7 +396,7 @@ def _of_operation(case: _Case, operation: ProtectingOperation) -> AllowedInvaria
         values, source = AllowedValues(FIXED, (at_all.pop(),)), BY_GROUP
     elif not case.layered:
         values = AllowedValues(OPEN, (0, 1))
-        source = "counted from no zero unless the strong index is 0"
+        source = "not counted unless the strong index is 0"
     elif operation.kind == INVERSION and case.values.z4 is not None:
         values, source = AllowedValues(FIXED, left), "kappa/2 modulo 2"
     else:
