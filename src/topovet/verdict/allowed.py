@@ -14,6 +14,7 @@ from topovet.invariants.band_reps.allowed_results import (
     FIXED,
     LAYERS,
     MIRROR,
+    OPEN,
     STRONG,
     WEAK,
     AllowedInvariant,
@@ -274,7 +275,7 @@ def allowed_entry(findings: Findings, z2: tuple[int, ...] | None) -> dict[str, A
         "group": found.group,
         "indicators": dict(found.used),
         "invariants": [
-            _invariant(a, b.values, _found(a, z2, counted))
+            _invariant(a, _with_parities(b, findings), _found(a, z2, counted))
             for a, b in zip(listed.invariants, numbers.invariants, strict=True)
         ],
         "combinations": [[_values(v) for v in combination] for combination in listed.combinations],
@@ -316,6 +317,22 @@ def _invariant(
         "found": found,
         "with_mirror_numbers": _values(narrowed),
     }
+
+
+def _with_parities(invariant: AllowedInvariant, findings: Findings) -> AllowedValues:
+    """Z2 indices that indicators leave open, with those that odd and even numbers fix."""
+    values = invariant.values
+    if findings.mirror is None or values.status != OPEN or invariant.kind not in (STRONG, WEAK):
+        return values
+    strong, *weak = findings.mirror.z2(3)
+    if invariant.kind == STRONG:
+        return values if strong is None else AllowedValues(FIXED, (strong,))
+    left = tuple(
+        nu
+        for nu in values.allowed
+        if isinstance(nu, tuple) and all(w is None or w == n for w, n in zip(weak, nu, strict=True))
+    )
+    return AllowedValues(FIXED if len(left) == 1 else OPEN, left) if left else values
 
 
 def _values(values: AllowedValues) -> dict[str, Any]:

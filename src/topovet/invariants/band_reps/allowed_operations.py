@@ -109,9 +109,10 @@ def _described(
     if kind == "m" and not moves:
         return None
     what = {"m": GLIDE, "-1": INVERSION, "-4": S4}.get(kind, SCREW if moves else ROTATION)
-    shown = np.where(np.abs(intrinsic) < TRANSLATION_TOLERANCE, 0.0, intrinsic)
-    head, blank, rest = name_operation(w, shown, cell).partition(" ")
+    head, blank, rest = name_operation(w, np.zeros(3), cell).partition(" ")
     name = head.rstrip("+-") + blank + rest  # either sense of turning
+    if moves:  # along the axis or in the plane, not reduced by lattice vectors
+        name += f" + {k_text((np.round(intrinsic, 6) + 0.0).tolist(), plain=True)}"
     if say_where:
         fixed = np.linalg.lstsq(np.eye(3) - w, t + np.array(step) - intrinsic, rcond=None)[0]
         name += f" through {k_text((np.round(fixed, 6) + 0.0).tolist(), plain=True)}"

@@ -93,6 +93,21 @@ def test_by_s4_alone() -> None:
     assert [v for (kind, _), v in shown.items() if kind == "S4 invariant"] == [((0, 1), None)]
 
 
+@pytest.mark.parametrize(("z8", "turn"), [(6, 0), (2, 1)])
+def test_z8_about_the_other_mirror(z8: int, turn: int) -> None:
+    """One layer on z = 1/2 and none on z = 0: seen from (0, 0, 1/2) it is the layer that counts."""
+    values = IndicatorValues(
+        0, (0, 0, 1), "", 0, (0.0, 0.0, 0.0), z8, (0.0, 0.0, 0.5), (0.0, 0.0, 1.0)
+    )
+    sample = sample_group(83)
+    counted = {"m(0 0 1) k=0": 1, "m(0 0 1) k=G/2": -1}
+    found = find_allowed(sample.cell, sample.rotations, sample.translations, values, counted)
+    assert found.status == "ok"
+    assert [i.values.allowed for i in found.invariants if i.kind == "rotation invariant"] == [
+        (turn,)
+    ]
+
+
 def test_values_that_no_arrangement_has() -> None:
     """A weak index along a screw axis by half a period."""
     values = IndicatorValues(strong=0, weak=(0, 0, 1), z4=0, centre=(0.0, 0.0, 0.0))
