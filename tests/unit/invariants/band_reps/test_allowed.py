@@ -167,7 +167,7 @@ def _recut(sample: GroupSample, m: IntArray) -> GroupSample:
 
 
 @given(shears=st.lists(SHEARS, min_size=1, max_size=2))
-@settings(max_examples=3, deadline=None, derandomize=True)
+@settings(max_examples=3)
 @pytest.mark.parametrize(
     ("number", "z4", "weak", "z8"),
     [(166, 2, (1, 1, 1), None), (123, 0, (1, 1, 0), 4), (62, 2, (0, 0, 0), None)],
