@@ -172,7 +172,13 @@ def _meaning(invariant: Mapping[str, Any], *, layered: bool) -> str:
 
 
 def _typographic(text: str) -> str:
-    return text.replace("kappa", "κ").replace("Z2", "Z₂").replace("k_i", "kᵢ").replace("1/2", "½")
+    return (
+        text.replace("kappa", "κ")
+        .replace("Z2", "Z₂")
+        .replace("Z8", "Z₈")
+        .replace("k_i", "kᵢ")
+        .replace("1/2", "½")
+    )
 
 
 def _minus(text: str) -> str:

@@ -386,6 +386,10 @@ def _mirror_source(case: _Case, mirror: GroupMirror, places: tuple[int, ...], ki
             parts.append(f"C{residue.n} eigenvalues (modulo {residue.n})")
     if case.layered:
         parts.append(BY_LAYERS)
+        axis = case.values.z8_axis
+        along = axis is not None and abs(float(np.dot(axis, mirror.normal))) > 1 - 1e-6
+        if case.values.z8 is not None and along:
+            parts.append("Z8")
     return ", ".join(dict.fromkeys(parts)) or "nothing limits it"
 
 
