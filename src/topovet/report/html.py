@@ -12,8 +12,8 @@ import numpy as np
 from markupsafe import Markup, escape
 
 from topovet import notation
-from topovet.report import band_path_words as band_path
 from topovet.report import allowed_words as allowed
+from topovet.report import band_path_words as band_path
 from topovet.report import band_rep_words as band_reps
 from topovet.report import words
 from topovet.report.classes import class_words, words_of_class

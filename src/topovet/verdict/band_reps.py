@@ -7,8 +7,8 @@ from dataclasses import replace
 from typing import Any
 
 from topovet.invariants.band_reps.results import AtomicLimit, BandRepWitness, BandSet, LineLevels
-from topovet.verdict.band_path import connections_entry
 from topovet.verdict.allowed import allowed_entry
+from topovet.verdict.band_path import connections_entry
 from topovet.verdict.document import BandRepresentationsEntry
 from topovet.verdict.findings import Findings
 
