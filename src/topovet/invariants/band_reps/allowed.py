@@ -34,9 +34,10 @@ Song, Zhang, Fang, Fang, Nat. Commun. 9, 3530 (2018), doi:10.1038/s41467-018-060
 
 from __future__ import annotations
 
+import functools
 import itertools
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -81,6 +82,39 @@ BY_LAYERS = "crossings of layers add up"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
+class _Group:
+    """A group with all that does not depend on indicators.
+
+    `operations` are those of `list_operations`, without and with a point that is named.
+    """
+
+    cell: FloatArray
+    rotations: IntArray
+    translations: FloatArray
+    mirrors: tuple[GroupMirror, ...]
+    everything: LayerParities
+    operations: tuple[tuple[ProtectingOperation, ...], tuple[ProtectingOperation, ...]]
+
+
+@functools.lru_cache(maxsize=16)  # one group is asked for with and without counted numbers
+def _group_of(cell: bytes, rotations: bytes, translations: bytes) -> _Group:
+    lattice = np.frombuffer(cell).reshape(3, 3)
+    w = np.frombuffer(rotations, dtype=np.int64).reshape(-1, 3, 3)
+    t = np.frombuffer(translations).reshape(-1, 3)
+    return _Group(
+        cell=lattice,
+        rotations=w,
+        translations=t,
+        mirrors=find_group_mirrors(lattice, w, t),
+        everything=find_layer_parities(w, t),
+        operations=(
+            list_operations(lattice, w, t, say_where=False),
+            list_operations(lattice, w, t, say_where=True),
+        ),
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
 class _Case:
     """A group with its indicator values.
 
@@ -88,12 +122,8 @@ class _Case:
     nu0 is not 0.
     """
 
-    cell: FloatArray
-    rotations: IntArray
-    translations: FloatArray
+    group: _Group
     values: IndicatorValues
-    mirrors: tuple[GroupMirror, ...]
-    everything: LayerParities
     choices: LayerParities
 
     @property
@@ -109,7 +139,7 @@ class _Case:
         if self.layered:
             return np.unique(self.choices.weak, axis=0)
         every = np.array(list(itertools.product((0, 1), repeat=3)))
-        turned = (every @ self.rotations) % 2
+        turned = (every @ self.group.rotations) % 2
         return np.asarray(every[np.all(turned == every, axis=(0, 2))])
 
 
@@ -144,45 +174,45 @@ def find_allowed(
     ValueError
         The operations are no group.
     """
-    mirrors = find_group_mirrors(cell, rotations, translations)
-    everything = find_layer_parities(rotations, translations)
-    case = _Case(cell, rotations, translations, values, mirrors, everything, everything)
+    group = _group_of(
+        np.asarray(cell, dtype=float).tobytes(),
+        np.asarray(rotations, dtype=np.int64).tobytes(),
+        np.asarray(translations, dtype=float).tobytes(),
+    )
+    case = _Case(group, values, group.everything)
     if case.layered:
-        fitting = everything.where(_fits(case))
-        if not len(fitting.choices):
+        case = replace(case, choices=group.everything.where(_fits(case)))
+        if not len(case.choices.choices):
             return AllowedInvariants("failed", "no arrangement of layers has these indicators")
-        case = _Case(cell, rotations, translations, values, mirrors, everything, fitting)
-    masks = [_mask(case, mirror, counted or {}) for mirror in mirrors]
+    masks = [_mask(case, mirror, counted or {}) for mirror in group.mirrors]
     viable = np.ones(len(case.choices.choices), dtype=bool)
     for mask in masks:
         viable &= mask.any(axis=tuple(range(1, mask.ndim)))
     if not viable.any():
         return AllowedInvariants("failed", "no arrangement of layers has all of these values")
-    case = _Case(
-        cell, rotations, translations, values, mirrors, everything, case.choices.where(viable)
-    )
-    return _listed(case, [mask[viable] for mask in masks])
+    left = replace(case, choices=case.choices.where(viable))
+    return _listed(left, [mask[viable] for mask in masks])
 
 
 def _fits(case: _Case) -> BoolArray:
     """Which delta have the weak indices and kappa."""
-    fits = np.ones(len(case.everything.choices), dtype=bool)
+    fits = np.ones(len(case.group.everything.choices), dtype=bool)
     if case.values.weak is not None:
-        fits &= np.all(case.everything.weak == case.values.weak, axis=1)
+        fits &= np.all(case.group.everything.weak == case.values.weak, axis=1)
     centre = case.values.centre
     if case.values.z4 is None or centre is None:
         return fits
     inversion = -np.eye(3, dtype=np.int64)
     found = _about(case, inversion, np.array(centre))
     if found is not None:
-        fits &= case.everything.of(*found) == case.values.z4 // 2
+        fits &= case.group.everything.of(*found) == case.values.z4 // 2
     return fits
 
 
 def _about(case: _Case, rotation: IntArray, point: FloatArray) -> tuple[int, Cell] | None:
     """The operation with this rotation that fixes a point, and its lattice translation."""
-    for i in np.flatnonzero(np.all(case.rotations == rotation, axis=(1, 2))):
-        rest = point - rotation @ point - case.translations[i]
+    for i in np.flatnonzero(np.all(case.group.rotations == rotation, axis=(1, 2))):
+        rest = point - rotation @ point - case.group.translations[i]
         if np.abs(rest - np.round(rest)).max() < TRANSLATION_TOLERANCE:
             x, y, z = np.round(rest).astype(int).tolist()
             return int(i), (x, y, z)
@@ -273,22 +303,20 @@ def _of_layers(case: _Case, mirror: GroupMirror, mask: BoolArray) -> None:
 
 def _fourfold(case: _Case, axis: FloatArray, centre: FloatArray) -> tuple[int, Cell] | None:
     """C4 about an axis through a point."""
-    for i, kind in enumerate(operation_kinds(case.rotations)):
-        about = rotation_axis(cartesian_rotation(case.rotations[i], case.cell))
+    for i, kind in enumerate(operation_kinds(case.group.rotations)):
+        about = rotation_axis(cartesian_rotation(case.group.rotations[i], case.group.cell))
         if kind == "4" and float(about @ axis) > 1 - 1e-6:
-            return _about(case, case.rotations[i], centre)
+            return _about(case, case.group.rotations[i], centre)
     return None
 
 
 def _listed(case: _Case, masks: list[BoolArray]) -> AllowedInvariants:
     """The list from what is left of delta and of mirror Chern numbers."""
-    operations = list_operations(
-        case.cell, case.rotations, case.translations, say_where=bool(case.weak.any())
-    )
+    operations = case.group.operations[bool(case.weak.any())]
     entries = [_strong(case), _weak(case)]
     columns = [_same(case, entries[0].values), _weak_columns(case)]
     for kind, mirror, places, images in _mirror_rows(case):
-        mask = masks[case.mirrors.index(mirror)]
+        mask = masks[case.group.mirrors.index(mirror)]
         values = _numbers(np.asarray(mask.any(axis=0)), mirror, places)
         source = _mirror_source(case, mirror, places, kind)
         name = mirror.planes[0].name.rpartition(" ")[0]
@@ -301,7 +329,7 @@ def _listed(case: _Case, masks: list[BoolArray]) -> AllowedInvariants:
     told_apart = 1 < len(combinations) <= MOST_COMBINATIONS
     planes = tuple(
         (plane.name, _numbers(np.asarray(mask.any(axis=0)), mirror, (j,)))
-        for mirror, mask in zip(case.mirrors, masks, strict=True)
+        for mirror, mask in zip(case.group.mirrors, masks, strict=True)
         for j, plane in enumerate(mirror.planes)
     )
     return AllowedInvariants("ok", "", tuple(entries), combinations if told_apart else (), planes)
@@ -341,18 +369,18 @@ def _mirror_rows(case: _Case) -> list[MirrorRow]:
     """Planes of one mirror of each class, and for nu0 = 0 the layers on it; with all images."""
     rows: list[MirrorRow] = []
     seen: set[int] = set()
-    for i, mirror in enumerate(case.mirrors):
+    for i, mirror in enumerate(case.group.mirrors):
         if i in seen:
             continue
-        images = {tuple((w @ np.array(mirror.row)).tolist()) for w in case.rotations}
+        images = {tuple((w @ np.array(mirror.row)).tolist()) for w in case.group.rotations}
         alike = [
             j
-            for j, other in enumerate(case.mirrors)
+            for j, other in enumerate(case.group.mirrors)
             if tuple(other.row) in images or tuple(-c for c in other.row) in images
         ]
         seen.update(alike)
         for place in range(len(mirror.planes)):
-            names = tuple(case.mirrors[j].planes[place].name for j in alike)
+            names = tuple(case.group.mirrors[j].planes[place].name for j in alike)
             rows.append((MIRROR, mirror, (place,), names))
         if len(mirror.planes) > 1 and case.layered:
             rows.append((LAYERS, mirror, (0, 1), ()))
@@ -394,7 +422,7 @@ def _mirror_source(case: _Case, mirror: GroupMirror, places: tuple[int, ...], ki
 
 
 def _of_operation(case: _Case, operation: ProtectingOperation) -> AllowedInvariant:
-    at_all = set(case.everything.of(operation.index, operation.cell).tolist())
+    at_all = set(case.group.everything.of(operation.index, operation.cell).tolist())
     left = tuple(sorted(set(case.choices.of(operation.index, operation.cell).tolist())))
     if len(at_all) == 1:
         values, source = AllowedValues(FIXED, (at_all.pop(),)), BY_GROUP
