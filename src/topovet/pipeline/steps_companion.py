@@ -52,10 +52,10 @@ def read_companion(
     )
 
 
-def test_against_case(
+def judge_companion(
     *,
     context: Context,
-    spinless_hamiltonian: EndMember,
+    spinless_hamiltonian: EndMember | None,
     hamiltonian_with_basis: BasedHamiltonian,
     declarations: Declarations,
     electrons: Electrons,
@@ -64,6 +64,8 @@ def test_against_case(
     gap: GapSample | None,
 ) -> CompanionTest:
     """Whether the companion is written in the functions of the case and has its symmetries."""
+    if spinless_hamiltonian is None:
+        raise NotApplicable("no spinless companion is named")
     if not hamiltonian_with_basis.lattice.model.spinful:
         raise NotApplicable("the case itself is spinless")
     operator = None
@@ -120,15 +122,10 @@ TASKS = (
     Task(
         "spinless-companion",
         "test whether that companion fits the case",
-        test_against_case,
-        needs=(
-            "spinless-hamiltonian",
-            "hamiltonian-with-basis",
-            "declarations",
-            "electrons",
-            "inversion",
-        ),
-        wants=("inferred-inversion", "gap"),
+        judge_companion,
+        needs=("hamiltonian-with-basis", "declarations", "electrons", "inversion"),
+        # not needed: whether there is one shall be in the store
+        wants=("spinless-hamiltonian", "inferred-inversion", "gap"),
     ),
     Task(
         "spinless-difference",
