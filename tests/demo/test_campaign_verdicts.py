@@ -28,11 +28,20 @@ SCHEMA = json.loads(
 
 READABLE = [c for c in COMPOUNDS if c.truth]
 
+QUICKLY = [("quick", c) for c in READABLE]
+IN_FULL = [("standard", c) for c in READABLE]
 
-@pytest.mark.parametrize("compound", READABLE, ids=lambda c: c.code)
-def test_verdict_is_true_or_open_with_its_reason(compound: Compound, tmp_path: Path) -> None:
+
+@pytest.mark.parametrize(
+    ("effort", "compound"),
+    [*QUICKLY, *(pytest.param(*pair, marks=pytest.mark.endurance) for pair in IN_FULL)],
+    ids=lambda x: x if isinstance(x, str) else x.code,
+)
+def test_verdict_is_true_or_open_with_its_reason(
+    effort: str, compound: Compound, tmp_path: Path
+) -> None:
     write_draft(compound.draft(), tmp_path, compound.code)
-    verdict: Verdict = start_run(tmp_path).result("verdict")
+    verdict: Verdict = start_run(tmp_path, settings={"effort": effort}).result("verdict")
     raised = {flag.code for flag in verdict.flags}
     assert set(compound.flags) <= raised, f"{compound.about}: only {sorted(raised)}"
     if verdict.class_ == "undetermined" and compound.may_stay_open:

@@ -84,6 +84,7 @@ def test_folder_process_hash_seed_and_threads_do_not_matter(name: str, tmp_path:
     assert recalled == first
 
 
+@pytest.mark.endurance  # threads are turned above
 def test_number_of_processors_does_not_matter(tmp_path: Path) -> None:
     """Held to one processor, as in a job array, or free."""
     if not hasattr(os, "sched_setaffinity") or len(os.sched_getaffinity(0)) < 2:

@@ -133,7 +133,7 @@ def test_group_laws_with_spin_and_time_reversal(recipe: Recipe) -> None:
     assert spinless.defect < 1e-12
 
 
-@pytest.mark.parametrize(("i", "recipe"), list(enumerate(RECIPES)), ids=IDS)
+@pytest.mark.parametrize(("i", "recipe"), list(enumerate(RECIPES))[::2], ids=IDS[::2])
 def test_symmetrised_random_hamiltonians_obey_every_operation(i: int, recipe: Recipe) -> None:
     """D(k) H(k) D(k)† = H(k') at generic k, by plain sums."""
     crystal = crystal_model(recipe, spinful=i % 2 == 0)
@@ -149,7 +149,7 @@ def test_symmetrised_random_hamiltonians_obey_every_operation(i: int, recipe: Re
         assert defect_at(made, crystal.time_reversal(), GENERIC_K) > 1e-3
 
 
-@pytest.mark.parametrize(("i", "recipe"), list(enumerate(RECIPES)), ids=IDS)
+@pytest.mark.parametrize(("i", "recipe"), list(enumerate(RECIPES))[1::2], ids=IDS[1::2])
 def test_characters_of_levels_are_orthogonal(i: int, recipe: Recipe) -> None:
     """Each level of a random Hamiltonian at a special k is one irreducible representation.
 

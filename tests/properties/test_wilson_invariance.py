@@ -137,7 +137,7 @@ def widely_gapped(seed: int) -> tuple[LatticeModel, WilsonWitness]:
     return next(pair for pair in tried if pair[1].planes[0].smallest_direct_gap_ev > 0.4)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(seeds)
 def test_plain_loops_on_a_fixed_mesh(seed: int) -> None:
     """Time reversal alone, gap open enough for 50 lines of 50 points."""
@@ -166,7 +166,7 @@ def test_where_a_coarse_mesh_is_silently_wrong() -> None:
     assert witness.z2 != (plain(60, 50),)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(gapped_3d, unimodular(3))
 def test_cell_choice(model: LatticeModel, matrix: IntArray) -> None:
     """The strong index stays, the weak vector turns by the matrix modulo 2."""
@@ -176,13 +176,13 @@ def test_cell_choice(model: LatticeModel, matrix: IntArray) -> None:
     assert weak_new == ((matrix @ np.array(weak)) % 2).tolist()
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(models_2d, unimodular(2))
 def test_cell_choice_in_the_plane(model: LatticeModel, matrix: IntArray) -> None:
     assert indexed(with_cell(model, matrix)) == indexed(model)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(any_model, vectors)
 def test_origin_and_gauge(model: LatticeModel, shift: FloatArray) -> None:
     """Any positions of the orbitals, in the atomic gauge: the index of the periodic gauge."""
@@ -192,7 +192,7 @@ def test_origin_and_gauge(model: LatticeModel, shift: FloatArray) -> None:
     assert tuple(plane.z2 for plane in found.planes) == expected
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(any_model, seeds)
 def test_order_of_pairs(model: LatticeModel, seed: int) -> None:
     pairs = np.random.default_rng(seed).permutation(model.n_orb // 2)
@@ -200,7 +200,7 @@ def test_order_of_pairs(model: LatticeModel, seed: int) -> None:
     assert by_plane(with_order(model, order)) == by_plane(model)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(any_model, seeds)
 def test_home_cells(model: LatticeModel, seed: int) -> None:
     """Orbitals counted from other cells, both spins of each together."""
@@ -209,7 +209,7 @@ def test_home_cells(model: LatticeModel, seed: int) -> None:
     assert by_plane(with_home_cells(model, np.repeat(moves, 2, axis=0))) == by_plane(model)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(any_model, seeds)
 def test_orbital_frames(model: LatticeModel, seed: int) -> None:
     """Hybrids and a spin axis of its own on each site: time reversal stays i sigma_y K."""
@@ -217,7 +217,7 @@ def test_orbital_frames(model: LatticeModel, seed: int) -> None:
     assert by_plane(mixed) == by_plane(model)
 
 
-@settings(max_examples=8, deadline=None)
+@settings(max_examples=6, deadline=None)
 @given(any_model, st.integers(0, 15), st.sampled_from([-60.0, 60.0]))
 def test_added_atomic_pair(model: LatticeModel, harmonic: int, energy: float) -> None:
     """Filled far below or empty far above: nothing changes."""

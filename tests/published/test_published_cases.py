@@ -13,7 +13,6 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-import topovet
 from case_writer import write_case
 from lattice_models import (
     LatticeModel,
@@ -68,7 +67,8 @@ def test_published_phase(
 
 def test_filling_that_cuts_a_kramers_pair(tmp_path: Path) -> None:
     """An odd filling is an error, not an index."""
-    verdict = topovet.vet(write_case(wilson_dirac(m=-2.0), tmp_path / "case", filling=3))
+    case = write_case(wilson_dirac(m=-2.0), tmp_path / "case", filling=3)
+    verdict = start_run(case, settings={"effort": "quick"}).result("verdict")
     assert verdict.invariants.z2 is None
     assert "filling-off" in codes(verdict)
 

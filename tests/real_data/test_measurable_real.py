@@ -78,6 +78,7 @@ def test_a_bismuth_bilayer_conducts_at_its_edges(case: str) -> None:
     assert list(vetted_in_full("Sb111_bilayer").measurable) == ["note"]
 
 
+@pytest.mark.endurance
 @pytest.mark.parametrize("case", ["BiTeI_pressed"])
 def test_the_two_faces_of_a_polar_crystal_differ(case: str) -> None:
     """BiTeI under pressure ends in Te or in I: their levels have no reason to agree."""

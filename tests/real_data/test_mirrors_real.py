@@ -79,7 +79,12 @@ def test_lead_telluride_with_inverted_l_is_like_tin_telluride() -> None:
 
 
 @pytest.mark.parametrize(
-    ("case", "fillings"), [("Bi2Se3", (4, 10)), ("PbTe", (2,)), ("Sb2Se3", (4, 10))]
+    ("case", "fillings"),
+    [
+        ("Bi2Se3", (4, 10)),
+        ("PbTe", (2,)),
+        pytest.param("Sb2Se3", (4, 10), marks=pytest.mark.endurance),
+    ],
 )
 def test_lower_groups_of_bands_by_both_witnesses(case: str, fillings: tuple[int, ...]) -> None:
     """Bands below lower gaps, 5 to 106 meV wide: parities and Wilson loops agree on each.

@@ -18,9 +18,9 @@ SHORT_MODEL, SHORT_REAL = "kane_mele", "Bi111_bilayer"
 def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
     """Whether a trial belongs to the short part.
 
-    At their last size one model in full, of the other models every fifth fault in turn (every third
-    of those that the one model is spared), and one first-principles case where only such a case
-    will do.
+    At their last size one model in full, of the other models every eleventh fault in turn (every
+    third of those that the one model is spared), and one first-principles case where only such a
+    case will do.
     """
     sizes = fault.sizes_for(case)
     if case.name == SHORT_MODEL:
@@ -28,7 +28,7 @@ def is_short(case: CleanCase, fault: Fault, size: float) -> bool:
     if case.name == SHORT_REAL:
         return fault.only_real and size == sizes[-1]
     turn = FAULTS.index(fault) + list(CLEAN_CASES).index(case.name)
-    every = 5 if fault.sizes_for(CLEAN_CASES[SHORT_MODEL]) else 3
+    every = 11 if fault.sizes_for(CLEAN_CASES[SHORT_MODEL]) else 3
     return not case.real and size == sizes[-1] and turn % every == 0
 
 

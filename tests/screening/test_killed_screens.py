@@ -119,7 +119,7 @@ def test_two_screens_at_once_share_the_work_and_agree(
     assert len(vetted) < 9
 
 
-@pytest.mark.slow
+@pytest.mark.endurance  # a worker that crashes and one of Dask that is killed are met elsewhere
 def test_a_worker_that_is_killed_costs_nothing(
     program: Program, six: Path, undisturbed: dict[str, str], tmp_path: Path
 ) -> None:

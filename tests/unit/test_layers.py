@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import ast
+import functools
 import subprocess
 import sys
 from collections.abc import Iterator
@@ -48,7 +49,12 @@ HOMES = {
 """The only place that imports each of these."""
 
 
-def _imports(path: Path) -> Iterator[str]:
+@functools.cache
+def _imports(path: Path) -> tuple[str, ...]:
+    return tuple(_found_imports(path))
+
+
+def _found_imports(path: Path) -> Iterator[str]:
     for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
         if isinstance(node, ast.Import):
             yield from (alias.name for alias in node.names)

@@ -275,10 +275,11 @@ def _mean_derivatives(
     # at a closing the other side is as good as degenerate: a large curvature, but a finite one
     gaps = np.where(np.abs(gaps) < LEAST_SPLITTING_EV, LEAST_SPLITTING_EV, gaps)
     outside = np.where(members[:, :, None], 0.0, weights[:, None, :] / gaps)
-    mixing = (
-        2 * np.einsum("kimb,kmb,kjmb->kij", coupling.conj(), outside, coupling, optimize=True).real
-    )
-    bare = np.einsum("kiab,kiab,kb->ki", kets.conj(), second @ kets, weights, optimize=True).real
+    flat = coupling.reshape(*slope.shape, -1)  # (k, i, mb): sums over m and b are products
+    weighted = (coupling.conj() * outside[:, None]).reshape(flat.shape)
+    mixing = 2 * (weighted @ flat.transpose(0, 2, 1)).real
+    bras = kets[:, 0].conj() * weights[:, None]
+    bare = np.einsum("kab,kiab->ki", bras, second @ kets).real
     i, j = np.triu_indices(slope.shape[1])
     mixing[:, i, j] += bare
     off = i != j

@@ -21,12 +21,18 @@ def case(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return write_case(wilson_dirac(m=-2.0), tmp_path_factory.mktemp("proof") / "case")
 
 
-def test_certificate_is_kept_and_holds_when_read_again(case: Path, tmp_path: Path) -> None:
-    verdict = vet_case(case, out=tmp_path / "dossier").verdict
+@pytest.fixture(scope="module")
+def dossier(case: Path) -> Path:
+    vet_case(case, out=case.parent / "dossier")
+    return case.parent / "dossier"
+
+
+def test_certificate_is_kept_and_holds_when_read_again(case: Path, dossier: Path) -> None:
+    again = start_run(case, out=dossier)
+    verdict = again.result("verdict")
     assert verdict.gap.method == "proved"
     assert verdict.gap.direct_proved_min_eV is not None
     assert 1.9 - 1e-9 <= verdict.gap.direct_proved_min_eV <= 2.0 + 1e-9
-    again = start_run(case, out=tmp_path / "dossier")
     kept: ProvedGap = again.result("gap-proof")
     assert again.states["gap-proof"].state == "cached"
     assert kept.proof.n_operations > 1
@@ -36,12 +42,12 @@ def test_certificate_is_kept_and_holds_when_read_again(case: Path, tmp_path: Pat
     assert found.lowest_ev - found.cost_ev >= kept.proof.proved_min_ev - 1e-9
 
 
-def test_the_indirect_gap_is_proved_too(case: Path, tmp_path: Path) -> None:
+def test_the_indirect_gap_is_proved_too(case: Path, dossier: Path) -> None:
     """Bands of the model are even in energy: its indirect gap is its direct one, 2 eV."""
-    verdict = vet_case(case, out=tmp_path / "dossier").verdict
+    again = start_run(case, out=dossier)
+    verdict = again.result("verdict")
     assert verdict.gap.indirect_proved_min_eV is not None
     assert 1.8 - 1e-9 <= verdict.gap.indirect_proved_min_eV <= 2.0 + 1e-9
-    again = start_run(case, out=tmp_path / "dossier")
     kept: ProvedIndirectGap = again.result("indirect-gap-proof")
     assert again.states["indirect-gap-proof"].state == "cached"
     model = again.result("hamiltonian-with-basis").lattice.model
@@ -49,9 +55,8 @@ def test_the_indirect_gap_is_proved_too(case: Path, tmp_path: Path) -> None:
         assert recheck(model, certificate).problems == ()
 
 
-def test_quick_effort_proves_nothing_and_says_so(case: Path, tmp_path: Path) -> None:
-    out = tmp_path / "dossier"
-    verdict = vet_case(case, out=out, settings={"effort": "quick"}).verdict
+def test_quick_effort_proves_nothing_and_says_so(case: Path) -> None:
+    verdict = start_run(case, settings={"effort": "quick"}).result("verdict")
     assert (verdict.gap.method, verdict.gap.direct_proved_min_eV) == ("sampled", None)
     assert not verdict.robustness.proved
 

@@ -14,7 +14,7 @@ from lattice_models import bhz
 from topovet.errors import InputError
 from topovet.intake.discovery import find_case
 from topovet.pipeline.catalogue import case_tasks
-from topovet.pipeline.dossier import vet_case
+from topovet.pipeline.dossier import start_run, vet_case
 from topovet.pipeline.inputs import check_unchanged, hash_inputs
 from topovet.pipeline.steps_intake import read_hamiltonian
 
@@ -60,9 +60,9 @@ def test_nothing_is_concluded_or_kept_from_a_file_that_changes_while_it_is_read(
 def test_options_prevail_over_case_toml_and_say_where_they_come_from(case: Path) -> None:
     stated = {"name": "GX-7", "dimension": 2, "filling": 4, "stated_in": "list.csv"}
     centre = {"inversion_centre": [0.5, 0.5, 0.0]}
-    verdict = vet_case(case, settings={**QUICK, **stated, **centre}).verdict
+    verdict = start_run(case, settings={**QUICK, **stated, **centre}).result("verdict")
     assert verdict.case.name == "GX-7"
     assert (verdict.electrons.filling, verdict.electrons.source) == (4, "list.csv")
     assert verdict.provenance.settings["inversion_centre"] == [0.5, 0.5, 0.0]
-    alone = vet_case(case, settings=QUICK).verdict
+    alone = start_run(case, settings=QUICK).result("verdict")
     assert (alone.case.name, alone.electrons.source) == ("M", "case.toml")

@@ -12,35 +12,37 @@ from case_writer import write_case
 from lattice_models import kane_mele
 from topovet.errors import UndefinedError
 from topovet.pipeline import rechecked
-from topovet.pipeline.dossier import vet_case
+from topovet.pipeline.dossier import Dossier, start_run, vet_case
 from topovet.pipeline.rechecked import CertificateError, recheck_gap
 from topovet.spectrum.proof.recheck import Recheck
 
 
-@pytest.fixture
-def case(tmp_path: Path) -> Path:
-    write_case(kane_mele(lambda_v=0.1), tmp_path / "case")
-    return tmp_path / "case"
+@pytest.fixture(scope="module")
+def case(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    return write_case(kane_mele(lambda_v=0.1), tmp_path_factory.mktemp("rechecked") / "case")
 
 
-def test_certificate_of_a_dossier_holds(case: Path, tmp_path: Path) -> None:
-    dossier = vet_case(case, out=tmp_path / "out")
-    sentence = recheck_gap(case, out=tmp_path / "out")
+@pytest.fixture(scope="module")
+def dossier(case: Path) -> Dossier:
+    return vet_case(case, out=case.parent / "out")
+
+
+def test_certificate_of_a_dossier_holds(case: Path, dossier: Dossier) -> None:
+    sentence = recheck_gap(case, out=case.parent / "out")
     assert dossier.verdict.gap.direct_proved_min_eV is not None
     assert "cover the zone, and in each the direct gap exceeds" in sentence
 
 
 def test_without_a_proof_there_is_nothing_to_check(case: Path, tmp_path: Path) -> None:
     settings = {"effort": "quick"}
-    vet_case(case, out=tmp_path / "out", settings=settings)
+    start_run(case, out=tmp_path / "out", settings=settings).result("gap-proof")
     with pytest.raises(UndefinedError, match="no proved gap to check again: at effort quick"):
         recheck_gap(case, out=tmp_path / "out", settings=settings)
 
 
 def test_certificate_for_another_hamiltonian_is_refused(
-    case: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+    case: Path, dossier: Dossier, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    vet_case(case, out=tmp_path / "out")
     other = kane_mele(lambda_v=0.3).tight_binding()
     own = rechecked.recheck
 
@@ -49,4 +51,4 @@ def test_certificate_for_another_hamiltonian_is_refused(
 
     monkeypatch.setattr(rechecked, "recheck", against_another)
     with pytest.raises(CertificateError, match="does not hold"):
-        recheck_gap(case, out=tmp_path / "out")
+        recheck_gap(case, out=case.parent / "out")

@@ -66,7 +66,7 @@ def test_indices_that_name_no_edge_are_told(tmp_path: Path) -> None:
 
 
 def test_edges_without_time_reversal_count_the_chern_number(tmp_path: Path) -> None:
-    verdict = vet_case(write_case(haldane(m=0.1), tmp_path / "case")).verdict
+    verdict = _run(write_case(haldane(m=0.1), tmp_path / "case")).result("verdict")
     assert verdict.witnesses.surface.edge_chern == verdict.invariants.chern == -1
     assert verdict.agreement == "agree"
 

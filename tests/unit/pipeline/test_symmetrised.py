@@ -13,7 +13,7 @@ from lattice_models import wilson_dirac
 from topovet.errors import UndefinedError
 from topovet.intake.hamiltonian.hr import read_hr
 from topovet.intake.hamiltonian.hr_write import write_hr
-from topovet.pipeline.dossier import vet_case
+from topovet.pipeline.dossier import start_run
 from topovet.pipeline.symmetrised import vet_symmetrised
 
 QUICK = {"effort": "quick"}
@@ -35,7 +35,7 @@ def _noisy_case(folder: Path, noise_ev: float) -> Path:
 
 def test_noise_is_averaged_away_and_the_index_appears(tmp_path: Path) -> None:
     case = _noisy_case(tmp_path / "case", 0.01)
-    noisy = vet_case(case, settings=QUICK).verdict
+    noisy = start_run(case, settings=QUICK).result("verdict")
     assert not noisy.time_reversal.present
     beside = vet_symmetrised(case, out=tmp_path / "out", settings=QUICK)
     # time reversal is broken by the noise, so it is no member of the group averaged over
@@ -50,7 +50,7 @@ def test_noise_is_averaged_away_and_the_index_appears(tmp_path: Path) -> None:
 
 def test_exact_case_is_left_where_it_is(tmp_path: Path) -> None:
     case = write_case(wilson_dirac(m=-2.0), tmp_path / "case")
-    first = vet_case(case, settings=QUICK).verdict
+    first = start_run(case, settings=QUICK).result("verdict")
     beside = vet_symmetrised(case, out=tmp_path / "out", settings=QUICK)
     assert beside.symmetrisation.distance_mev < 0.01  # six decimals of the file
     assert beside.dossier.verdict.invariants == first.invariants
