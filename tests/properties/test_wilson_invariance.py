@@ -124,9 +124,9 @@ def test_agreement_with_parities(seed: int) -> None:
 
 def test_random_models_have_many_indices() -> None:
     """Guards the generator: the properties here must not pass on nothing but zeros."""
-    found = {wilson_of(random_model(seed, inversion=True)).z2 for seed in range(25)}
-    assert len(found - {None}) >= 8
-    flat = [wilson_of(random_model(seed, inversion=False, in_plane=True)).z2 for seed in range(25)]
+    found = {wilson_of(random_model(seed, inversion=True)).z2 for seed in range(15)}
+    assert len(found - {None}) >= 6
+    flat = [wilson_of(random_model(seed, inversion=False, in_plane=True)).z2 for seed in range(15)]
     assert {(0,), (1,)} <= set(flat)
 
 

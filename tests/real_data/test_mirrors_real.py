@@ -29,12 +29,12 @@ def witness_of(case: str) -> MirrorWitness:
         ("Bi2Se3", 1, 3),
         ("Bi2Se3_mlwf", 1, 1),  # two mirrors are broken by the Wannier functions
         ("Sb2Se3_compressed", 1, 3),
-        ("Sb2Se3", 0, 3),
+        pytest.param("Sb2Se3", 0, 3, marks=pytest.mark.endurance),
         ("BiTeI", 0, 3),
         ("BiTeI_pressed", 1, 3),
-        ("CdTe", 0, 6),
+        pytest.param("CdTe", 0, 6, marks=pytest.mark.endurance),
         ("PbTe", 0, 9),
-        ("Si", 0, 6),
+        pytest.param("Si", 0, 6, marks=pytest.mark.endurance),
     ],
 )
 def test_every_plane_has_its_number(case: str, magnitude: int, n_planes: int) -> None:
@@ -105,7 +105,7 @@ def test_lower_groups_of_bands_by_both_witnesses(case: str, fillings: tuple[int,
         assert bound is None or 0.9 * group.direct_gap_ev < bound <= group.direct_gap_ev
 
 
-@pytest.mark.parametrize("case", ["CdTe", "Bi2Se3"])
+@pytest.mark.parametrize("case", ["CdTe", pytest.param("Bi2Se3", marks=pytest.mark.endurance)])
 def test_planes_made_equal_by_symmetry_cost_nothing_and_change_nothing(case: str) -> None:
     """Half of the planes or fewer are followed; the thorough effort follows all six."""
     quick = run_of(case).result("wilson")

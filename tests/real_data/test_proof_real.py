@@ -61,7 +61,13 @@ def _gaps_near_and_far(model: TightBindingModel, filling: int, at: np.ndarray) -
     return np.asarray(energies[:, filling] - energies[:, filling - 1])
 
 
-@pytest.mark.parametrize("case", ["PbTe", "PbTe_a656", "Bi2Se3", "BiTeI", "CdTe", "Sb"])
+@pytest.mark.parametrize(
+    "case",
+    [
+        *("PbTe", "BiTeI", "Sb"),
+        *(pytest.param(c, marks=pytest.mark.endurance) for c in ("PbTe_a656", "Bi2Se3", "CdTe")),
+    ],
+)
 def test_proof_and_sampling_agree(case: str) -> None:
     hamiltonian, filling, gap = _hamiltonian(case)
     proof, _ = _proved(case)

@@ -128,7 +128,13 @@ def test_evidence(case: str) -> None:
         assert plane.smallest_gap > 0.1
 
 
-@pytest.mark.parametrize("case", ["BiTeI_pressed", "PbTe", "Sb", "Bi111_bilayer", "Bi2Se3_mlwf"])
+@pytest.mark.parametrize(
+    "case",
+    [
+        *("BiTeI_pressed", "Bi111_bilayer", "Sb"),
+        *(pytest.param(c, marks=pytest.mark.endurance) for c in ("PbTe", "Bi2Se3_mlwf")),
+    ],
+)
 def test_more_effort_changes_nothing(case: str) -> None:
     assert wilson_of(case, "thorough").z2 == wilson_of(case).z2
 

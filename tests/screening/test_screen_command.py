@@ -79,6 +79,7 @@ def test_what_is_unchanged_is_left_alone_and_what_changed_is_made_again(
     assert first.stat().st_mtime_ns != before[0]
 
 
+@pytest.mark.endurance  # as for a single case in the tests of `vet`
 def test_a_case_that_is_damaged_later_loses_its_verdict(
     program: Program, three: Path, tmp_path: Path
 ) -> None:

@@ -78,8 +78,14 @@ class WannierOperator:
     @property
     def k_rotation(self) -> IntArray:
         """(3, 3) integers that take a row k to the k' it is mapped to: k' = k @ k_rotation."""
-        inverse = np.round(np.linalg.inv(self.rotation)).astype(np.int64)
-        return -inverse if self.antiunitary else inverse
+        return _k_rotation(np.asarray(self.rotation, np.int64).tobytes(), self.antiunitary)
+
+
+@lru_cache(maxsize=1024)  # asked for at every k
+def _k_rotation(rotation: bytes, antiunitary: bool) -> IntArray:
+    whole = np.frombuffer(rotation, dtype=np.int64).reshape(3, 3)
+    inverse = np.round(np.linalg.inv(whole)).astype(np.int64)
+    return frozen(-inverse if antiunitary else inverse)
 
 
 def build_operator(
