@@ -34,113 +34,30 @@ Song, Zhang, Fang, Fang, Nat. Commun. 9, 3530 (2018), doi:10.1038/s41467-018-060
 
 from __future__ import annotations
 
-import functools
-import itertools
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
 from topovet.arrays import BoolArray, FloatArray, IntArray
-from topovet.invariants.band_reps.allowed_operations import ProtectingOperation, list_operations
+from topovet.invariants.band_reps.allowed_case import IndicatedGroup, group_of
+from topovet.invariants.band_reps.allowed_list import list_invariants
 from topovet.invariants.band_reps.allowed_results import (
-    FIXED,
-    INVERSION,
-    LAYERS,
-    MIRROR,
-    MODULO,
-    OPEN,
-    STRONG,
-    WEAK,
-    AllowedInvariant,
     AllowedInvariants,
-    AllowedValues,
     IndicatorValues,
     PlaneResidue,
 )
 from topovet.invariants.band_reps.mirror_layers import (
     RESIDUES,
     GroupMirror,
-    find_group_mirrors,
     layer_counts,
     number_grid,
-    reduce_residues,
 )
 from topovet.model.plane import Cell
 from topovet.symmetry.irrep_names import rotation_axis
-from topovet.symmetry.layer_parity import LayerParities, find_layer_parities
 from topovet.symmetry.operations import TRANSLATION_TOLERANCE
 from topovet.symmetry.operators import cartesian_rotation
 from topovet.symmetry.textbook_names import operation_kinds
-
-MOST_COMBINATIONS = 8
-"""More sets of values than this say nothing that the single invariants do not."""
-
-BY_GROUP = "the group alone"
-BY_PLANE = "the Z2 index of the plane (modulo 2)"
-BY_LAYERS = "crossings of layers add up"
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Group:
-    """A group with all that does not depend on indicators.
-
-    `operations` are those of `list_operations`, without and with a point that is named.
-    """
-
-    cell: FloatArray
-    rotations: IntArray
-    translations: FloatArray
-    mirrors: tuple[GroupMirror, ...]
-    everything: LayerParities
-    operations: tuple[tuple[ProtectingOperation, ...], tuple[ProtectingOperation, ...]]
-
-
-@functools.lru_cache(maxsize=16)  # one group is asked for with and without counted numbers
-def _group_of(cell: bytes, rotations: bytes, translations: bytes) -> _Group:
-    lattice = np.frombuffer(cell).reshape(3, 3)
-    w = np.frombuffer(rotations, dtype=np.int64).reshape(-1, 3, 3)
-    t = np.frombuffer(translations).reshape(-1, 3)
-    return _Group(
-        cell=lattice,
-        rotations=w,
-        translations=t,
-        mirrors=find_group_mirrors(lattice, w, t),
-        everything=find_layer_parities(w, t),
-        operations=(
-            list_operations(lattice, w, t, say_where=False),
-            list_operations(lattice, w, t, say_where=True),
-        ),
-    )
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Case:
-    """A group with its indicator values.
-
-    `choices` are the delta that fit nu0 = 0, the weak indices and kappa; all of the group's where
-    nu0 is not 0.
-    """
-
-    group: _Group
-    values: IndicatorValues
-    choices: LayerParities
-
-    @property
-    def layered(self) -> bool:
-        """Whether layers say anything: nu0 = 0."""
-        return self.values.strong == 0
-
-    @property
-    def weak(self) -> IntArray:
-        """(n, 3) weak indices that are left."""
-        if self.values.weak is not None:
-            return np.array([self.values.weak])
-        if self.layered:
-            return np.unique(self.choices.weak, axis=0)
-        every = np.array(list(itertools.product((0, 1), repeat=3)))
-        turned = (every @ self.group.rotations) % 2
-        return np.asarray(every[np.all(turned == every, axis=(0, 2))])
 
 
 def find_allowed(
@@ -174,12 +91,12 @@ def find_allowed(
     ValueError
         The operations are no group.
     """
-    group = _group_of(
+    group = group_of(
         np.asarray(cell, dtype=float).tobytes(),
         np.asarray(rotations, dtype=np.int64).tobytes(),
         np.asarray(translations, dtype=float).tobytes(),
     )
-    case = _Case(group, values, group.everything)
+    case = IndicatedGroup(group, values, group.everything)
     if case.layered:
         case = replace(case, choices=group.everything.where(_fits(case)))
         if not len(case.choices.choices):
@@ -191,10 +108,10 @@ def find_allowed(
     if not viable.any():
         return AllowedInvariants("failed", "no arrangement of layers has all of these values")
     left = replace(case, choices=case.choices.where(viable))
-    return _listed(left, [mask[viable] for mask in masks])
+    return list_invariants(left, [mask[viable] for mask in masks])
 
 
-def _fits(case: _Case) -> BoolArray:
+def _fits(case: IndicatedGroup) -> BoolArray:
     """Which delta have the weak indices and kappa."""
     fits = np.ones(len(case.group.everything.choices), dtype=bool)
     if case.values.weak is not None:
@@ -209,7 +126,7 @@ def _fits(case: _Case) -> BoolArray:
     return fits
 
 
-def _about(case: _Case, rotation: IntArray, point: FloatArray) -> tuple[int, Cell] | None:
+def _about(case: IndicatedGroup, rotation: IntArray, point: FloatArray) -> tuple[int, Cell] | None:
     """The operation with this rotation that fixes a point, and its lattice translation."""
     for i in np.flatnonzero(np.all(case.group.rotations == rotation, axis=(1, 2))):
         rest = point - rotation @ point - case.group.translations[i]
@@ -219,7 +136,7 @@ def _about(case: _Case, rotation: IntArray, point: FloatArray) -> tuple[int, Cel
     return None
 
 
-def _mask(case: _Case, mirror: GroupMirror, counted: Mapping[str, int]) -> BoolArray:
+def _mask(case: IndicatedGroup, mirror: GroupMirror, counted: Mapping[str, int]) -> BoolArray:
     """(n_choice, 24) or (n_choice, 24, 24): mirror Chern numbers that fit each delta."""
     numbers = number_grid(len(mirror.planes))
     one_by_one = np.ones(numbers[0].shape, dtype=bool)
@@ -262,7 +179,7 @@ def _steps_away(mirror: GroupMirror, point: FloatArray) -> int:
     return round(float(4 * (point - mirror.through) @ half))
 
 
-def _of_planes(case: _Case, mirror: GroupMirror, mask: BoolArray) -> None:
+def _of_planes(case: IndicatedGroup, mirror: GroupMirror, mask: BoolArray) -> None:
     """C modulo 2 is the Z2 index of the plane: nu.row at 1/2, nu0 + nu.row at 0."""
     strong = case.values.strong
     for j, number in enumerate(number_grid(len(mirror.planes))):
@@ -279,7 +196,7 @@ def _of_planes(case: _Case, mirror: GroupMirror, mask: BoolArray) -> None:
         mask &= number % 2 == index.reshape(-1, *[1] * number.ndim)
 
 
-def _of_layers(case: _Case, mirror: GroupMirror, mask: BoolArray) -> None:
+def _of_layers(case: IndicatedGroup, mirror: GroupMirror, mask: BoolArray) -> None:
     """Layers on the mirror: whole, delta modulo 2, and part of Z8."""
     n_planes = len(mirror.planes)
     layers, whole = layer_counts(n_planes)
@@ -301,147 +218,12 @@ def _of_layers(case: _Case, mirror: GroupMirror, mask: BoolArray) -> None:
     mask &= (value - case.values.z8) % 8 == 0
 
 
-def _fourfold(case: _Case, axis: FloatArray, centre: FloatArray) -> tuple[int, Cell] | None:
+def _fourfold(
+    case: IndicatedGroup, axis: FloatArray, centre: FloatArray
+) -> tuple[int, Cell] | None:
     """C4 about an axis through a point."""
     for i, kind in enumerate(operation_kinds(case.group.rotations)):
         about = rotation_axis(cartesian_rotation(case.group.rotations[i], case.group.cell))
         if kind == "4" and float(about @ axis) > 1 - 1e-6:
             return _about(case, case.group.rotations[i], centre)
     return None
-
-
-def _listed(case: _Case, masks: list[BoolArray]) -> AllowedInvariants:
-    """The list from what is left of delta and of mirror Chern numbers."""
-    operations = case.group.operations[bool(case.weak.any())]
-    entries = [_strong(case), _weak(case)]
-    columns = [_same(case, entries[0].values), _weak_columns(case)]
-    for kind, mirror, places, images in _mirror_rows(case):
-        mask = masks[case.group.mirrors.index(mirror)]
-        values = _numbers(np.asarray(mask.any(axis=0)), mirror, places)
-        source = _mirror_source(case, mirror, places, kind)
-        name = mirror.planes[0].name.rpartition(" ")[0]
-        entries.append(AllowedInvariant(kind, name, images, values, source))
-        columns.append(tuple(_numbers(m, mirror, places) for m in mask))
-    for operation in operations:
-        entries.append(_of_operation(case, operation))
-        columns.append(_operation_columns(case, operation))
-    combinations = tuple(dict.fromkeys(zip(*columns, strict=True))) if case.layered else ()
-    told_apart = 1 < len(combinations) <= MOST_COMBINATIONS
-    planes = tuple(
-        (plane.name, _numbers(np.asarray(mask.any(axis=0)), mirror, (j,)))
-        for mirror, mask in zip(case.group.mirrors, masks, strict=True)
-        for j, plane in enumerate(mirror.planes)
-    )
-    return AllowedInvariants("ok", "", tuple(entries), combinations if told_apart else (), planes)
-
-
-def _same(case: _Case, values: AllowedValues) -> tuple[AllowedValues, ...]:
-    return (values,) * len(case.choices.choices)
-
-
-def _strong(case: _Case) -> AllowedInvariant:
-    values = case.values
-    if values.strong is None:
-        return AllowedInvariant(
-            STRONG, "", (), AllowedValues(OPEN, (0, 1)), "no inversion and no S4 that could be read"
-        )
-    return AllowedInvariant(
-        STRONG, "", (), AllowedValues(FIXED, (values.strong,)), values.strong_from
-    )
-
-
-def _weak(case: _Case) -> AllowedInvariant:
-    left = tuple(_cell(nu) for nu in case.weak)
-    status = FIXED if len(left) == 1 else OPEN
-    alone = case.values.weak is None
-    source = "parities of the planes k_i = 1/2" if not alone else BY_GROUP
-    return AllowedInvariant(WEAK, "", (), AllowedValues(status, left), source)
-
-
-def _weak_columns(case: _Case) -> tuple[AllowedValues, ...]:
-    return tuple(AllowedValues(FIXED, (_cell(nu),)) for nu in case.choices.weak)
-
-
-MirrorRow = tuple[str, GroupMirror, tuple[int, ...], tuple[str, ...]]
-
-
-def _mirror_rows(case: _Case) -> list[MirrorRow]:
-    """Planes of one mirror of each class, and for nu0 = 0 the layers on it; with all images."""
-    rows: list[MirrorRow] = []
-    seen: set[int] = set()
-    for i, mirror in enumerate(case.group.mirrors):
-        if i in seen:
-            continue
-        images = {tuple((w @ np.array(mirror.row)).tolist()) for w in case.group.rotations}
-        alike = [
-            j
-            for j, other in enumerate(case.group.mirrors)
-            if tuple(other.row) in images or tuple(-c for c in other.row) in images
-        ]
-        seen.update(alike)
-        for place in range(len(mirror.planes)):
-            names = tuple(case.group.mirrors[j].planes[place].name for j in alike)
-            rows.append((MIRROR, mirror, (place,), names))
-        if len(mirror.planes) > 1 and case.layered:
-            rows.append((LAYERS, mirror, (0, 1), ()))
-    return rows
-
-
-def _numbers(mask: BoolArray, mirror: GroupMirror, places: tuple[int, ...]) -> AllowedValues:
-    """Residues left on one plane, or of half the sum over both."""
-    if len(places) > 1:
-        layers, _ = layer_counts(2)
-        left, modulus = reduce_residues(np.unique(layers[mask]).tolist(), RESIDUES // 2)
-        if all(mirror.vanishes):
-            return AllowedValues(FIXED, (0,))
-    else:
-        if mirror.vanishes[places[0]]:
-            return AllowedValues(FIXED, (0,))
-        others = tuple(a for a in range(mask.ndim) if a != places[0])
-        left, modulus = reduce_residues(np.flatnonzero(mask.any(axis=others)).tolist())
-    return AllowedValues(OPEN, ()) if modulus == 1 else AllowedValues(MODULO, left, modulus)
-
-
-def _mirror_source(case: _Case, mirror: GroupMirror, places: tuple[int, ...], kind: str) -> str:
-    """What limits a mirror Chern number."""
-    if all(mirror.vanishes[j] for j in places):
-        return "an operation of the group takes it to its opposite"
-    parts = []
-    if kind == MIRROR and (case.values.strong is not None or places == (1,)):
-        parts.append(BY_PLANE)
-    for residue in case.values.planes:
-        if residue.row == mirror.row and residue.half in [j == 1 for j in places]:
-            parts.append(f"C{residue.n} eigenvalues (modulo {residue.n})")
-    if case.layered:
-        parts.append(BY_LAYERS)
-        axis = case.values.z8_axis
-        along = axis is not None and abs(float(np.dot(axis, mirror.normal))) > 1 - 1e-6
-        if case.values.z8 is not None and along:
-            parts.append("Z8")
-    return ", ".join(dict.fromkeys(parts)) or "nothing limits it"
-
-
-def _of_operation(case: _Case, operation: ProtectingOperation) -> AllowedInvariant:
-    at_all = set(case.group.everything.of(operation.index, operation.cell).tolist())
-    left = tuple(sorted(set(case.choices.of(operation.index, operation.cell).tolist())))
-    if len(at_all) == 1:
-        values, source = AllowedValues(FIXED, (at_all.pop(),)), BY_GROUP
-    elif not case.layered:
-        values = AllowedValues(OPEN, (0, 1))
-        source = "not counted unless the strong index is 0"
-    elif operation.kind == INVERSION and case.values.z4 is not None:
-        values, source = AllowedValues(FIXED, left), "kappa/2 modulo 2"
-    else:
-        values = AllowedValues(FIXED if len(left) == 1 else OPEN, left)
-        source = BY_LAYERS
-    return AllowedInvariant(operation.kind, operation.name, (), values, source)
-
-
-def _operation_columns(case: _Case, operation: ProtectingOperation) -> tuple[AllowedValues, ...]:
-    deltas = case.choices.of(operation.index, operation.cell).tolist()
-    return tuple(AllowedValues(FIXED, (d,)) for d in deltas)
-
-
-def _cell(nu: IntArray) -> Cell:
-    x, y, z = (int(c) for c in nu)
-    return x, y, z
