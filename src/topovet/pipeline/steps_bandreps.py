@@ -189,7 +189,7 @@ TASKS = (
             "mesh",
         ),
         wants=("gap",),
-        version=2,
+        version=3,
     ),
     Task(
         "band-connections",

@@ -41,7 +41,7 @@ def _against_limits(findings: Findings) -> BandRepresentationsEntry:
         z2_partial=occupied.z2 if any(v is not None for v in occupied.z2) else None,
         multiplicities=_multiplicities(found, occupied),
         lines=tuple(_line(line) for line in found.lines),
-        isolated_sets=tuple(_band_set(entry) for entry in found.sets),
+        isolated_sets=tuple(_band_set(entry, _proved(findings)) for entry in found.sets),
         connections=connections_entry(findings.connections),
     )
 
@@ -81,7 +81,17 @@ def _line(line: LineLevels) -> Mapping[str, Any]:
     }
 
 
-def _band_set(bands: BandSet) -> Mapping[str, Any]:
+def _proved(findings: Findings) -> set[int]:
+    """Numbers of bands that end at a proved gap, or at none."""
+    lower = () if findings.lower is None else findings.lower.groups
+    proved = {0} | {group.filling for group in lower if group.proved_min_ev is not None}
+    if findings.electrons is not None and findings.gap_bound_mev is not None:
+        proved.add(findings.electrons.filling)
+    return proved
+
+
+def _band_set(bands: BandSet, proved: set[int]) -> Mapping[str, Any]:
+    edges = {bands.first_band, bands.first_band + bands.n_bands}
     return {
         "first_band": bands.first_band,
         "bands": bands.n_bands,
@@ -90,4 +100,5 @@ def _band_set(bands: BandSet) -> Mapping[str, Any]:
         "indicator": bands.indicator,
         "z2_partial": bands.z2 if any(v is not None for v in bands.z2) else None,
         "obstructed": bands.obstructed,
+        "gaps_proved": edges <= proved,
     }

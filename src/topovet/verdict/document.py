@@ -186,6 +186,9 @@ class LowerGapEntry:
     wilson_z2: tuple[int, ...] | None
     chern: int | tuple[int, ...] | None
     direct_proved_min_eV: float | None = None  # noqa: N815
+    classification: str | None = None
+    indicator: tuple[int, ...] | None = None
+    obstructed: bool | None = None
 
 
 @dataclass(frozen=True, slots=True)

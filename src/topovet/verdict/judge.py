@@ -8,6 +8,7 @@ from typing import Any
 
 import topovet
 from topovet.diagnosis.results import Experiments
+from topovet.invariants.band_reps.results import BandSet
 from topovet.invariants.results import ChernWitness
 from topovet.notation import mev
 from topovet.verdict.band_reps import band_representations_entry
@@ -201,8 +202,11 @@ def _parity(findings: Findings) -> ParityEntry:
 def _lower_gaps(findings: Findings) -> tuple[LowerGapEntry, ...] | None:
     if findings.lower is None:
         return None
+    levels = findings.band_reps
+    below = {} if levels is None else {b.n_bands: b for b in levels.below}
     return tuple(
         LowerGapEntry(
+            **_class_of_levels(below.get(g.filling) if g.status != "closed" else None),
             filling=g.filling,
             direct_eV=g.direct_gap_ev,
             direct_k=g.direct_k,
@@ -217,6 +221,16 @@ def _lower_gaps(findings: Findings) -> tuple[LowerGapEntry, ...] | None:
         )
         for g in findings.lower.groups
     )
+
+
+def _class_of_levels(bands: BandSet | None) -> dict[str, Any]:
+    if bands is None:
+        return {}
+    return {
+        "classification": bands.classification,
+        "indicator": bands.indicator,
+        "obstructed": bands.obstructed,
+    }
 
 
 def _mirror(findings: Findings) -> MirrorEntry:

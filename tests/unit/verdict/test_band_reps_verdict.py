@@ -8,10 +8,13 @@ import pytest
 
 import invented_band_reps as band_reps
 from invented_findings import SOUND, changed
+from topovet.invariants.lower_groups import LowerGroup, LowerGroups
+from topovet.verdict import judge
 from topovet.verdict.agreement import Statement, weigh
 from topovet.verdict.band_reps import band_representations_entry
 from topovet.verdict.conclude import witness_statements
 from topovet.verdict.crystalline import class_without_z2
+from topovet.verdict.findings import Findings
 from topovet.verdict.raised import raise_flags
 
 STRONG = band_reps.STRONG
@@ -74,6 +77,27 @@ def test_entry_of_the_document() -> None:
     nothing = replace(SOUND, missing={"band-representations": "the gap is not known"})
     entry = band_representations_entry(nothing)
     assert (entry.status, entry.reason) == ("not-applicable", "the gap is not known")
+
+
+def test_levels_up_to_a_lower_gap_and_which_gaps_are_proved() -> None:
+    up_to_4 = replace(band_reps.OBSTRUCTED_SET, first_band=0, n_bands=4)
+    lower = LowerGroup(4, 0.5, (0.0, 0.0, 0.0), 0.4, "ok", "", None, None, None, None, 9)
+    findings = changed(
+        band_reps=replace(STRONG, below=(up_to_4,)),
+        lower=LowerGroups((lower,), 0, ()),
+        electrons={"filling": 6},
+        gap_proof=None,
+    )
+
+    def gaps_proved(findings: Findings) -> list[bool]:
+        sets = band_representations_entry(findings).isolated_sets
+        return [entry["gaps_proved"] for entry in sets]
+
+    (entry,) = judge._lower_gaps(findings) or ()
+    assert (entry.classification, entry.obstructed) == (up_to_4.classification, True)
+    assert gaps_proved(findings) == [False, False]
+    proved = LowerGroups((replace(lower, proved_min_ev=0.4),), 0, ())
+    assert gaps_proved(replace(findings, lower=proved)) == [True, False]
 
 
 def _class(bands: band_reps.BandSet) -> tuple[str, str]:

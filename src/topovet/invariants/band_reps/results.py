@@ -163,6 +163,8 @@ class BandRepWitness:
         Sets of bands between gaps, lowest first; empty where only the occupied ones are isolated.
     dimension
         3 with a space group, 2 with a layer group.
+    below
+        The lowest bands up to each gap below the filling between these sets, fewest first.
     """
 
     status: str
@@ -178,3 +180,4 @@ class BandRepWitness:
     lines: tuple[LineLevels, ...] = ()
     sets: tuple[BandSet, ...] = ()
     dimension: int = 3
+    below: tuple[BandSet, ...] = ()

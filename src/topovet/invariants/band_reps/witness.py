@@ -114,6 +114,7 @@ def compute_band_rep_witness(
         lines=connect_levels(found, levels.points, vector) if vector is not None and gapped else (),
         sets=tuple(sets) if len(sets) > 1 else (),
         dimension=3 if group.layer is None else 2,
+        below=tuple(judge.band_set(0, n) for n in kept if n < filling),
     )
 
 
