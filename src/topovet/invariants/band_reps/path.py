@@ -372,7 +372,9 @@ def _roots(
     f_left, f_right = difference(left), difference(right)
     s = left
     for _ in range(ROOT_STEPS):
-        s = (left * f_right - right * f_left) / (f_right - f_left)
+        rise = f_right - f_left
+        # one that was met exactly has 0 on both sides, and stays
+        s = np.divide(left * f_right - right * f_left, rise, out=right.copy(), where=rise != 0)
         f = difference(s)
         if np.abs(f).max() < ROOT_EV:
             break

@@ -10,6 +10,7 @@ from mirror_groups import grouped
 from node_models import on_axis_dirac
 from topovet.arrays import FloatArray
 from topovet.invariants.band_irreps import compute_band_irreps
+from topovet.invariants.band_reps import path
 from topovet.invariants.band_reps.path import connect_path
 from topovet.invariants.band_reps.path_results import PathConnections, PathSegment
 from topovet.model.fourier import BlochSum, build_bloch_sum
@@ -110,3 +111,17 @@ def test_near_levels_of_one_kind_are_not_told_apart_where_the_symmetry_is_as_rou
     at_k = [s for s in found.segments if "K" in (s.start, s.end)]
     assert at_k
     assert not any(c.settled for s in at_k for c in s.connections)
+
+
+class _Straight:
+    """Stands for curves: one that is met exactly at the first step, one that takes many."""
+
+    @staticmethod
+    def at(s: FloatArray) -> FloatArray:
+        return np.stack([s - 0.5, np.zeros_like(s), np.expm1(9.0 * (s - 0.3))], axis=1)
+
+
+def test_a_root_that_is_met_exactly_stays_while_others_are_sought() -> None:
+    ends = np.zeros(2), np.ones(2)
+    roots = path._roots(_Straight(), np.array([0, 2]), np.array([1, 1]), *ends)  # type: ignore[arg-type]
+    assert roots == pytest.approx([0.5, 0.3], abs=1e-9)
