@@ -76,11 +76,6 @@ class LayerStack:
             planes *= turn.conj()[:, :, None] * turn[:, None, :]
         return planes
 
-    def principal_at(self, k_par: FloatArray) -> tuple[ComplexArray, ComplexArray]:
-        """H within a principal layer and T to the next, (n_k, size, size) eV each."""
-        planes = self.planes_at(k_par)
-        return principal_blocks(planes)
-
     def bulk_at(self, planes: ComplexArray, k_normal: FloatArray) -> ComplexArray:
         """Bulk H, (n_k, n_normal, n_orb, n_orb), from `planes_at` and k along the normal."""
         steps = np.arange(1, len(planes))

@@ -105,6 +105,8 @@ def _case_of_file(path: Path) -> CaseFiles:
         if seedname:
             _check_regular(path)
             return _case_of(path.parent, seedname, _names_in(path.parent), {field: str(path)})
+    if path.is_symlink():  # of a link that leads nowhere the name is not what is wrong
+        _check_regular(path)
     raise InputError(
         path,
         found=f"a file named {quoted(path.name)}",

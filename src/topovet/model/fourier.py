@@ -18,7 +18,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import sparse
 
-from topovet.arrays import ComplexArray, FloatArray, IntArray
+from topovet.arrays import ComplexArray, FloatArray
 from topovet.model.hamiltonian import TightBindingModel
 
 CHUNK_BYTES = 64 * 2**20
@@ -225,8 +225,3 @@ def chunks_of_k(n_k: int, n_orb: int) -> list[slice]:
     step = max(LEAST_ROWS, CACHE_BYTES // bytes_per_k)
     step = max(1, min(step, CHUNK_BYTES // bytes_per_k))
     return [slice(i, min(i + step, n_k)) for i in range(0, n_k, step)]
-
-
-def as_r_array(r_cells: IntArray) -> FloatArray:
-    """Lattice vectors as floats, the form the phases need."""
-    return np.ascontiguousarray(r_cells, dtype=float)

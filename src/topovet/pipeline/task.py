@@ -6,8 +6,6 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
-STATES = ("done", "cached", "not-applicable", "failed", "skipped")
-
 
 class NotApplicable(Exception):  # noqa: N818  (a finding, not an error)
     """Raised by a task whose question does not arise for this case; the message says why."""

@@ -281,11 +281,6 @@ class Shortlist:
         """How many of the rows stand in a tier."""
         return sum(row.tier == tier for row in self.rows)
 
-    @property
-    def open_rows(self) -> tuple[Ranked, ...]:
-        """Rows to be looked into: without a verdict, or on witnesses that disagree."""
-        return tuple(row for row in self.rows if row.tier == "undetermined")
-
 
 def plain_parts(row: Ranked) -> list[dict[str, Any]]:
     """The parts of a merit as plain dictionaries."""

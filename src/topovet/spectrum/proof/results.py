@@ -6,8 +6,6 @@ from dataclasses import dataclass
 
 from topovet.arrays import FloatArray, IntArray
 
-STATUSES = ("proved", "closing suspected", "budget ended")
-
 
 @dataclass(frozen=True, slots=True)
 class GapProof:
